@@ -1,0 +1,170 @@
+"""The screen that a result is written to: its width, and which characters and colours it can show.
+
+Nothing here reads the environment: a command passes it in, and a test makes any screen it likes.
+"""
+
+from __future__ import annotations
+
+import io
+import os
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, TextIO
+
+from campaign.output.safe import visible
+
+if TYPE_CHECKING:
+    from rich.console import Console, RenderableType
+
+DEFAULT_WIDTH = 80
+SMALLEST_WIDTH = 20
+
+# What a screen without Unicode shows instead of the characters that we use ourselves.
+_PLAIN_FORMS = str.maketrans(
+    {
+        "±": "+-", "−": "-", "–": "-", "—": "-", "…": "..", "·": ".", "×": "x", "°": " deg", "σ": "sigma",
+        "─": "-", "│": "|", "╵": "|", "┬": "+", "▾": "v", "◇": "o", "╌": "-", "²": "^2",
+        "░": ":", "▒": "=", "▓": "%", "█": "#", "▏": "|", "▌": "#", "é": "e",
+    }
+)  # fmt: skip
+
+
+@dataclass(frozen=True, slots=True)
+class Span:
+    """A piece of a line with the style that code (never data) gives it."""
+
+    text: str
+    style: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Screen:
+    """Where text goes. ``width`` is None in a pipe: lines then keep their natural length."""
+
+    stream: TextIO | None
+    is_terminal: bool = False
+    width: int | None = None
+    colour: bool = False
+    unicode: bool = True
+
+    def write(self, text: str) -> None:
+        """Write as it is, with what the stream cannot show replaced by plain forms."""
+        if self.stream is None:
+            return
+        if not self.unicode:
+            text = text.translate(_PLAIN_FORMS)
+        encoding = getattr(self.stream, "encoding", None) or "utf-8"
+        self.stream.write(text.encode(encoding, "backslashreplace").decode(encoding))
+
+    def line(self, *spans: str | Span) -> None:
+        """One line, cut nowhere: the caller keeps it inside the width. Text is made safe."""
+        if not self.colour:
+            self.write("".join(visible(_text(span)) for span in spans).rstrip() + "\n")
+            return
+        from rich.text import Text
+
+        whole = Text()
+        for span in spans:
+            whole.append(visible(_text(span)), style=span.style if isinstance(span, Span) else "")
+        whole.rstrip()
+        self.show(whole)
+
+    def heading(self, text: str) -> None:
+        """A title over a part of the screen."""
+        self.wrapped(text, style="bold")
+
+    def wrapped(self, text: str, *, label: str = "", hang: int = 0, style: str = "") -> None:
+        """A paragraph within the width; further lines are indented by ``hang`` cells."""
+        for number, piece in enumerate(fold(label + visible(text), self.width, hang)):
+            indent = " " * hang if number else ""
+            self.line(indent, Span(piece, style))
+
+    def show(self, renderable: RenderableType) -> None:
+        """Write something that rich draws."""
+        console = rich_console(self)
+        console.print(renderable, no_wrap=True, overflow="ignore", crop=False)
+        drawn = console.file
+        assert isinstance(drawn, io.StringIO)
+        self.write(drawn.getvalue())
+
+
+def _text(span: str | Span) -> str:
+    return span.text if isinstance(span, Span) else span
+
+
+def fold(text: str, width: int | None, hang: int = 0) -> list[str]:
+    """``text`` broken at spaces to ``width`` cells, lines after the first being ``hang`` cells shorter.
+
+    Words that are too long are cut, so that no line is ever wider.
+    """
+    from rich.cells import cell_len, chop_cells
+
+    if width is None or cell_len(text) <= width:
+        return [text]
+    lines: list[str] = []
+    line = ""
+    for word in text.split(" "):
+        room = width - (hang if lines else 0)
+        trial = f"{line} {word}" if line else word
+        if cell_len(trial) <= room:
+            line = trial
+            continue
+        if line.strip():
+            lines.append(line.rstrip())
+            line = ""
+        room = max(1, width - (hang if lines else 0))
+        pieces = chop_cells(word, room) if cell_len(word) > room else [word]
+        lines.extend(pieces[:-1])
+        line = pieces[-1]
+    return [*lines, line.rstrip()] if line or not lines else lines
+
+
+def rich_console(screen: Screen, file: TextIO | None = None) -> Console:
+    """A rich console with the limits of ``screen``, into ``file`` (by default into memory).
+
+    Markup, highlighting and emoji names are off: style comes from code only. It is interactive only on
+    a real terminal, whatever the environment claims.
+    """
+    from rich.console import Console
+
+    return Console(
+        file=file if file is not None else io.StringIO(),
+        force_terminal=screen.colour,
+        force_interactive=screen.is_terminal,
+        force_jupyter=False,
+        color_system="standard" if screen.colour else None,
+        no_color=not screen.colour,
+        width=screen.width or 10_000,
+        height=25,
+        markup=False,
+        highlight=False,
+        emoji=False,
+        legacy_windows=False,
+        safe_box=False,
+        _environ={},
+    )
+
+
+def screen_for(stream: TextIO | None, environ: Mapping[str, str], width: int | None = None) -> Screen:
+    """The screen behind ``stream``; ``width`` overrides what a terminal says of itself."""
+    is_terminal = stream is not None and stream.isatty()
+    terminal_kind = environ.get("TERM", "")
+    encoding = (getattr(stream, "encoding", None) or "utf-8").lower().replace("-", "").replace("_", "")
+    return Screen(
+        stream=stream,
+        is_terminal=is_terminal,
+        width=(width or _terminal_width(stream, environ)) if is_terminal else None,
+        colour=is_terminal and terminal_kind not in {"", "dumb"} and not environ.get("NO_COLOR"),
+        unicode=encoding.startswith("utf"),
+    )
+
+
+def _terminal_width(stream: TextIO | None, environ: Mapping[str, str]) -> int:
+    told = environ.get("COLUMNS", "")
+    columns = int(told) if told.isascii() and told.isdigit() else 0
+    if columns <= 0 and stream is not None:
+        try:
+            columns = os.get_terminal_size(stream.fileno()).columns
+        except (OSError, ValueError):
+            columns = 0
+    return max(columns, SMALLEST_WIDTH) if columns > 0 else DEFAULT_WIDTH
