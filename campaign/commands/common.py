@@ -1,0 +1,135 @@
+"""Options that many commands share, and the few things a command may ask of its surroundings.
+
+Only here and in the runner are the clock, the environment and the standard streams touched.
+"""
+
+from __future__ import annotations
+
+import os
+import sys
+from datetime import UTC, datetime
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from campaign import settings
+from campaign.errors import Declined
+
+if TYPE_CHECKING:
+    from campaign.output.console import Screen
+
+DbOption = Annotated[
+    str | None,
+    typer.Option(
+        "--db",
+        metavar="PATH_OR_URL",
+        help="The database: a path or an SQLAlchemy URL. Else $CAMPAIGN_DB, else the user's data folder.",
+        show_default=False,
+    ),
+]
+AsOfOption = Annotated[
+    str | None,
+    typer.Option(
+        "--as-of",
+        metavar="INSTANT",
+        help="Take this instant in place of now, as 2031-04-07 or 2031-04-07T03:12:10Z; "
+        "observations made after it are not looked at.",
+        show_default=False,
+    ),
+]
+ObserverOption = Annotated[
+    str | None,
+    typer.Option(
+        "--observer",
+        metavar="NAME",
+        help="Who makes the entry. Else $CAMPAIGN_OBSERVER, else the login name.",
+        show_default=False,
+    ),
+]
+JsonOption = Annotated[
+    bool, typer.Option("--json", help="Write one JSON document; errors become JSON too.", show_default=False)
+]
+QuietOption = Annotated[
+    bool, typer.Option("--quiet", "-q", help="Say nothing but errors and data.", show_default=False)
+]
+YesOption = Annotated[
+    bool, typer.Option("--yes", "-y", help="Agree to every question beforehand.", show_default=False)
+]
+DryRunOption = Annotated[
+    bool, typer.Option("--dry-run", help="Show what would change and change nothing.", show_default=False)
+]
+
+
+def database(option: str | None) -> str:
+    """Where the database is, as a path or URL."""
+    return settings.database_location(option, os.environ)
+
+
+def observer(option: str | None) -> str:
+    """Who is at work."""
+    return settings.observer_name(option, os.environ)
+
+
+def now_utc() -> datetime:
+    """The clock. Nothing else in the program reads it."""
+    return datetime.now(UTC)
+
+
+def now_iso() -> str:
+    """The clock to the second, as ``2031-04-07T03:12:10Z``."""
+    return now_utc().strftime("%Y-%m-%dT%H:%M:%SZ")
+
+
+def stdout_screen() -> Screen:
+    """Where data go."""
+    from campaign.output.console import screen_for
+
+    return screen_for(sys.stdout, os.environ)
+
+
+def stderr_screen() -> Screen:
+    """Where everything else goes."""
+    from campaign.output.console import screen_for
+
+    return screen_for(sys.stderr, os.environ)
+
+
+def write_json(text: str) -> None:
+    """Write one document, as ``campaign.output.documents`` makes it, to stdout."""
+    if sys.stdout is not None:
+        sys.stdout.write(text)
+
+
+def tell(text: str, *, quiet: bool = False) -> None:
+    """Say one thing to the user on stderr, within the window."""
+    if not quiet:
+        stderr_screen().wrapped(text)
+
+
+def asks_questions() -> bool:
+    """Whether somebody is there to answer: both ends are a terminal."""
+    return all(stream is not None and stream.isatty() for stream in (sys.stdin, sys.stderr))
+
+
+def confirm(question: str, *, yes: bool) -> None:
+    """Ask before something is changed in bulk.
+
+    Raises
+    ------
+    Declined
+        When the answer is no, or nobody is there to ask and ``--yes`` was not given.
+    """
+    if yes:
+        return
+    if not asks_questions():
+        raise Declined(
+            "Nothing was done.",
+            why=f"This needs an answer and nobody is there to give it: {question}",
+            hint="Add --yes to agree beforehand.",
+        )
+    if not typer.confirm(question, err=True):
+        raise Declined(
+            "Nothing was done.",
+            why="The question was answered with no.",
+            hint="Run the command again when you want the change.",
+        )

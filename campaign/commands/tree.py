@@ -1,0 +1,216 @@
+"""The commands by name. A command's module is imported only when that command is run or asked for help.
+
+The table states each command's one-line help, so that listing commands imports none of them.
+"""
+
+from __future__ import annotations
+
+import importlib
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import dataclass
+from difflib import get_close_matches
+from typing import Annotated, Any
+
+import typer
+from typer.core import TyperCommand, TyperGroup
+from typer.main import get_command
+
+import campaign
+from campaign.commands.coercion import read_text_directly
+from campaign.errors import UsageRefused
+
+PROGRAM = "campaign"
+
+
+@dataclass(frozen=True, slots=True)
+class Leaf:
+    """One command: a plain function in a module, with ``help`` equal to its first docstring line."""
+
+    name: str
+    help: str
+    module: str
+    function: str
+    section: str = ""
+
+    def load(self) -> Callable[..., Any]:
+        """Import the module and hand over the function."""
+        function: Callable[..., Any] = getattr(importlib.import_module(self.module), self.function)
+        return function
+
+
+@dataclass(frozen=True, slots=True)
+class Branch:
+    """A group of commands."""
+
+    name: str
+    help: str
+    leaves: tuple[Leaf, ...]
+    section: str = ""
+
+
+Table = Sequence[Leaf | Branch]
+
+COMMANDS: tuple[Leaf | Branch, ...] = ()
+
+SUMMARY = "When the next dust episode starts, how sure that is, and what to observe."
+
+
+class PlainCommand(TyperCommand):
+    """One command."""
+
+    def get_params(self, ctx: typer.Context) -> list[Any]:  # type: ignore[override]
+        """Its options and arguments, --help included."""
+        return read_text_directly(super().get_params(ctx))
+
+
+class LazyGroup(TyperGroup):
+    """A group that knows its commands from a table and makes them one at a time."""
+
+    table: Table = ()
+    path: str = PROGRAM
+
+    def get_params(self, ctx: typer.Context) -> list[Any]:  # type: ignore[override]
+        """Its options, --help included."""
+        return read_text_directly(super().get_params(ctx))
+
+    def list_commands(self, ctx: typer.Context) -> list[str]:  # type: ignore[override]
+        """The names, in the order of the table."""
+        return [entry.name for entry in self.table]
+
+    def get_command(self, ctx: typer.Context, cmd_name: str) -> Any:  # type: ignore[override]
+        """Make the named command; only now is its module imported."""
+        entry = next((entry for entry in self.table if entry.name == cmd_name), None)
+        if entry is None:
+            return None
+        if isinstance(entry, Branch):
+            return _make_branch(entry, f"{self.path} {entry.name}")
+        return _make_leaf(entry)
+
+    def resolve_command(self, ctx: typer.Context, args: list[str]) -> Any:  # type: ignore[override]
+        """Find the command, or say which names come near."""
+        name = args[0]
+        if ctx.resilient_parsing or name.startswith("-") or name in self.list_commands(ctx):
+            return super().resolve_command(ctx, args)
+        raise _unknown_command(self, name)
+
+    def shell_complete(self, ctx: typer.Context, incomplete: str) -> list[Any]:  # type: ignore[override]
+        """Complete names from the table, without importing a command."""
+        return _Listing(self).shell_complete(ctx, incomplete)
+
+    def format_help(self, ctx: typer.Context, formatter: Any) -> None:  # type: ignore[override]
+        """Sections of commands, then the options, in plain text."""
+        formatter.write(f"{self.path}: {self.help}\n\n  {self.path} COMMAND ...\n")
+        formatter.write(f"  {self.path} COMMAND --help\n")
+        width = max((len(entry.name) for entry in self.table), default=0)
+        for section, entries in _by_section(self.table):
+            formatter.write(f"\n{section or 'Commands'}\n")
+            for entry in entries:
+                formatter.write(f"  {entry.name:<{width}}  {entry.help}\n")
+        records = [record for param in self.get_params(ctx) if (record := param.get_help_record(ctx))]
+        formatter.write("\nOptions\n")
+        formatter.indent()
+        formatter.write_dl(records)
+
+
+class _Listing(TyperGroup):
+    """The names and helps of a lazy group as empty commands, for completion only."""
+
+    def __init__(self, group: LazyGroup) -> None:
+        empty = [TyperCommand(entry.name, help=entry.help) for entry in group.table]
+        super().__init__(name=group.name, commands=empty, params=group.params)
+
+
+def build_root(table: Table = COMMANDS) -> LazyGroup:
+    """The whole program as one command group over ``table``."""
+    app = typer.Typer(
+        name=PROGRAM,
+        cls=type("RootGroup", (LazyGroup,), {"table": tuple(table)}),
+        help=SUMMARY,
+        invoke_without_command=True,
+        rich_markup_mode=None,
+        pretty_exceptions_enable=False,
+        add_completion=True,
+    )
+    app.callback()(_root)
+    root = get_command(app)
+    assert isinstance(root, LazyGroup)
+    return root
+
+
+def _root(
+    ctx: typer.Context,
+    version: Annotated[bool, typer.Option("--version", help="Print the version and stop.")] = False,
+    # Taken out by the runner, before the options are read; declared so that the help lists it.
+    traceback: Annotated[
+        bool,
+        typer.Option("--traceback", help="Show where an unexpected error happened (anywhere on the line)."),
+    ] = False,
+) -> None:
+    if version:
+        typer.echo(f"{PROGRAM} {campaign.__version__}")
+        raise typer.Exit
+    _help_when_bare(ctx)
+
+
+def _help_when_bare(ctx: typer.Context) -> None:
+    if ctx.invoked_subcommand is None:
+        typer.echo(ctx.get_help())
+
+
+def _make_branch(branch: Branch, path: str) -> LazyGroup:
+    app = typer.Typer(
+        name=branch.name,
+        cls=type("BranchGroup", (LazyGroup,), {"table": branch.leaves, "path": path}),
+        help=branch.help,
+        invoke_without_command=True,
+        rich_markup_mode=None,
+        pretty_exceptions_enable=False,
+        add_completion=False,
+    )
+    app.callback()(_help_when_bare)
+    group = get_command(app)
+    assert isinstance(group, LazyGroup)
+    return group
+
+
+def _make_leaf(leaf: Leaf) -> TyperCommand:
+    app = typer.Typer(rich_markup_mode=None, pretty_exceptions_enable=False, add_completion=False)
+    app.command(name=leaf.name, cls=PlainCommand)(leaf.load())
+    command = get_command(app)
+    assert isinstance(command, TyperCommand)
+    return command
+
+
+def _by_section(table: Table) -> Iterator[tuple[str, list[Leaf | Branch]]]:
+    sections: dict[str, list[Leaf | Branch]] = {}
+    for entry in table:
+        sections.setdefault(entry.section, []).append(entry)
+    yield from sections.items()
+
+
+def _paths(table: Table, path: str) -> dict[str, str]:
+    """Every command path below ``path``, by the words that somebody may type for it."""
+    found: dict[str, str] = {}
+    for entry in table:
+        found[entry.name] = f"{path} {entry.name}"
+        if isinstance(entry, Branch):
+            for leaf in entry.leaves:
+                found.setdefault(leaf.name, f"{path} {entry.name} {leaf.name}")
+                found[f"{entry.name} {leaf.name}"] = f"{path} {entry.name} {leaf.name}"
+    return found
+
+
+def _unknown_command(group: LazyGroup, name: str) -> UsageRefused:
+    paths = _paths(group.table, group.path)
+    near = get_close_matches(name.lower(), paths, n=3, cutoff=0.6)
+    nearest = list(dict.fromkeys(paths[word] for word in near))
+    advice = "Did you mean " + " or ".join(f"'{each}'" for each in nearest) + "? " if nearest else ""
+    return UsageRefused(
+        f"There is no command '{group.path} {name}'.",
+        why=f"'{group.path}' has the commands {', '.join(entry.name for entry in group.table)}."
+        if group.table
+        else f"'{group.path}' has no commands.",
+        hint=f"{advice}All commands: {group.path} --help",
+        code="unknown-command",
+        details={"given": name, "nearest": nearest},
+    )
