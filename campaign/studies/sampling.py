@@ -1,0 +1,256 @@
+"""Draws of event times for many rows at once: (rows, draws) arrays, one call an event."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from campaign.model.forecasts import EventName
+from campaign.physics.draws import stratified_normals, two_piece_normal, two_piece_within
+from campaign.physics.dustwindow import production_half_window_d, travel_delay_d
+from campaign.physics.eventtimes import conjunction_offset_phase
+from campaign.studies.rows import DOMAINS, SCATTERS, ForecastRow
+
+if TYPE_CHECKING:
+    from campaign.studies.learned import LearnedDates
+
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+DEFAULT_DRAWS = 20_000
+DEFAULT_SEED = 1
+
+# nu + omega_B at each conjunction: B is behind A at 90 degrees, in front of it at 270.
+CONJUNCTION_DEG: dict[EventName, float] = {"A in front": 90.0, "B in front": 270.0}
+RULE_CODES = {"phase": 1, "lag": 2, "separation": 3, "learned": 4}
+MARK_CODES = {"periastron": 0, "A in front": 1, "B in front": 2, "onset": 3, "maximum": 4}
+
+
+class Sampler:
+    """Event times drawn from the stated errors of many rows.
+
+    The same standard normal deviates serve every row: a forecast depends on its own elements, the
+    number of draws and the seed, and never on which other systems are in the campaign.
+    """
+
+    def __init__(
+        self,
+        rows: Sequence[ForecastRow],
+        draws: int,
+        seed: int,
+        learned: dict[int, LearnedDates] | None = None,
+    ) -> None:
+        self.rows = rows
+        self.draws = draws
+        self.learned = learned or {}
+        scatter_names = [f"scatter {event}" for event in SCATTERS]
+        self.normals = stratified_normals([*DOMAINS, *scatter_names, "recurrence"], draws, seed)
+        self.columns = {name: self._column(name) for name in DOMAINS}
+        self.scatter = {event: self._scatter(event) for event in SCATTERS}
+        self.epoch_cycle = np.array([row.epoch_cycle for row in rows], dtype=np.int64)
+        self.rule = np.array([RULE_CODES[row.rule.kind] if row.rule else 0 for row in rows])
+        self.mark = np.array([MARK_CODES[row.mark] for row in rows])
+        self.period_is_range = np.array([row.period_is_range for row in rows], dtype=bool)
+        self.correlated = {i: z for i, row in enumerate(rows) if (z := self._correlate(row))}
+        self._is_correlated = np.zeros(len(rows), dtype=bool)
+        self._is_correlated[list(self.correlated)] = True
+
+    def _column(self, name: str) -> FloatArray:
+        """(rows, 3) of value, minus, plus; NaN value where absent, 0 where the error is unknown."""
+        absent = (np.nan, 0.0, 0.0)
+        table = [row.values.get(name, absent) for row in self.rows]
+        return np.array([(v, m or 0.0, p or 0.0) for v, m, p in table], dtype=float).reshape(-1, 3)
+
+    def _scatter(self, event: EventName) -> FloatArray:
+        field = f"scatter_{event}_d"
+        return np.array([(getattr(row.rule, field) or 0.0) if row.rule else 0.0 for row in self.rows])
+
+    def _correlate(self, row: ForecastRow) -> dict[str, FloatArray]:
+        """Deviates of one solution's elements with their published correlations."""
+        covariance = row.solution.covariance if row.solution is not None else None
+        if covariance is None:
+            return {}
+        names = ["omega_b_deg" if name == "omega_deg" else name for name in covariance.names]
+        known = [i for i, name in enumerate(names) if name in row.values and name in DOMAINS]
+        if len(known) < 2:  # noqa: PLR2004
+            return {}
+        matrix = np.array(covariance.matrix, dtype=float)[np.ix_(known, known)]
+        sigma = np.sqrt(np.diag(matrix))
+        if not np.all(sigma > 0.0):
+            return {}
+        factor = np.linalg.cholesky(matrix / np.outer(sigma, sigma) + 1e-12 * np.eye(len(known)))
+        independent = np.stack([self.normals[names[i]] for i in known])
+        together = factor @ independent
+        return {names[i]: together[j] for j, i in enumerate(known)}
+
+    def deviates(self, name: str, index: IntArray) -> FloatArray:
+        common = self.normals[name][None, :]
+        if not self._is_correlated[index].any():
+            return common
+        z = np.repeat(common, index.size, axis=0)
+        for position, row in enumerate(index):
+            own = self.correlated.get(int(row), {}).get(name)
+            if own is not None:
+                z[position] = own
+        return z
+
+    def draw(self, name: str, index: IntArray) -> FloatArray:
+        """Draws of one quantity for the rows of ``index``, shape (len(index), draws)."""
+        value, minus, plus = (self.columns[name][index, i][:, None] for i in range(3))
+        z = self.deviates(name, index)
+        low, high = DOMAINS[name]
+        if np.isinf(low) and np.isinf(high):
+            return two_piece_normal(value, minus, plus, z)
+        if name == "period_d" and self.period_is_range[index].any():
+            return self._period_with_ranges(value, minus, plus, z, index)
+        return two_piece_within(value, minus, plus, z, low, high)
+
+    def _period_with_ranges(
+        self, value: FloatArray, minus: FloatArray, plus: FloatArray, z: FloatArray, index: IntArray
+    ) -> FloatArray:
+        from scipy.special import ndtr
+
+        even = value + minus * (2.0 * ndtr(z) - 1.0)
+        normal = two_piece_within(value, minus, plus, z, *DOMAINS["period_d"])
+        return np.where(self.period_is_range[index][:, None], even, normal)
+
+    def _periastron(self, index: IntArray, cycles: IntArray) -> tuple[FloatArray, FloatArray]:
+        """Times of periastron (or of the marked event) and periods, (rows, draws) each."""
+        period = self.draw("period_d", index)
+        times = self.draw("epoch", index) + (cycles - self.epoch_cycle[index])[:, None] * period
+        for code, event in ((1, "A in front"), (2, "B in front")):
+            marked = np.flatnonzero((self.mark[index] == code) & ~np.isnan(self.columns["omega_b_deg"][index, 0]))
+            if marked.size:
+                offset = self._conjunction_phase(index[marked], event)  # type: ignore[arg-type]
+                times[marked] -= offset * period[marked]
+        return times, period
+
+    def _conjunction_phase(self, index: IntArray, event: EventName) -> FloatArray:
+        omega = self.draw("omega_b_deg", index)
+        nominal = self.columns["omega_b_deg"][index, 0]
+        # The conjunction nearest to periastron, followed continuously as omega varies.
+        target = CONJUNCTION_DEG[event]
+        turns = np.round((target - nominal) / 360.0)[:, None]
+        return conjunction_offset_phase(
+            self.draw("eccentricity", index), np.radians(target - omega - 360.0 * turns)
+        )
+
+    def event_times(self, event: EventName, index: IntArray, cycles: IntArray) -> FloatArray:
+        """Draws of one event.
+
+        Parameters
+        ----------
+        event : str
+            Which event.
+        index : ndarray of int, shape (n,)
+            Rows.
+        cycles : ndarray of int, shape (n,)
+            Cycle of each.
+
+        Returns
+        -------
+        ndarray, shape (n, draws)
+            ``bmjd_tdb``; NaN where the event does not happen in that draw.
+        """
+        is_learned = self.rule[index] == RULE_CODES["learned"]
+        if event in SCATTERS and is_learned.any():
+            return self._mixed_learned(event, index, cycles, is_learned)
+        times, period = self._periastron(index, cycles)
+        if event in CONJUNCTION_DEG:
+            shift = self._conjunction_phase(index, event)
+            # A row marked by a conjunction without e and omega dates that conjunction alone.
+            bare = np.isnan(self.columns["omega_b_deg"][index, 0])
+            return np.where(bare[:, None], times, times + shift * period)
+        if event in SCATTERS:
+            marked_here = self.mark[index] == MARK_CODES.get(event, -1)
+            times = np.where(marked_here[:, None], times, times + self._offsets_d(event, index, period))
+            spread = np.where(marked_here, 0.0, self.scatter[event][index])
+            if spread.any():
+                times += spread[:, None] * self.normals[f"scatter {event}"][None, :]
+        return times
+
+    def _mixed_learned(
+        self, event: EventName, index: IntArray, cycles: IntArray, is_learned: NDArray[np.bool_]
+    ) -> FloatArray:
+        times = np.full((index.size, self.draws), np.nan)
+        other = np.flatnonzero(~is_learned)
+        if other.size:
+            times[other] = self.event_times(event, index[other], cycles[other])
+        for position in np.flatnonzero(is_learned):
+            dates = self.learned.get(int(index[position]))
+            if dates is not None:
+                times[position] = dates.draws(event, int(cycles[position]), self.normals)
+        return times
+
+    def _offsets_d(self, event: EventName, index: IntArray, period: FloatArray) -> FloatArray:
+        """Days from periastron, before scatter; NaN in draws without an episode."""
+        offsets = np.full(period.shape, np.nan)
+        kinds = self.rule[index]
+        for kind in np.unique(kinds):
+            chosen = np.flatnonzero(kinds == kind)
+            rows = index[chosen]
+            if kind == RULE_CODES["phase"]:
+                offsets[chosen] = self.draw(event, rows) * period[chosen]
+            elif kind == RULE_CODES["lag"]:
+                offsets[chosen] = self.draw(event, rows)
+            elif kind == RULE_CODES["separation"]:
+                offsets[chosen] = self._separation_offsets_d(event, rows, period[chosen])
+        return offsets
+
+    def half_window_d(self, index: IntArray, period: FloatArray) -> FloatArray:
+        """Half of the production window; NaN without an episode, ``inf`` when production never stops."""
+        return production_half_window_d(
+            period,
+            self.draw("eccentricity", index),
+            self._a_au(index, period),
+            self.draw("critical_separation_au", index),
+        )
+
+    def _separation_offsets_d(self, event: EventName, index: IntArray, period: FloatArray) -> FloatArray:
+        half = self.half_window_d(index, period)
+        has_delay = ~np.isnan(self.columns["condensation_distance_au"][index, 0])
+        delay = np.zeros_like(period)
+        if has_delay.any():
+            where = np.flatnonzero(has_delay)
+            delay[where] = travel_delay_d(
+                self.draw("condensation_distance_au", index[where]), self.draw("flow_speed_kms", index[where])
+            )
+        if event == "maximum":
+            lagged = ~np.isnan(self.columns["maximum_lag_d"][index, 0])
+            if lagged.any():
+                where = np.flatnonzero(lagged)
+                delay[where] = self.draw("maximum_lag_d", index[where])
+            return np.where(np.isnan(half), np.nan, delay)
+        # Production that never stops has no onset and no end.
+        bounded = np.where(np.isinf(half), np.nan, half)
+        return delay - bounded if event == "onset" else delay + bounded
+
+    def _a_au(self, index: IntArray, period: FloatArray) -> FloatArray:
+        given = np.array([self.rows[i].a_source == "given" for i in index])
+        if given.all():
+            return self.draw("a_au", index)
+        from campaign.physics import masses
+
+        a = np.empty(period.shape)
+        for position, row in enumerate(index):
+            one = np.array([row])
+            source = self.rows[row].a_source
+            if source == "given":
+                a[position] = self.draw("a_au", one)[0]
+            elif source == "angle and distance":
+                a[position] = (self.draw("a_arcsec", one) * self.draw("distance_pc", one))[0]
+            elif source == "velocities":
+                a[position] = masses.semi_major_axis_from_velocities(
+                    period[position],
+                    self.draw("eccentricity", one)[0],
+                    self.draw("k_a_kms", one)[0],
+                    self.draw("k_b_kms", one)[0],
+                    np.radians(self.draw("inclination_deg", one)[0]),
+                )
+            else:
+                total = self.draw("mass_a_msun", one)[0] + self.draw("mass_b_msun", one)[0]
+                a[position] = masses.semi_major_axis_au(period[position], total)
+        return a
