@@ -48,24 +48,29 @@ class Screen:
     unicode: bool = True
 
     def write(self, text: str) -> None:
-        """Write as it is, with what the stream cannot show replaced by plain forms."""
-        if self.stream is None:
-            return
-        if not self.unicode:
-            text = text.translate(_PLAIN_FORMS)
+        """Write as it is, but for characters that the stream cannot carry."""
+        if self.stream is not None:
+            self.stream.write(self._encodable(text))
+
+    def spell(self, text: str) -> str:
+        """``text`` as this screen shows it: made safe, and in characters that it has. Lay out only this."""
+        text = visible(text)
+        return self._encodable(text if self.unicode else text.translate(_PLAIN_FORMS))
+
+    def _encodable(self, text: str) -> str:
         encoding = getattr(self.stream, "encoding", None) or "utf-8"
-        self.stream.write(text.encode(encoding, "backslashreplace").decode(encoding))
+        return text if text.isascii() else text.encode(encoding, "backslashreplace").decode(encoding)
 
     def line(self, *spans: str | Span) -> None:
         """One line, cut nowhere: the caller keeps it inside the width. Text is made safe."""
         if not self.colour:
-            self.write("".join(visible(_text(span)) for span in spans).rstrip() + "\n")
+            self.write("".join(self.spell(_text(span)) for span in spans).rstrip() + "\n")
             return
         from rich.text import Text
 
         whole = Text()
         for span in spans:
-            whole.append(visible(_text(span)), style=span.style if isinstance(span, Span) else "")
+            whole.append(self.spell(_text(span)), style=span.style if isinstance(span, Span) else "")
         whole.rstrip()
         self.show(whole)
 
@@ -75,7 +80,7 @@ class Screen:
 
     def wrapped(self, text: str, *, label: str = "", hang: int = 0, style: str = "") -> None:
         """A paragraph within the width; further lines are indented by ``hang`` cells."""
-        for number, piece in enumerate(fold(label + visible(text), self.width, hang)):
+        for number, piece in enumerate(fold(self.spell(label + text), self.width, hang)):
             indent = " " * hang if number else ""
             self.line(indent, Span(piece, style))
 

@@ -6,13 +6,12 @@ In a pipe a table is plain aligned text, one record a line, at its natural width
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 from rich.cells import cell_len
 
 from campaign.output.console import Screen, Span, fold
-from campaign.output.safe import visible
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,7 +50,8 @@ class _Layout:
 
 def print_table(screen: Screen, columns: Sequence[Column], rows: Sequence[Row]) -> None:
     """Write the table; under it, when it had to be cut, which columns were left out."""
-    texts = [[_as_cell(cell) for cell in row] for row in rows]
+    columns = [replace(column, heading=screen.spell(column.heading)) for column in columns]
+    texts = _spelled(screen, rows)
     if screen.width is None:
         _print_plain(screen, columns, texts)
         return
@@ -65,17 +65,23 @@ def print_table(screen: Screen, columns: Sequence[Column], rows: Sequence[Row]) 
         screen.wrapped(f"Left out at {screen.width} columns: {', '.join(left_out)}.", style="dim")
 
 
-def fits(columns: Sequence[Column], rows: Sequence[Row], width: int | None) -> bool:
-    """Whether the table fits in ``width`` cells with every column and a gap of two."""
-    if width is None:
+def fits(screen: Screen, columns: Sequence[Column], rows: Sequence[Row]) -> bool:
+    """Whether the table fits the screen with every column and a gap of two."""
+    if screen.width is None:
         return True
-    texts = [[_as_cell(cell) for cell in row] for row in rows]
+    texts = _spelled(screen, rows)
     least = _least_widths(columns, _natural_widths(columns, texts))
-    return sum(least) + 2 * (len(columns) - 1) <= width
+    return sum(least) + 2 * (len(columns) - 1) <= screen.width
 
 
-def _as_cell(cell: str | Cell) -> Cell:
-    return Cell(visible(cell)) if isinstance(cell, str) else Cell(visible(cell.text), cell.style)
+def _spelled(screen: Screen, rows: Sequence[Row]) -> list[list[Cell]]:
+    return [
+        [
+            Cell(screen.spell(cell)) if isinstance(cell, str) else Cell(screen.spell(cell.text), cell.style)
+            for cell in row
+        ]
+        for row in rows
+    ]
 
 
 def _natural_widths(columns: Sequence[Column], texts: Sequence[Sequence[Cell]]) -> list[int]:

@@ -1,0 +1,97 @@
+"""The forecast of one system, step by step: elements, cycle count, each part of the error in days."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+from campaign.model.forecasts import ExplainedEvent, ExplainedSystem, VarianceTerm
+from campaign.output.console import Screen
+from campaign.output.tables import Column, print_table
+from campaign.output.upcoming import render_bases, render_dates, render_notes
+from campaign.output.wording import day, occasion, spread, yearly
+
+_BAR_CELLS = 12
+
+
+def render_explained(screen: Screen, explained: ExplainedSystem) -> None:
+    """Write the dates of one system and how each came about."""
+    render_dates(screen, explained.upcoming)
+    screen.line("")
+    screen.heading(f"How the dates of {explained.system} come about")
+    if explained.elements:
+        columns = (
+            Column("element", shrinks=True, min_width=12),
+            Column("value", shrinks=True, min_width=12),
+            Column("from", shrinks=True, drop=1),
+        )
+        print_table(screen, columns, explained.elements)
+    for line in explained.cycle_count:
+        screen.wrapped(line)
+    for event in explained.events:
+        screen.line("")
+        _render_event(screen, event)
+    render_bases(screen, explained.upcoming)
+    render_notes(screen, explained.upcoming)
+    for line in explained.notes:
+        screen.wrapped(line, label="- ", hang=2)
+
+
+def _render_event(screen: Screen, each: ExplainedEvent) -> None:
+    screen.heading(f"{occasion(each.forecast)}: {_date(each)}")
+    for line in each.arithmetic.splitlines():
+        screen.wrapped(line, label="  ", hang=4)
+    if each.terms:
+        print_table(screen, _TERM_COLUMNS, _term_rows(each.terms))
+
+
+def _date(each: ExplainedEvent) -> str:
+    dates, utc = each.forecast.bmjd_tdb, each.forecast.utc
+    if dates is None:
+        return yearly(each.forecast)
+    interval = spread(dates.median, dates.lo68, dates.hi68)
+    interval += "" if interval[-1].isalpha() else " d"
+    return f"{day(utc.median if utc else None, dates.median)} ({interval}, 68 %), {each.forecast.status}"
+
+
+_TERM_COLUMNS = (
+    Column("part of the error", shrinks=True, min_width=18),
+    Column("days", align="right"),
+    Column("of variance", align="right", drop=2),
+    Column("", drop=3, name="bars"),
+    Column("note", shrinks=True, drop=1),
+)
+
+
+def _term_rows(terms: Sequence[VarianceTerm]) -> list[tuple[str, str, str, str, str]]:
+    parts = [math.copysign(term.size_d**2, term.size_d) for term in terms]
+    whole = sum(parts)
+    largest = max(abs(term.size_d) for term in terms)
+    rows = [
+        (
+            term.cause,
+            _size(term.size_d),
+            _share(part / whole) if whole > 0.0 else "",
+            _bar(abs(term.size_d) / largest if largest > 0.0 else 0.0),
+            term.note,
+        )
+        for term, part in zip(terms, parts, strict=True)
+    ]
+    if len(rows) > 1 and whole > 0.0:
+        rows.append(("together", _size(math.sqrt(whole)), "100 %", "", ""))
+    return rows
+
+
+def _share(part: float) -> str:
+    places = 0 if abs(part) >= 0.0095 else 1
+    return f"{100.0 * part:.{places}f} %".replace("-", "−")
+
+
+def _size(days: float) -> str:
+    return f"{days:.3g}".replace("-", "−") if abs(days) < 1000.0 else f"{days:.0f}".replace("-", "−")
+
+
+def _bar(share: float) -> str:
+    """A bar in half cells; a part that is not nothing shows at least half a cell."""
+    halves = math.ceil(2 * _BAR_CELLS * share)
+    return "█" * (halves // 2) + "▌" * (halves % 2)
