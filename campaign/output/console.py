@@ -109,18 +109,17 @@ def fold(text: str, width: int | None, hang: int = 0) -> list[str]:
     lines: list[str] = []
     line = ""
     for word in text.split(" "):
-        room = width - (hang if lines else 0)
         trial = f"{line} {word}" if line else word
-        if cell_len(trial) <= room:
+        if cell_len(trial) <= width - (hang if lines else 0):
             line = trial
             continue
         if line.strip():
             lines.append(line.rstrip())
-            line = ""
-        room = max(1, width - (hang if lines else 0))
-        pieces = chop_cells(word, room) if cell_len(word) > room else [word]
-        lines.extend(pieces[:-1])
-        line = pieces[-1]
+        line = word
+        while cell_len(line) > (room := max(2, width - (hang if lines else 0))):
+            piece = chop_cells(line, room)[0]
+            lines.append(piece)
+            line = line[len(piece) :]
     return [*lines, line.rstrip()] if line or not lines else lines
 
 

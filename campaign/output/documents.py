@@ -26,7 +26,8 @@ def error_document(code: str, message: str, hint: str, details: Mapping[str, Any
 
 def dumps(value: Any) -> str:
     """JSON text of anything that ``plain`` understands."""
-    return json.dumps(plain(value), ensure_ascii=True, allow_nan=False, indent=2) + "\n"
+    text = json.dumps(plain(value), ensure_ascii=True, allow_nan=False, indent=2) + "\n"
+    return text.replace("\x7f", "\\u007f")  # the one control character that JSON lets through
 
 
 def plain(value: Any) -> Any:
