@@ -26,7 +26,7 @@ from campaign.reading.numbers import (
 from campaign.reading.units import FAMILIES, unit_factor
 
 _SIGNED = rf"[+-]?{UNSIGNED}"
-_UNIT = r"(?P<unit>[^\s0-9+\-±().,<>=≤≥][^±<>≤≥()]*)?"
+_UNIT = r"(?P<unit>(?:[^\W\d_]|[%°\"'″′])[^±<>≤≥()]*)?"
 _ERRORS = rf"""(?:
     \s*±\s*(?P<both>{UNSIGNED})
   | \((?P<digits>[0-9]{{1,18}})\)(?P<digits_exponent>[eE][+-]?[0-9]{{1,3}})?
@@ -97,7 +97,6 @@ def _explain(plain: str, text: str, expected: Expected) -> InputRefused:
         return expected.refuse(text, "A decimal point is expected; a comma is not accepted.", accepted)
     likely: tuple[tuple[bool, str], ...] = (
         (_LIMIT.fullmatch(plain) is not None, "One measured value is expected here, not a limit."),
-        (_RANGE_MARK.search(plain) is not None, "One measured value is expected here, not a range."),
         (re.search(r"±\s*[+-]", plain) is not None, "An error is a size: it has no sign, zero or more."),
         (_UNIT_BEFORE_ERROR.fullmatch(plain) is not None, "The unit is expected once, after the error."),
         (_HALF_ERROR.fullmatch(plain) is not None, "Two errors (+ and -) are expected, not one of them."),
@@ -184,7 +183,10 @@ def read_measured(
         Anything that is not one value in an accepted unit and range.
     """
     expected = Expected(unit, name, low, high, low_open, high_open)
-    return _measured(_prepared(text, expected), text, expected)
+    plain = _prepared(text, expected)
+    if _range_ends(plain) is not None:
+        raise expected.refuse(text, "One measured value is expected here, not a range.")
+    return _measured(plain, text, expected)
 
 
 def read_measured_or_bound(
