@@ -6,16 +6,19 @@ Only here and in the runner are the clock, the environment and the standard stre
 from __future__ import annotations
 
 import os
+import shlex
 import sys
 from datetime import UTC, datetime
-from typing import TYPE_CHECKING, Annotated
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
 from campaign import settings
 from campaign.errors import Declined
+from campaign.output.safe import visible
 
 if TYPE_CHECKING:
+    from campaign.model.kept import Kept, Stamp
     from campaign.output.console import Screen
 
 DbOption = Annotated[
@@ -127,9 +130,78 @@ def confirm(question: str, *, yes: bool) -> None:
             why=f"This needs an answer and nobody is there to give it: {question}",
             hint="Add --yes to agree beforehand.",
         )
-    if not typer.confirm(question, err=True):
+    if ask(f"{question} [y/N]").strip().lower() not in {"y", "yes"}:
         raise Declined(
             "Nothing was done.",
             why="The question was answered with no.",
             hint="Run the command again when you want the change.",
         )
+
+
+def option(flag: str, metavar: str, text: str) -> Any:
+    """A text option, declared in one line."""
+    return typer.Option(flag, metavar=metavar, help=text, show_default=False)
+
+
+def stamp(observer_option: str | None) -> Stamp:
+    """Who makes an entry, when and with which command."""
+    from campaign.model.kept import Stamp
+
+    return Stamp(at=now_utc(), who=observer(observer_option), command=command_typed())
+
+
+def command_typed() -> str:
+    """The command as typed, without what could be a password."""
+    words = ["campaign", *sys.argv[1:]]
+    return shlex.join("(database URL)" if "://" in word else word for word in words)[:2000]
+
+
+def new_database(option_text: str | None) -> str:
+    """Where a database is to be made; the user's data folder is made when it is the default."""
+    place = database(option_text)
+    if option_text is None and "CAMPAIGN_DB" not in os.environ:
+        os.makedirs(os.path.dirname(place), exist_ok=True)
+    return place
+
+
+def report(kept: Kept, *, json: bool, quiet: bool) -> None:
+    """Say what a keeping command did: JSON to stdout, or its lines, warnings to stderr."""
+    from campaign.output.documents import document
+
+    if json:
+        write_json(
+            document(
+                kept.kind,
+                dict(kept.data) | {"changed": kept.changed},
+                as_of=now_iso(),
+                warnings=kept.warnings,
+            )
+        )
+        return
+    if not quiet:
+        screen = stdout_screen()
+        for line in kept.lines:
+            screen.wrapped(line)
+    for warning in kept.warnings:
+        tell(f"Warning: {warning}")
+
+
+def ask(question: str) -> str:
+    """One line from the user; the question goes to stderr, since stdout holds data alone.
+
+    Raises
+    ------
+    Declined
+        When the input ends.
+    """
+    sys.stderr.write(visible(question) + " ")
+    sys.stderr.flush()
+    answer = sys.stdin.readline()
+    if not answer:
+        sys.stderr.write("\n")
+        raise Declined(
+            "Nothing was done.",
+            why="The input ended before the question was answered.",
+            hint="Run the command again, or give the answer as an option.",
+        )
+    return answer.rstrip("\n")

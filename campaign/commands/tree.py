@@ -68,6 +68,7 @@ class LazyGroup(TyperGroup):
 
     table: Table = ()
     path: str = PROGRAM
+    only_listing = False
 
     def get_params(self, ctx: typer.Context) -> list[Any]:  # type: ignore[override]
         """Its options, --help included."""
@@ -82,6 +83,8 @@ class LazyGroup(TyperGroup):
         entry = next((entry for entry in self.table if entry.name == cmd_name), None)
         if entry is None:
             return None
+        if self.only_listing:
+            return TyperCommand(entry.name, help=entry.help)
         if isinstance(entry, Branch):
             return _make_branch(entry, f"{self.path} {entry.name}")
         return _make_leaf(entry)
@@ -95,11 +98,15 @@ class LazyGroup(TyperGroup):
 
     def shell_complete(self, ctx: typer.Context, incomplete: str) -> list[Any]:  # type: ignore[override]
         """Complete names from the table, without importing a command."""
-        return _Listing(self).shell_complete(ctx, incomplete)
+        self.only_listing = True
+        try:
+            return super().shell_complete(ctx, incomplete)
+        finally:
+            self.only_listing = False
 
     def format_help(self, ctx: typer.Context, formatter: Any) -> None:  # type: ignore[override]
         """Sections of commands, then the options, in plain text."""
-        formatter.write(f"{self.path}: {self.help}\n\n  {self.path} COMMAND ...\n")
+        formatter.write(f"{self.help}\n\n  {self.path} COMMAND ...\n")
         formatter.write(f"  {self.path} COMMAND --help\n")
         width = max((len(entry.name) for entry in self.table), default=0)
         for section, entries in _by_section(self.table):
@@ -110,14 +117,6 @@ class LazyGroup(TyperGroup):
         formatter.write("\nOptions\n")
         formatter.indent()
         formatter.write_dl(records)
-
-
-class _Listing(TyperGroup):
-    """The names and helps of a lazy group as empty commands, for completion only."""
-
-    def __init__(self, group: LazyGroup) -> None:
-        empty = [TyperCommand(entry.name, help=entry.help) for entry in group.table]
-        super().__init__(name=group.name, commands=empty, params=group.params)
 
 
 def build_root(table: Table = COMMANDS) -> LazyGroup:
