@@ -52,6 +52,7 @@ class System:
     star_a: Star = Star("A")
     star_b: Star = Star("B")
     cycle_anchor_bmjd_tdb: float | None = None
+    cycle_anchor_period_d: float | None = None
 
 
 @dataclass(frozen=True, slots=True)

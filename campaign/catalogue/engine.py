@@ -1,0 +1,150 @@
+"""Engines that keep transactions in our own hands.
+
+Left alone, SQLite's driver loses updates and tears migrations in half, because it begins and ends
+transactions by rules of its own. Here the driver begins nothing; a hook does: ``BEGIN`` for readers and
+``BEGIN IMMEDIATE`` for writers, who then never wait for a lock in the middle of their work.
+"""
+
+from __future__ import annotations
+
+import os
+import sqlite3
+from typing import Any, Final, Literal
+from urllib.parse import quote
+
+from sqlalchemy import Connection, Engine, create_engine, event
+from sqlalchemy.pool import NullPool
+
+from campaign.catalogue.address import Address
+from campaign.catalogue.failures import missing
+from campaign.errors import DatabaseUnusable
+
+BUSY_TIMEOUT_S: Final = 5.0
+
+# How a SQLite file may be opened: "ro" and "rw" never create it.
+FileMode = Literal["ro", "rw", "rwc"]
+
+
+def reading_engine(address: Address, busy_timeout_s: float = BUSY_TIMEOUT_S) -> Engine:
+    """An engine whose transactions only read; a missing file stays missing."""
+    if address.path is not None:
+        refuse_unless_file(address)
+        engine = _sqlite_engine(address, "ro", busy_timeout_s, foreign_keys=True)
+        _begin_with(engine, "BEGIN")
+        return engine
+    engine = _postgresql_engine(address, busy_timeout_s)
+    # One snapshot for all statements, as SQLite gives it.
+    _begin_with(engine, "SET TRANSACTION ISOLATION LEVEL REPEATABLE READ, READ ONLY")
+    return engine
+
+
+def writing_engine(address: Address, busy_timeout_s: float = BUSY_TIMEOUT_S) -> Engine:
+    """An engine whose transactions take the right to write at once; a missing file stays missing."""
+    if address.path is not None:
+        refuse_unless_file(address)
+        engine = _sqlite_engine(address, "rw", busy_timeout_s, foreign_keys=True)
+        _begin_with(engine, "BEGIN IMMEDIATE")
+        return engine
+    return _postgresql_engine(address, busy_timeout_s)
+
+
+def migration_engine(address: Address, busy_timeout_s: float, mode: FileMode) -> Engine:
+    """An engine for migrations: as for writing, with foreign keys off from the start.
+
+    With foreign keys on, rebuilding a parent table deletes its children; and they cannot be switched
+    inside a transaction.
+    """
+    if address.path is not None:
+        engine = _sqlite_engine(address, mode, busy_timeout_s, foreign_keys=False)
+        _begin_with(engine, "BEGIN IMMEDIATE")
+        return engine
+    return _postgresql_engine(address, busy_timeout_s)
+
+
+def refuse_unless_file(address: Address) -> None:
+    """Refuse what SQLite would misreport: a missing path, a folder, a file without content.
+
+    Raises
+    ------
+    DatabaseUnusable
+    """
+    path = address.path
+    if path is None:
+        return
+    try:
+        if path.is_dir():
+            raise folder_given(address)
+        size = path.stat().st_size if path.exists() else None
+    except PermissionError:
+        raise DatabaseUnusable(
+            f"The database {address.shown} cannot be looked at.",
+            why="A folder on the way to it does not let you in.",
+            hint="Check the permissions of the folder, or choose another database with --db.",
+            code="database-cannot-open",
+        ) from None
+    except OSError as error:
+        raise DatabaseUnusable(
+            f"The database {address.shown} cannot be opened.",
+            why=error.strerror or "The operating system refuses the path.",
+            hint="Name another file with --db.",
+            code="database-cannot-open",
+        ) from None
+    if not size:
+        raise missing(address)
+
+
+def folder_given(address: Address) -> DatabaseUnusable:
+    """A folder stands where the database file should."""
+    return DatabaseUnusable(
+        f"{address.shown} is a folder, not a database.",
+        why="A catalogue is one file.",
+        hint="Name the file inside it, for example --db " + os.path.join(address.shown, "campaign.db"),
+        code="database-is-folder",
+    )
+
+
+def sqlite_connection(
+    address: Address, mode: FileMode, busy_timeout_s: float = BUSY_TIMEOUT_S, *, foreign_keys: bool = True
+) -> sqlite3.Connection:
+    """A connection of the driver that begins no transaction by itself."""
+    # The path is quoted byte by byte: it may hold "?", "#", "%" or bytes that are not text.
+    path = quote(os.fsencode(os.path.abspath(os.fspath(address.path or ""))))
+    # The timeout comes first, so that even the settings below wait for other writers.
+    connection = sqlite3.connect(
+        f"file:{path}?mode={mode}", timeout=busy_timeout_s, isolation_level=None, uri=True
+    )
+    try:
+        connection.execute(f"PRAGMA foreign_keys = {'ON' if foreign_keys else 'OFF'}")
+        connection.execute("PRAGMA synchronous = FULL")
+    except BaseException:
+        connection.close()
+        raise
+    return connection
+
+
+def _sqlite_engine(address: Address, mode: FileMode, busy_timeout_s: float, *, foreign_keys: bool) -> Engine:
+    def connect() -> sqlite3.Connection:
+        return sqlite_connection(address, mode, busy_timeout_s, foreign_keys=foreign_keys)
+
+    return create_engine("sqlite://", creator=connect, poolclass=NullPool)
+
+
+def _begin_with(engine: Engine, statement: str) -> None:
+    def begin(connection: Connection) -> None:
+        connection.exec_driver_sql(statement)
+
+    event.listen(engine, "begin", begin)
+
+
+def _postgresql_engine(address: Address, busy_timeout_s: float) -> Engine:
+    assert address.url is not None
+    options: dict[str, Any] = {"options": f"-c lock_timeout={int(busy_timeout_s * 1000)}"}
+    try:
+        return create_engine(address.url, poolclass=NullPool, connect_args=options)
+    except ModuleNotFoundError:
+        raise DatabaseUnusable(
+            "The driver for PostgreSQL is not installed.",
+            why="It is not needed for a database in a file.",
+            hint="Install it: pip install 'campaign[postgres]'",
+            code="database-driver-missing",
+        ) from None
