@@ -198,8 +198,8 @@ def read_angle(text: str, name: str = "angle", low: float | None = None, high: f
     InputRefused
         Unreadable, in hours, or outside ``low`` to ``high``.
     """
-    expected = Expected("deg", name, low, high)
-    kind = _Kind(name, expected.example().split("±")[0].split(" ")[0] + " deg")
+    expected = Expected("deg", name, low, high, with_error=False)
+    kind = _Kind(name, expected.example())
     plain = _plain(text, kind)
     found = _DEGREE_NUMBER.fullmatch(plain)
     if found and found["unit"] and _fields(plain.lstrip("+-"), kind) is None:

@@ -17,7 +17,10 @@ def short(number: float) -> str:
 
 @dataclass(frozen=True, slots=True)
 class Expected:
-    """What one reading expects: the quantity's canonical unit, its name, and where it may lie."""
+    """What one reading expects: the quantity's canonical unit, its name, and where it may lie.
+
+    ``shown`` replaces the example that would be made up; ``with_error`` says whether that has an error.
+    """
 
     unit: str
     name: str
@@ -25,6 +28,8 @@ class Expected:
     high: float | None = None
     low_open: bool = False
     high_open: bool = False
+    with_error: bool = True
+    shown: str = ""
 
     def holds(self, value: float) -> bool:
         above = self.low is None or value > self.low or (value == self.low and not self.low_open)
@@ -42,8 +47,11 @@ class Expected:
 
     def example(self) -> str:
         """An accepted form: the family's own if it lies in the range, otherwise a value inside."""
+        if self.shown:
+            return self.shown
         family = FAMILIES[self.unit]
-        value, error = family.example_value, f"±{short(family.example_error)}"
+        value = family.example_value
+        error = f"±{short(family.example_error)}" if self.with_error else ""
         if not self.holds(value):
             error = ""
             if self.low is not None and self.high is not None:

@@ -24,7 +24,7 @@ from campaign.reading.instantforms import (
 )
 from campaign.reading.numbers import MINUS_SIGN, UNSIGNED, check_plain_text, read_number, refusal
 from campaign.reading.units import YEAR_D, unit_factor
-from campaign.reading.values import read_measured
+from campaign.reading.values import read_plain_value
 
 EXAMPLE = "2031-04-07T03:12:10Z"
 ACCEPTED_FORMS = (
@@ -209,12 +209,7 @@ def read_duration(text: str, name: str = "--within") -> float:
     InputRefused
         Unreadable, with an error, zero or negative.
     """
-    read = read_measured(text, "d", name, low=0.0, low_open=True)
-    if read.error_known:
-        raise refusal(
-            name, text, "A length of time without an error is expected.", "5 yr", "value-unreadable"
-        )
-    return read.value
+    return read_plain_value(text, "d", name, low=0.0, low_open=True, shown="5 yr")
 
 
 def _exact_mjd(typed: TypedInstant) -> Fraction:

@@ -189,6 +189,32 @@ def read_measured(
     return _measured(plain, text, expected)
 
 
+def read_plain_value(
+    text: str,
+    unit: str,
+    name: str,
+    *,
+    low: float | None = None,
+    high: float | None = None,
+    low_open: bool = False,
+    high_open: bool = False,
+    shown: str = "",
+) -> float:
+    """Read one value that has no error, such as a height or a length of time, into the canonical unit.
+
+    ``shown`` is the accepted form to show in a refusal; otherwise one is made up. Other parameters and
+    errors as ``read_measured``; a value with an error is refused.
+    """
+    expected = Expected(unit, name, low, high, low_open, high_open, with_error=False, shown=shown)
+    plain = _prepared(text, expected)
+    if _range_ends(plain) is not None:
+        raise expected.refuse(text, "One value is expected here, not a range.")
+    read = _measured(plain, text, expected)
+    if read.minus is not None:
+        raise expected.refuse(text, "A value without an error is expected here.")
+    return read.value
+
+
 def read_measured_or_bound(
     text: str,
     unit: str = "d",

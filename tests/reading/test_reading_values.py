@@ -15,7 +15,13 @@ from hypothesis import strategies as st
 from campaign.errors import InputRefused
 from campaign.model.measured import Limit, Measured, Range
 from campaign.reading.units import FAMILIES, accepted_units
-from campaign.reading.values import read_assignment, read_measured, read_measured_or_bound, write_measured
+from campaign.reading.values import (
+    read_assignment,
+    read_measured,
+    read_measured_or_bound,
+    read_plain_value,
+    write_measured,
+)
 
 SAME_VALUE_IN_DAYS = {
     "3127.5+-0.3": Measured(3127.5, 0.3, 0.3),
@@ -199,6 +205,14 @@ def test_the_form_shown_in_a_refusal_is_itself_accepted_whatever_the_range(
     with pytest.raises(InputRefused) as refused:
         read_measured("?", unit, "--x", **wanted)
     read_measured(refused.value.details["accepted_form"], unit, "--x", **wanted)
+
+
+def test_a_value_that_can_have_no_error_is_read_into_its_unit():
+    assert read_plain_value("2.4 km", "m", "--height") == 2400.0
+    for text in ("2.4±0.1 km", "2.4(1) km", "2.4 km to 2.5 km", ">2.4 km", "nan", "-500 km", "2.4 d"):
+        with pytest.raises(InputRefused) as refused:
+            read_plain_value(text, "m", "--height", low=-500.0)
+        assert read_plain_value(refused.value.details["accepted_form"], "m", "--height", low=-500.0) >= -500.0
 
 
 BOUNDS = {
