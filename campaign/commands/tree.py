@@ -50,7 +50,64 @@ class Branch:
 
 Table = Sequence[Leaf | Branch]
 
-COMMANDS: tuple[Leaf | Branch, ...] = ()
+def _group(name: str, text: str, section: str, *leaves: tuple[str, str]) -> Branch:
+    """A branch whose commands are functions of one module, named after it."""
+    module = f"campaign.commands.{name}"
+    functions = {"list": "list_", "set": "set_"}
+    return Branch(
+        name, text, tuple(Leaf(n, h, module, functions.get(n, n)) for n, h in leaves), section
+    )
+
+
+COMMANDS: tuple[Leaf | Branch, ...] = (
+    Leaf("upcoming", "The episodes to come: when, how sure, and why.", "campaign.commands.upcoming", "upcoming",
+         "Look ahead"),
+    Leaf("ephemeris", "Phase, true anomaly, separation, position and velocities, dated.",
+         "campaign.commands.ephemeris", "ephemeris", "Look ahead"),
+    _group(
+        "log", "Log one observation from the terminal.", "Observe",
+        ("photometry", "Log magnitudes, in one band or in several."),
+        ("flux", "Log a flux: infrared, radio or X-ray."),
+        ("velocity", "Log a radial velocity of one star."),
+        ("line", "Log the equivalent width of a line."),
+        ("position", "Log the position of star B relative to star A."),
+        ("shell", "Log the radius of a dust shell in an image."),
+        ("attempt", "Log that it was tried and nothing was obtained."),
+        ("remark", "Log a remark on a system."),
+    ),
+    _group(
+        "episodes", "Dated bursts of dust production.", "Observe",
+        ("add", "Add a confirmed episode with the dates known of it."),
+        ("list", "The dated episodes, oldest first."),
+    ),
+    Leaf("begin", "Make the database, empty or with the sample campaign.", "campaign.commands.begin", "begin",
+         "Keep the catalogue"),
+    _group(
+        "system", "The binaries under watch.", "Keep the catalogue",
+        ("add", "Put a system under watch."),
+        ("show", "Everything known of one system, and what follows from it."),
+        ("list", "The systems under watch."),
+        ("change", "Change what is given of a system; aliases are added."),
+        ("retire", "Take a system out of the watch; nothing is erased."),
+    ),
+    _group(
+        "solution", "Orbital elements, published or fitted.", "Keep the catalogue",
+        ("add", "Add a set of orbital elements to a system."),
+        ("adopt", "Forecast from one solution, or from several with weights."),
+        ("list", "The solutions of a system side by side."),
+        ("show", "One solution, element by element, and what follows from it."),
+    ),
+    _group(
+        "rule", "How dust production follows from the orbit.", "Keep the catalogue",
+        ("set", "Say how onset, maximum and end follow from the orbit."),
+        ("show", "A system's dust rule."),
+    ),
+    _group(
+        "site", "Places to observe from.", "Keep the catalogue",
+        ("add", "Add a site on the ground, or a space platform."),
+        ("list", "The sites of the campaign."),
+    ),
+)  # fmt: skip
 
 SUMMARY = "When the next dust episode starts, how sure that is, and what to observe."
 

@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
+
+import numpy as np
 
 from campaign.catalogue import solutions as kept
 from campaign.catalogue import store, systems
 from campaign.errors import InputRefused
-from campaign.model.instants import TypedInstant
+from campaign.model.instants import Moment, TypedInstant
 from campaign.model.kept import Kept, Stamp
-from campaign.model.measured import Measured
+from campaign.model.measured import Covariance, Measured
 from campaign.model.systems import Solution, System
 from campaign.studies.basis import describe_solution
 from campaign.studies.cycles import count_is_safe, cycle_of, nominal_period_d
@@ -28,6 +30,7 @@ def add_solution(
     data_until: TypedInstant | None,
     published_cycle: int | None,
     adopt: bool,
+    correlations: Sequence[tuple[str, str, float]] = (),
 ) -> Kept:
     """Add one set of orbital elements, and adopt it if asked.
 
@@ -47,6 +50,8 @@ def add_solution(
         The publication's own cycle number of the epoch.
     adopt : bool
         Adopt it alone; refused when another solution is adopted.
+    correlations : sequence of (str, str, float)
+        Pairs of fields of ``Solution`` with their correlation (dimensionless).
 
     Returns
     -------
@@ -84,6 +89,7 @@ def add_solution(
             epoch=moment,
             data_until_bmjd_tdb=until,
         )
+        solution = replace(solution, covariance=_covariance(solution, correlations))
         cycle, warnings = _cycle_in(system, solution)
         solution = replace(
             solution,
@@ -103,6 +109,47 @@ def add_solution(
         lines.append(f'adopt it with: campaign solution adopt "{system.name}" "{solution.label}"')
     data = {"system": system.name, "solution": solution.label, "id": solution_id, "adopted": adopt, "epoch_cycle": cycle}
     return Kept("solution-add", True, tuple(lines), data, tuple(warnings))
+
+
+def _covariance(solution: Solution, correlations: Sequence[tuple[str, str, float]]) -> Covariance | None:
+    """Covariance matrix from pairwise correlations and the stated errors."""
+    if not correlations:
+        return None
+    named = [
+        ("a_au" if solution.a_au is not None else "a_arcsec") if name == "a" else name
+        for pair in correlations
+        for name in pair[:2]
+    ]
+    names = tuple(dict.fromkeys(named))
+    sigmas = [_sigma(solution, name) for name in names]
+    matrix = [[s * s if i == j else 0.0 for j in range(len(names))] for i, s in enumerate(sigmas)]
+    for (first, second), (_, _, value) in zip(zip(named[::2], named[1::2], strict=True), correlations, strict=True):
+        i, j = names.index(first), names.index(second)
+        matrix[i][j] = matrix[j][i] = value * sigmas[i] * sigmas[j]
+    scale = np.array(sigmas)
+    if np.linalg.eigvalsh(np.array(matrix) / np.outer(scale, scale)).min() <= 0.0:
+        raise InputRefused(
+            "These correlations cannot hold together.",
+            why="No set of elements could scatter so: their correlation matrix is not positive definite.",
+            hint="Check signs and values; a correlation of 0.99 with one element bounds that with the others.",
+            code="correlation-refused",
+        )
+    return Covariance(names, tuple(tuple(row) for row in matrix))
+
+
+def _sigma(solution: Solution, name: str) -> float:
+    value = getattr(solution, name)
+    if isinstance(value, Moment):
+        value = Measured(value.bmjd_tdb, value.minus_d, value.plus_d)
+    sigma = value.sigma if isinstance(value, Measured) else None
+    if not sigma:
+        raise InputRefused(
+            f"A correlation was given with '{name}', which has no error.",
+            why="A covariance is the correlation times both errors.",
+            hint='State the element with its error, for example --period "3127.5±0.3 d".',
+            code="correlation-refused",
+        )
+    return float(sigma)
 
 
 def adopt_solutions(

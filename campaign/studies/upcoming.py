@@ -15,8 +15,9 @@ from campaign.physics.timescales import utc_iso
 from campaign.studies.basis import describe_basis, dust_windows, event_forecasts
 from campaign.studies.cycles import nominal_period_d, with_cycles
 from campaign.studies.forecast import DatedEvent, Forecaster, ForecastUnit, Window
+from campaign.studies.judging import judge
 from campaign.studies.learned import LearnedDates, learn
-from campaign.studies.quietness import JudgedPhotometry, judge_photometry
+from campaign.studies.quietness import JudgedPhotometry
 from campaign.studies.rows import ForecastRow, build_row
 from campaign.studies.sampling import DEFAULT_DRAWS, DEFAULT_SEED
 from campaign.studies.status import OnsetState, onset_state
@@ -260,48 +261,6 @@ def _onset_shift_d(row: ForecastRow, period_d: float) -> float:
     if rule is None or rule.onset is None:
         return 0.0
     return rule.onset.value * (period_d if rule.kind == "phase" else 1.0)
-
-
-def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> JudgedPhotometry:
-    """Verdicts on a system's photometry up to ``as_of``.
-
-    Parameters
-    ----------
-    record : SystemRecord
-        The system; its confirmed episodes are left out of the stellar level.
-    arrays : PhotometryArrays
-        Light curve, mag and ``bmjd_tdb``.
-    as_of : float
-        ``bmjd_tdb``.
-
-    Returns
-    -------
-    JudgedPhotometry
-        In order of time.
-
-    Notes
-    -----
-    Accuracy: see ``campaign.studies.quietness``.
-
-    Source: project convention.
-    """
-    past = arrays.bmjd_tdb <= as_of
-    error = 0.5 * (arrays.mag_minus + arrays.mag_plus)
-    spans = []
-    for episode in record.episodes:
-        dates = [d.moment.bmjd_tdb for d in (episode.onset, episode.maximum, episode.end) if d is not None]
-        if episode.state == "confirmed" and dates:
-            # Dust outlasts its production: leave a generous tail out of the level.
-            spans.append((min(dates) - 30.0, max(dates) + max(2.0 * (max(dates) - min(dates)), 365.25)))
-    return judge_photometry(
-        arrays.bmjd_tdb[past],
-        arrays.mag[past],
-        error[past],
-        arrays.limit_side[past],
-        [str(b) for b in arrays.band[past]],
-        [f"{s}/{i}" for s, i in zip(arrays.source[past], arrays.site_id[past], strict=True)],
-        spans,
-    )
 
 
 def onset_states(

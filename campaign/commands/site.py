@@ -1,0 +1,67 @@
+"""``campaign site``: places to observe from."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from campaign.commands import common
+from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
+from campaign.commands.parsing import measured, plain
+
+Text = str | None
+
+
+def add(
+    name: Annotated[str, typer.Argument(metavar="SITE", help="Its name.")],
+    latitude: Annotated[Text, option("--latitude", "ANGLE", "Geodetic: -31.20 or 31:12 S.")] = None,
+    longitude: Annotated[Text, option("--longitude", "ANGLE", "East positive: -70.00 or 70.00 W.")] = None,
+    height: Annotated[Text, option("--height", "VALUE", "Above the ellipsoid, m.")] = None,
+    horizon: Annotated[Text, option("--horizon", "ANGLE", "Lowest altitude to point at, deg.")] = None,
+    elongation: Annotated[
+        Text, option("--elongation", "LOW..HIGH", "A space platform: its range of angles from the Sun, deg.")
+    ] = None,
+    time_zone: Annotated[Text, option("--time-zone", "NAME", "For example Etc/GMT+4.")] = None,
+    note: Annotated[Text, option("--note", "TEXT", "Anything worth knowing.")] = None,
+    db: DbOption = None,
+    observer: ObserverOption = None,
+    json: JsonOption = False,
+    quiet: QuietOption = False,
+) -> None:
+    """Add a site on the ground, or a space platform."""
+    from campaign.model.measured import Range
+    from campaign.model.systems import Site
+    from campaign.reading.angles import read_latitude, read_longitude
+    from campaign.reading.values import read_measured_or_bound
+    from campaign.studies import sites as study
+
+    span = read_measured_or_bound(elongation, "deg", "--elongation", low=0.0, high=180.0) if elongation else None
+    metres = measured(height, "m", "--height", low=-500.0, high=9000.0)
+    lowest = measured(horizon, "deg", "--horizon", low=-5.0, high=90.0)
+    site = Site(
+        id=0,
+        name=plain(name, "SITE", 120) or "",
+        kind="space" if elongation is not None else "ground",
+        latitude_deg=None if latitude is None else read_latitude(latitude),
+        longitude_deg_east=None if longitude is None else read_longitude(longitude),
+        height_m=None if metres is None else metres.value,
+        horizon_deg=None if lowest is None else lowest.value,
+        elongation_min_deg=span.low if isinstance(span, Range) else None,
+        elongation_max_deg=span.high if isinstance(span, Range) else None,
+        time_zone=plain(time_zone, "--time-zone", 60),
+        notes=plain(note, "--note", 2000) or "",
+    )
+    common.report(study.add_site(common.database(db), common.stamp(observer), site), json=json, quiet=quiet)
+
+
+def list_(db: DbOption = None, json: JsonOption = False) -> None:
+    """The sites of the campaign."""
+    from campaign.output import systems as output
+    from campaign.studies import sites as study
+
+    found = study.list_sites(common.database(db))
+    if json:
+        common.write_json(output.sites_json(found, common.now_iso()))
+    else:
+        output.render_sites(common.stdout_screen(), found)

@@ -1,0 +1,130 @@
+"""``campaign upcoming``: the main job."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from campaign.commands import common
+from campaign.commands.common import AsOfOption, DbOption, JsonOption, option
+from campaign.commands.parsing import clock_instant, one_of
+from campaign.errors import InputRefused, UsageRefused
+
+Text = str | None
+DEFAULT_WITHIN = "5yr"
+
+
+def upcoming(
+    within: Annotated[Text, option("--within", "SPAN", f"From now on, as 5yr or 90d; else {DEFAULT_WITHIN}.")] = None,
+    from_: Annotated[Text, option("--from", "INSTANT", "Start of the period, in place of now.")] = None,
+    until: Annotated[Text, option("--until", "INSTANT", "End of the period.")] = None,
+    system: Annotated[
+        list[str], typer.Option("--system", metavar="SYSTEM", help="Only this one; may be repeated.", show_default=False)
+    ] = [],  # noqa: B006 - typer copies it
+    event: Annotated[
+        list[str],
+        typer.Option(
+            "--event",
+            metavar="EVENT",
+            help="Only this kind: periastron, onset, maximum, end, 'A in front', 'B in front'; may be repeated.",
+            show_default=False,
+        ),
+    ] = [],  # noqa: B006 - typer copies it
+    min_probability: Annotated[
+        Text, option("--min-probability", "P", "Only events with at least this probability in the period.")
+    ] = None,
+    solutions: Annotated[
+        bool, typer.Option("--solutions", help="Every solution of a system side by side.", show_default=False)
+    ] = False,
+    sample: Annotated[
+        bool, typer.Option("--sample", help="On the invented sample campaign, no database.", show_default=False)
+    ] = False,
+    known_at: Annotated[Text, option("--known-at", "INSTANT", "Hide entries made after it.")] = None,
+    draws: Annotated[Text, option("--draws", "N", "Random draws a forecast; else 20000.")] = None,
+    seed: Annotated[Text, option("--seed", "N", "Of the random draws; else 1.")] = None,
+    as_of: AsOfOption = None,
+    db: DbOption = None,
+    json: JsonOption = False,
+) -> None:
+    """The episodes to come: when, how sure, and why."""
+    from campaign.output import explain as told
+    from campaign.output import upcoming as output
+    from campaign.studies import watch
+
+    names = system or None
+    asked = clock_instant(as_of, "--as-of")
+    if sample:
+        campaign = watch.load_sample_campaign(names)
+    else:
+        entered = clock_instant(known_at, "--known-at")
+        campaign = watch.load_campaign(common.database(db), names, entered, asked)
+    question = watch.ask(
+        campaign,
+        now=common.now_utc(),
+        as_of=asked,
+        start=clock_instant(from_, "--from"),
+        end=clock_instant(until, "--until"),
+        within_d=_span(within),
+        events=tuple(_event(e) for e in event),
+        min_probability=_fraction(min_probability),
+        draws=_count(draws, "--draws", 100, 1_000_000),
+        seed=_count(seed, "--seed", 0, 2**32 - 1),
+        solutions="each" if solutions else "adopted",
+    )
+    if names is not None and len(names) == 1 and not solutions:
+        explained = watch.explain(campaign, question)
+        if json:
+            common.write_json(output.upcoming_json(explained.upcoming, explained))
+        else:
+            told.render_explained(common.stdout_screen(), explained)
+        return
+    result = watch.upcoming(campaign, question)
+    if json:
+        common.write_json(output.upcoming_json(result))
+    else:
+        output.render_upcoming(common.stdout_screen(), result)
+
+
+def _span(text: str | None) -> float | None:
+    if text is None:
+        return None
+    from campaign.reading.instants import read_duration
+
+    days: float = read_duration(text, name="--within")
+    return days
+
+
+def _event(text: str):  # type: ignore[no-untyped-def]
+    from campaign.model.forecasts import EVENT_NAMES
+
+    return one_of(text, EVENT_NAMES, "--event")
+
+
+def _fraction(text: str | None) -> float:
+    if text is None:
+        return 0.0
+    from campaign.commands.parsing import measured
+
+    value = measured(text, "fraction", "--min-probability", low=0.0, high=1.0)
+    assert value is not None
+    return value.value
+
+
+def _count(text: str | None, name: str, low: int, high: int) -> int | None:
+    if text is None:
+        return None
+    from campaign.reading.numbers import read_number
+
+    value = read_number(text, name)
+    if value == int(value) and low <= value <= high:
+        return int(value)
+    raise InputRefused(
+        f"{name} {text} is out of range.",
+        why=f"It is a whole number from {low} to {high}.",
+        hint=f"For example {name} {max(low, 2000) if name == '--draws' else 1}.",
+        code="out-of-range",
+    )
+
+
+__all__ = ["UsageRefused", "upcoming"]

@@ -1,0 +1,102 @@
+"""Keep episodes: dated bursts, published or found, that are knowledge once confirmed."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import replace
+
+from campaign.catalogue import episodes, records, store, systems
+from campaign.errors import InputRefused
+from campaign.model.instants import TypedInstant
+from campaign.model.kept import Kept, Stamp
+from campaign.model.systems import DatedEvent, Episode
+from campaign.studies.instants import moment_of, spoken_moment
+
+
+def add_episode(
+    db: str, stamp: Stamp, system_name: str, draft: Episode, dates: Mapping[str, tuple[TypedInstant, str | None, str | None]]
+) -> Kept:
+    """Add a confirmed episode with the dates that are known of it.
+
+    Parameters
+    ----------
+    db : str
+        Path or SQLAlchemy URL.
+    stamp : Stamp
+        Who, when, which command.
+    system_name : str
+        Name or alias.
+    draft : Episode
+        Cycle, source and note; its dates are filled in here.
+    dates : mapping
+        ``onset``, ``maximum``, ``end`` to (instant, band, method).
+
+    Returns
+    -------
+    Kept
+        What was written, with the instants as understood.
+
+    Raises
+    ------
+    NotFound, InputRefused, Conflict
+        Unknown system; no date or dates out of order; the cycle has an episode already.
+
+    Notes
+    -----
+    Accuracy: instants as in ``campaign.studies.instants``. Source: design, section 2 (episode).
+    """
+    if not dates:
+        raise InputRefused(
+            "The episode has no date.",
+            why="At least one of onset, maximum and end has to be dated.",
+            hint="For example --onset 2019-03-14±5.",
+            code="episode-empty",
+        )
+    with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
+        system = systems.find_system(writing.connection, system_name)
+        dated = {n: DatedEvent(moment_of(t, system), band, method) for n, (t, band, method) in dates.items()}
+        ordered = [(n, dated[n].moment.bmjd_tdb) for n in ("onset", "maximum", "end") if n in dated]
+        for (first, earlier), (second, later) in zip(ordered, ordered[1:], strict=False):
+            if later < earlier:
+                raise InputRefused(
+                    f"The {second} would come before the {first}.",
+                    why=f"The {first} is dated {earlier - later:.1f} d after the {second}.",
+                    hint="Check the dates; the order is onset, maximum, end.",
+                    code="episode-order",
+                )
+        episode = replace(draft, system_id=system.id, **dated)
+        episode_id = episodes.add_episode(writing, episode)
+        writing.summarise(f"added a confirmed episode of {system.name}")
+    lines = [f"{system.name}: confirmed episode {episode_id}"]
+    lines.extend(f"{name} understood as {spoken_moment(event.moment)}" for name, event in dated.items())
+    return Kept("episodes-add", True, tuple(lines), {"system": system.name, "id": episode_id, "cycle": draft.cycle})
+
+
+def list_episodes(db: str, system_name: str | None) -> list[tuple[str, Episode]]:
+    """Episodes of one system or of all, oldest first.
+
+    Parameters
+    ----------
+    db : str
+        Path or SQLAlchemy URL.
+    system_name : str or None
+        Name or alias; None for all systems.
+
+    Returns
+    -------
+    list of (str, Episode)
+        System name and episode; instants ``bmjd_tdb``.
+
+    Raises
+    ------
+    NotFound
+        If the system is unknown.
+
+    Notes
+    -----
+    Accuracy: not applicable. Source: the catalogue.
+    """
+    with store.reading(db) as connection:
+        ids = None if system_name is None else [systems.find_system(connection, system_name).id]
+        found = records.load_records(connection, ids, include_retired=True)
+    return [(r.system.name, e) for r in sorted(found, key=lambda r: r.system.name) for e in r.episodes]

@@ -1,0 +1,49 @@
+"""Verdicts on a system's own photometry: levels taken outside its confirmed episodes."""
+
+from __future__ import annotations
+
+from campaign.model.arrays import PhotometryArrays
+from campaign.model.records import SystemRecord
+from campaign.studies.quietness import JudgedPhotometry, judge_photometry
+
+
+def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> JudgedPhotometry:
+    """Verdicts on a system's photometry up to ``as_of``.
+
+    Parameters
+    ----------
+    record : SystemRecord
+        The system; its confirmed episodes are left out of the stellar level.
+    arrays : PhotometryArrays
+        Light curve, mag and ``bmjd_tdb``.
+    as_of : float
+        ``bmjd_tdb``.
+
+    Returns
+    -------
+    JudgedPhotometry
+        In order of time.
+
+    Notes
+    -----
+    Accuracy: see ``campaign.studies.quietness``.
+
+    Source: project convention.
+    """
+    past = arrays.bmjd_tdb <= as_of
+    error = 0.5 * (arrays.mag_minus + arrays.mag_plus)
+    spans = []
+    for episode in record.episodes:
+        dates = [d.moment.bmjd_tdb for d in (episode.onset, episode.maximum, episode.end) if d is not None]
+        if episode.state == "confirmed" and dates:
+            # Dust outlasts its production: leave a generous tail out of the level.
+            spans.append((min(dates) - 30.0, max(dates) + max(2.0 * (max(dates) - min(dates)), 365.25)))
+    return judge_photometry(
+        arrays.bmjd_tdb[past],
+        arrays.mag[past],
+        error[past],
+        arrays.limit_side[past],
+        [str(b) for b in arrays.band[past]],
+        [f"{s}/{i}" for s, i in zip(arrays.source[past], arrays.site_id[past], strict=True)],
+        spans,
+    )

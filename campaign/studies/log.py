@@ -1,0 +1,170 @@
+"""Log one instant's observations of a system, and say what the catalogue now knows."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+from datetime import UTC, datetime
+
+import numpy as np
+from sqlalchemy import Connection
+
+from campaign.catalogue import observations, records, sites, store, systems
+from campaign.model.instants import Moment, TypedInstant
+from campaign.model.kept import Stamp
+from campaign.model.observations import Observation
+from campaign.model.shown import Logged, LoggedEntry
+from campaign.model.systems import Site
+from campaign.reading.instants import describe_instant, read_instant
+from campaign.studies.instants import moment_of, spoken_moment
+from campaign.studies.quietness import (
+    CONSECUTIVE_SIGMA,
+    MINIMUM_LEVEL_POINTS,
+    SINGLE_SIGMA,
+    JudgedPhotometry,
+)
+
+_MJD_OF_UNIX_EPOCH = 40_587.0
+
+
+def log_observations(
+    db: str,
+    stamp: Stamp,
+    system_name: str,
+    drafts: Sequence[Observation],
+    at_text: str,
+    site_name: str | None,
+) -> Logged:
+    """Log observations of one system at one instant, all or none.
+
+    Parameters
+    ----------
+    db : str
+        Path or SQLAlchemy URL.
+    stamp : Stamp
+        Who, when, which command.
+    system_name : str
+        Name or alias.
+    drafts : sequence of Observation
+        Values in their units; system, moment and site are filled in here.
+    at_text : str
+        The instant as typed; a night is that of the site.
+    site_name : str or None
+        Where it was observed.
+
+    Returns
+    -------
+    Logged
+        The same observation again is not added twice.
+
+    Raises
+    ------
+    NotFound
+        Unknown system or site; the nearest names are in the details.
+
+    Notes
+    -----
+    Accuracy: the instant as in ``campaign.studies.instants``; verdicts as in
+    ``campaign.studies.quietness``.
+
+    Source: design, section 2 (quiet observation).
+    """
+    with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
+        system = systems.find_system(writing.connection, system_name)
+        site = sites.find_site(writing.connection, site_name) if site_name is not None else None
+        longitude = site.longitude_deg_east if site is not None else None
+        instant = read_instant(at_text, longitude_deg_east=longitude)
+        moment = moment_of(instant, system, site)
+        entries = []
+        for draft in drafts:
+            observation = replace(
+                draft,
+                system_id=system.id,
+                moment=moment,
+                site_id=site.id if site is not None else None,
+                site=site.name if site is not None else None,
+                observer=draft.observer or stamp.who,
+            )
+            number, known = observations.add_observation(writing, observation)
+            entries.append(LoggedEntry(number, known, observation))
+        kinds = ", ".join(sorted({e.observation.kind for e in entries}))
+        writing.summarise(f"logged {kinds} of {system.name}")
+        knowledge, suspected = _knowledge(writing.connection, system.id, moment, entries)
+    return Logged(
+        system=system.name,
+        understood=describe_instant(instant),
+        moment=moment,
+        moment_text=spoken_moment(moment),
+        site=site.name if site is not None else None,
+        entries=tuple(entries),
+        knowledge=knowledge,
+        suspected=suspected,
+        warnings=_warnings(instant, stamp.at, site),
+    )
+
+
+def _warnings(instant: TypedInstant, now: datetime, site: Site | None) -> tuple[str, ...]:
+    warnings = []
+    today = _MJD_OF_UNIX_EPOCH + now.astimezone(UTC).timestamp() / 86_400.0
+    if instant.mjd > today + 1.0:
+        warnings.append("the observation is dated in the future")
+    if site is None and instant.place == "observatory":
+        warnings.append("no site given: the light time is that of the geocentre, within 0.021 s")
+    return tuple(warnings)
+
+
+def _knowledge(
+    connection: Connection, system_id: int, moment: Moment, entries: Sequence[LoggedEntry]
+) -> tuple[tuple[str, ...], bool]:
+    """What the catalogue now knows, in a sentence a band or a kind; and whether an onset is suspected."""
+    lines: list[str] = []
+    suspected = False
+    bands = [e.observation for e in entries if e.observation.kind == "photometry"]
+    if bands:
+        judged = _judge_now(connection, system_id, moment.bmjd_tdb)
+        for observation in bands:
+            line, strong = _verdict(judged, observation)
+            lines.append(line)
+            suspected |= strong
+    for kind in dict.fromkeys(e.observation.kind for e in entries):
+        if kind == "photometry":
+            continue
+        count = len(observations.observations_of(connection, [system_id], [kind]))
+        lines.append(f"{count} {kind if count == 1 else _plural(kind)} of this system logged so far")
+    return tuple(lines), suspected
+
+
+def _plural(kind: str) -> str:
+    return {
+        "velocity": "velocities",
+        "flux": "fluxes",
+    }.get(kind, kind + "s")
+
+
+def _judge_now(connection: Connection, system_id: int, as_of: float) -> JudgedPhotometry:
+    from campaign.studies.judging import judge
+
+    record = records.load_records(connection, [system_id], include_retired=True)[0]
+    arrays = observations.photometry_arrays(connection, [system_id])[system_id]
+    return judge(record, arrays, max(as_of, float(arrays.bmjd_tdb.max())))
+
+
+def _verdict(judged: JudgedPhotometry, observation: Observation) -> tuple[str, bool]:
+    here = np.flatnonzero(np.abs(judged.bmjd_tdb - observation.moment.bmjd_tdb) < 1e-7)
+    position = next((int(i) for i in here if judged.band[int(i)] == observation.band), None)
+    band = observation.band or "?"
+    if position is None or (np.isnan(judged.excess_sigma[position]) and not judged.is_quiet[position]):
+        if position is not None and observation.limit_side is not None:
+            return f"{band}: the limit says nothing about an excess here", False
+        return (
+            f"{band}: no stellar level yet; it takes {MINIMUM_LEVEL_POINTS} points of this band and source "
+            "outside episodes"
+        ), False
+    sigma = float(judged.excess_sigma[position])
+    if judged.is_quiet[position]:
+        return f"{band}: quiet, no onset yet", False
+    if sigma >= SINGLE_SIGMA:
+        return f"{band}: {sigma:.1f} sigma above the stellar level: onset suspected, confirm it", True
+    if sigma >= CONSECUTIVE_SIGMA:
+        return f"{band}: {sigma:.1f} sigma above the stellar level: observe again within 30 d", False
+    return f"{band}: too uncertain to tell an excess", False

@@ -1,0 +1,354 @@
+"""Load a campaign, from the database or the invented sample, and answer questions about what comes."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from datetime import UTC, datetime, timedelta
+from difflib import get_close_matches
+
+import numpy as np
+
+from campaign.errors import InputRefused, NotFound
+from campaign.model.arrays import PhotometryArrays
+from campaign.model.forecasts import (
+    EVENT_NAMES,
+    EphemerisResult,
+    EventName,
+    ExplainedSystem,
+    UpcomingResult,
+)
+from campaign.model.instants import TypedInstant
+from campaign.model.records import SystemRecord
+from campaign.reading.numbers import name_key
+from campaign.studies.cycles import nominal_period_d
+from campaign.studies.instants import axis_instant
+from campaign.studies.sampling import DEFAULT_DRAWS, DEFAULT_SEED
+from campaign.studies.upcoming import Question, forecast_campaign
+
+_MJD_ZERO = datetime(1858, 11, 17, tzinfo=UTC)
+DEFAULT_WITHIN_D = 5.0 * 365.25
+DEFAULT_ROWS = 40
+
+
+@dataclass(frozen=True, slots=True)
+class Campaign:
+    """What a forecast works on: systems and light curves, and the date that stands in for today, if any."""
+
+    records: tuple[SystemRecord, ...]
+    photometry: dict[int, PhotometryArrays]
+    own_as_of: float | None = None
+    is_sample: bool = False
+
+
+def load_campaign(
+    db: str, names: Sequence[str] | None, known_at: TypedInstant | None, as_of: TypedInstant | None
+) -> Campaign:
+    """Load active systems, or the named ones, with their light curves.
+
+    Parameters
+    ----------
+    db : str
+        Path or SQLAlchemy URL.
+    names : sequence of str or None
+        Names or aliases; None for every system that is not retired.
+    known_at, as_of : TypedInstant or None
+        Hide entries, or observations, made after it.
+
+    Returns
+    -------
+    Campaign
+        Ready to be forecast.
+
+    Raises
+    ------
+    NotFound
+        Unknown system; the nearest names are in the details.
+
+    Notes
+    -----
+    Accuracy: not applicable. Source: the catalogue.
+    """
+    from campaign.catalogue import info, observations, records, store, systems
+
+    entered = None if known_at is None else _MJD_ZERO + timedelta(days=known_at.mjd)
+    observed = None if as_of is None else axis_instant(as_of)
+    with store.reading(db) as connection:
+        ids = None if names is None else [systems.find_system(connection, name).id for name in names]
+        found = records.load_records(connection, ids, known_at=entered, include_retired=ids is not None)
+        curves = observations.photometry_arrays(connection, ids, as_of_bmjd_tdb=observed, known_at=entered)
+        own = info.read_info(connection).get("sample_as_of")
+    own_as_of = None if own is None else mjd_of(datetime.fromisoformat(own.replace("Z", "+00:00")))
+    return Campaign(tuple(found), curves, own_as_of, own is not None)
+
+
+def load_sample_campaign(names: Sequence[str] | None) -> Campaign:
+    """The invented sample campaign, without any database.
+
+    Parameters
+    ----------
+    names : sequence of str or None
+        Names or aliases; None for every system that is not retired.
+
+    Returns
+    -------
+    Campaign
+        With its own date.
+
+    Raises
+    ------
+    NotFound
+        Unknown system.
+
+    Notes
+    -----
+    Accuracy: not applicable. Source: the project's own invented data.
+    """
+    from campaign.studies.sample import load_sample
+
+    sample = load_sample()
+    records = tuple(sample.records)
+    if names is None:
+        chosen = tuple(r for r in records if r.system.state != "retired")
+    else:
+        chosen = tuple(_named(records, name) for name in names)
+    return Campaign(chosen, dict(sample.photometry), sample.as_of_bmjd_tdb, True)
+
+
+def _named(records: Sequence[SystemRecord], name: str) -> SystemRecord:
+    key = name_key(name)
+    for record in records:
+        if key in (name_key(record.system.name), *(name_key(alias) for alias in record.system.aliases)):
+            return record
+    names = [r.system.name for r in records]
+    near = get_close_matches(name, names, n=3, cutoff=0.4)
+    raise NotFound(
+        f"The sample campaign has no system '{name}'.",
+        why="Names match whatever their case and spaces.",
+        hint=f"Nearest: {', '.join(near or names[:3])}.",
+        code="system-not-found",
+        details={"nearest": near},
+    )
+
+
+def mjd_of(at: datetime) -> float:
+    """The TDB axis value of a clock reading.
+
+    Parameters
+    ----------
+    at : datetime
+        Aware datetime.
+
+    Returns
+    -------
+    float
+        MJD in TDB.
+
+    Notes
+    -----
+    Accuracy: 2 ms, with the leap seconds of the clock's date.
+
+    Source: time scales of IAU, through erfa.
+    """
+    passed = at - _MJD_ZERO
+    fraction = (passed.seconds + 1e-6 * passed.microseconds) / 86_400.0
+    return axis_instant(
+        TypedInstant(float(passed.days), fraction, "utc", "geocentre", 0.0, 0.0, "second", at.isoformat())
+    )
+
+
+def ask(
+    campaign: Campaign,
+    *,
+    now: datetime,
+    as_of: TypedInstant | None,
+    start: TypedInstant | None,
+    end: TypedInstant | None,
+    within_d: float | None,
+    events: tuple[EventName, ...],
+    min_probability: float,
+    draws: int | None,
+    seed: int | None,
+    solutions: str,
+) -> Question:
+    """Put the question: from when, until when, as of when.
+
+    Parameters
+    ----------
+    campaign : Campaign
+        Its own date stands in for the clock, if it has one.
+    now : datetime
+        The clock.
+    as_of, start, end : TypedInstant or None
+        As typed.
+    within_d : float or None
+        Length of the period, days.
+    events : tuple of str
+        Empty for all.
+    min_probability : float
+        In [0, 1] (dimensionless).
+    draws, seed : int or None
+        Of the random draws.
+    solutions : str
+        'adopted' or 'each'.
+
+    Returns
+    -------
+    Question
+        Instants ``bmjd_tdb``.
+
+    Raises
+    ------
+    InputRefused
+        If the period ends before it begins, or is given twice.
+
+    Notes
+    -----
+    Accuracy: see ``campaign.studies.instants.axis_instant``. Source: project convention.
+    """
+    today = _today(campaign, now, as_of)
+    first = today if start is None else axis_instant(start)
+    if end is not None and within_d is not None:
+        raise InputRefused(
+            "The end of the period is given twice.",
+            why="--within counts from its start and --until names its end.",
+            hint="Give one of them, for example --within 5yr.",
+            code="span-refused",
+        )
+    last = axis_instant(end) if end is not None else first + (within_d or DEFAULT_WITHIN_D)
+    if not last > first:
+        raise InputRefused(
+            "The period ends before it begins.",
+            why="--until is not later than --from (or than now, when --from is not given).",
+            hint="For example --from 2030-01-01 --until 2035-01-01, or --within 5yr.",
+            code="span-refused",
+        )
+    return Question(
+        as_of=today,
+        start=first,
+        end=last,
+        events=events or EVENT_NAMES,
+        min_probability=min_probability,
+        draws=draws or DEFAULT_DRAWS,
+        seed=DEFAULT_SEED if seed is None else seed,
+        solutions=solutions,
+    )
+
+
+def _today(campaign: Campaign, now: datetime, as_of: TypedInstant | None) -> float:
+    if as_of is not None:
+        return axis_instant(as_of)
+    return campaign.own_as_of if campaign.own_as_of is not None else mjd_of(now)
+
+
+def upcoming(campaign: Campaign, question: Question) -> UpcomingResult:
+    """Forecast a campaign.
+
+    Parameters
+    ----------
+    campaign : Campaign
+        Systems and light curves.
+    question : Question
+        Instants ``bmjd_tdb``.
+
+    Returns
+    -------
+    UpcomingResult
+        See ``forecast_campaign``.
+
+    Notes
+    -----
+    Accuracy: see ``forecast_campaign``. Source: design, section 4.
+    """
+    return _with_date_note(forecast_campaign(campaign.records, campaign.photometry, question), campaign, question)
+
+
+def _with_date_note(result: UpcomingResult, campaign: Campaign, question: Question) -> UpcomingResult:
+    from dataclasses import replace
+
+    if not campaign.is_sample:
+        return result
+    own = campaign.own_as_of is not None and abs(question.as_of - campaign.own_as_of) < 1e-6  # noqa: PLR2004
+    text = "everything in the sample campaign is invented"
+    if own:
+        text += f"; its own date {result.as_of_utc[:10]} stands in for today"
+    return replace(result, assumptions=(text, *result.assumptions))
+
+
+def explain(campaign: Campaign, question: Question) -> ExplainedSystem:
+    """Forecast one system and say how each date came about.
+
+    Parameters
+    ----------
+    campaign : Campaign
+        Of one system.
+    question : Question
+        Instants ``bmjd_tdb``.
+
+    Returns
+    -------
+    ExplainedSystem
+        See ``campaign.studies.explain``.
+
+    Notes
+    -----
+    Accuracy: see ``campaign.studies.explain``. Source: propagation of errors.
+    """
+    from dataclasses import replace
+
+    from campaign.studies.explain import explain_system
+
+    told = explain_system(campaign.records[0], campaign.photometry, question)
+    return replace(told, upcoming=_with_date_note(told.upcoming, campaign, question))
+
+
+def tabulate(
+    campaign: Campaign,
+    *,
+    now: datetime,
+    as_of: TypedInstant | None,
+    start: TypedInstant | None,
+    end: TypedInstant | None,
+    step_d: float | None,
+    label: str | None,
+) -> EphemerisResult:
+    """The dated table of one orbit.
+
+    Parameters
+    ----------
+    campaign : Campaign
+        Of one system.
+    now : datetime
+        The clock.
+    as_of, start, end : TypedInstant or None
+        As typed; from now over one period when not given.
+    step_d : float or None
+        Days; a fortieth of the span when not given.
+    label : str or None
+        Solution; the adopted one when not given.
+
+    Returns
+    -------
+    EphemerisResult
+        See ``campaign.studies.ephemeris``.
+
+    Raises
+    ------
+    Conflict, InputRefused
+        No usable solution; a span or step that cannot be used.
+
+    Notes
+    -----
+    Accuracy: nominal elements. Source: Kepler's equation.
+    """
+    from campaign.physics.timescales import utc_iso
+    from campaign.studies.ephemeris import ephemeris
+    from campaign.studies.systems import require_solution
+
+    record = campaign.records[0]
+    solution = require_solution(record, label)
+    today = _today(campaign, now, as_of)
+    first = today if start is None else axis_instant(start)
+    last = axis_instant(end) if end is not None else first + (nominal_period_d(solution) or DEFAULT_WITHIN_D)
+    step = step_d if step_d is not None else max((last - first) / DEFAULT_ROWS, 1e-6)
+    return ephemeris(record, solution, first, last, step, utc_iso(np.array([today]))[0] or "")
