@@ -63,16 +63,13 @@ class Screen:
 
     def line(self, *spans: str | Span) -> None:
         """One line, cut nowhere: the caller keeps it inside the width. Text is made safe."""
-        if not self.colour:
-            self.write("".join(self.spell(_text(span)) for span in spans).rstrip() + "\n")
-            return
-        from rich.text import Text
-
-        whole = Text()
-        for span in spans:
-            whole.append(self.spell(_text(span)), style=span.style if isinstance(span, Span) else "")
-        whole.rstrip()
-        self.show(whole)
+        pieces = [(self.spell(_text(span)), _style(span)) for span in spans]
+        while pieces and not (pieces[-1][0].rstrip()):
+            pieces.pop()
+        if pieces:
+            pieces[-1] = (pieces[-1][0].rstrip(), pieces[-1][1])
+        shown = [_styled(text, style) if self.colour and style else text for text, style in pieces]
+        self.write("".join(shown) + "\n")
 
     def heading(self, text: str) -> None:
         """A title over a part of the screen."""
@@ -95,6 +92,18 @@ class Screen:
 
 def _text(span: str | Span) -> str:
     return span.text if isinstance(span, Span) else span
+
+
+def _style(span: str | Span) -> str:
+    return span.style if isinstance(span, Span) else ""
+
+
+def _styled(text: str, style: str) -> str:
+    """``text`` between the codes of ``style``, in the sixteen colours that every terminal has."""
+    from rich.color import ColorSystem
+    from rich.style import Style
+
+    return Style.parse(style).render(text, color_system=ColorSystem.STANDARD)
 
 
 def fold(text: str, width: int | None, hang: int = 0) -> list[str]:

@@ -25,8 +25,8 @@ def error_document(code: str, message: str, hint: str, details: Mapping[str, Any
 
 
 def dumps(value: Any) -> str:
-    """JSON text of anything that ``plain`` understands."""
-    text = json.dumps(plain(value), ensure_ascii=True, allow_nan=False, indent=2) + "\n"
+    """JSON text of anything that ``plain`` understands, on one line."""
+    text = json.dumps(plain(value), ensure_ascii=True, allow_nan=False) + "\n"
     return text.replace("\x7f", "\\u007f")  # the one control character that JSON lets through
 
 
@@ -35,25 +35,40 @@ def plain(value: Any) -> Any:
 
     Floats keep every digit (shortest text that reads back as the same number).
     """
-    if value is None or isinstance(value, (str, bool)):
-        return str(value) if isinstance(value, str) else value
+    kind = type(value)
+    if value is None or kind in _AS_THEY_ARE:
+        return value
+    if kind is float:
+        return value if math.isfinite(value) else None
+    if isinstance(value, (tuple, list)):
+        return [plain(item) for item in value]
+    if kind is dict:
+        return {str(key): plain(item) for key, item in value.items()}
+    if (names := _field_names(kind)) is not None:
+        return {name: plain(getattr(value, name)) for name in names}
+    return _plain_of_other_kinds(value)
+
+
+_AS_THEY_ARE = frozenset({str, bool, int})
+
+
+_FIELD_NAMES: dict[type, tuple[str, ...] | None] = {}
+
+
+def _field_names(kind: type) -> tuple[str, ...] | None:
+    if kind not in _FIELD_NAMES:
+        is_ours = dataclasses.is_dataclass(kind)
+        _FIELD_NAMES[kind] = tuple(field.name for field in dataclasses.fields(kind)) if is_ours else None
+    return _FIELD_NAMES[kind]
+
+
+def _plain_of_other_kinds(value: Any) -> Any:
     if isinstance(value, Enum):
         return plain(value.value)
-    if dataclasses.is_dataclass(value) and not isinstance(value, type):
-        return {field.name: plain(getattr(value, field.name)) for field in dataclasses.fields(value)}
-    if isinstance(value, Mapping):
-        return {str(key): plain(item) for key, item in value.items()}
-    return _plain_number_or_list(value)
-
-
-def _plain_number_or_list(value: Any) -> Any:
-    if isinstance(value, numbers.Integral):
-        return int(value)
     if isinstance(value, numbers.Real):
-        number = float(value)
-        return number if math.isfinite(number) else None
+        return int(value) if isinstance(value, numbers.Integral) else plain(float(value))
     if hasattr(value, "tolist"):  # numpy scalars and arrays, without importing numpy
         return plain(value.tolist())
-    if isinstance(value, (list, tuple, set, frozenset, Sequence)):
-        return [plain(item) for item in value]
+    if isinstance(value, Mapping):
+        return plain(dict(value))
     return str(value)

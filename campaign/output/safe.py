@@ -17,7 +17,7 @@ def visible(text: str) -> str:
 
     A newline is one of them, so that a name always stays on its line.
     """
-    if text.isascii() and text.isprintable():
+    if text.isprintable():  # true of no character below, so that common text costs nothing
         return text
     return "".join(
         _escape(character) if unicodedata.category(character) in _STEERING else character

@@ -5,7 +5,7 @@ from __future__ import annotations
 from bisect import bisect_left, bisect_right
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
-from itertools import pairwise
+from itertools import groupby, pairwise
 
 from rich.cells import cell_len, set_cell_size
 
@@ -93,7 +93,10 @@ def _bar(story: _Story, axis: _Axis, today: int | None) -> Iterable[str | Span]:
             _mark_periastron(marks, event, axis)
     if today is not None and marks[today][0] == " ":
         marks[today] = (_TODAY, "cyan")
-    return [Span(character, style) for character, style in marks]
+    return [
+        Span("".join(character for character, _ in run), style)
+        for style, run in groupby(marks, key=lambda mark: mark[1])
+    ]
 
 
 def _shade(probability: float) -> tuple[str, str]:
