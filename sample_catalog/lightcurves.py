@@ -36,6 +36,7 @@ _NIGHT_HALF_D = 0.15
 _SECOND_D = 1.0 / 86400.0 / np.sqrt(12.0)
 _DAY_D = 1.0 / np.sqrt(12.0)
 # No outliers and no wild noise in the last years: statuses of today must not hang on one bad point.
+_NO_OUTLIERS_AFTER = year_to_bmjd(2018.0)
 _CALM_AFTER = year_to_bmjd(2024.5)
 
 
@@ -167,7 +168,7 @@ def _measure(
     error, noise = _errors(rng, true_mag, errors[series, band], faintest[series, band], times)
     mag = true_mag + offsets[series, band] + noise
     quality = np.full(utc.size, "good", dtype="<U8")
-    wild = (rng.random(utc.size) < 0.006) & (times < _CALM_AFTER)
+    wild = (rng.random(utc.size) < 0.008) & (times < _NO_OUTLIERS_AFTER)
     quality[wild] = "doubtful"
     mag[wild] += 0.18 * rng.normal(size=int(wild.sum()))
     error[(rng.random(utc.size) < 0.025) & (times < _CALM_AFTER)] = np.nan
