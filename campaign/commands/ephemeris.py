@@ -20,7 +20,8 @@ def ephemeris(
     step: Annotated[Text, option("--step", "SPAN", "As 30d; else a fortieth of the span.")] = None,
     solution: Annotated[Text, option("--solution", "LABEL", "Else the adopted one.")] = None,
     sample: Annotated[
-        bool, typer.Option("--sample", help="On the invented sample campaign, no database.", show_default=False)
+        bool,
+        typer.Option("--sample", help="On the invented sample campaign, no database.", show_default=False),
     ] = False,
     as_of: AsOfOption = None,
     db: DbOption = None,

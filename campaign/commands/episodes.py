@@ -18,7 +18,9 @@ def add(
     onset: Annotated[Text, option("--onset", "INSTANT", 'When production began: "2019-03-14±5 d".')] = None,
     maximum: Annotated[Text, option("--maximum", "INSTANT", "When it was greatest.")] = None,
     end: Annotated[Text, option("--end", "INSTANT", "When production ended.")] = None,
-    band: Annotated[Text, option("--band", "BAND", "The band that it was dated in; else production itself.")] = None,
+    band: Annotated[
+        Text, option("--band", "BAND", "The band that it was dated in; else production itself.")
+    ] = None,
     method: Annotated[Text, option("--method", "TEXT", "How it was dated.")] = None,
     cycle: Annotated[Text, option("--cycle", "N", "The system's cycle; else counted from the dates.")] = None,
     source: Annotated[Text, option("--source", "TEXT", "Who published it and where.")] = None,

@@ -30,7 +30,9 @@ def photometry(
     ] = None,
     band: Annotated[Text, option("--band", "BAND", "One band.")] = None,
     mag: Annotated[Text, option("--mag", "VALUE", '7.31±0.03; ">12.1" too faint; "<6.0" saturated.')] = None,
-    magnitudes: Annotated[Text, option("--magnitudes", "SYSTEM", "Photometric system of the magnitudes.")] = None,
+    magnitudes: Annotated[
+        Text, option("--magnitudes", "SYSTEM", "Photometric system of the magnitudes.")
+    ] = None,
     comparison: Annotated[Text, option("--comparison", "STAR", "Comparison star.")] = None,
     limit_sigma: LimitSigma = None,
     at: At = None,
@@ -66,7 +68,9 @@ def photometry(
 
 def flux(
     system: System = None,
-    value: Annotated[Text, option("--value", "VALUE", '"2.3±0.2 mJy", or "(4.1±0.3)e-12 erg/s/cm2" in X-rays.')] = None,
+    value: Annotated[
+        Text, option("--value", "VALUE", '"2.3±0.2 mJy", or "(4.1±0.3)e-12 erg/s/cm2" in X-rays.')
+    ] = None,
     band: Annotated[Text, option("--band", "BAND", "Name of the band, if it has one.")] = None,
     frequency: Annotated[Text, option("--frequency", "VALUE", 'Radio: "8.4 GHz".')] = None,
     energy: Annotated[Text, option("--energy", "LOW..HIGH", 'X-rays: "0.5..10 keV".')] = None,
@@ -117,7 +121,9 @@ def flux(
 def velocity(
     system: System = None,
     star: Annotated[Text, option("--star", "A|B", "Which star.")] = None,
-    value: Annotated[Text, option("--velocity", "VALUE", 'Heliocentric, positive receding: "-45.2±3.1 km/s".')] = None,
+    value: Annotated[
+        Text, option("--velocity", "VALUE", 'Heliocentric, positive receding: "-45.2±3.1 km/s".')
+    ] = None,
     species: Annotated[Text, option("--species", "TEXT", "The line it was measured in.")] = None,
     at: At = None,
     site: SiteOption = None,
@@ -147,7 +153,9 @@ def velocity(
 def line(
     system: System = None,
     species: Annotated[Text, option("--species", "TEXT", 'As "C III 5696".')] = None,
-    width: Annotated[Text, option("--width", "VALUE", 'Equivalent width, negative in emission: "-12.4±0.5 A".')] = None,
+    width: Annotated[
+        Text, option("--width", "VALUE", 'Equivalent width, negative in emission: "-12.4±0.5 A".')
+    ] = None,
     star: Annotated[Text, option("--star", "A|B", "Which star, if it is known.")] = None,
     at: At = None,
     site: SiteOption = None,
@@ -175,7 +183,9 @@ def line(
 def position(
     system: System = None,
     separation: Annotated[Text, option("--separation", "VALUE", 'Of B from A: "12.1±0.3 mas".')] = None,
-    angle: Annotated[Text, option("--angle", "VALUE", 'Position angle, North through East: "143±2 deg".')] = None,
+    angle: Annotated[
+        Text, option("--angle", "VALUE", 'Position angle, North through East: "143±2 deg".')
+    ] = None,
     correlation: Annotated[Text, option("--correlation", "R", "Of separation and angle.")] = None,
     at: At = None,
     site: SiteOption = None,
@@ -208,10 +218,14 @@ def position(
 def shell(
     system: System = None,
     radius: Annotated[Text, option("--radius", "VALUE", '"1.20±0.05 arcsec".')] = None,
-    angle: Annotated[Text, option("--angle", "VALUE", "Position angle at which it was measured, deg.")] = None,
+    angle: Annotated[
+        Text, option("--angle", "VALUE", "Position angle at which it was measured, deg.")
+    ] = None,
     feature: Annotated[Text, option("--feature", "TEXT", "What was measured: limb, ring, plume, ...")] = None,
     measured_at: Annotated[Text, option("--measured-at", "WORD", "edge or peak.")] = None,
-    plate_scale_error: Annotated[Text, option("--plate-scale-error", "VALUE", 'Shared by one image: "0.5 %".')] = None,
+    plate_scale_error: Annotated[
+        Text, option("--plate-scale-error", "VALUE", 'Shared by one image: "0.5 %".')
+    ] = None,
     index: Annotated[Text, option("--index", "N", "1 for the youngest visible, if known.")] = None,
     band: Annotated[Text, option("--band", "BAND", "Band of the image.")] = None,
     at: At = None,
@@ -231,7 +245,11 @@ def shell(
     draft = {
         "kind": "shell",
         "value": measured(
-            _ask(radius, "--radius", "Radius", "1.20±0.05 arcsec"), "arcsec", "--radius", low=0.0, low_open=True
+            _ask(radius, "--radius", "Radius", "1.20±0.05 arcsec"),
+            "arcsec",
+            "--radius",
+            low=0.0,
+            low_open=True,
         ),
         "unit": "arcsec",
         "position_angle_deg": measured(angle, "deg", "--angle", low=-360.0, high=360.0),
@@ -267,7 +285,9 @@ def attempt(
 
 def remark(
     system: System = None,
-    text: Annotated[str | None, typer.Argument(metavar="TEXT", help="What is worth keeping.", show_default=False)] = None,
+    text: Annotated[
+        str | None, typer.Argument(metavar="TEXT", help="What is worth keeping.", show_default=False)
+    ] = None,
     at: At = None,
     site: SiteOption = None,
     source: Source = None,
@@ -381,10 +401,16 @@ def _log(
 
     common_fields = {k: shared[k] for k in ("observer", "instrument", "source", "quality", "text")}
     observations = [
-        Observation(id=0, uid="", system_id=0, moment=Moment(0.0), **(common_fields | draft)) for draft in drafts
+        Observation(id=0, uid="", system_id=0, moment=Moment(0.0), **(common_fields | draft))
+        for draft in drafts
     ]
     result = study.log_observations(
-        common.database(db), common.stamp(shared["observer"]), shared["system"], observations, shared["at"], shared["site"]
+        common.database(db),
+        common.stamp(shared["observer"]),
+        shared["system"],
+        observations,
+        shared["at"],
+        shared["site"],
     )
     if json:
         common.write_json(output.logged_json(result, common.now_iso()))

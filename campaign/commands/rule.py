@@ -17,18 +17,26 @@ Text = str | None
 
 def set_(
     system: System,
-    separation: Annotated[Text, option("--separation", "VALUE", 'Dust is made while nearer than this: "6.4±0.8 au".')] = None,
+    separation: Annotated[
+        Text, option("--separation", "VALUE", 'Dust is made while nearer than this: "6.4±0.8 au".')
+    ] = None,
     condensation_distance: Annotated[
         Text, option("--condensation-distance", "VALUE", 'From collision to condensation: "100±20 au".')
     ] = None,
-    flow_speed: Annotated[Text, option("--flow-speed", "VALUE", 'Speed on that way: "2000±200 km/s".')] = None,
+    flow_speed: Annotated[
+        Text, option("--flow-speed", "VALUE", 'Speed on that way: "2000±200 km/s".')
+    ] = None,
     maximum_lag: Annotated[
         Text, option("--maximum-lag", "VALUE", "Days from periastron to maximum, with --separation.")
     ] = None,
-    phase_onset: Annotated[Text, option("--phase-onset", "VALUE", "In periods from periastron; negative before.")] = None,
+    phase_onset: Annotated[
+        Text, option("--phase-onset", "VALUE", "In periods from periastron; negative before.")
+    ] = None,
     phase_maximum: Annotated[Text, option("--phase-maximum", "VALUE", "In periods.")] = None,
     phase_end: Annotated[Text, option("--phase-end", "VALUE", "In periods.")] = None,
-    lag_onset: Annotated[Text, option("--lag-onset", "VALUE", 'From periastron: "-40±10 d"; negative before.')] = None,
+    lag_onset: Annotated[
+        Text, option("--lag-onset", "VALUE", 'From periastron: "-40±10 d"; negative before.')
+    ] = None,
     lag_maximum: Annotated[Text, option("--lag-maximum", "VALUE", "In days.")] = None,
     lag_end: Annotated[Text, option("--lag-end", "VALUE", "In days.")] = None,
     learned: Annotated[
@@ -70,7 +78,9 @@ def set_(
         note=plain(note, "--note", 2000) or "",
         **_values(kind, fields),
     )
-    common.report(study.set_rule(common.database(db), common.stamp(observer), system, rule), json=json, quiet=quiet)
+    common.report(
+        study.set_rule(common.database(db), common.stamp(observer), system, rule), json=json, quiet=quiet
+    )
 
 
 def show(system: System, db: DbOption = None, json: JsonOption = False) -> None:
@@ -90,7 +100,9 @@ def _kind(given: dict[str, tuple[Any, ...]]) -> tuple[str, tuple[Any, ...]]:
     if len(chosen) == 1:
         return chosen[0], given[chosen[0]]
     raise UsageRefused(
-        "Which rule is it?" if not chosen else f"Options of {len(chosen)} rules are mixed: {', '.join(chosen)}.",
+        "Which rule is it?"
+        if not chosen
+        else f"Options of {len(chosen)} rules are mixed: {', '.join(chosen)}.",
         why="A system has one rule: separation, phase, lag or learned.",
         hint='For example: campaign rule set "Lantern 3" --separation "6.4±0.8 au"',
     )
@@ -102,7 +114,9 @@ def _values(kind: str, fields: tuple[Any, ...]) -> dict[str, Any]:
         return {
             "critical_separation_au": measured(critical, "au", "--separation", low=0.0, low_open=True),
             "condensation_distance_au": measured(distance, "au", "--condensation-distance", low=0.0),
-            "flow_speed_kms": measured(speed, "kms", "--flow-speed", low=0.0, low_open=True, high=299_792.458),
+            "flow_speed_kms": measured(
+                speed, "kms", "--flow-speed", low=0.0, low_open=True, high=299_792.458
+            ),
             "maximum_lag_d": measured(lag, "d", "--maximum-lag"),
         }
     if kind == "learned":

@@ -36,7 +36,9 @@ def add(
     from campaign.reading.values import read_measured_or_bound
     from campaign.studies import sites as study
 
-    span = read_measured_or_bound(elongation, "deg", "--elongation", low=0.0, high=180.0) if elongation else None
+    span = (
+        read_measured_or_bound(elongation, "deg", "--elongation", low=0.0, high=180.0) if elongation else None
+    )
     metres = measured(height, "m", "--height", low=-500.0, high=9000.0)
     lowest = measured(horizon, "deg", "--horizon", low=-5.0, high=90.0)
     site = Site(

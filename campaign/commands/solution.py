@@ -18,7 +18,9 @@ Text = str | None
 def add(
     system: System,
     label: Annotated[Text, option("--label", "LABEL", "A short name; else 'solution N'.")] = None,
-    period_text: Annotated[Text, option("--period", "VALUE", '"3127.5±0.3 d", ">32 yr" or "28..32 yr".')] = None,
+    period_text: Annotated[
+        Text, option("--period", "VALUE", '"3127.5±0.3 d", ">32 yr" or "28..32 yr".')
+    ] = None,
     epoch: Annotated[Text, option("--epoch", "INSTANT", '"BJD 2461234.2±0.5"; BJD_TDB unless said.')] = None,
     epoch_marks: Annotated[
         Text, option("--epoch-marks", "EVENT", "periastron, 'A in front', 'B in front', onset or maximum.")
@@ -27,7 +29,9 @@ def add(
     omega: Annotated[Text, option("--omega", "VALUE", 'Argument of periastron, "143±2 deg".')] = None,
     omega_of: Annotated[Text, option("--omega-of", "A|B", "The star that omega belongs to.")] = None,
     inclination: Annotated[Text, option("--inclination", "VALUE", "0 to 180 deg.")] = None,
-    node: Annotated[Text, option("--node", "VALUE", "Where B recedes from A; deg, North through East.")] = None,
+    node: Annotated[
+        Text, option("--node", "VALUE", "Where B recedes from A; deg, North through East.")
+    ] = None,
     k_a: Annotated[Text, option("--k-a", "VALUE", "Velocity semi-amplitude of star A, km/s.")] = None,
     k_b: Annotated[Text, option("--k-b", "VALUE", "Velocity semi-amplitude of star B, km/s.")] = None,
     gamma: Annotated[Text, option("--gamma", "VALUE", "Systemic velocity, km/s, positive receding.")] = None,
@@ -43,7 +47,9 @@ def add(
     ] = [],  # noqa: B006 - typer copies it
     source: Annotated[Text, option("--source", "TEXT", "Who published it and where.")] = None,
     data_until: Annotated[Text, option("--data-until", "INSTANT", "Until when its data reached.")] = None,
-    published_cycle: Annotated[Text, option("--published-cycle", "N", "The source's own cycle of the epoch.")] = None,
+    published_cycle: Annotated[
+        Text, option("--published-cycle", "N", "The source's own cycle of the epoch.")
+    ] = None,
     note: Annotated[Text, option("--note", "TEXT", "Anything worth knowing.")] = None,
     adopt: Annotated[bool, typer.Option("--adopt", help="Forecast from it.", show_default=False)] = False,
     db: DbOption = None,
@@ -61,7 +67,7 @@ def add(
         raise UsageRefused(
             "Whose omega is it?",
             why="The arguments of the two stars differ by 180 deg; the wrong one swaps the conjunctions.",
-            hint="Add --omega-of A or --omega-of B. Spectroscopic papers usually give that of the star observed.",
+            hint="Add --omega-of A or --omega-of B; papers on spectra usually give that of the star seen.",
         )
     a_au, a_arcsec = _semi_major_axis(a)
     draft = Solution(
@@ -100,7 +106,8 @@ def add(
 def adopt(
     system: System,
     labels: Annotated[
-        list[str], typer.Argument(metavar="LABEL[=WEIGHT]...", help="One label, or several each with its weight.")
+        list[str],
+        typer.Argument(metavar="LABEL[=WEIGHT]...", help="One label, or several each with its weight."),
     ],
     instead: Annotated[
         bool, typer.Option("--instead", help="In place of what is adopted now.", show_default=False)

@@ -87,8 +87,9 @@ def add(
     from campaign.studies import systems as study
 
     fields = _fields(given)
-    stars = {key: Star(key[-1].upper(), **fields.pop(key, {})) for key in ("star_a", "star_b")}  # type: ignore[arg-type]
-    system = System(id=0, name=plain(name, "SYSTEM", 120) or "", **fields, **stars)
+    fields["star_a"] = Star("A", **fields.pop("star_a", {}))
+    fields["star_b"] = Star("B", **fields.pop("star_b", {}))
+    system = System(id=0, name=plain(name, "SYSTEM", 120) or "", **fields)
     kept = study.add_system(common.database(db), common.stamp(observer), system)
     common.report(kept, json=json, quiet=quiet)
 
@@ -196,7 +197,7 @@ _STAR_QUANTITIES = (
 _LIGHT_KMS = 299_792.458
 
 
-def _fields(given: dict[str, Any]) -> dict[str, Any]:
+def _fields(given: dict[str, Any]) -> dict[str, Any]:  # noqa: PLR0912
     """The fields of a system, and of its stars, that were given."""
     from campaign.model.systems import SYSTEM_STATES
     from campaign.reading.angles import read_declination, read_right_ascension

@@ -50,13 +50,12 @@ class Branch:
 
 Table = Sequence[Leaf | Branch]
 
+
 def _group(name: str, text: str, section: str, *leaves: tuple[str, str]) -> Branch:
     """A branch whose commands are functions of one module, named after it."""
     module = f"campaign.commands.{name}"
     functions = {"list": "list_", "set": "set_"}
-    return Branch(
-        name, text, tuple(Leaf(n, h, module, functions.get(n, n)) for n, h in leaves), section
-    )
+    return Branch(name, text, tuple(Leaf(n, h, module, functions.get(n, n)) for n, h in leaves), section)
 
 
 COMMANDS: tuple[Leaf | Branch, ...] = (

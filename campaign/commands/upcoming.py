@@ -9,25 +9,30 @@ import typer
 from campaign.commands import common
 from campaign.commands.common import AsOfOption, DbOption, JsonOption, option
 from campaign.commands.parsing import clock_instant, one_of
-from campaign.errors import InputRefused, UsageRefused
+from campaign.errors import InputRefused
 
 Text = str | None
 DEFAULT_WITHIN = "5yr"
 
 
 def upcoming(
-    within: Annotated[Text, option("--within", "SPAN", f"From now on, as 5yr or 90d; else {DEFAULT_WITHIN}.")] = None,
+    within: Annotated[
+        Text, option("--within", "SPAN", f"From now on, as 5yr or 90d; else {DEFAULT_WITHIN}.")
+    ] = None,
     from_: Annotated[Text, option("--from", "INSTANT", "Start of the period, in place of now.")] = None,
     until: Annotated[Text, option("--until", "INSTANT", "End of the period.")] = None,
     system: Annotated[
-        list[str], typer.Option("--system", metavar="SYSTEM", help="Only this one; may be repeated.", show_default=False)
+        list[str],
+        typer.Option(
+            "--system", metavar="SYSTEM", help="Only this one; may be repeated.", show_default=False
+        ),
     ] = [],  # noqa: B006 - typer copies it
     event: Annotated[
         list[str],
         typer.Option(
             "--event",
             metavar="EVENT",
-            help="Only this kind: periastron, onset, maximum, end, 'A in front', 'B in front'; may be repeated.",
+            help="periastron, onset, maximum, end, 'A in front' or 'B in front'; may be repeated.",
             show_default=False,
         ),
     ] = [],  # noqa: B006 - typer copies it
@@ -38,7 +43,8 @@ def upcoming(
         bool, typer.Option("--solutions", help="Every solution of a system side by side.", show_default=False)
     ] = False,
     sample: Annotated[
-        bool, typer.Option("--sample", help="On the invented sample campaign, no database.", show_default=False)
+        bool,
+        typer.Option("--sample", help="On the invented sample campaign, no database.", show_default=False),
     ] = False,
     known_at: Annotated[Text, option("--known-at", "INSTANT", "Hide entries made after it.")] = None,
     draws: Annotated[Text, option("--draws", "N", "Random draws a forecast; else 20000.")] = None,
@@ -48,8 +54,7 @@ def upcoming(
     json: JsonOption = False,
 ) -> None:
     """The episodes to come: when, how sure, and why."""
-    from campaign.output import explain as told
-    from campaign.output import upcoming as output
+    from campaign.output import upcoming_document as documents
     from campaign.studies import watch
 
     names = system or None
@@ -75,15 +80,19 @@ def upcoming(
     if names is not None and len(names) == 1 and not solutions:
         explained = watch.explain(campaign, question)
         if json:
-            common.write_json(output.upcoming_json(explained.upcoming, explained))
+            common.write_json(documents.upcoming_json(explained.upcoming, explained))
         else:
-            told.render_explained(common.stdout_screen(), explained)
+            from campaign.output.explain import render_explained
+
+            render_explained(common.stdout_screen(), explained)
         return
     result = watch.upcoming(campaign, question)
     if json:
-        common.write_json(output.upcoming_json(result))
+        common.write_json(documents.upcoming_json(result))
     else:
-        output.render_upcoming(common.stdout_screen(), result)
+        from campaign.output.upcoming import render_upcoming
+
+        render_upcoming(common.stdout_screen(), result)
 
 
 def _span(text: str | None) -> float | None:
@@ -125,6 +134,3 @@ def _count(text: str | None, name: str, low: int, high: int) -> int | None:
         hint=f"For example {name} {max(low, 2000) if name == '--draws' else 1}.",
         code="out-of-range",
     )
-
-
-__all__ = ["UsageRefused", "upcoming"]

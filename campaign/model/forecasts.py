@@ -6,11 +6,11 @@ from dataclasses import dataclass, field
 from typing import Literal
 
 EventName = Literal["periastron", "onset", "maximum", "end", "A in front", "B in front"]
-EVENT_NAMES: tuple[EventName, ...] = ("periastron", "onset", "maximum", "end", "A in front", "B in front")
+EVENT_NAMES: tuple[EventName, ...] = (
+    "periastron", "onset", "maximum", "end", "A in front", "B in front",
+)  # fmt: skip
 
-Status = Literal[
-    "expected", "open", "late", "unseen", "suspected", "under way", "over", "phase lost", "past"
-]
+Status = Literal["expected", "open", "late", "unseen", "suspected", "under way", "over", "phase lost", "past"]
 STATUSES: tuple[Status, ...] = (
     "expected", "open", "late", "unseen", "suspected", "under way", "over", "phase lost", "past",
 )  # fmt: skip
@@ -18,7 +18,7 @@ STATUSES: tuple[Status, ...] = (
 
 @dataclass(frozen=True, slots=True)
 class Quantiles:
-    """A dated distribution in ``bmjd_tdb``; equal-tailed. Only ``median`` is known when an error is missing."""
+    """A dated distribution in ``bmjd_tdb``; equal-tailed. Without an error only ``median`` is known."""
 
     median: float
     sigma_d: float | None = None
@@ -30,7 +30,7 @@ class Quantiles:
 
 @dataclass(frozen=True, slots=True)
 class UtcQuantiles:
-    """The same instants in the UTC scale at the barycentre, ISO 8601 ending in Z; None outside years 1-9999."""
+    """The same instants in the UTC scale at the barycentre, ISO 8601, Z; None outside years 1-9999."""
 
     median: str | None = None
     lo68: str | None = None

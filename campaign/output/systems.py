@@ -175,9 +175,8 @@ def system_json(shown: ShownSystem, as_of: str) -> str:
 def render_solutions(screen: Screen, record: SystemRecord) -> None:
     """The solutions of a system side by side."""
     if not record.solutions:
-        screen.wrapped(
-            f'{record.system.name} has no solution yet. Add one with: campaign solution add "{record.system.name}"'
-        )
+        name = record.system.name
+        screen.wrapped(f'{name} has no solution yet. Add one with: campaign solution add "{name}"')
         return
     print_table(screen, _SOLUTIONS, [_solution_row(s) for s in record.solutions])
 

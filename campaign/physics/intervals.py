@@ -88,4 +88,5 @@ def normal_quantiles(mean: FloatArray, sigma: FloatArray, shares: FloatArray | N
         from scipy.special import ndtri
 
         deviates = ndtri(shares)
-    return mean[:, None] + sigma[:, None] * deviates[None, :]
+    quantiles: FloatArray = mean[:, None] + sigma[:, None] * deviates[None, :]
+    return quantiles

@@ -120,7 +120,7 @@ def _error_notes(one: DatedEvent) -> list[str]:
 
 
 def _mixture_notes(unit: ForecastUnit) -> list[str]:
-    if len(unit.rows) < 2:  # noqa: PLR2004
+    if len(unit.rows) < 2:
         return []
     weights = ", ".join(f"{w:.2g}" for w in unit.weights)
     return [f"mixture of {len(unit.rows)} solutions with weights {weights}"]

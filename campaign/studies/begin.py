@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import replace
 from typing import Any
 
+import numpy as np
+
 from campaign.catalogue import (
     episodes,
     info,
@@ -18,6 +20,7 @@ from campaign.catalogue import (
 )
 from campaign.errors import Conflict
 from campaign.model.kept import Kept, Stamp
+from campaign.physics.timescales import utc_iso
 
 
 def begin_campaign(db: str, stamp: Stamp) -> Kept:
@@ -77,6 +80,7 @@ def begin_sample_campaign(db: str, stamp: Stamp) -> Kept:
 
     upgrade.begin_database(db, at=stamp.at)
     sample = load_sample()
+    own_date = utc_iso(np.array([sample.as_of_bmjd_tdb]))[0] or ""
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
         if systems.list_systems(writing.connection, include_retired=True):
             raise Conflict(
@@ -86,14 +90,14 @@ def begin_sample_campaign(db: str, stamp: Stamp) -> Kept:
                 code="database-not-empty",
             )
         counts = _fill(writing, sample)
-        info.set_info(writing, "sample_as_of", sample.as_of_utc)
+        info.set_info(writing, "sample_as_of", own_date)
         writing.summarise(f"filled with the sample campaign: {counts['systems']} systems")
     lines = (
         f"made the sample campaign in {_where(db)}: {counts['systems']} systems, "
         f"{counts['episodes']} confirmed episodes, {counts['observations']} observations",
-        f"everything in it is invented; its own date is {sample.as_of_utc}, which stands in for today there",
+        f"everything in it is invented; its own date is {own_date}, which stands in for today there",
     )
-    return Kept("begin", True, lines, {"database": _where(db), **counts, "sample_as_of": sample.as_of_utc})
+    return Kept("begin", True, lines, {"database": _where(db), **counts, "sample_as_of": own_date})
 
 
 def _fill(writing: store.Writing, sample: Any) -> dict[str, int]:

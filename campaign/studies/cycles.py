@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import replace
+from itertools import pairwise
 
 from campaign.model.measured import Measured, Range
 from campaign.model.records import SystemRecord
@@ -88,7 +89,9 @@ def count_is_safe(cycles: int, period_d: float, epoch_sigma_d: float, period_sig
     return SAFE_SIGMA * math.hypot(epoch_sigma_d, cycles * period_sigma_d) < 0.5 * period_d
 
 
-def with_cycles(record: SystemRecord, predicted: Sequence[tuple[int, float]], period_d: float | None) -> tuple[Episode, ...]:
+def with_cycles(
+    record: SystemRecord, predicted: Sequence[tuple[int, float]], period_d: float | None
+) -> tuple[Episode, ...]:
     """Give every confirmed episode its cycle: the stored one, else that of the nearest predicted onset.
 
     Parameters
@@ -117,7 +120,7 @@ def with_cycles(record: SystemRecord, predicted: Sequence[tuple[int, float]], pe
         return ()
     dates = [_date(e) or 0.0 for e in confirmed]
     if period_d is None:
-        gaps = [b - a for a, b in zip(dates, dates[1:], strict=False) if b - a > 1.0]
+        gaps = [b - a for a, b in pairwise(dates) if b - a > 1.0]
         period_d = min(gaps) if gaps else None
     if predicted:
         origin_cycle, origin = predicted[0]

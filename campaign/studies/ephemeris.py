@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from campaign.errors import Conflict, InputRefused
 from campaign.model.forecasts import EphemerisResult, EphemerisRow
@@ -15,6 +16,7 @@ from campaign.studies.cycles import nominal_period_d
 from campaign.studies.periastron import omega_b_deg, periastron_epoch
 from campaign.studies.rows import distance_of
 
+FloatArray = NDArray[np.float64]
 MOST_ROWS = 100_000
 
 
@@ -126,7 +128,7 @@ def _columns(
     record: SystemRecord,
     solution: Solution,
     period_d: float,
-    phase: np.ndarray,  # type: ignore[type-arg]
+    phase: FloatArray,
     e: float | None,
     assumptions: list[str],
 ) -> tuple[Column, ...]:
@@ -146,16 +148,18 @@ def _columns(
     if a_mas is not None and solution.inclination_deg is not None and omega_b is not None:
         node = solution.node_deg.value if solution.node_deg is not None else 0.0
         north, east, _ = orbit.sky_position(
-            nu, ratio * a_mas, np.radians(omega_b), np.radians(solution.inclination_deg.value), np.radians(node)
+            nu,
+            ratio * a_mas,
+            np.radians(omega_b),
+            np.radians(solution.inclination_deg.value),
+            np.radians(node),
         )
         projected = _floats(np.hypot(north, east))
         if solution.node_deg is not None:
             angle = _floats(np.degrees(np.arctan2(east, north)) % 360.0)
         else:
             assumptions.append("no node: no position angle")
-    velocities = [
-        _velocity(nu, e, solution, star, omega_b) for star in ("A", "B")
-    ]
+    velocities = [_velocity(nu, e, solution, star, omega_b) for star in ("A", "B")]
     return (
         _floats(np.degrees(nu)),
         _floats(ratio * a_au) if a_au is not None else empty,
@@ -198,7 +202,9 @@ def semi_major_axis_au(record: SystemRecord, solution: Solution, period_d: float
     k_a, k_b, tilt, e = solution.k_a_kms, solution.k_b_kms, solution.inclination_deg, solution.eccentricity
     if k_a is not None and k_b is not None and tilt is not None and e is not None:
         return float(
-            masses.semi_major_axis_from_velocities(period_d, e.value, k_a.value, k_b.value, np.radians(tilt.value))
+            masses.semi_major_axis_from_velocities(
+                period_d, e.value, k_a.value, k_b.value, np.radians(tilt.value)
+            )
         )
     mass_a, mass_b = record.system.star_a.mass_msun, record.system.star_b.mass_msun
     if mass_a is not None and mass_b is not None:
@@ -215,7 +221,7 @@ def _a_mas(solution: Solution, a_au: float | None, distance: Measured | None) ->
 
 
 def _velocity(
-    nu: np.ndarray,  # type: ignore[type-arg]
+    nu: FloatArray,
     e: float,
     solution: Solution,
     star: str,
@@ -229,5 +235,5 @@ def _velocity(
     return _floats(orbit.radial_velocity(nu, e, k.value, np.radians(omega), gamma))
 
 
-def _floats(values: np.ndarray) -> Column:  # type: ignore[type-arg]
+def _floats(values: FloatArray) -> Column:
     return [float(v) for v in np.atleast_1d(values)]

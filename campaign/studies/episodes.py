@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import replace
+from itertools import pairwise
 
 from campaign.catalogue import episodes, records, store, systems
 from campaign.errors import InputRefused
@@ -14,7 +15,11 @@ from campaign.studies.instants import moment_of, spoken_moment
 
 
 def add_episode(
-    db: str, stamp: Stamp, system_name: str, draft: Episode, dates: Mapping[str, tuple[TypedInstant, str | None, str | None]]
+    db: str,
+    stamp: Stamp,
+    system_name: str,
+    draft: Episode,
+    dates: Mapping[str, tuple[TypedInstant, str | None, str | None]],
 ) -> Kept:
     """Add a confirmed episode with the dates that are known of it.
 
@@ -56,7 +61,7 @@ def add_episode(
         system = systems.find_system(writing.connection, system_name)
         dated = {n: DatedEvent(moment_of(t, system), band, method) for n, (t, band, method) in dates.items()}
         ordered = [(n, dated[n].moment.bmjd_tdb) for n in ("onset", "maximum", "end") if n in dated]
-        for (first, earlier), (second, later) in zip(ordered, ordered[1:], strict=False):
+        for (first, earlier), (second, later) in pairwise(ordered):
             if later < earlier:
                 raise InputRefused(
                     f"The {second} would come before the {first}.",
@@ -64,12 +69,20 @@ def add_episode(
                     hint="Check the dates; the order is onset, maximum, end.",
                     code="episode-order",
                 )
-        episode = replace(draft, system_id=system.id, **dated)
+        episode = replace(
+            draft,
+            system_id=system.id,
+            onset=dated.get("onset"),
+            maximum=dated.get("maximum"),
+            end=dated.get("end"),
+        )
         episode_id = episodes.add_episode(writing, episode)
         writing.summarise(f"added a confirmed episode of {system.name}")
     lines = [f"{system.name}: confirmed episode {episode_id}"]
     lines.extend(f"{name} understood as {spoken_moment(event.moment)}" for name, event in dated.items())
-    return Kept("episodes-add", True, tuple(lines), {"system": system.name, "id": episode_id, "cycle": draft.cycle})
+    return Kept(
+        "episodes-add", True, tuple(lines), {"system": system.name, "id": episode_id, "cycle": draft.cycle}
+    )
 
 
 def list_episodes(db: str, system_name: str | None) -> list[tuple[str, Episode]]:

@@ -95,7 +95,9 @@ def _explain_event(forecast: EventForecast, prepared: Prepared, seed: int) -> Ex
     stories = [_orbit_story(prepared.rows[i], forecast.event, cycle, seed) for i in unit.rows]
     if len(stories) == 1:
         return ExplainedEvent(forecast, *stories[0])
-    return ExplainedEvent(forecast, *_mixture_story(stories, prepared, unit.rows, unit.weights, forecast, seed))
+    return ExplainedEvent(
+        forecast, *_mixture_story(stories, prepared, unit.rows, unit.weights, forecast, seed)
+    )
 
 
 def _total_only(forecast: EventForecast) -> tuple[VarianceTerm, ...]:
@@ -103,12 +105,18 @@ def _total_only(forecast: EventForecast) -> tuple[VarianceTerm, ...]:
     return (VarianceTerm("dating of the observation", sigma, ""),) if sigma else ()
 
 
-def _learned_story(learned: LearnedDates, event: EventName, cycle: int) -> tuple[str, tuple[VarianceTerm, ...]]:
+def _learned_story(
+    learned: LearnedDates, event: EventName, cycle: int
+) -> tuple[str, tuple[VarianceTerm, ...]]:
     prediction = learned.predict(event, cycle)
     scatter = float(np.sqrt(prediction.weights @ prediction.scatters_d**2))
     line = float(np.sqrt(prediction.weights @ (prediction.sigmas_d**2 - prediction.scatters_d**2)))
     count = learned.cycles[event].size
-    prior = "with the stated prior" if prediction.prior_used else f"{prediction.degrees_of_freedom} degrees of freedom"
+    prior = (
+        "with the stated prior"
+        if prediction.prior_used
+        else f"{prediction.degrees_of_freedom} degrees of freedom"
+    )
     text = f"line through {count} dated {'onset' if event == 'onset' else event}s, carried to cycle {cycle}"
     return text, (
         VarianceTerm("line: constant and period", line, "grows with the distance from the dated cycles"),
@@ -121,9 +129,12 @@ def _orbit_story(
 ) -> tuple[str, tuple[VarianceTerm, ...]]:
     step = cycle - row.epoch_cycle
     epoch, period = row.values["epoch"][0], row.values["period_d"][0]
-    text = f"T({cycle}) = T0 {'+' if step >= 0 else '-'} {abs(step)} P = {epoch:.3f} {step:+d} x {period:.4f} = {epoch + step * period:.3f}"
-    nominal = _median(row, event, cycle, seed)
     base = epoch + step * period
+    sign = "+" if step >= 0 else "-"
+    text = (
+        f"T({cycle}) = T0 {sign} {abs(step)} P = {epoch:.3f} {sign} {abs(step)} x {period:.4f} = {base:.3f}"
+    )
+    nominal = _median(row, event, cycle, seed)
     if event != row.mark:
         text += f"; {event} = T({cycle}) {nominal - base:+.2f} d{_reason(row, event)} = {nominal:.3f}"
     return text, _terms(row, event, cycle, seed)
@@ -148,7 +159,8 @@ def _with_errors(row: ForecastRow, kept: set[str]) -> ForecastRow:
     """The row with only the named errors left, and no scatter unless it is named."""
     one = copy(row)
     one.values = {
-        name: (v, m if name in kept else 0.0, p if name in kept else 0.0) for name, (v, m, p) in row.values.items()
+        name: (v, m if name in kept else 0.0, p if name in kept else 0.0)
+        for name, (v, m, p) in row.values.items()
     }
     if row.rule is not None:
         one.rule = DustRule(
@@ -184,14 +196,18 @@ def _terms(row: ForecastRow, event: EventName, cycle: int, seed: int) -> tuple[V
         note = f"{abs(step)} cycles" if name == "period_d" else ""
         if size > 0.0:
             terms.append(VarianceTerm(SPOKEN[name], size, note))
-    scatter = getattr(row.rule, f"scatter_{event}_d", None) if row.rule is not None and event in SCATTERS else None
+    scatter = (
+        getattr(row.rule, f"scatter_{event}_d", None) if row.rule is not None and event in SCATTERS else None
+    )
     if scatter:
         terms.append(VarianceTerm("cycle-to-cycle scatter", float(scatter), ""))
     if covariance is not None:
         both = covariance.between("epoch", "period_d")
         if both:
             size = float(np.sqrt(abs(2.0 * step * both)))
-            terms.append(VarianceTerm("covariance of epoch and period", float(np.copysign(size, step * both)), ""))
+            terms.append(
+                VarianceTerm("covariance of epoch and period", float(np.copysign(size, step * both)), "")
+            )
     return _with_remainder(row, event, cycle, seed, terms)
 
 
@@ -236,11 +252,14 @@ def _mixture_story(
     mean = float(share @ centres)
     within = np.array([np.sqrt(sum(t.size_d**2 for t in terms)) for _, terms in stories])
     terms = [
-        VarianceTerm("between the solutions", float(np.sqrt(share @ (centres - mean) ** 2)), "their disagreement"),
+        VarianceTerm(
+            "between the solutions", float(np.sqrt(share @ (centres - mean) ** 2)), "their disagreement"
+        ),
         VarianceTerm("within the solutions", float(np.sqrt(share @ within**2)), "their own errors"),
     ]
     text = " | ".join(
-        f"{_label(prepared.rows[i])} ({w:.2g}): {story}" for i, w, (story, _) in zip(rows, weights, stories, strict=True)
+        f"{_label(prepared.rows[i])} ({w:.2g}): {story}"
+        for i, w, (story, _) in zip(rows, weights, stories, strict=True)
     )
     return text, tuple(terms)
 
@@ -342,12 +361,15 @@ def _cycle_count(prepared: Prepared, events: Sequence[EventForecast]) -> tuple[s
             listed = sorted({e.cycle for e in events if e.cycle is not None})
             lines.append(f"{row.solution.label}: its epoch is cycle {row.epoch_cycle} of this system")
             if row.solution.published_cycle_offset:
-                lines.append(f"published counts run {row.solution.published_cycle_offset:+d} ahead of the system's")
+                lines.append(
+                    f"published counts run {row.solution.published_cycle_offset:+d} ahead of the system's"
+                )
             for cycle in listed:
                 step = cycle - row.epoch_cycle
                 safe = count_is_safe(
                     step, period, max(epoch_minus or 0.0, epoch_plus or 0.0), max(minus or 0.0, plus or 0.0)
                 )
                 verdict = "count is safe" if safe else "count may be off by one"
-                lines.append(f"cycle {cycle}: {abs(step)} periods {'after' if step >= 0 else 'before'} the epoch, {verdict}")
+                side = "after" if step >= 0 else "before"
+                lines.append(f"cycle {cycle}: {abs(step)} periods {side} the epoch, {verdict}")
     return tuple(dict.fromkeys(lines))

@@ -20,7 +20,7 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 # Probabilities at which the distributions of onset and end are kept for the timeline and the status.
-GRID = (np.arange(101) + 0.5) / 101.0
+GRID: FloatArray = (np.arange(101, dtype=np.float64) + 0.5) / 101.0
 # Elements (draws times rows) of one block: a few arrays of this size stay in a core's cache.
 _BLOCK = 65_536
 _PILOT_DRAWS = 64
@@ -94,11 +94,15 @@ def periastron_sigma_d(sampler: Sampler, index: IntArray, cycles: IntArray) -> F
     Source: var T_k = var T0 + k^2 var P + 2 k cov(T0, P).
     """
     step = cycles - sampler.epoch_cycle[index]
-    variance = _variance(sampler.columns["epoch"][index]) + step**2 * _variance(sampler.columns["period_d"][index])
+    variance = _variance(sampler.columns["epoch"][index]) + step**2 * _variance(
+        sampler.columns["period_d"][index]
+    )
     ranged = sampler.period_is_range[index]
     if ranged.any():
         half = sampler.columns["period_d"][index, 1]
-        variance = np.where(ranged, _variance(sampler.columns["epoch"][index]) + step**2 * half**2 / 3.0, variance)
+        variance = np.where(
+            ranged, _variance(sampler.columns["epoch"][index]) + step**2 * half**2 / 3.0, variance
+        )
     for position, row in enumerate(index):
         if int(row) in sampler.correlated:
             solution = sampler.rows[row].solution
@@ -186,7 +190,7 @@ class Forecaster:
             event = learned.events()[0]
             last_cycle, last_date = learned.cycles[event][-1], learned.dates_d[event][-1]
             return int(last_cycle + round((window.start - last_date) / period))
-        return self.rows[row].epoch_cycle + round((window.start - epoch) / period)
+        return self.rows[row].epoch_cycle + round(float((window.start - epoch) / period))
 
     # ---------------------------------------------------------------- dates
 
@@ -245,7 +249,9 @@ class Forecaster:
                     result.append(self._collect(unit, event, cycle, summary, position))
         return result
 
-    def _collect(self, unit: int, event: EventName, cycle: int, summary: Summary, position: int) -> DatedEvent:
+    def _collect(
+        self, unit: int, event: EventName, cycle: int, summary: Summary, position: int
+    ) -> DatedEvent:
         one = self.units[unit]
         missing: dict[str, None] = {}
         for row in one.rows:
@@ -326,7 +332,7 @@ class Forecaster:
     def _exactly_normal(self, event: EventName, rows: IntArray) -> NDArray[np.bool_]:
         """Rows whose date is a sum of normal errors: the marked event itself, and the rule 'lag'."""
         columns, sampler = self.sampler.columns, self.sampler
-        normal = ~sampler.period_is_range[rows]
+        normal: NDArray[np.bool_] = ~sampler.period_is_range[rows]
         for name in ("epoch", "period_d"):
             normal &= columns[name][rows, 1] == columns[name][rows, 2]
         # Far from zero, so that nothing of the period is cut off.
@@ -336,7 +342,7 @@ class Forecaster:
             lag = (sampler.rule[rows] == RULE_CODES["lag"]) & (sampler.mark[rows] == MARK_CODES["periastron"])
             direct |= lag & (columns[event][rows, 1] == columns[event][rows, 2])
             direct &= sampler.rule[rows] != RULE_CODES["learned"]
-        return normal & direct
+        return np.logical_and(normal, direct)
 
     def _normal_summary(self, event: EventName, rows: IntArray, cycles: IntArray, window: Window) -> Summary:
         from scipy.special import ndtr
@@ -422,4 +428,4 @@ def summarise(times: FloatArray, window: Window, keep_grid: bool) -> Summary:
 
 def share_before(grid: FloatArray, instant: float | FloatArray) -> FloatArray:
     """Probability that an event with quantiles ``grid`` happens before an instant, given it happens."""
-    return np.interp(instant, grid, GRID, left=0.0, right=1.0)
+    return np.asarray(np.interp(instant, grid, GRID, left=0.0, right=1.0), dtype=np.float64)

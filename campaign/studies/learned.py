@@ -100,7 +100,9 @@ def learn(row: ForecastRow, episodes: tuple[Episode, ...]) -> LearnedDates | Non
     learned = LearnedDates(
         cycles={e: np.array(cycles[e], dtype=float) for e in SCATTERS},
         dates_d={e: np.array(dates[e], dtype=float) for e in SCATTERS},
-        sigmas_d={e: np.array([assumed if s is None else s for s in sigmas[e]], dtype=float) for e in SCATTERS},
+        sigmas_d={
+            e: np.array([assumed if s is None else s for s in sigmas[e]], dtype=float) for e in SCATTERS
+        },
         period_d=period,
         period_sigma_d=period_sigma,
         rough_period_d=rough,
@@ -110,6 +112,6 @@ def learn(row: ForecastRow, episodes: tuple[Episode, ...]) -> LearnedDates | Non
 
 
 def _rough_period(cycles: list[float], dates: list[float]) -> float | None:
-    if len(set(cycles)) < 2:  # noqa: PLR2004
+    if len(set(cycles)) < 2:
         return None
     return float(np.polynomial.polynomial.polyfit(cycles, dates, 1)[1])

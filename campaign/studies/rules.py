@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from itertools import pairwise
 
 from campaign.catalogue import rules, store, systems
 from campaign.errors import InputRefused
@@ -78,10 +79,11 @@ def show_rule(db: str, system_name: str) -> tuple[str, DustRule | None]:
 
 def _check(rule: DustRule) -> None:
     if rule.kind in ("phase", "lag") and rule.onset is None and rule.maximum is None and rule.end is None:
+        example = "-0.02±0.005" if rule.kind == "phase" else '"-40±10 d"'
         raise InputRefused(
             f"The rule '{rule.kind}' says nothing.",
             why="It needs the offset of at least one of onset, maximum and end from periastron.",
-            hint=f"For example --{rule.kind}-onset {'-0.02±0.005' if rule.kind == 'phase' else chr(34) + '-40±10 d' + chr(34)}",
+            hint=f"For example --{rule.kind}-onset {example}.",
             code="rule-empty",
         )
     if rule.kind == "separation" and rule.critical_separation_au is None:
@@ -103,8 +105,10 @@ def _check(rule: DustRule) -> None:
 
 
 def _check_order(rule: DustRule) -> None:
-    stages = [(n, v.value) for n, v in (("onset", rule.onset), ("maximum", rule.maximum), ("end", rule.end)) if v]
-    for (first, earlier), (second, later) in zip(stages, stages[1:], strict=False):
+    stages = [
+        (n, v.value) for n, v in (("onset", rule.onset), ("maximum", rule.maximum), ("end", rule.end)) if v
+    ]
+    for (first, earlier), (second, later) in pairwise(stages):
         if later < earlier:
             raise InputRefused(
                 f"The {second} would come before the {first}.",

@@ -75,7 +75,7 @@ class Sampler:
             return {}
         names = ["omega_b_deg" if name == "omega_deg" else name for name in covariance.names]
         known = [i for i, name in enumerate(names) if name in row.values and name in DOMAINS]
-        if len(known) < 2:  # noqa: PLR2004
+        if len(known) < 2:
             return {}
         matrix = np.array(covariance.matrix, dtype=float)[np.ix_(known, known)]
         sigma = np.sqrt(np.diag(matrix))
@@ -122,7 +122,9 @@ class Sampler:
         period = self.draw("period_d", index)
         times = self.draw("epoch", index) + (cycles - self.epoch_cycle[index])[:, None] * period
         for code, event in ((1, "A in front"), (2, "B in front")):
-            marked = np.flatnonzero((self.mark[index] == code) & ~np.isnan(self.columns["omega_b_deg"][index, 0]))
+            marked = np.flatnonzero(
+                (self.mark[index] == code) & ~np.isnan(self.columns["omega_b_deg"][index, 0])
+            )
             if marked.size:
                 offset = self._conjunction_phase(index[marked], event)  # type: ignore[arg-type]
                 times[marked] -= offset * period[marked]

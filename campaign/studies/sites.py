@@ -39,7 +39,12 @@ def add_site(db: str, stamp: Stamp, site: Site) -> Kept:
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
         site_id = kept.add_site(writing, site)
         writing.summarise(f"added site {site.name}")
-    return Kept("site-add", True, (f"added site {site.name}: {describe_site(site)}",), {"site": site.name, "id": site_id})
+    return Kept(
+        "site-add",
+        True,
+        (f"added site {site.name}: {describe_site(site)}",),
+        {"site": site.name, "id": site_id},
+    )
 
 
 def _check(site: Site) -> None:

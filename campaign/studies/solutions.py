@@ -107,7 +107,13 @@ def add_solution(
         lines.append(f"epoch ({solution.epoch_marks}) understood as {spoken_moment(moment)}")
     if not adopt:
         lines.append(f'adopt it with: campaign solution adopt "{system.name}" "{solution.label}"')
-    data = {"system": system.name, "solution": solution.label, "id": solution_id, "adopted": adopt, "epoch_cycle": cycle}
+    data = {
+        "system": system.name,
+        "solution": solution.label,
+        "id": solution_id,
+        "adopted": adopt,
+        "epoch_cycle": cycle,
+    }
     return Kept("solution-add", True, tuple(lines), data, tuple(warnings))
 
 
@@ -123,7 +129,9 @@ def _covariance(solution: Solution, correlations: Sequence[tuple[str, str, float
     names = tuple(dict.fromkeys(named))
     sigmas = [_sigma(solution, name) for name in names]
     matrix = [[s * s if i == j else 0.0 for j in range(len(names))] for i, s in enumerate(sigmas)]
-    for (first, second), (_, _, value) in zip(zip(named[::2], named[1::2], strict=True), correlations, strict=True):
+    for (first, second), (_, _, value) in zip(
+        zip(named[::2], named[1::2], strict=True), correlations, strict=True
+    ):
         i, j = names.index(first), names.index(second)
         matrix[i][j] = matrix[j][i] = value * sigmas[i] * sigmas[j]
     scale = np.array(sigmas)
@@ -131,7 +139,7 @@ def _covariance(solution: Solution, correlations: Sequence[tuple[str, str, float
         raise InputRefused(
             "These correlations cannot hold together.",
             why="No set of elements could scatter so: their correlation matrix is not positive definite.",
-            hint="Check signs and values; a correlation of 0.99 with one element bounds that with the others.",
+            hint="Check signs and values: a correlation of 0.99 with one element bounds the others.",
             code="correlation-refused",
         )
     return Covariance(names, tuple(tuple(row) for row in matrix))
@@ -197,11 +205,15 @@ def adopt_solutions(
             text = f"adopted '{solution.label}' alone"
         else:
             kept.adopt_weighted(
-                writing, system.id, {found[label].id: float(weight or 0.0) for label, weight in weights.items()}
+                writing,
+                system.id,
+                {found[label].id: float(weight or 0.0) for label, weight in weights.items()},
             )
             for solution in found.values():
                 _anchor(writing, systems.get_system(writing.connection, system.id), solution)
-            text = "adopted " + ", ".join(f"'{label}' with weight {weight:g}" for label, weight in weights.items())
+            text = "adopted " + ", ".join(
+                f"'{label}' with weight {weight:g}" for label, weight in weights.items()
+            )
         writing.summarise(f"{system.name}: {text}")
         changed = writing.changed
     data = {"system": system.name, "adopted": dict(weights)}
@@ -245,7 +257,8 @@ def _cycle_in(system: System, solution: Solution) -> tuple[int | None, list[str]
     if count_is_safe(cycle, period, solution.epoch.plus_d or 0.0, sigma or 0.0):
         return cycle, []
     return cycle, [
-        f"the epoch of '{solution.label}' is counted as cycle {cycle}, but with its errors the count may be off by one"
+        f"the epoch of '{solution.label}' is counted as cycle {cycle}, but with its errors the count "
+        "may be off by one"
     ]
 
 

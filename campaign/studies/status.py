@@ -144,7 +144,9 @@ def onset_state(
                 "late",
                 "the 95 % interval has passed and quiet observations cover it: elements and data disagree",
             )
-        return OnsetState("unseen", f"observations would have shown the onset in {share:.0%} of its interval only")
+        return OnsetState(
+            "unseen", f"observations would have shown the onset in {share:.0%} of its interval only"
+        )
     return OnsetState("unseen", "no observation would have shown it")
 
 
@@ -225,4 +227,3 @@ def plain_status(event: DatedEvent, as_of: float) -> Status:
     if event.phase_lost or event.quantiles is None:
         return "phase lost"
     return "past" if float(event.quantiles[0]) <= as_of else "expected"
-

@@ -6,6 +6,7 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from campaign.catalogue import observations, records, store, systems
 from campaign.errors import Conflict
@@ -18,6 +19,7 @@ from campaign.studies.cycles import nominal_period_d
 from campaign.studies.rows import distance_of
 from campaign.studies.sampling import DEFAULT_SEED
 
+FloatArray = NDArray[np.float64]
 _DRAWS = 20_000
 
 
@@ -54,10 +56,8 @@ def add_system(db: str, stamp: Stamp, system: System) -> Kept:
     if system.distance_pc is None and system.parallax_mas is not None:
         distance = distance_of(SystemRecord(system))
         if distance is not None and distance.minus is not None and distance.plus is not None:
-            lines.append(
-                f"distance {distance.value:.0f} +{distance.plus:.0f} -{distance.minus:.0f} pc from the parallax, "
-                + parallax_method(system)
-            )
+            size = f"{distance.value:.0f} +{distance.plus:.0f} -{distance.minus:.0f} pc"
+            lines.append(f"distance {size} from the parallax, {parallax_method(system)}")
     lines.append(f'next: campaign solution add "{system.name}" --period ... --epoch ... --adopt')
     return Kept("system-add", True, tuple(lines), {"system": system.name, "id": system_id})
 
@@ -339,9 +339,10 @@ def derive(record: SystemRecord, solution: Solution) -> tuple[DerivedValue, ...]
     names = ["period", "e", "k_a", "k_b", "i", "a_au", "a_arcsec", "distance"]
     normals = stratified_normals(names, _DRAWS, DEFAULT_SEED)
 
-    def drawn(name: str, value: Measured, low: float, high: float) -> np.ndarray:  # type: ignore[type-arg]
-        column = [np.array([[x]]) for x in (value.value, value.minus or 0.0, value.plus or 0.0)]
-        return two_piece_within(*column, normals[name][None, :], low, high)[0]
+    def drawn(name: str, value: Measured, low: float, high: float) -> FloatArray:
+        middle, minus, plus = (np.array([[x]]) for x in (value.value, value.minus or 0.0, value.plus or 0.0))
+        column = two_piece_within(middle, minus, plus, normals[name][None, :], low, high)
+        return column.ravel()
 
     def add(quantity: str, values: Any, unit: str, how: str, *inputs: Measured | None) -> None:
         low, median, high = np.quantile(values, [0.16, 0.5, 0.84])

@@ -10,7 +10,8 @@ import numpy as np
 from campaign.model.arrays import PhotometryArrays
 from campaign.model.forecasts import EVENT_NAMES, EventForecast, EventName, UpcomingResult
 from campaign.model.records import SystemRecord
-from campaign.model.systems import DustRule, Solution
+from campaign.model.systems import DatedEvent as DatedEpisodeEvent
+from campaign.model.systems import DustRule, Episode, Solution
 from campaign.physics.timescales import utc_iso
 from campaign.studies.basis import describe_basis, dust_windows, event_forecasts
 from campaign.studies.cycles import nominal_period_d, with_cycles
@@ -24,11 +25,6 @@ from campaign.studies.status import OnsetState, onset_state
 
 # More than this and nobody reads a timeline.
 TIMELINE_SYSTEMS = 200
-
-UTC_NOTE = (
-    "utc is the barycentric instant in the UTC scale: no light time to the Earth (at most 8.4 min), and leap "
-    "seconds still to be announced are unknown"
-)
 
 
 @dataclass(frozen=True, slots=True)
@@ -97,14 +93,12 @@ def forecast_campaign(
     Source: design, section 4 (Forecast, Status, Phase lost).
     """
     prepared = prepare(records, photometry, question)
-    forecaster = Forecaster(
-        prepared.rows, prepared.units, prepared.learned, question.draws, question.seed
-    )
+    forecaster = Forecaster(prepared.rows, prepared.units, prepared.learned, question.draws, question.seed)
     # The status of an onset needs the end, whatever is listed.
     wanted = tuple(e for e in EVENT_NAMES if e in question.events or e in ("onset", "end"))
     dated = forecaster.run(question.window, wanted)
     states = onset_states(prepared, forecaster, dated, question)
-    listed = [d for d in dated if d.event in question.events and _is_listed(d, states, prepared, question)]
+    listed = [d for d in dated if d.event in question.events and _is_listed(d, states, question)]
     listed = [d for d in listed if d.in_window is None or d.in_window >= question.min_probability]
     dateless = dateless_events(prepared, question)
     events = event_forecasts(prepared.rows, prepared.units, listed + dateless, states, question.as_of)
@@ -128,7 +122,7 @@ def forecast_campaign(
         bases=describe_basis(prepared.rows, prepared.units, prepared.learned, records),
         draws=question.draws,
         seed=question.seed,
-        assumptions=_assumptions(prepared, question),
+        assumptions=_assumptions(prepared),
     )
 
 
@@ -200,15 +194,19 @@ def hide_later_episodes(record: SystemRecord, as_of: float) -> SystemRecord:
     """
     kept = []
     for episode in record.episodes:
-        changes = {
-            name: None
-            for name in ("onset", "maximum", "end")
-            if (dated := getattr(episode, name)) is not None and dated.moment.bmjd_tdb > as_of
-        }
-        cut = replace(episode, **changes) if changes else episode
+        cut = replace(
+            episode,
+            onset=_if_past(episode.onset, as_of),
+            maximum=_if_past(episode.maximum, as_of),
+            end=_if_past(episode.end, as_of),
+        )
         if cut.onset or cut.maximum or cut.end:
             kept.append(cut)
-    return replace(record, episodes=tuple(kept)) if len(kept) or record.episodes else record
+    return replace(record, episodes=tuple(kept)) if kept or record.episodes else record
+
+
+def _if_past(dated: DatedEpisodeEvent | None, as_of: float) -> DatedEpisodeEvent | None:
+    return dated if dated is not None and dated.moment.bmjd_tdb <= as_of else None
 
 
 def _speakers(record: SystemRecord, mode: str) -> list[tuple[tuple[Solution | None, ...], tuple[float, ...]]]:
@@ -247,7 +245,7 @@ def _add_row(prepared: Prepared, record: SystemRecord, solution: Solution | None
     return position
 
 
-def _episodes_with_cycles(row: ForecastRow) -> tuple:  # type: ignore[type-arg]
+def _episodes_with_cycles(row: ForecastRow) -> tuple[Episode, ...]:
     period = nominal_period_d(row.solution) if row.solution is not None else None
     predicted = []
     if row.solution is not None and "epoch" in row.values and period is not None:
@@ -312,7 +310,6 @@ def onset_states(
 def _is_listed(
     event: DatedEvent,
     states: Mapping[tuple[int, int | None], OnsetState],
-    prepared: Prepared,
     question: Question,
 ) -> bool:
     if event.quantiles is None:
@@ -326,7 +323,7 @@ def _is_listed(
     if low <= question.end and high >= question.start:
         return True
     if event.event == "onset" and state is not None and high < question.start:
-        recent = question.as_of - high < 365.25  # noqa: PLR2004
+        recent = question.as_of - high < 365.25
         if state.status in ("under way", "suspected", "late"):
             return _is_latest(event, states, question)
         return state.status == "unseen" and recent and _is_latest(event, states, question)
@@ -368,7 +365,12 @@ def dateless_events(prepared: Prepared, question: Question) -> list[DatedEvent]:
     for position, unit in enumerate(prepared.units):
         row = prepared.rows[unit.rows[0]]
         solution = row.solution
-        if row.period_limit is None or solution is None or solution.epoch is None or unit.rows[0] in prepared.learned:
+        if (
+            row.period_limit is None
+            or solution is None
+            or solution.epoch is None
+            or unit.rows[0] in prepared.learned
+        ):
             continue
         event = _marked_event(solution)
         if event not in question.events:
@@ -443,14 +445,13 @@ def _date_key(event: EventForecast) -> tuple[bool, float, str]:
     return (not dated, event.bmjd_tdb.median if event.bmjd_tdb is not None else 0.0, event.system)
 
 
-def _assumptions(prepared: Prepared, question: Question) -> tuple[str, ...]:
+def _assumptions(prepared: Prepared) -> tuple[str, ...]:
     said: dict[str, list[str]] = {}
     for row in prepared.rows:
         for text in row.assumptions:
             said.setdefault(text, []).append(row.record.system.name)
     few = 4
-    lines = [
+    return tuple(
         f"{text} ({', '.join(names[:few])}{' and others' if len(names) > few else ''})"
         for text, names in said.items()
-    ]
-    return (UTC_NOTE, *lines)
+    )

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import UTC, datetime, timedelta
 from difflib import get_close_matches
 
@@ -260,15 +260,15 @@ def upcoming(campaign: Campaign, question: Question) -> UpcomingResult:
     -----
     Accuracy: see ``forecast_campaign``. Source: design, section 4.
     """
-    return _with_date_note(forecast_campaign(campaign.records, campaign.photometry, question), campaign, question)
+    return _with_date_note(
+        forecast_campaign(campaign.records, campaign.photometry, question), campaign, question
+    )
 
 
 def _with_date_note(result: UpcomingResult, campaign: Campaign, question: Question) -> UpcomingResult:
-    from dataclasses import replace
-
     if not campaign.is_sample:
         return result
-    own = campaign.own_as_of is not None and abs(question.as_of - campaign.own_as_of) < 1e-6  # noqa: PLR2004
+    own = campaign.own_as_of is not None and abs(question.as_of - campaign.own_as_of) < 1e-6
     text = "everything in the sample campaign is invented"
     if own:
         text += f"; its own date {result.as_of_utc[:10]} stands in for today"
@@ -294,8 +294,6 @@ def explain(campaign: Campaign, question: Question) -> ExplainedSystem:
     -----
     Accuracy: see ``campaign.studies.explain``. Source: propagation of errors.
     """
-    from dataclasses import replace
-
     from campaign.studies.explain import explain_system
 
     told = explain_system(campaign.records[0], campaign.photometry, question)
