@@ -64,15 +64,21 @@ def make_record(
     )
 
 
-def _anchor(solutions: tuple[Solution, ...], episodes: tuple[Episode, ...]) -> float | None:
-    """Where cycle 0 is counted from: the first adopted epoch, else the onset that is called cycle 0."""
+def _anchor(
+    solutions: tuple[Solution, ...], episodes: tuple[Episode, ...]
+) -> tuple[float | None, float | None]:
+    """Where cycle 0 is counted from, and by which period.
+
+    The first adopted epoch, else the onset that is called cycle 0, which has no period.
+    """
     for solution in solutions:
         if solution.adopted and solution.epoch is not None and solution.epoch_cycle == 0:
-            return solution.epoch.bmjd_tdb
+            period = solution.period_d.value if isinstance(solution.period_d, Measured) else None
+            return solution.epoch.bmjd_tdb, period
     for episode in episodes:
         if episode.cycle == 0 and episode.onset is not None:
-            return episode.onset.moment.bmjd_tdb
-    return None
+            return episode.onset.moment.bmjd_tdb, None
+    return None, None
 
 
 def _true_quantities(spec: SolutionSpec, truth: SystemTruth) -> dict[str, float]:
@@ -233,7 +239,10 @@ def _date(date: float | None, sigma_d: float, z: float, method: str, lopsided: b
 
 
 def _make_system(
-    rng: np.random.Generator, spec: SystemSpec, truth: SystemTruth, anchor: float | None
+    rng: np.random.Generator,
+    spec: SystemSpec,
+    truth: SystemTruth,
+    anchor: tuple[float | None, float | None],
 ) -> System:
     elements = truth.elements
     z = np.clip(rng.normal(size=3), -2.0, 2.0).tolist()
@@ -258,7 +267,8 @@ def _make_system(
         aliases=spec.aliases,
         star_a=_make_star(rng, "A", spec.star_a, elements.mass_a_msun, spec.stars_known),
         star_b=_make_star(rng, "B", spec.star_b, elements.mass_b_msun, spec.stars_known),
-        cycle_anchor_bmjd_tdb=anchor,
+        cycle_anchor_bmjd_tdb=anchor[0],
+        cycle_anchor_period_d=anchor[1],
     )
 
 

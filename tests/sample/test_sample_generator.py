@@ -166,6 +166,9 @@ def test_cycle_zero_is_the_first_adopted_epoch(sample):
         if adopted:
             assert adopted[0].epoch_cycle == 0
             assert record.system.cycle_anchor_bmjd_tdb == adopted[0].epoch.bmjd_tdb
+            period = adopted[0].period_d
+            counted_by = period.value if isinstance(period, Measured) else None
+            assert record.system.cycle_anchor_period_d == counted_by
             unweighted = [s for s in adopted if s.weight is None]
             assert len(adopted) == 1 or not unweighted
     limited = [s for r in sample.records for s in r.solutions if isinstance(s.period_d, Limit)]
