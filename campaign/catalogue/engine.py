@@ -16,10 +16,12 @@ from sqlalchemy import Connection, Engine, create_engine, event
 from sqlalchemy.pool import NullPool
 
 from campaign.catalogue.address import Address
-from campaign.catalogue.failures import missing
+from campaign.catalogue.failures import missing, not_a_database
 from campaign.errors import DatabaseUnusable
 
 BUSY_TIMEOUT_S: Final = 5.0
+# No SQLite database with content is shorter, in bytes.
+SMALLEST_PAGE: Final = 512
 
 # How a SQLite file may be opened: "ro" and "rw" never create it.
 FileMode = Literal["ro", "rw", "rwc"]
@@ -91,6 +93,13 @@ def refuse_unless_file(address: Address) -> None:
         ) from None
     if not size:
         raise missing(address)
+    refuse_too_short(address, size)
+
+
+def refuse_too_short(address: Address, size: int) -> None:
+    """Refuse a file too short for a database, which SQLite may take for an empty one and overwrite."""
+    if 0 < size < SMALLEST_PAGE:
+        raise not_a_database(address)
 
 
 def folder_given(address: Address) -> DatabaseUnusable:

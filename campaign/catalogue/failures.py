@@ -6,6 +6,7 @@ of their messages changes between versions and languages and decides nothing her
 
 from __future__ import annotations
 
+import re
 import sqlite3
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -82,7 +83,8 @@ def _from_postgresql(state: str | None, address: Address, text: str) -> Campaign
 
 
 def _constraint(kind: str, text: str) -> CampaignError:
-    details = {"constraint": kind, "database_message": text}
+    named = re.search(r"\b(?:ck|uq|fk)_\w+", text)
+    details = {"constraint": kind, "name": named.group() if named else None, "database_message": text}
     if kind in ("check", "notnull", "datatype"):
         return InputRefused(
             "A value is outside what the catalogue accepts.",

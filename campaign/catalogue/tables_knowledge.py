@@ -92,7 +92,8 @@ solutions = Table(
         "period_kind",
         "(period_kind IS NULL) = (period_d IS NULL)"
         " AND (period_high_d IS NULL OR period_kind = 'range')"
-        " AND (period_kind <> 'range' OR period_high_d IS NOT NULL)",
+        " AND (period_kind <> 'range' OR period_high_d IS NOT NULL)"
+        " AND (period_kind NOT IN ('above', 'below') OR period_limit_sigma IS NOT NULL)",
     ),
     check("eccentricity_range", "eccentricity >= 0 AND eccentricity < 1"),
     check("angles", "omega_deg BETWEEN -360 AND 360 AND node_deg BETWEEN -360 AND 360"),

@@ -86,7 +86,9 @@ observations = Table(
     UniqueConstraint("sameness"),
     check("value_given", "(kind IN ('attempt', 'remark')) = (value IS NULL)"),
     check("time_errors", "time_minus_d >= 0 AND time_plus_d >= 0"),
-    check("limit", "limit_side IS NULL OR (value IS NOT NULL AND limit_sigma > 0)"),
+    check(
+        "limit", "limit_side IS NULL OR (value IS NOT NULL AND limit_sigma IS NOT NULL AND limit_sigma > 0)"
+    ),
     check("spectral_range", "frequency_ghz > 0 AND energy_low_kev >= 0 AND energy_high_kev > energy_low_kev"),
     check("correlation", "correlation BETWEEN -1 AND 1"),
     check("plate_scale", "plate_scale_error >= 0"),

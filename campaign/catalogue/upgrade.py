@@ -23,7 +23,13 @@ from sqlalchemy import table as bare_table
 
 import campaign
 from campaign.catalogue.address import Address, Database, address_of
-from campaign.catalogue.engine import folder_given, migration_engine, refuse_unless_file, sqlite_connection
+from campaign.catalogue.engine import (
+    folder_given,
+    migration_engine,
+    refuse_too_short,
+    refuse_unless_file,
+    sqlite_connection,
+)
 from campaign.catalogue.failures import translated
 from campaign.catalogue.opening import foreign, newer, read_revision
 from campaign.catalogue.revision import FORMAT, HEAD_REVISION, KNOWN_REVISIONS
@@ -69,7 +75,7 @@ def begin_database(
     def work(connection: Connection, revision: str | None) -> UpgradeReport:
         if revision is not None:
             return UpgradeReport(False, revision, revision)
-        if _table_names(connection):
+        if _table_names(connection) or inspect(connection).get_view_names():
             raise foreign(address)
         _migrate(connection)
         _describe_campaign(connection, at)
@@ -123,6 +129,8 @@ def _refuse_bad_place(address: Address) -> None:
             hint="Make the folder first, or name another place with --db.",
             code="folder-missing",
         )
+    with suppress(OSError):
+        refuse_too_short(address, path.stat().st_size)
 
 
 def migrations_folder() -> Path:

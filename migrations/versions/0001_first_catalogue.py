@@ -248,7 +248,8 @@ def _create_solutions() -> None:
             "period_kind",
             "(period_kind IS NULL) = (period_d IS NULL)"
             " AND (period_high_d IS NULL OR period_kind = 'range')"
-            " AND (period_kind <> 'range' OR period_high_d IS NOT NULL)",
+            " AND (period_kind <> 'range' OR period_high_d IS NOT NULL)"
+            " AND (period_kind NOT IN ('above', 'below') OR period_limit_sigma IS NOT NULL)",
         ),
         check("solutions", "eccentricity_range", "eccentricity >= 0 AND eccentricity < 1"),
         check("solutions", "angles", "omega_deg BETWEEN -360 AND 360 AND node_deg BETWEEN -360 AND 360"),
@@ -466,7 +467,11 @@ def _create_observations() -> None:
         ),
         check("observations", "value_given", "(kind IN ('attempt', 'remark')) = (value IS NULL)"),
         check("observations", "time_errors", "time_minus_d >= 0 AND time_plus_d >= 0"),
-        check("observations", "limit", "limit_side IS NULL OR (value IS NOT NULL AND limit_sigma > 0)"),
+        check(
+            "observations",
+            "limit",
+            "limit_side IS NULL OR (value IS NOT NULL AND limit_sigma IS NOT NULL AND limit_sigma > 0)",
+        ),
         check(
             "observations",
             "spectral_range",
