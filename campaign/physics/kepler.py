@@ -54,8 +54,9 @@ def eccentric_anomaly(mean_anomaly_rad: ArrayLike, eccentricity: ArrayLike) -> F
 
     Notes
     -----
-    Accuracy: a few units in the last place for the numbers as given, at every e < 1 and every M. The
-    result's sensitivity to e itself is larger: e sin E/(E (1 - e cos E)), 1e4 at e = 0.9999 near periastron.
+    Accuracy: a few units in the last place for the numbers as given, at every e < 1 and every M above the
+    subnormal range (1e-290). The result's sensitivity to e itself is larger: e sin E/(E (1 - e cos E)),
+    1e4 at e = 0.9999 near periastron.
 
     Source: Markley 1995, Celest. Mech. Dyn. Astron. 63, 101: cubic starter from a Pade approximant of the
     sine, then one correction of fifth order, no iteration. The residual is formed as
