@@ -82,11 +82,13 @@ def add_observation(writing: Writing, observation: Observation) -> tuple[int, bo
         Its number, and whether it was there already: the same system, instant, kind, band, site and
         value, or the same ``uid``.
     """
-    row = _row(writing, observation, _Numbers(writing))
+    numbers = _Numbers(writing)
+    row = _row(writing, observation, numbers)
     known = _already_logged(writing.connection, [row])
     found = known.get(row["uid"]) or known.get(row["sameness"])
     if found is not None:
         return found, True
+    row["source_id"] = numbers.source(observation.source)
     return writing.insert(observations, {**row, "operation_id": writing.operation_id}), False
 
 
@@ -96,10 +98,12 @@ def add_observations(writing: Writing, entries: Sequence[Observation]) -> tuple[
     rows = [_row(writing, entry, numbers) for entry in entries]
     seen: set[str] = set(_already_logged(writing.connection, rows))
     fresh = []
-    for row in rows:
+    for row, entry in zip(rows, entries, strict=True):
         if row["uid"] in seen or row["sameness"] in seen:
             continue
         seen.update((row["uid"], row["sameness"]))
+        # Only now, so that what is known already does not bring a source with it.
+        row["source_id"] = numbers.source(entry.source)
         fresh.append(row)
     writing.insert_many(observations, fresh)
     return len(fresh), len(rows) - len(fresh)
@@ -306,6 +310,7 @@ class _Numbers:
 
 
 def _row(writing: Writing, observation: Observation, numbers: _Numbers) -> dict[str, Any]:
+    """Everything but the source, which is entered only with an observation that is new."""
     moment = observation.moment
     row: dict[str, Any] = {
         "uid": observation.uid or writing.new_uid(),
@@ -319,7 +324,6 @@ def _row(writing: Writing, observation: Observation, numbers: _Numbers) -> dict[
         **measured_values("value", observation.value),
         **measured_values("position_angle_deg", observation.position_angle_deg),
         "site_id": numbers.site(observation),
-        "source_id": numbers.source(observation.source),
         "entered_at": writing.at,
     }
     row["sameness"] = _sameness(row)

@@ -31,7 +31,7 @@ from campaign.catalogue.engine import (
     sqlite_connection,
 )
 from campaign.catalogue.failures import translated
-from campaign.catalogue.opening import foreign, newer, read_revision
+from campaign.catalogue.opening import foreign, newer, read_revision, refuse_other_revision
 from campaign.catalogue.revision import FORMAT, HEAD_REVISION, KNOWN_REVISIONS
 from campaign.catalogue.types import utc_text
 from campaign.errors import CampaignError, DatabaseUnusable, StorageFull
@@ -74,6 +74,7 @@ def begin_database(
 
     def work(connection: Connection, revision: str | None) -> UpgradeReport:
         if revision is not None:
+            refuse_other_revision(connection, address)
             return UpgradeReport(False, revision, revision)
         if _table_names(connection) or inspect(connection).get_view_names():
             raise foreign(address)
