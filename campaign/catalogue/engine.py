@@ -16,12 +16,10 @@ from sqlalchemy import Connection, Engine, create_engine, event
 from sqlalchemy.pool import NullPool
 
 from campaign.catalogue.address import Address
-from campaign.catalogue.failures import missing, not_a_database
+from campaign.catalogue.places import refuse_unless_file
 from campaign.errors import DatabaseUnusable
 
 BUSY_TIMEOUT_S: Final = 5.0
-# No SQLite database with content is shorter, in bytes.
-SMALLEST_PAGE: Final = 512
 
 # How a SQLite file may be opened: "ro" and "rw" never create it.
 FileMode = Literal["ro", "rw", "rwc"]
@@ -61,55 +59,6 @@ def migration_engine(address: Address, busy_timeout_s: float, mode: FileMode) ->
         _begin_with(engine, "BEGIN IMMEDIATE")
         return engine
     return _postgresql_engine(address, busy_timeout_s)
-
-
-def refuse_unless_file(address: Address) -> None:
-    """Refuse what SQLite would misreport: a missing path, a folder, a file without content.
-
-    Raises
-    ------
-    DatabaseUnusable
-    """
-    path = address.path
-    if path is None:
-        return
-    try:
-        if path.is_dir():
-            raise folder_given(address)
-        size = path.stat().st_size if path.exists() else None
-    except PermissionError:
-        raise DatabaseUnusable(
-            f"The database {address.shown} cannot be looked at.",
-            why="A folder on the way to it does not let you in.",
-            hint="Check the permissions of the folder, or choose another database with --db.",
-            code="database-cannot-open",
-        ) from None
-    except OSError as error:
-        raise DatabaseUnusable(
-            f"The database {address.shown} cannot be opened.",
-            why=error.strerror or "The operating system refuses the path.",
-            hint="Name another file with --db.",
-            code="database-cannot-open",
-        ) from None
-    if not size:
-        raise missing(address)
-    refuse_too_short(address, size)
-
-
-def refuse_too_short(address: Address, size: int) -> None:
-    """Refuse a file too short for a database, which SQLite may take for an empty one and overwrite."""
-    if 0 < size < SMALLEST_PAGE:
-        raise not_a_database(address)
-
-
-def folder_given(address: Address) -> DatabaseUnusable:
-    """A folder stands where the database file should."""
-    return DatabaseUnusable(
-        f"{address.shown} is a folder, not a database.",
-        why="A catalogue is one file.",
-        hint="Name the file inside it, for example --db " + os.path.join(address.shown, "campaign.db"),
-        code="database-is-folder",
-    )
 
 
 def sqlite_connection(

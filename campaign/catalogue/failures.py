@@ -158,6 +158,15 @@ def _cannot_open(address: Address) -> DatabaseUnusable:
     )
 
 
+def _interrupted(address: Address) -> DatabaseUnusable:
+    return DatabaseUnusable(
+        f"The database {address.shown} holds a change that was interrupted.",
+        why="It must be taken back before anybody can read, and you may not write there.",
+        hint="Let somebody who may write run any command on it once, for example: campaign system list.",
+        code="database-interrupted",
+    )
+
+
 def _disk_failed(address: Address) -> DatabaseUnusable:
     return _unusable(
         address,
@@ -203,6 +212,8 @@ _SQLITE_ERRORS: dict[str, Callable[[Address], CampaignError]] = {
     "SQLITE_NOTADB": not_a_database,
     "SQLITE_CORRUPT": _damaged,
     "SQLITE_CANTOPEN": _cannot_open,
+    "SQLITE_READONLY_ROLLBACK": _interrupted,
+    "SQLITE_READONLY_RECOVERY": _interrupted,
     "SQLITE_READONLY": read_only,
     "SQLITE_PERM": read_only,
     "SQLITE_AUTH": read_only,

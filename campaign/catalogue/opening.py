@@ -3,14 +3,14 @@
 from __future__ import annotations
 
 from contextlib import closing
-from pathlib import Path
 
 from sqlalchemy import Connection, text
 from sqlalchemy.exc import OperationalError, ProgrammingError
 
 from campaign.catalogue.address import Address
-from campaign.catalogue.engine import refuse_unless_file, sqlite_connection
+from campaign.catalogue.engine import sqlite_connection
 from campaign.catalogue.failures import translated
+from campaign.catalogue.places import has_leftover_journal, refuse_unless_file
 from campaign.catalogue.revision import HEAD_REVISION, KNOWN_REVISIONS
 from campaign.errors import CampaignError, DatabaseUnusable
 
@@ -97,7 +97,7 @@ def roll_back_interrupted_write(address: Address, busy_timeout_s: float) -> None
     Where it cannot be done (no permission, somebody writes just now) the reader tries as it is, and
     reports what it then finds.
     """
-    if address.path is None or not Path(f"{address.path}-journal").exists():
+    if address.path is None or not has_leftover_journal(address.path):
         return
     refuse_unless_file(address)
     try:

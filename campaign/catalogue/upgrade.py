@@ -23,15 +23,10 @@ from sqlalchemy import table as bare_table
 
 import campaign
 from campaign.catalogue.address import Address, Database, address_of
-from campaign.catalogue.engine import (
-    folder_given,
-    migration_engine,
-    refuse_too_short,
-    refuse_unless_file,
-    sqlite_connection,
-)
+from campaign.catalogue.engine import migration_engine, sqlite_connection
 from campaign.catalogue.failures import translated
 from campaign.catalogue.opening import foreign, newer, read_revision, refuse_other_revision
+from campaign.catalogue.places import refuse_bad_place, refuse_unless_file
 from campaign.catalogue.revision import FORMAT, HEAD_REVISION, KNOWN_REVISIONS
 from campaign.catalogue.types import utc_text
 from campaign.errors import CampaignError, DatabaseUnusable, StorageFull
@@ -70,7 +65,7 @@ def begin_database(
         With nothing made.
     """
     address = address_of(database)
-    _refuse_bad_place(address)
+    refuse_bad_place(address)
 
     def work(connection: Connection, revision: str | None) -> UpgradeReport:
         if revision is not None:
@@ -115,23 +110,6 @@ def upgrade_database(database: Database, *, lock_timeout_s: float = LOCK_TIMEOUT
     if report.snapshot is not None:
         _drop_old_snapshots(address)
     return report
-
-
-def _refuse_bad_place(address: Address) -> None:
-    path = address.path
-    if path is None:
-        return
-    if path.is_dir():
-        raise folder_given(address)
-    if not path.absolute().parent.is_dir():
-        raise DatabaseUnusable(
-            f"The database {address.shown} cannot be begun.",
-            why=f"There is no folder {path.parent}.",
-            hint="Make the folder first, or name another place with --db.",
-            code="folder-missing",
-        )
-    with suppress(OSError):
-        refuse_too_short(address, path.stat().st_size)
 
 
 def migrations_folder() -> Path:
