@@ -13,7 +13,7 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from campaign.errors import InputRefused
+from campaign.physics.domain import closed_orbit, finite_angle
 
 FloatArray = NDArray[np.float64]
 
@@ -68,7 +68,7 @@ def eccentric_anomaly(mean_anomaly_rad: ArrayLike, eccentricity: ArrayLike) -> F
     >>> round(float(np.degrees(eccentric_anomaly(np.radians(5.0), 0.1))), 6)
     5.554589
     """
-    mean, e = _angle(mean_anomaly_rad, "mean anomaly"), _eccentricity(eccentricity)
+    mean, e = finite_angle(mean_anomaly_rad, "mean anomaly"), closed_orbit(eccentricity)
     return _in_blocks(_solve, mean, e)
 
 
@@ -105,7 +105,7 @@ def true_anomaly(mean_anomaly_rad: ArrayLike, eccentricity: ArrayLike) -> FloatA
     >>> round(float(np.degrees(true_anomaly(np.radians(5.0), 0.1))), 6)
     6.139762
     """
-    mean, e = _angle(mean_anomaly_rad, "mean anomaly"), _eccentricity(eccentricity)
+    mean, e = finite_angle(mean_anomaly_rad, "mean anomaly"), closed_orbit(eccentricity)
     return _in_blocks(lambda m, x: _true(_solve(m, x), x), mean, e)
 
 
@@ -141,7 +141,7 @@ def true_from_eccentric(eccentric_anomaly_rad: ArrayLike, eccentricity: ArrayLik
     >>> round(float(np.degrees(true_from_eccentric(np.radians(21.7867892982618), 0.8))), 10)
     60.0
     """
-    anomaly, e = _angle(eccentric_anomaly_rad, "eccentric anomaly"), _eccentricity(eccentricity)
+    anomaly, e = finite_angle(eccentric_anomaly_rad, "eccentric anomaly"), closed_orbit(eccentricity)
     return _in_blocks(lambda E, x: _true(_within_half_turn(E), x), anomaly, e)
 
 
@@ -177,7 +177,7 @@ def eccentric_from_true(true_anomaly_rad: ArrayLike, eccentricity: ArrayLike) ->
     >>> round(float(np.degrees(eccentric_from_true(np.radians(60.0), 0.8))), 10)
     21.7867892983
     """
-    anomaly, e = _angle(true_anomaly_rad, "true anomaly"), _eccentricity(eccentricity)
+    anomaly, e = finite_angle(true_anomaly_rad, "true anomaly"), closed_orbit(eccentricity)
     return _in_blocks(lambda nu, x: _eccentric(_within_half_turn(nu), x), anomaly, e)
 
 
@@ -213,7 +213,7 @@ def mean_from_eccentric(eccentric_anomaly_rad: ArrayLike, eccentricity: ArrayLik
     >>> round(float(mean_from_eccentric(0.3, 0.8)), 12)
     0.063583834671
     """
-    anomaly, e = _angle(eccentric_anomaly_rad, "eccentric anomaly"), _eccentricity(eccentricity)
+    anomaly, e = finite_angle(eccentric_anomaly_rad, "eccentric anomaly"), closed_orbit(eccentricity)
     return _in_blocks(lambda E, x: _mean(_within_half_turn(E), x), anomaly, e)
 
 
@@ -250,7 +250,7 @@ def mean_from_true(true_anomaly_rad: ArrayLike, eccentricity: ArrayLike) -> Floa
     >>> round(float(np.degrees(mean_from_true(np.radians(60.0), 0.8))), 10)
     4.774354811
     """
-    anomaly, e = _angle(true_anomaly_rad, "true anomaly"), _eccentricity(eccentricity)
+    anomaly, e = finite_angle(true_anomaly_rad, "true anomaly"), closed_orbit(eccentricity)
     return _in_blocks(lambda nu, x: _mean(_eccentric(_within_half_turn(nu), x), x), anomaly, e)
 
 
@@ -320,7 +320,7 @@ def separation_ratio(eccentric_anomaly_rad: ArrayLike, eccentricity: ArrayLike) 
     >>> round(float(separation_ratio(1e-8, 0.9999)), 12)
     0.0001
     """
-    anomaly, e = _angle(eccentric_anomaly_rad, "eccentric anomaly"), _eccentricity(eccentricity)
+    anomaly, e = finite_angle(eccentric_anomaly_rad, "eccentric anomaly"), closed_orbit(eccentricity)
 
     def ratio(E: FloatArray, x: FloatArray) -> FloatArray:
         half_sine = np.sin(0.5 * E)
@@ -363,7 +363,7 @@ def half_window_phase(separation_over_a: ArrayLike, eccentricity: ArrayLike) -> 
     >>> round(float(half_window_phase(0.4, 0.8)), 9)
     0.030809848
     """
-    ratio, e = np.asarray(separation_over_a, dtype=np.float64), _eccentricity(eccentricity)
+    ratio, e = np.asarray(separation_over_a, dtype=np.float64), closed_orbit(eccentricity)
 
     def phase(q: FloatArray, x: FloatArray) -> FloatArray:
         above = q - (1.0 - x)
@@ -373,32 +373,6 @@ def half_window_phase(separation_over_a: ArrayLike, eccentricity: ArrayLike) -> 
         return np.where(below <= 0.0, 0.5, np.where(above < 0.0, np.nan, found))
 
     return _in_blocks(phase, ratio, e)
-
-
-def _eccentricity(value: ArrayLike) -> FloatArray:
-    e = np.asarray(value, dtype=np.float64)
-    if e.size and not (e.min() >= 0.0 and e.max() < 1.0) and bool(np.any((e < 0.0) | (e >= 1.0))):
-        wrong = float(e[(e < 0.0) | (e >= 1.0)].flat[0]) if e.ndim else float(e)
-        raise InputRefused(
-            f"An eccentricity of {wrong!r} is no closed orbit.",
-            why="Kepler's equation for an ellipse needs 0 <= e < 1.",
-            hint="Give an eccentricity such as 0.71.",
-            code="eccentricity-refused",
-            details={"eccentricity": wrong},
-        )
-    return e
-
-
-def _angle(value: ArrayLike, name: str) -> FloatArray:
-    angle = np.asarray(value, dtype=np.float64)
-    if bool(np.isinf(angle).any()):
-        raise InputRefused(
-            f"The {name} is infinite.",
-            why="An infinite angle has no place on the orbit.",
-            hint=f"Give a finite {name} in radians.",
-            code="anomaly-refused",
-        )
-    return angle
 
 
 def _in_blocks(
