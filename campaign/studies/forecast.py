@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -209,11 +209,18 @@ class Forecaster:
                 special.append((unit, event, cycle))
             else:
                 single[event].append((unit, cycle))
-        dated: list[DatedEvent] = []
-        for event, pairs in single.items():
-            dated.extend(self._dated_in_blocks(event, pairs, window, keep_grid))
+        dated = self.date_pairs(single, window, keep_grid)
         dated.extend(self._dated_specially(unit, event, cycle, window) for unit, event, cycle in special)
         dated.extend(self._without_date(unit, event, window) for unit, event in lost)
+        return dated
+
+    def date_pairs(
+        self, pairs: Mapping[EventName, list[tuple[int, int]]], window: Window, keep_grid: bool = True
+    ) -> list[DatedEvent]:
+        """Date given (unit, cycle) pairs of each event; every unit has one row and nothing observed."""
+        dated: list[DatedEvent] = []
+        for event, chosen in pairs.items():
+            dated.extend(self._dated_in_blocks(event, chosen, window, keep_grid))
         return dated
 
     def _phase_lost(self, unit: int, event: EventName, cycle: int) -> bool:
@@ -342,7 +349,8 @@ class Forecaster:
             lag = (sampler.rule[rows] == RULE_CODES["lag"]) & (sampler.mark[rows] == MARK_CODES["periastron"])
             direct |= lag & (columns[event][rows, 1] == columns[event][rows, 2])
             direct &= sampler.rule[rows] != RULE_CODES["learned"]
-        return np.logical_and(normal, direct)
+        both: NDArray[np.bool_] = normal & direct
+        return both
 
     def _normal_summary(self, event: EventName, rows: IntArray, cycles: IntArray, window: Window) -> Summary:
         from scipy.special import ndtr

@@ -42,11 +42,10 @@ class LearnedDates:
 
     def draws(self, event: EventName, cycle: int, normals: dict[str, FloatArray]) -> FloatArray:
         if event not in self.events():
-            return np.full(normals["recurrence"].shape, np.nan)
+            return np.full(normals[f"scatter {event}"].shape, np.nan)
         from scipy.special import ndtr
 
-        prediction = self.predict(event, cycle)
-        return prediction.draws(ndtr(normals["recurrence"]), normals[f"scatter {event}"])
+        return self.predict(event, cycle).quantiles_d(ndtr(normals[f"scatter {event}"]))
 
 
 def learn(row: ForecastRow, episodes: tuple[Episode, ...]) -> LearnedDates | None:
