@@ -82,8 +82,9 @@ def event_forecasts(
                 probability_in_window=one.in_window,
                 phase_lost=one.phase_lost,
                 probability_per_yr=one.probability_per_yr,
-                observed="observed" in " ".join(one.notes) and "counted" not in " ".join(one.notes),
-                notes=tuple([*extra, *one.notes, *_error_notes(one), *_mixture_notes(unit)]),
+                observed=one.observed,
+                disagreement_sigma=one.disagreement_sigma,
+                notes=tuple([*extra, *one.notes, *_error_notes(one), *_mixture_notes(unit, one)]),
             )
         )
     return result
@@ -119,11 +120,14 @@ def _error_notes(one: DatedEvent) -> list[str]:
     return [f"error unknown: {', '.join(one.missing)}; no interval"]
 
 
-def _mixture_notes(unit: ForecastUnit) -> list[str]:
-    if len(unit.rows) < 2:
+def _mixture_notes(unit: ForecastUnit, one: DatedEvent) -> list[str]:
+    if len(unit.rows) == 1 or one.observed:
         return []
     weights = ", ".join(f"{w:.2g}" for w in unit.weights)
-    return [f"mixture of {len(unit.rows)} solutions with weights {weights}"]
+    text = f"mixture of {len(unit.rows)} solutions with weights {weights}"
+    if one.disagreement_sigma is not None:
+        text += f", which disagree by {abs(one.disagreement_sigma):.1f} sigma"
+    return [text]
 
 
 def dust_windows(
@@ -225,11 +229,9 @@ def describe_basis(
             count = max(dates.cycles[event].size for event in dates.events())
             parts.append(f"{count} dated episode{'s' if count > 1 else ''}")
         if not parts:
+            confirmed = sum(1 for e in first.record.episodes if e.state == "confirmed")
             parts.append("no adopted solution")
-            if len(first.record.episodes) == 1:
-                parts.append("one episode only, so no period")
-            elif not first.record.episodes:
-                parts.append("no confirmed episode")
+            parts.append("one episode only, so no period" if confirmed == 1 else "no confirmed episode")
         if first.rule is not None and first.events and dates is None:
             parts.append(f"rule {first.rule.kind}")
         parts.extend(dict.fromkeys(n for i in unit.rows for n in rows[i].notes))

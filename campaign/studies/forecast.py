@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
@@ -60,6 +62,8 @@ class DatedEvent:
     probability_per_yr: float | None = None
     grid: FloatArray | None = None
     missing: tuple[str, ...] = ()
+    observed: bool = False
+    disagreement_sigma: float | None = None
     notes: list[str] = field(default_factory=list)
 
 
@@ -316,10 +320,26 @@ class Forecaster:
             moment = getattr(episode, event).moment
             dated.missing = () if moment.minus_d is not None else (f"observed {event}",)
             dated.probability = 1.0
+            dated.observed = True
         elif notes:
             dated.missing = ()
         dated.notes.extend(notes)
+        if len(one.rows) > 1 and not dated.observed:
+            dated.disagreement_sigma = self._disagreement(unit, event, cycle)
         return dated
+
+    def _disagreement(self, unit: int, event: EventName, cycle: int) -> float | None:
+        """Largest difference between the solutions of a mixture, in sigma of the difference, signed."""
+        at = np.array([cycle])
+        rows = [row for row in self.units[unit].rows if event in self.rows[row].events]
+        times = [self.sampler.event_times(event, np.array([row]), at)[0] for row in rows]
+        found = [(float(np.nanmedian(t)), float(np.nanstd(t))) for t in times if not np.all(np.isnan(t))]
+        tensions = [
+            (later - earlier) / math.hypot(first, second)
+            for (earlier, first), (later, second) in combinations(found, 2)
+            if math.hypot(first, second) > 0.0
+        ]
+        return max(tensions, key=abs, default=None)
 
     def _observed_draws(self, value: float, minus: float | None, plus: float | None) -> FloatArray:
         z = self.sampler.normals["recurrence"]

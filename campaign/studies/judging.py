@@ -8,7 +8,7 @@ from campaign.studies.quietness import JudgedPhotometry, judge_photometry
 
 
 def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> JudgedPhotometry:
-    """Verdicts on a system's photometry up to ``as_of``.
+    """Verdicts on a system's good photometry up to ``as_of``.
 
     Parameters
     ----------
@@ -30,7 +30,7 @@ def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> Judge
 
     Source: project convention.
     """
-    past = arrays.bmjd_tdb <= as_of
+    past = (arrays.bmjd_tdb <= as_of) & (arrays.quality == "good")
     error = 0.5 * (arrays.mag_minus + arrays.mag_plus)
     spans = []
     for episode in record.episodes:

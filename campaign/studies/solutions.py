@@ -80,6 +80,8 @@ def add_solution(
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
         system = systems.find_system(writing.connection, system_name)
         moment = moment_of(epoch, system) if epoch is not None else None
+        if moment is not None and epoch is not None and _is_clock_reading(epoch):
+            moment = replace(moment, minus_d=None, plus_d=None)
         until = moment_of(data_until, system).bmjd_tdb if data_until is not None else None
         known = kept.solutions_of(writing.connection, system.id)
         solution = replace(
@@ -218,6 +220,12 @@ def adopt_solutions(
         changed = writing.changed
     data = {"system": system.name, "adopted": dict(weights)}
     return Kept("solution-adopt", changed, (f"{system.name}: {text}",), data)
+
+
+def _is_clock_reading(epoch: TypedInstant) -> bool:
+    """An epoch typed to the second without an error: the clock is exact, the orbit is not."""
+    small_d = 1.0 / 86_400.0
+    return epoch.precision in ("second", "minute") and (epoch.plus_d or 0.0) < 60.0 * small_d
 
 
 def _check_weights(weights: Mapping[str, float | None]) -> None:

@@ -16,6 +16,8 @@ COVERED_SHARE = 0.95
 # How long an episode can be seen when nothing says when it ends: this share of a period, at least 60 d.
 VISIBLE_PERIODS = 0.03
 VISIBLE_MINIMUM_D = 60.0
+# An excess up to this share of a period before the interval counts as a suspected onset.
+SEARCH_PERIODS = 0.1
 
 
 @dataclass(frozen=True, slots=True)
@@ -139,21 +141,23 @@ def onset_state(
         return OnsetState("open", _quiet_note(judged, as_of))
     if judged is not None and judged.bmjd_tdb.size:
         share = covered_share(onset, judged, visible_span_d(onset, end, period_d))
+        chance = 1.0 if onset.probability is None else onset.probability
+        if share >= COVERED_SHARE and chance < COVERED_SHARE:
+            return OnsetState("over", f"quiet throughout: no episode, which the rule gave {1.0 - chance:.0%}")
         if share >= COVERED_SHARE:
             return OnsetState(
                 "late",
                 "the 95 % interval has passed and quiet observations cover it: elements and data disagree",
             )
-        return OnsetState(
-            "unseen", f"observations would have shown the onset in {share:.0%} of its interval only"
-        )
+        if share >= 0.005:
+            return OnsetState("unseen", f"observations cover only {share:.0%} of the onset's interval")
     return OnsetState("unseen", "no observation would have shown it")
 
 
 def _search_start(median: float, low95: float, known: bool, period_d: float, as_of: float) -> float:
     """Excess long before the forecast belongs to an earlier, unrecorded episode."""
-    earliest = (low95 if known else median) - 0.25 * period_d
-    return max(earliest, as_of - 0.5 * period_d)
+    earliest = (low95 if known else median) - SEARCH_PERIODS * period_d
+    return max(earliest, as_of - 0.25 * period_d)
 
 
 def _quiet_note(judged: JudgedPhotometry | None, as_of: float) -> str:

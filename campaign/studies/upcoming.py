@@ -102,8 +102,8 @@ def forecast_campaign(
     listed = [d for d in listed if d.in_window is None or d.in_window >= question.min_probability]
     dateless = dateless_events(prepared, question)
     events = event_forecasts(prepared.rows, prepared.units, listed + dateless, states, question.as_of)
-    if question.solutions == "each" or any(len(u.rows) > 1 for u in prepared.units):
-        events = with_disagreement(events, prepared)
+    if question.solutions == "each":
+        events = with_disagreement(events)
     shown = {d.unit for d in listed}
     windows = dust_windows(
         prepared.rows, prepared.units, [d for d in dated if d.unit in shown], question.start, question.end,
@@ -211,14 +211,16 @@ def _if_past(dated: DatedEpisodeEvent | None, as_of: float) -> DatedEpisodeEvent
 
 def _speakers(record: SystemRecord, mode: str) -> list[tuple[tuple[Solution | None, ...], tuple[float, ...]]]:
     """Groups of solutions that are forecast together, with their weights."""
-    if mode == "each" and record.solutions:
-        return [((s,), (1.0,)) for s in sorted(record.solutions, key=lambda s: not s.adopted)]
     adopted = [s for s in record.solutions if s.adopted]
     weighted = [s for s in adopted if s.weight is not None]
+    groups: list[tuple[tuple[Solution | None, ...], tuple[float, ...]]] = []
     if len(weighted) > 1:
         total = sum(s.weight or 0.0 for s in weighted)
-        return [(tuple(weighted), tuple((s.weight or 0.0) / total for s in weighted))]
-    return [((adopted[0] if adopted else None,), (1.0,))]
+        groups.append((tuple(weighted), tuple((s.weight or 0.0) / total for s in weighted)))
+    if mode == "each" and record.solutions:
+        singles = sorted(record.solutions, key=lambda s: not s.adopted)
+        return groups + [((s,), (1.0,)) for s in singles]
+    return groups or [((adopted[0] if adopted else None,), (1.0,))]
 
 
 def _add_row(prepared: Prepared, record: SystemRecord, solution: Solution | None) -> int:
@@ -403,15 +405,13 @@ def _marked_event(solution: Solution) -> EventName:
     return solution.epoch_marks
 
 
-def with_disagreement(events: Sequence[EventForecast], prepared: Prepared) -> list[EventForecast]:
+def with_disagreement(events: Sequence[EventForecast]) -> list[EventForecast]:
     """Add how many sigma the solutions of one system differ by, event by event and cycle by cycle.
 
     Parameters
     ----------
     events : sequence of EventForecast
-        Events of all units.
-    prepared : Prepared
-        Rows and units; of a mixture the components are compared by their analytic dates.
+        Events of all units, the adopted solution of a system before the others.
 
     Returns
     -------
@@ -427,6 +427,9 @@ def with_disagreement(events: Sequence[EventForecast], prepared: Prepared) -> li
     reference: dict[tuple[str, EventName, int | None], EventForecast] = {}
     result = []
     for event in events:
+        if event.solution is not None and event.disagreement_sigma is not None:
+            result.append(event)  # a mixture: it carries the disagreement of its own components
+            continue
         key = (event.system, event.event, event.cycle)
         first = reference.setdefault(key, event)
         if first is not event and first.bmjd_tdb is not None and event.bmjd_tdb is not None:
