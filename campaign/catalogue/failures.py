@@ -35,6 +35,11 @@ def translated(address: Address) -> Iterator[None]:
         raise translate(error.orig, address) from error
     except sqlite3.Error as error:
         raise translate(error, address) from error
+    except UnicodeDecodeError as error:
+        # Python's driver fails to decode SQLite's own report when that quotes damaged bytes.
+        if bytes(error.object).startswith(b"malformed database schema"):
+            raise _damaged(address) from error
+        raise
     except TimeoutError as error:
         raise _busy(address) from error
 

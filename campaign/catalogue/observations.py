@@ -17,6 +17,7 @@ from campaign.catalogue.sites import find_site
 from campaign.catalogue.sources import source_id, source_titles
 from campaign.catalogue.store import Writing
 from campaign.catalogue.tables import observations, sites
+from campaign.catalogue.types import Names
 from campaign.errors import Conflict, NotFound
 from campaign.model.instants import Moment
 from campaign.model.observations import Observation
@@ -385,7 +386,8 @@ def _read(connection: Connection, condition: ColumnElement[bool]) -> list[Observ
     if not rows:
         return []
     titles = source_titles(connection)
-    site_names = {number: name for number, name in connection.execute(select(sites.c.id, sites.c.name))}
+    site_rows = connection.execute(select(sites.c.id, sites.c.name))
+    site_names = Names((number, name) for number, name in site_rows)
     return [
         Observation(
             id=row[0],

@@ -7,6 +7,7 @@ from sqlalchemy import Connection, select
 from campaign.catalogue.naming import name_key, tidy_name
 from campaign.catalogue.store import Writing
 from campaign.catalogue.tables import sources
+from campaign.catalogue.types import Names
 
 
 def source_id(writing: Writing, text: str | None) -> int | None:
@@ -31,6 +32,7 @@ def list_sources(connection: Connection) -> list[str]:
     return list(connection.execute(select(sources.c.title).order_by(sources.c.id)).scalars())
 
 
-def source_titles(connection: Connection) -> dict[int, str]:
+def source_titles(connection: Connection) -> Names:
     """Titles by number."""
-    return {number: title for number, title in connection.execute(select(sources.c.id, sources.c.title))}
+    rows = connection.execute(select(sources.c.id, sources.c.title))
+    return Names((number, title) for number, title in rows)

@@ -21,6 +21,7 @@ from campaign.catalogue.naming import name_key, nearest_names, tidy_name
 from campaign.catalogue.store import Writing
 from campaign.catalogue.tables import stars, system_names, systems
 from campaign.catalogue.tables_systems import STAR_QUANTITIES
+from campaign.catalogue.types import unreadable
 from campaign.errors import Conflict, NotFound
 from campaign.model.systems import Star, System, SystemState
 
@@ -180,7 +181,7 @@ def load_systems(
             cycle_anchor_period_d=row[10],
             distance_pc=measured_or_none(row[11], row[12], row[13]),
             parallax_mas=measured_or_none(row[14], row[15], row[16]),
-            name=names[row[0]][0],
+            name=_primary(names[row[0]], row[0]),
             aliases=tuple(names[row[0]][1:]),
             star_a=star_of.get((row[0], "A"), _UNKNOWN_A),
             star_b=star_of.get((row[0], "B"), _UNKNOWN_B),
@@ -210,6 +211,12 @@ def _load_stars(connection: Connection, wanted: ColumnElement[bool]) -> dict[tup
         )
         for row in rows.all()
     }
+
+
+def _primary(names: list[str], system_id: int) -> str:
+    if not names:
+        raise unreadable(f"system number {system_id} without a name")
+    return names[0]
 
 
 def _system_values(system: System) -> dict[str, Any]:

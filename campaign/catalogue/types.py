@@ -16,7 +16,7 @@ from typing import Any
 from sqlalchemy import Dialect, Double, Integer, String, Text, TypeDecorator
 from sqlalchemy.exc import DontWrapMixin
 
-from campaign.errors import InputRefused
+from campaign.errors import DatabaseUnusable, InputRefused
 
 MOST_NEGATIVE_WHOLE = -(2**31)
 MOST_POSITIVE_WHOLE = 2**31 - 1
@@ -26,6 +26,28 @@ class ValueRefused(InputRefused, DontWrapMixin):
     """A value that a column must not hold; reaches the caller as it is, unwrapped by SQLAlchemy."""
 
     default_code = "value-refused"
+
+
+class StoredValueUnreadable(DatabaseUnusable, DontWrapMixin):
+    """What the database holds is nothing that this program ever wrote there."""
+
+    default_code = "database-damaged"
+
+
+def unreadable(what: str) -> StoredValueUnreadable:
+    """The error for a stored value that makes no sense."""
+    return StoredValueUnreadable(
+        f"The database holds {what}, which campaign never writes.",
+        why="The file was damaged, or changed by another program.",
+        hint="Check it with: campaign health. A backup can be restored beside it: campaign restore FILE.",
+    )
+
+
+class Names(dict[int, str]):
+    """Names by number; a number that has none is damage, since references are kept whole."""
+
+    def __missing__(self, number: int) -> str:
+        raise unreadable(f"a reference to entry {number} that is not there")
 
 
 def _shown(value: object) -> str:
@@ -216,7 +238,12 @@ class UtcText(TypeDecorator[datetime]):
         return None if value is None else utc_text(value)
 
     def process_result_value(self, value: Any, dialect: Dialect | None) -> datetime | None:
-        return None if value is None else datetime.fromisoformat(value)
+        if value is None:
+            return None
+        try:
+            return datetime.fromisoformat(value)
+        except (TypeError, ValueError):
+            raise unreadable(f"the time {_shown(value)}") from None
 
 
 class JsonText(TypeDecorator[Any]):
@@ -229,7 +256,12 @@ class JsonText(TypeDecorator[Any]):
         return None if value is None else json_text(value)
 
     def process_result_value(self, value: Any, dialect: Dialect | None) -> Any:
-        return None if value is None else json.loads(value)
+        if value is None:
+            return None
+        try:
+            return json.loads(value)
+        except (TypeError, ValueError):
+            raise unreadable(f"the document {_shown(value)}") from None
 
 
 def json_text(value: Any) -> str:

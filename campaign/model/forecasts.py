@@ -68,12 +68,16 @@ class EventForecast:
 
 @dataclass(frozen=True, slots=True)
 class DustWindow:
-    """Probability that one system makes dust, at each of ``bmjd_tdb`` (for the timeline)."""
+    """Probability that one system makes dust, at each of ``bmjd_tdb`` (for the timeline).
+
+    ``solution`` is given where the solutions of a system stand side by side.
+    """
 
     system: str
     cycle: int | None
     bmjd_tdb: tuple[float, ...]
     probability: tuple[float, ...]
+    solution: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

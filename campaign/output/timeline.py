@@ -23,7 +23,7 @@ SHADES: tuple[tuple[float, str, str], ...] = (
 )
 _TODAY, _MEDIAN, _INTERVAL = "│", "◇", "╌"
 _PIPE_WIDTH = 100
-_LABEL_LIMIT = 18
+_LABEL_LIMIT = 26
 _MONTH_STEPS = (1, 2, 3, 6, 12, 24, 60, 120, 240, 600, 1200, 2400, 6000, 12_000)
 
 
@@ -60,17 +60,24 @@ class _Story:
 
 def _stories(result: UpcomingResult) -> list[_Story]:
     """Systems by their first event, without those that have nothing to draw."""
-    stories: dict[str, _Story] = {}
+    stories: dict[tuple[str, str | None], _Story] = {}
+    side_by_side = {window.system for window in result.dust_windows if window.solution is not None}
     for event in by_date(result.events):
-        story = stories.setdefault(event.system, _Story(event.system))
+        own = event.solution if event.system in side_by_side else None
+        story = stories.setdefault((event.system, own), _Story(_named(event.system, own)))
         if event.phase_lost:
             story.lost = story.lost or event
         elif event.event == "periastron" and event.bmjd_tdb is not None:
             story.periastra.append(event)
     for window in result.dust_windows:
         if window.bmjd_tdb:
-            stories.setdefault(window.system, _Story(window.system)).windows.append(window)
+            key = (window.system, window.solution)
+            stories.setdefault(key, _Story(_named(*key))).windows.append(window)
     return [story for story in stories.values() if story.windows or story.periastra or story.lost]
+
+
+def _named(system: str, solution: str | None) -> str:
+    return system if solution is None else f"{system}: {solution}"
 
 
 def _label(screen: Screen, name: str, width: int) -> str:

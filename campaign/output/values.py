@@ -26,7 +26,7 @@ def number(value: Measured | Limit | Range | None, unit: str = "") -> str:
         value.value != 0.0
         and (abs(value.value) < 1e-3 or abs(value.value) >= 1e7)
         and abs(value.value) > smallest
-    ):  # noqa: PLR2004
+    ):
         return _scaled(value) + tail
     places = max(0, 1 - math.floor(math.log10(smallest)))
     middle = f"{value.value:.{places}f}"

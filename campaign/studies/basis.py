@@ -165,8 +165,10 @@ def dust_windows(
         by_unit.setdefault(one.unit, {})[one.event, one.cycle] = one
     times = np.linspace(start, end, _TIMELINE_POINTS)
     result = []
+    names = [rows[unit.rows[0]].record.system.name for unit in units]
     for position, events in list(by_unit.items())[:most]:
         row = rows[units[position].rows[0]]
+        alone = names.count(names[position]) == 1
         total = np.zeros(times.size)
         for (event, cycle), onset in events.items():
             if event != "onset" or onset.grid is None or onset.quantiles is None or np.isnan(onset.grid[0]):
@@ -179,10 +181,11 @@ def dust_windows(
         if total.any():
             result.append(
                 DustWindow(
-                    row.record.system.name,
+                    names[position],
                     None,
                     tuple(float(t) for t in times),
                     tuple(float(p) for p in np.clip(total, 0.0, 1.0)),
+                    None if alone else units[position].label,
                 )
             )
     return tuple(result)

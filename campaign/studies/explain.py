@@ -92,12 +92,20 @@ def _explain_event(forecast: EventForecast, prepared: Prepared, seed: int) -> Ex
     learned = prepared.learned.get(unit.rows[0])
     if learned is not None and forecast.event in SCATTERS:
         return ExplainedEvent(forecast, *_learned_story(learned, forecast.event, cycle))
-    stories = [_orbit_story(prepared.rows[i], forecast.event, cycle, seed) for i in unit.rows]
+    dating = [
+        (i, w) for i, w in zip(unit.rows, unit.weights, strict=True) if _dates(prepared.rows[i], forecast)
+    ]
+    stories = [_orbit_story(prepared.rows[i], forecast.event, cycle, seed) for i, _ in dating]
     if len(stories) == 1:
         return ExplainedEvent(forecast, *stories[0])
-    return ExplainedEvent(
-        forecast, *_mixture_story(stories, prepared, unit.rows, unit.weights, forecast, seed)
-    )
+    rows = [i for i, _ in dating]
+    total = sum(w for _, w in dating)
+    weights = [w / total for _, w in dating]
+    return ExplainedEvent(forecast, *_mixture_story(stories, prepared, rows, weights, forecast, seed))
+
+
+def _dates(row: ForecastRow, forecast: EventForecast) -> bool:
+    return forecast.event in row.events
 
 
 def _total_only(forecast: EventForecast) -> tuple[VarianceTerm, ...]:
