@@ -201,6 +201,36 @@ def test_overwritten_pages_never_end_in_an_unexpected_error(seed: int, good: Pat
     assert digest(database) == before
 
 
+def read_flipped(good: Path, database: Path, seed: int) -> str:
+    """Change a few bytes behind the header; say how reading ended."""
+    chance = random.Random(seed)
+    damaged = bytearray(good.read_bytes())
+    for _ in range(chance.choice([1, 3, 20])):
+        damaged[chance.randrange(100, len(damaged))] = chance.randrange(256)
+    database.write_bytes(bytes(damaged))
+    before = digest(database)
+    try:
+        read(database)
+    except CampaignError as error:
+        assert error.exit_status == 7, seed
+        outcome = error.code
+    else:
+        outcome = "read"
+    assert digest(database) == before, seed
+    return outcome
+
+
+def test_flipped_bytes_are_read_or_reported_and_never_crash(good: Path, tmp_path: Path) -> None:
+    outcomes = {read_flipped(good, tmp_path / "campaign.db", seed) for seed in range(100)}
+    assert {"read", "database-damaged"} <= outcomes
+
+
+@pytest.mark.slow
+def test_flipped_bytes_in_two_thousand_files(good: Path, tmp_path: Path) -> None:
+    for seed in range(100, 2100):
+        read_flipped(good, tmp_path / "campaign.db", seed)
+
+
 # A user without rights. Root may do anything, so the work is done in a child that gives its rights up.
 
 
