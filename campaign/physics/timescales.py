@@ -1,169 +1,124 @@
-"""Time scales UTC, TAI, TT, TDB and UT as two-part modified Julian dates, decimal years, ISO text."""
+"""Time scales: from UTC, UT, TAI, TT to the catalogue's TDB, and back to UTC for people.
+
+Instants are modified Julian dates in two parts, so that nothing is lost on the way; UTC is the quasi-MJD
+of erfa, whose day has 86401 s when a leap second ends it. Leap seconds after the release of the installed
+erfa are unknown: UTC in the future is counted with those known. Before 1960 there was no UTC, and universal
+time stands in its place.
+"""
 
 from __future__ import annotations
 
-import erfa.ufunc as erfa_ufunc
 import numpy as np
+from erfa import ufunc
 from numpy.typing import ArrayLike, NDArray
 
 from campaign.errors import InputRefused
+from campaign.physics.constants import DAY_S, JULIAN_YEAR_D, MJD_J2000, MJD_ZERO_JD
+from campaign.physics.deltat import delta_t_s
 
 FloatArray = NDArray[np.float64]
 
-MJD_ZERO_JD = 2_400_000.5
-TT_MINUS_TAI_S = 32.184
-DAY_S = 86_400.0
-# UTC begins on 1960-01-01; earlier civil instants are UT.
-FIRST_UTC_MJD = 36_934.0
-_J2000_MJD = 51_544.5
-_B1900_MJD = 15_019.81352
-_TROPICAL_YEAR_D = 365.242198781
-# Year 1, January 1 and year 10000, January 1 in the proleptic Gregorian calendar.
-_YEAR_1_MJD, _YEAR_10000_MJD = -678_575.0, 2_973_484.0
-
-
-def tdb_minus_tt_s(tt_mjd: ArrayLike) -> FloatArray:
-    """Difference TDB - TT at the geocentre from the leading periodic terms.
-
-    Parameters
-    ----------
-    tt_mjd : array_like
-        MJD in TT (or TDB, which makes no difference here), days.
-
-    Returns
-    -------
-    ndarray
-        Seconds, within 0.0017.
-
-    Notes
-    -----
-    Accuracy: 10 microseconds from 1600 to 2200.
-
-    Source: Kaplan 2005, USNO Circular 179, equation 2.6.
-
-    Examples
-    --------
-    >>> round(float(tdb_minus_tt_s(53750.892855138888)), 4)
-    0.0004
-    """
-    t = (np.asarray(tt_mjd, dtype=float) - _J2000_MJD) / 36_525.0
-    result: FloatArray = (
-        0.001657 * np.sin(628.3076 * t + 6.2401)
-        + 0.000022 * np.sin(575.3385 * t + 4.2970)
-        + 0.000014 * np.sin(1256.6152 * t + 6.1969)
-        + 0.000005 * np.sin(606.9777 * t + 4.0212)
-        + 0.000005 * np.sin(52.9691 * t + 0.4444)
-        + 0.000002 * np.sin(21.3299 * t + 5.5431)
-        + 0.000010 * t * np.sin(628.3076 * t + 4.2490)
-    )
-    return result
-
-
-def delta_t_s(year: ArrayLike) -> FloatArray:
-    """Difference TT - UT before UTC existed.
-
-    Parameters
-    ----------
-    year : array_like
-        Decimal calendar year, up to 1961.
-
-    Returns
-    -------
-    ndarray
-        Seconds.
-
-    Notes
-    -----
-    Accuracy: about 1 s after 1800, 10 s at 1600, minutes in antiquity.
-
-    Source: Espenak & Meeus 2006, NASA/TP-2006-214141, polynomial expressions for Delta T (memory).
-
-    Examples
-    --------
-    >>> round(float(delta_t_s(1950.0)), 2)
-    29.07
-    """
-    y = np.asarray(year, dtype=float)
-    pieces = (
-        (-500.0, 0.0, 100.0, (10583.6, -1014.41, 33.78311, -5.952053, -0.1798452, 0.022174192, 0.0090316521)),
-        (500.0, 1000.0, 100.0, (1574.2, -556.01, 71.23472, 0.319781, -0.8503463, -0.005050998, 0.0083572073)),
-        (1600.0, 1600.0, 1.0, (120.0, -0.9808, -0.01532, 1.0 / 7129.0)),
-        (1700.0, 1700.0, 1.0, (8.83, 0.1603, -0.0059285, 0.00013336, -1.0 / 1_174_000.0)),
-        (
-            1800.0, 1800.0, 1.0,
-            (13.72, -0.332447, 0.0068612, 0.0041116, -0.00037436, 1.21272e-5, -1.699e-7, 8.75e-10),
-        ),
-        (1860.0, 1860.0, 1.0, (7.62, 0.5737, -0.251754, 0.01680668, -0.0004473624, 1.0 / 233_174.0)),
-        (1900.0, 1900.0, 1.0, (-2.79, 1.494119, -0.0598939, 0.0061966, -0.000197)),
-        (1920.0, 1920.0, 1.0, (21.20, 0.84493, -0.076100, 0.0020936)),
-        (1941.0, 1950.0, 1.0, (29.07, 0.407, -1.0 / 233.0, 1.0 / 2547.0)),
-    )  # fmt: skip
-    result = -20.0 + 32.0 * ((y - 1820.0) / 100.0) ** 2
-    for start, origin, unit, coefficients in pieces:
-        value = np.polynomial.polynomial.polyval((y - origin) / unit, coefficients)
-        result = np.where(y >= start, value, result)
-    return np.asarray(result, dtype=float)
+_TT_MINUS_TAI_D = 32.184 / DAY_S
+_UTC_FROM_MJD = 36_934.0  # 1960-01-01
+_MJD_YEAR_1, _MJD_YEAR_10000 = -678_575.0, 2_973_484.0
+# TDB - TT: amplitude (s), frequency (rad per Julian century), phase (rad).
+_TDB_TERMS = (
+    (0.001657, 628.3076, 6.2401),
+    (0.000022, 575.3385, 4.2970),
+    (0.000014, 1256.6152, 6.1969),
+    (0.000005, 606.9777, 4.0212),
+    (0.000005, 52.9691, 0.4444),
+    (0.000002, 21.3299, 5.5431),
+)
 
 
 def to_tdb(mjd_day: ArrayLike, mjd_fraction: ArrayLike, scale: str) -> tuple[FloatArray, FloatArray]:
-    """Convert an instant to TDB.
+    """An instant in TDB.
 
     Parameters
     ----------
     mjd_day, mjd_fraction : array_like
-        MJD in ``scale`` in two parts, days; for ``utc`` the quasi-MJD of erfa.
-    scale : str
-        ``utc``, ``tai``, ``tt``, ``tdb`` or ``ut`` (civil time before 1960).
+        MJD in two parts whose sum is meant, days; they broadcast.
+    scale : {'utc', 'ut', 'tai', 'tt', 'tdb'}
+        The scale of the instant. UTC before 1960 is taken as UT; UT from 1960 on as UTC (0.9 s).
 
     Returns
     -------
-    (ndarray, ndarray)
-        MJD in TDB in two parts, days.
+    tuple of ndarray
+        MJD in TDB in two parts, days: ``mjd_day`` as given, and the rest (which may leave [0, 1)).
 
     Raises
     ------
     InputRefused
-        If the scale is unknown.
+        If the scale is another.
 
     Notes
     -----
-    Accuracy: a few microseconds for UTC from 1960 to the last announced leap second; later leap seconds
-    are unknown (1 s each); ``ut`` as ``delta_t_s``.
+    Accuracy: 2 us for UTC since 1960, TAI and TT (the place on Earth is left out); for UT before 1960 that
+    of TT - UT, 1 s since 1800 and worse before. Leap seconds to come are not known.
 
-    Source: IAU SOFA Time Scale and Calendar Tools; erfa dat, dtdb.
+    Source: IAU definitions of TAI, TT = TAI + 32.184 s and TDB through erfa (dat, dtdb: Fairhead & Bretagnon
+    1990); Espenak & Meeus 2006 for TT - UT.
 
     Examples
     --------
-    >>> day, fraction = to_tdb(53750, 0.892100694444, "utc")
-    >>> round((float(fraction) - 0.892100694444) * 86400, 3)
-    65.184
+    >>> day, fraction = to_tdb(53750.0, (21 * 3600 + 24 * 60 + 37.5) / 86400, "utc")
+    >>> round((float(fraction) * 86400 - 21 * 3600 - 25 * 60), 6)
+    42.684373
     """
-    day, fraction = np.asarray(mjd_day, dtype=float), np.asarray(mjd_fraction, dtype=float)
+    day, fraction = np.asarray(mjd_day, dtype=np.float64), np.asarray(mjd_fraction, dtype=np.float64)
     if scale == "tdb":
         return day, fraction
-    if scale == "tt":
-        tt_day, tt_fraction = day, fraction
+    day, fraction = np.broadcast_arrays(day, fraction)
+    if scale in ("utc", "ut"):
+        tt = _tt_of_universal(day, fraction)
     elif scale == "tai":
-        tt_day, tt_fraction = day, fraction + TT_MINUS_TAI_S / DAY_S
-    elif scale == "utc":
-        tai1, tai2, _ = erfa_ufunc.utctai(MJD_ZERO_JD + day, fraction)
-        tt_day, tt_fraction = tai1 - MJD_ZERO_JD, tai2 + TT_MINUS_TAI_S / DAY_S
-    elif scale == "ut":
-        year = 2000.0 + (day + fraction - _J2000_MJD) / 365.2425
-        tt_day, tt_fraction = day, fraction + delta_t_s(year) / DAY_S
+        tt = fraction + _TT_MINUS_TAI_D
+    elif scale == "tt":
+        tt = fraction
     else:
         raise InputRefused(
-            f"The time scale '{scale}' is unknown.",
-            why="Known scales are utc, tai, tt, tdb and, before 1960, ut.",
-            hint="For example 2031-04-07T03:12:10 TT.",
-            code="scale-unknown",
+            f"'{scale}' is no time scale known here.",
+            why="An instant needs its scale to be put on the common axis.",
+            hint="Use one of utc, ut, tai, tt, tdb.",
+            code="scale-refused",
         )
-    difference = erfa_ufunc.dtdb(MJD_ZERO_JD + tt_day, tt_fraction, 0.0, 0.0, 0.0, 0.0)
-    return tt_day, tt_fraction + difference / DAY_S
+    return day[()], (tt + _tdb_minus_tt_d(day, tt))[()]
 
 
-def tdb_to_utc(mjd_tdb: ArrayLike) -> FloatArray:
-    """Convert TDB to UTC, or to UT before 1960.
+def tdb_to_tt(mjd_day: ArrayLike, mjd_fraction: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """An instant of TDB in TT.
+
+    Parameters
+    ----------
+    mjd_day, mjd_fraction : array_like
+        MJD in TDB in two parts whose sum is meant, days; they broadcast.
+
+    Returns
+    -------
+    tuple of ndarray
+        MJD in TT in two parts, days: ``mjd_day`` as given, and the rest.
+
+    Notes
+    -----
+    Accuracy: 2 us (the place on Earth is left out).
+
+    Source: erfa.dtdb (Fairhead & Bretagnon 1990).
+
+    Examples
+    --------
+    >>> day, fraction = tdb_to_tt(51544.5, 0.0)
+    >>> round(float(fraction) * 86400e3, 3)
+    0.099
+    """
+    day, fraction = np.broadcast_arrays(
+        np.asarray(mjd_day, dtype=np.float64), np.asarray(mjd_fraction, dtype=np.float64)
+    )
+    return day[()], (fraction - _tdb_minus_tt_d(day, fraction))[()]
+
+
+def tdb_to_utc(mjd_tdb: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """An instant of TDB in UTC, or in UT before 1960.
 
     Parameters
     ----------
@@ -172,254 +127,116 @@ def tdb_to_utc(mjd_tdb: ArrayLike) -> FloatArray:
 
     Returns
     -------
-    ndarray
-        Quasi-MJD in UTC, days, of the same shape.
+    tuple of ndarray
+        Whole day and fraction in [0, 1) of the quasi-MJD in UTC, days; NaN where the instant is not
+        finite or lies outside the years 1 to 9999.
 
     Notes
     -----
-    Accuracy: 10 microseconds plus the step of a double MJD (0.6 microseconds) from 1960 to the last
-    announced leap second; later leap seconds are unknown; before 1960 as ``delta_t_s``.
+    Accuracy: that of one double (1 us) and of TT - UT before 1960. Leap seconds to come are not known.
 
-    Source: erfa taiutc; Kaplan 2005 for TDB - TT.
+    Source: IAU definitions through erfa (dtdb, taiutc); Espenak & Meeus 2006 for TT - UT.
 
     Examples
     --------
-    >>> round((62000.25 - float(tdb_to_utc(62000.25))) * 86400, 2)
-    69.18
+    >>> day, fraction = tdb_to_utc(57754.0 + 69.184 / 86400)
+    >>> round(float(day + fraction), 8)
+    57754.0
     """
-    tdb = np.asarray(mjd_tdb, dtype=float)
-    tt = tdb - tdb_minus_tt_s(tdb) / DAY_S
-    tai_day = np.floor(tt)
-    tai_fraction = (tt - tai_day) - TT_MINUS_TAI_S / DAY_S
-    utc1, utc2, _ = erfa_ufunc.taiutc(MJD_ZERO_JD + tai_day, tai_fraction)
-    utc = (utc1 - MJD_ZERO_JD) + utc2
-    year = 2000.0 + (tt - _J2000_MJD) / 365.2425
-    civil = tt - delta_t_s(year) / DAY_S
-    return np.where(utc >= FIRST_UTC_MJD, utc, civil)
+    mjd = np.asarray(mjd_tdb, dtype=np.float64)
+    good = _in_calendar(mjd)
+    day = np.floor(np.where(good, mjd, 0.0))
+    rest = np.where(good, mjd, 0.0) - day
+    utc_day, utc_rest = _universal_of_tt(day, rest - _tdb_minus_tt_d(day, rest))
+    carry = np.floor(utc_rest)
+    utc_day, utc_rest = utc_day + carry, utc_rest - carry
+    return np.where(good, utc_day, np.nan)[()], np.where(good, utc_rest, np.nan)[()]
 
 
 def utc_iso(bmjd_tdb: ArrayLike) -> list[str | None]:
-    """UTC of TDB instants as text, to the second.
+    """Instants of TDB as text in UTC, or in UT before 1960.
 
     Parameters
     ----------
-    bmjd_tdb : array_like, shape (n,)
-        MJD in TDB, days; NaN allowed.
+    bmjd_tdb : array_like
+        MJD in TDB, days; taken in flat order.
 
     Returns
     -------
     list of str or None
-        ``2031-04-07T03:12:10Z``; None for NaN and outside years 1 to 9999.
+        Such as ``2031-04-07T03:12:10Z``, to the nearest second; None where the instant is not finite or
+        lies outside the years 1 to 9999. A leap second reads ``23:59:60``.
 
     Notes
     -----
-    Accuracy: rounded to the nearest second; a leap second shows as ``23:59:60``.
+    Accuracy: 0.5 s from rounding; TT - UT before 1960. Leap seconds to come are not known. Proleptic
+    Gregorian calendar.
 
-    Source: ISO 8601; erfa d2dtf.
-
-    Examples
-    --------
-    >>> utc_iso([57754.5, float("nan")])
-    ['2017-01-01T11:58:51Z', None]
-    """
-    tdb = np.atleast_1d(np.asarray(bmjd_tdb, dtype=float)).ravel()
-    known = np.isfinite(tdb) & (tdb > _YEAR_1_MJD + 1.0) & (tdb < _YEAR_10000_MJD - 1.0)
-    utc = tdb_to_utc(np.where(known, tdb, _J2000_MJD))
-    day = np.floor(utc)
-    modern = utc >= FIRST_UTC_MJD
-    # Only UTC has leap seconds; elsewhere days have 86 400 s.
-    year, month, date, clock, _ = erfa_ufunc.d2dtf(b"UTC", 0, MJD_ZERO_JD + day, utc - day)
-    parts = [year, month, date, clock["h"], clock["m"], clock["s"]]
-    if not modern.all():
-        plain = erfa_ufunc.d2dtf(b"UT1", 0, MJD_ZERO_JD + day, utc - day)
-        other = [*plain[:3], plain[3]["h"], plain[3]["m"], plain[3]["s"]]
-        parts = [np.where(modern, a, b) for a, b in zip(parts, other, strict=True)]
-    rows = zip(known.tolist(), *(part.tolist() for part in parts), strict=True)
-    return ["%04d-%02d-%02dT%02d:%02d:%02dZ" % tuple(row) if good else None for good, *row in rows]  # noqa: UP031
-
-
-def julian_epoch_to_mjd(julian_epoch_yr: ArrayLike) -> FloatArray:
-    """MJD (TT) of a Julian epoch.
-
-    Parameters
-    ----------
-    julian_epoch_yr : array_like
-        As 2016.0, Julian years.
-
-    Returns
-    -------
-    ndarray
-        MJD in TT, days.
-
-    Notes
-    -----
-    Accuracy: exact to rounding.
-
-    Source: J = 2000 + (JD_TT - 2451545)/365.25 (IAU 1976; SOFA epj2jd).
+    Source: erfa (taiutc, d2dtf); TDB - TT from the leading terms in Kaplan 2005, USNO Circular 179, eq. 2.6
+    (10 us, memory).
 
     Examples
     --------
-    >>> float(julian_epoch_to_mjd(1991.25)) + 2400000.5
-    2448349.0625
+    >>> utc_iso([57754.0 + 68.184 / 86400, 1e9])
+    ['2016-12-31T23:59:60Z', None]
     """
-    result: FloatArray = _J2000_MJD + (np.asarray(julian_epoch_yr, dtype=float) - 2000.0) * 365.25
+    mjd = np.atleast_1d(np.asarray(bmjd_tdb, dtype=np.float64)).ravel()
+    good = _in_calendar(mjd)
+    day = np.floor(mjd[good])
+    rest = mjd[good] - day
+    utc_day, utc_rest = _universal_of_tt(day, rest - _leading_tdb_minus_tt_d(mjd[good]))
+    # Status 1 says only that leap seconds of that year are not known, which the docstring says.
+    year, month, date, clock, _ = ufunc.d2dtf(b"UTC", 0, utc_day + MJD_ZERO_JD, utc_rest)
+    columns = (year, month, date, clock["h"], clock["m"], clock["s"])
+    # At either end of the calendar the change of scale may lead out of it.
+    texts = [
+        f"{y:04d}-{mo:02d}-{d:02d}T{h:02d}:{mi:02d}:{s:02d}Z" if 1 <= y <= 9999 else None
+        for y, mo, d, h, mi, s in zip(*(column.tolist() for column in columns), strict=True)
+    ]
+    found: list[str | None] = [None] * mjd.size
+    for position, text in zip(np.flatnonzero(good).tolist(), texts, strict=True):
+        found[position] = text
+    return found
+
+
+def _in_calendar(mjd: FloatArray) -> NDArray[np.bool_]:
+    return (mjd >= _MJD_YEAR_1) & (mjd < _MJD_YEAR_10000)
+
+
+def _tdb_minus_tt_d(day: FloatArray, rest: FloatArray) -> FloatArray:
+    # TT in place of TDB as the argument of the slow terms changes them by less than 1e-12 s.
+    finite = np.isfinite(day + rest)
+    jd, part = np.where(finite, day + MJD_ZERO_JD, MJD_ZERO_JD), np.where(finite, rest, 0.0)
+    seconds: FloatArray = ufunc.dtdb(jd, part, 0.0, 0.0, 0.0, 0.0)
+    return seconds / DAY_S
+
+
+def _leading_tdb_minus_tt_d(mjd: FloatArray) -> FloatArray:
+    century = (mjd - MJD_J2000) / (100.0 * JULIAN_YEAR_D)
+    total = np.zeros_like(century)
+    for amplitude, frequency, phase in _TDB_TERMS:
+        total += amplitude * np.sin(frequency * century + phase)
+    return total / DAY_S
+
+
+def _year_of(mjd: FloatArray) -> FloatArray:
+    return 2000.0 + (mjd - MJD_J2000) / JULIAN_YEAR_D
+
+
+def _tt_of_universal(day: FloatArray, rest: FloatArray) -> FloatArray:
+    """The second part of TT; the first is ``day``."""
+    before = day + rest < _UTC_FROM_MJD
+    result = rest + delta_t_s(_year_of(day + rest)) / DAY_S
+    since = ~before & np.isfinite(day + rest)
+    if bool(since.any()):
+        jd = np.where(since, day, _UTC_FROM_MJD) + MJD_ZERO_JD
+        _, tai, _ = ufunc.utctai(jd, np.where(since, rest, 0.0))
+        result = np.where(since, tai + _TT_MINUS_TAI_D, result)
     return result
 
 
-def mjd_to_julian_epoch(mjd_tt: ArrayLike) -> FloatArray:
-    """Julian epoch of an MJD.
-
-    Parameters
-    ----------
-    mjd_tt : array_like
-        MJD in TT, days.
-
-    Returns
-    -------
-    ndarray
-        Julian years.
-
-    Notes
-    -----
-    Accuracy: exact to rounding.
-
-    Source: SOFA epj.
-
-    Examples
-    --------
-    >>> round(float(mjd_to_julian_epoch(53303.5)), 5)
-    2004.81588
-    """
-    result: FloatArray = 2000.0 + (np.asarray(mjd_tt, dtype=float) - _J2000_MJD) / 365.25
-    return result
-
-
-def besselian_epoch_to_mjd(besselian_epoch_yr: ArrayLike) -> FloatArray:
-    """MJD (TT) of a Besselian epoch.
-
-    Parameters
-    ----------
-    besselian_epoch_yr : array_like
-        As 1950.0, Besselian years.
-
-    Returns
-    -------
-    ndarray
-        MJD in TT, days.
-
-    Notes
-    -----
-    Accuracy: exact to rounding.
-
-    Source: B = 1900 + (JD - 2415020.31352)/365.242198781 (Lieske 1979; SOFA epb2jd).
-
-    Examples
-    --------
-    >>> round(float(besselian_epoch_to_mjd(1950.0)) + 2400000.5, 8)
-    2433282.42345905
-    """
-    result: FloatArray = (
-        _B1900_MJD + (np.asarray(besselian_epoch_yr, dtype=float) - 1900.0) * _TROPICAL_YEAR_D
-    )
-    return result
-
-
-def mjd_to_besselian_epoch(mjd_tt: ArrayLike) -> FloatArray:
-    """Besselian epoch of an MJD.
-
-    Parameters
-    ----------
-    mjd_tt : array_like
-        MJD in TT, days.
-
-    Returns
-    -------
-    ndarray
-        Besselian years.
-
-    Notes
-    -----
-    Accuracy: exact to rounding.
-
-    Source: SOFA epb.
-
-    Examples
-    --------
-    >>> round(float(mjd_to_besselian_epoch(53303.5)), 5)
-    2004.81726
-    """
-    result: FloatArray = 1900.0 + (np.asarray(mjd_tt, dtype=float) - _B1900_MJD) / _TROPICAL_YEAR_D
-    return result
-
-
-def calendar_year_to_mjd(year: float) -> float:
-    """MJD of a calendar decimal year: the elapsed fraction of that very year.
-
-    Parameters
-    ----------
-    year : float
-        As 2018.5, years 1 to 9999.
-
-    Returns
-    -------
-    float
-        MJD in whatever scale the year was meant in, days.
-
-    Raises
-    ------
-    InputRefused
-        If the year is outside 1 to 9999.
-
-    Notes
-    -----
-    Accuracy: exact to rounding; a year has 365 or 366 days.
-
-    Source: Gregorian calendar.
-
-    Examples
-    --------
-    >>> calendar_year_to_mjd(2018.5) + 2400000.5
-    2458302.0
-    """
-    whole = int(np.floor(year))
-    if not 1 <= whole <= 9998:
-        raise InputRefused(
-            f"The year {year:g} is outside the calendar used here.",
-            why="Years run from 1 to 9998.",
-            hint="For example 2031.27.",
-            code="year-refused",
-        )
-    first, following = (float(erfa_ufunc.cal2jd(y, 1, 1)[1]) for y in (whole, whole + 1))
-    return first + (year - whole) * (following - first)
-
-
-def mjd_to_calendar_year(mjd: ArrayLike) -> FloatArray:
-    """Calendar decimal year of an MJD.
-
-    Parameters
-    ----------
-    mjd : array_like
-        MJD in any scale, days.
-
-    Returns
-    -------
-    ndarray
-        Calendar years with the elapsed fraction of that year.
-
-    Notes
-    -----
-    Accuracy: exact to rounding.
-
-    Source: Gregorian calendar.
-
-    Examples
-    --------
-    >>> round(float(mjd_to_calendar_year(53303.5)), 9)
-    2004.81557377
-    """
-    date = np.asarray(mjd, dtype=float)
-    year = erfa_ufunc.jd2cal(MJD_ZERO_JD, date)[0]
-    first = erfa_ufunc.cal2jd(year, 1, 1)[1]
-    following = erfa_ufunc.cal2jd(year + 1, 1, 1)[1]
-    result: FloatArray = year + (date - first) / (following - first)
-    return result
+def _universal_of_tt(day: FloatArray, tt: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Whole-day part and the rest of UTC or UT."""
+    ut = tt - delta_t_s(_year_of(day + tt)) / DAY_S
+    _, utc, _ = ufunc.taiutc(day + MJD_ZERO_JD, tt - _TT_MINUS_TAI_D)
+    return day, np.where(day + ut < _UTC_FROM_MJD, ut, utc)
