@@ -23,7 +23,8 @@ SHADES: tuple[tuple[float, str, str], ...] = (
 )
 _TODAY, _MEDIAN, _INTERVAL = "│", "◇", "╌"
 _PIPE_WIDTH = 100
-_LABEL_LIMIT = 26
+_LABEL_LIMIT = 18
+_LONG_LABEL_LIMIT = 26
 _MONTH_STEPS = (1, 2, 3, 6, 12, 24, 60, 120, 240, 600, 1200, 2400, 6000, 12_000)
 
 
@@ -33,7 +34,8 @@ def render_timeline(screen: Screen, result: UpcomingResult) -> None:
     if not stories or result.until_bmjd_tdb <= result.from_bmjd_tdb:
         return
     whole = screen.width or _PIPE_WIDTH
-    label = min(max(cell_len(screen.spell(each.name)) for each in stories), _LABEL_LIMIT, whole // 3)
+    limit = _LONG_LABEL_LIMIT if any(w.solution for w in result.dust_windows) else _LABEL_LIMIT
+    label = min(max(cell_len(screen.spell(each.name)) for each in stories), limit, whole // 3)
     axis = _Axis(result.from_bmjd_tdb, result.until_bmjd_tdb, whole - label - 2)
     today = axis.cell(result.as_of_bmjd_tdb)
     blank = " " * (label + 2)

@@ -125,7 +125,8 @@ def _learned_story(
         if prediction.prior_used
         else f"{prediction.degrees_of_freedom} degrees of freedom"
     )
-    text = f"line through {count} dated {'onset' if event == 'onset' else event}s, carried to cycle {cycle}"
+    dated = f"{event} date" if count == 1 else f"{event} dates"
+    text = f"line through {count} {dated}, carried to cycle {cycle}"
     return text, (
         VarianceTerm("line: constant and period", line, "grows with the distance from the dated cycles"),
         VarianceTerm("cycle-to-cycle scatter", scatter, f"marginalised, {prior}"),
@@ -201,7 +202,7 @@ def _terms(row: ForecastRow, event: EventName, cycle: int, seed: int) -> tuple[V
             continue
         alone = row if covariance is None else _without_covariance(row)
         size = _spread(alone, event, cycle, seed, {name})
-        note = f"{abs(step)} cycles" if name == "period_d" else ""
+        note = f"times {abs(step)}" if name == "period_d" else ""
         if size > 0.0:
             terms.append(VarianceTerm(SPOKEN[name], size, note))
     scatter = (
@@ -378,5 +379,6 @@ def _cycle_count(prepared: Prepared, events: Sequence[EventForecast]) -> tuple[s
                 )
                 verdict = "count is safe" if safe else "count may be off by one"
                 side = "after" if step >= 0 else "before"
-                lines.append(f"cycle {cycle}: {abs(step)} periods {side} the epoch, {verdict}")
+                periods = "1 period" if abs(step) == 1 else f"{abs(step)} periods"
+                lines.append(f"cycle {cycle}: {periods} {side} the epoch, {verdict}")
     return tuple(dict.fromkeys(lines))
