@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from sqlalchemy import ForeignKeyConstraint, Index, Table, TypedColumns, UniqueConstraint, text
+from sqlalchemy import ForeignKeyConstraint, Index, Table, TypedColumns, UniqueConstraint
 
 from campaign.catalogue.columns import (
     check,
@@ -22,6 +22,7 @@ from campaign.catalogue.columns import (
     metadata,
     moment,
     moment_checks,
+    partial_index,
     prose,
     reference,
     whole,
@@ -130,20 +131,8 @@ adoptions = Table(
     ),
     check("weight", "weight > 0"),
     Index("ix_adoptions_system_id", "system_id"),
-    Index(
-        "uq_adoptions_current_alone",
-        "system_id",
-        unique=True,
-        sqlite_where=text(_CURRENT_ALONE),
-        postgresql_where=text(_CURRENT_ALONE),
-    ),
-    Index(
-        "uq_adoptions_current_solution",
-        "solution_id",
-        unique=True,
-        sqlite_where=text(_CURRENT),
-        postgresql_where=text(_CURRENT),
-    ),
+    partial_index("uq_adoptions_current_alone", "system_id", _CURRENT_ALONE, unique=True),
+    partial_index("uq_adoptions_current_solution", "solution_id", _CURRENT, unique=True),
 )
 
 
@@ -189,13 +178,7 @@ dust_rules = Table(
     check("scatter", "scatter_onset_d >= 0 AND scatter_maximum_d >= 0 AND scatter_end_d >= 0"),
     *error_checks(*RULE_QUANTITIES),
     Index("ix_dust_rules_system_id", "system_id"),
-    Index(
-        "uq_dust_rules_current",
-        "system_id",
-        unique=True,
-        sqlite_where=text(_CURRENT),
-        postgresql_where=text(_CURRENT),
-    ),
+    partial_index("uq_dust_rules_current", "system_id", _CURRENT, unique=True),
 )
 
 

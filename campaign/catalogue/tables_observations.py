@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from sqlalchemy import Index, Table, TypedColumns, UniqueConstraint, text
+from sqlalchemy import Index, Table, TypedColumns, UniqueConstraint
 
 from campaign.catalogue.columns import (
     PLACES,
@@ -22,6 +22,7 @@ from campaign.catalogue.columns import (
     measured,
     metadata,
     number,
+    partial_index,
     prose,
     reference,
 )
@@ -98,10 +99,7 @@ observations = Table(
     Index("ix_observations_system_id_kind_bmjd_tdb", "system_id", "kind", "bmjd_tdb"),
     Index("ix_observations_operation_id", "operation_id"),
     # Without it each deleted row would scan the table for rows that it superseded.
-    Index(
-        "ix_observations_superseded_by_id",
-        "superseded_by_id",
-        sqlite_where=text("superseded_by_id IS NOT NULL"),
-        postgresql_where=text("superseded_by_id IS NOT NULL"),
+    partial_index(
+        "ix_observations_superseded_by_id", "superseded_by_id", "superseded_by_id IS NOT NULL", unique=False
     ),
 )
