@@ -67,7 +67,8 @@ def _from_sqlite(name: str, address: Address, text: str) -> CampaignError:
 
 
 def _from_postgresql(state: str | None, address: Address, text: str) -> CampaignError:
-    line = " ".join(text.split())[:300]
+    # The whole refused row, which PostgreSQL adds, would hide the reason.
+    line = " ".join(text.split()).split(" DETAIL: Failing row contains")[0][:300]
     if state is None or state[:2] in ("08", "28", "3D", "57", "58", "F0"):
         return DatabaseUnusable(
             f"The database {address.shown} cannot be reached.",

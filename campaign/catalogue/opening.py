@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from contextlib import closing
 
-from sqlalchemy import Connection, text
+from sqlalchemy import Connection, inspect, text
 from sqlalchemy.exc import OperationalError, ProgrammingError
 
 from campaign.catalogue.address import Address
 from campaign.catalogue.engine import sqlite_connection
-from campaign.catalogue.failures import translated
+from campaign.catalogue.failures import missing, translated
 from campaign.catalogue.places import has_leftover_journal, refuse_unless_file
 from campaign.catalogue.revision import HEAD_REVISION, KNOWN_REVISIONS
 from campaign.errors import CampaignError, DatabaseUnusable
@@ -42,6 +42,12 @@ def read_revision(connection: Connection) -> str | None:
     return None if row is None or row[1] is None else str(row[0])
 
 
+def holds_anything(connection: Connection) -> bool:
+    """Whether there is any table or view."""
+    found = inspect(connection)
+    return bool(found.get_table_names() or found.get_view_names())
+
+
 def refuse_other_revision(connection: Connection, address: Address) -> None:
     """Refuse a database that is not ours, or of another revision than this program's.
 
@@ -53,7 +59,7 @@ def refuse_other_revision(connection: Connection, address: Address) -> None:
     if revision == HEAD_REVISION:
         return
     if revision is None:
-        raise foreign(address)
+        raise foreign(address) if holds_anything(connection) else missing(address)
     if revision in KNOWN_REVISIONS:
         raise older(address, revision)
     raise newer(address, revision)

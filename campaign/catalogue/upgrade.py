@@ -24,8 +24,8 @@ from sqlalchemy import table as bare_table
 import campaign
 from campaign.catalogue.address import Address, Database, address_of
 from campaign.catalogue.engine import migration_engine, sqlite_connection
-from campaign.catalogue.failures import translated
-from campaign.catalogue.opening import foreign, newer, read_revision, refuse_other_revision
+from campaign.catalogue.failures import missing, translated
+from campaign.catalogue.opening import foreign, holds_anything, newer, read_revision, refuse_other_revision
 from campaign.catalogue.places import refuse_bad_place, refuse_unless_file
 from campaign.catalogue.revision import FORMAT, HEAD_REVISION, KNOWN_REVISIONS
 from campaign.catalogue.types import utc_text
@@ -38,8 +38,6 @@ SNAPSHOTS_KEPT = 3
 _UNFINISHED = ".unfinished"
 # Others may be upgrading: that takes longer than an everyday change.
 LOCK_TIMEOUT_S = 60.0
-# Any number will do, as long as every campaign uses the same on a server.
-_ADVISORY_LOCK = 7_305_114_262
 
 
 @dataclass(frozen=True, slots=True)
@@ -71,7 +69,7 @@ def begin_database(
         if revision is not None:
             refuse_other_revision(connection, address)
             return UpgradeReport(False, revision, revision)
-        if _table_names(connection) or inspect(connection).get_view_names():
+        if holds_anything(connection):
             raise foreign(address)
         _migrate(connection)
         _describe_campaign(connection, at)
@@ -95,7 +93,7 @@ def upgrade_database(database: Database, *, lock_timeout_s: float = LOCK_TIMEOUT
 
     def work(connection: Connection, revision: str | None) -> UpgradeReport:
         if revision is None:
-            raise foreign(address)
+            raise foreign(address) if holds_anything(connection) else missing(address)
         if revision == HEAD_REVISION:
             return UpgradeReport(False, revision, revision)
         if revision not in KNOWN_REVISIONS:
@@ -142,8 +140,6 @@ def _under_lock(
     engine = migration_engine(address, lock_timeout_s, "rwc" if create else "rw")
     with translated(address), engine.connect() as connection:
         connection.begin()
-        if not address.is_file:
-            connection.execute(text("SELECT pg_advisory_xact_lock(:key)"), {"key": _ADVISORY_LOCK})
         report = work(connection, read_revision(connection))
         if report.from_revision == report.to_revision:
             connection.rollback()
