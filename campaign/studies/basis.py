@@ -18,10 +18,11 @@ from campaign.model.measured import Limit, Measured, Range
 from campaign.model.records import SystemRecord
 from campaign.model.systems import Solution
 from campaign.physics.timescales import utc_iso
-from campaign.studies.forecast import DatedEvent, ForecastUnit, share_before
+from campaign.studies.forecast import DatedEvent, ForecastUnit
 from campaign.studies.learned import LearnedDates
 from campaign.studies.rows import SCATTERS, ForecastRow
 from campaign.studies.status import OnsetState, later_status, plain_status, visible_span_d
+from campaign.studies.summaries import share_before
 
 _TIMELINE_POINTS = 240
 

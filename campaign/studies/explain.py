@@ -15,20 +15,18 @@ from campaign.model.forecasts import (
     ExplainedSystem,
     VarianceTerm,
 )
-from campaign.model.measured import Limit, Measured, Range
 from campaign.model.records import SystemRecord
-from campaign.model.systems import DustRule, Solution
-from campaign.physics.timescales import utc_iso
-from campaign.studies.cycles import count_is_safe
+from campaign.model.systems import DustRule
+from campaign.studies.elements import cycle_count, elements
 from campaign.studies.learned import LearnedDates
+from campaign.studies.preparing import Prepared, Question, prepare
 from campaign.studies.rows import SCATTERS, SPOKEN, ForecastRow
 from campaign.studies.sampling import Sampler
-from campaign.studies.upcoming import Prepared, Question, forecast_campaign, prepare
+from campaign.studies.upcoming import forecast_campaign
 
 # Terms smaller than this share of the whole are not worth a line.
 _SMALL = 0.02
 _DRAWS = 20_000
-Element = tuple[str, str, str]
 
 
 def explain_system(
@@ -72,8 +70,8 @@ def explain_system(
     rows = [prepared.rows[i] for unit in prepared.units for i in unit.rows]
     return ExplainedSystem(
         system=record.system.name,
-        elements=_elements(rows, record.rule),
-        cycle_count=_cycle_count(prepared, upcoming.events),
+        elements=elements(rows, record.rule),
+        cycle_count=cycle_count(prepared, upcoming.events),
         events=tuple(events),
         upcoming=upcoming,
         notes=tuple(dict.fromkeys(note for row in rows for note in (*row.notes, *row.assumptions))),
@@ -274,111 +272,3 @@ def _mixture_story(
 
 def _label(row: ForecastRow) -> str:
     return row.solution.label if row.solution is not None else "episodes"
-
-
-# ------------------------------------------------------------------------------------------ elements
-
-
-def _elements(rows: Sequence[ForecastRow], rule: DustRule | None) -> tuple[Element, ...]:
-    lines: list[Element] = []
-    for row in rows:
-        solution = row.solution
-        if solution is None:
-            continue
-        prefix = f"{solution.label}: " if len(rows) > 1 else ""
-        lines.extend((prefix + name, text, note) for name, text, note in _solution_lines(solution))
-    if rule is not None:
-        lines.extend(_rule_lines(rule))
-    return tuple(lines)
-
-
-def _solution_lines(solution: Solution) -> list[Element]:
-    lines: list[Element] = []
-    if solution.period_d is not None:
-        lines.append(("period", _text(solution.period_d, "d"), _years(solution.period_d)))
-    if solution.epoch is not None:
-        epoch = Measured(solution.epoch.bmjd_tdb, solution.epoch.minus_d, solution.epoch.plus_d)
-        when = (utc_iso(np.array([solution.epoch.bmjd_tdb]))[0] or "")[:10]
-        lines.append((f"epoch ({solution.epoch_marks})", f"MJD {_text(epoch, 'd')} TDB", when))
-    if solution.eccentricity is not None:
-        lines.append(("eccentricity", _text(solution.eccentricity, ""), ""))
-    if solution.omega_deg is not None:
-        lines.append(("omega", _text(solution.omega_deg, "deg"), f"of star {solution.omega_of}"))
-    for name, value, unit in (
-        ("a", solution.a_au, "au"),
-        ("a", solution.a_arcsec, "arcsec"),
-        ("inclination", solution.inclination_deg, "deg"),
-        ("node", solution.node_deg, "deg"),
-        ("K of star A", solution.k_a_kms, "km/s"),
-        ("K of star B", solution.k_b_kms, "km/s"),
-    ):
-        if value is not None:
-            lines.append((name, _text(value, unit), ""))
-    return lines
-
-
-def _rule_lines(rule: DustRule) -> list[Element]:
-    unit = "P" if rule.kind == "phase" else "d"
-    lines: list[Element] = [("dust rule", rule.kind, "")]
-    for name, value, its_unit in (
-        ("onset offset", rule.onset, unit),
-        ("maximum offset", rule.maximum, unit),
-        ("end offset", rule.end, unit),
-        ("critical separation", rule.critical_separation_au, "au"),
-        ("condensation distance", rule.condensation_distance_au, "au"),
-        ("flow speed", rule.flow_speed_kms, "km/s"),
-        ("lag of the maximum", rule.maximum_lag_d, "d"),
-    ):
-        if value is not None:
-            lines.append((name, _text(value, its_unit), ""))
-    for event in SCATTERS:
-        scatter = getattr(rule, f"scatter_{event}_d")
-        if scatter is not None:
-            lines.append((f"scatter of the {event}", f"{scatter:g} d", "cycle to cycle"))
-    return lines
-
-
-def _text(value: Measured | Limit | Range, unit: str) -> str:
-    tail = f" {unit}" if unit else ""
-    if isinstance(value, Limit):
-        return f"{'>' if value.side == 'above' else '<'} {value.bound:.8g}{tail}"
-    if isinstance(value, Range):
-        return f"{value.low:.8g} to {value.high:.8g}{tail}"
-    if value.minus is None or value.plus is None:
-        return f"{value.value:.9g}{tail} (error unknown)"
-    if value.minus == value.plus:
-        return f"{value.value:.9g} ± {value.plus:.3g}{tail}"
-    return f"{value.value:.9g} +{value.plus:.3g} -{value.minus:.3g}{tail}"
-
-
-def _years(period: Measured | Limit | Range) -> str:
-    if isinstance(period, Measured):
-        return f"{period.value / 365.25:.4f} yr"
-    return ""
-
-
-def _cycle_count(prepared: Prepared, events: Sequence[EventForecast]) -> tuple[str, ...]:
-    lines: list[str] = []
-    for unit in prepared.units:
-        for index in unit.rows:
-            row = prepared.rows[index]
-            if row.solution is None or "epoch" not in row.values or "period_d" not in row.values:
-                continue
-            period, minus, plus = row.values["period_d"]
-            epoch_minus, epoch_plus = row.values["epoch"][1:]
-            listed = sorted({e.cycle for e in events if e.cycle is not None})
-            lines.append(f"{row.solution.label}: its epoch is cycle {row.epoch_cycle} of this system")
-            if row.solution.published_cycle_offset:
-                lines.append(
-                    f"published counts run {row.solution.published_cycle_offset:+d} ahead of the system's"
-                )
-            for cycle in listed:
-                step = cycle - row.epoch_cycle
-                safe = count_is_safe(
-                    step, period, max(epoch_minus or 0.0, epoch_plus or 0.0), max(minus or 0.0, plus or 0.0)
-                )
-                verdict = "count is safe" if safe else "count may be off by one"
-                side = "after" if step >= 0 else "before"
-                periods = "1 period" if abs(step) == 1 else f"{abs(step)} periods"
-                lines.append(f"cycle {cycle}: {periods} {side} the epoch, {verdict}")
-    return tuple(dict.fromkeys(lines))

@@ -1,0 +1,86 @@
+"""Drawn event times summed up: quantiles, spread, probability of happening at all and inside a window."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from campaign.physics.intervals import PROBABILITIES, row_quantiles
+
+FloatArray = NDArray[np.float64]
+
+# Probabilities at which the distributions of onset and end are kept for the timeline and the status.
+GRID: FloatArray = (np.arange(101, dtype=np.float64) + 0.5) / 101.0
+
+
+@dataclass(frozen=True, slots=True)
+class Window:
+    """The span asked for and the instant of the question, all ``bmjd_tdb``."""
+
+    start: float
+    end: float
+    as_of: float
+
+
+@dataclass(slots=True)
+class Summary:
+    """Quantiles and probabilities of several drawn events, one row each."""
+
+    quantiles: FloatArray
+    sigma_d: FloatArray
+    probability: FloatArray
+    in_window: FloatArray
+    grid: FloatArray | None
+
+
+def summarise(times: FloatArray, window: Window, keep_grid: bool) -> Summary:
+    """Quantiles, spread and probabilities of drawn event times.
+
+    Parameters
+    ----------
+    times : ndarray, shape (n, draws)
+        ``bmjd_tdb``; NaN where the event does not happen.
+    window : Window
+        For the probability inside it.
+    keep_grid : bool
+        Whether to keep the quantiles at GRID too.
+
+    Returns
+    -------
+    Summary
+        Rows in the order of ``times``.
+
+    Notes
+    -----
+    Accuracy: that of the draws; with 20,000 stratified draws a bound of the 95 % interval is good to
+    about 0.02 sigma.
+
+    Source: equal-tailed quantiles (design, section 4).
+    """
+    ordered = np.sort(times, axis=1)
+    draws = times.shape[1]
+    counts = draws - np.isnan(ordered).sum(axis=1)
+    quantiles = row_quantiles(ordered, counts, PROBABILITIES)
+    if np.all(counts == draws):
+        sigma = ordered.std(axis=1)
+    else:
+        origin = np.where(counts > 0, ordered[:, 0], 0.0)[:, None]
+        shifted = np.nan_to_num(ordered - origin)
+        n = np.maximum(counts, 1)
+        mean = shifted.sum(axis=1) / n
+        sigma = np.sqrt(np.maximum((shifted**2).sum(axis=1) / n - mean**2, 0.0))
+    inside = ((ordered >= window.start) & (ordered <= window.end)).sum(axis=1) / draws
+    return Summary(
+        quantiles=quantiles,
+        sigma_d=sigma,
+        probability=counts / draws,
+        in_window=inside,
+        grid=row_quantiles(ordered, counts, GRID) if keep_grid else None,
+    )
+
+
+def share_before(grid: FloatArray, instant: float | FloatArray) -> FloatArray:
+    """Probability that an event with quantiles ``grid`` happens before an instant, given it happens."""
+    return np.asarray(np.interp(instant, grid, GRID, left=0.0, right=1.0), dtype=np.float64)
