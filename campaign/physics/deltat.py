@@ -43,7 +43,8 @@ def delta_t_s(year: ArrayLike) -> FloatArray:
 
     Notes
     -----
-    Accuracy: 1 s since 1800, 20 s since 1600, 1 min since 1000, 10 min before.
+    Accuracy: as far as another reconstruction (Stephenson, Morrison & Hohenkerk 2016) differs: 1.2 s since
+    1900, 6 s since 1700, 20 s since 1600, 4 min since the year 1.
 
     Source: Espenak & Meeus 2006, Five Millennium Canon of Solar Eclipses, polynomial expressions
     (coefficients from memory; the tests compare them with another reconstruction).
