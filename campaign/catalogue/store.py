@@ -119,7 +119,9 @@ class Writing:
         if not rows:
             return 0
         operation_id = self.operation_id
-        rows = [{**row, "operation_id": operation_id} for row in rows]
+        # Columns that are unknown in every row need no place in the statement.
+        given = sorted({name for row in rows for name, value in row.items() if value is not None})
+        rows = [{name: row.get(name) for name in given} | {"operation_id": operation_id} for row in rows]
         try:
             self.connection.execute(insert(table), rows)
         except ValueRefused as refusal:
@@ -173,6 +175,8 @@ class Writing:
 @contextmanager
 def reading(database: Database, *, busy_timeout_s: float = BUSY_TIMEOUT_S) -> Iterator[Connection]:
     """A connection that sees one state of the catalogue and cannot change it.
+
+    Leave the block before long computations: a writer cannot finish while somebody reads.
 
     Raises
     ------
