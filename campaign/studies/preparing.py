@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 from campaign.model.arrays import PhotometryArrays
 from campaign.model.forecasts import EVENT_NAMES, EventName
@@ -49,7 +49,23 @@ class Prepared:
     rows: list[ForecastRow]
     units: list[ForecastUnit]
     learned: dict[int, LearnedDates]
-    judged: dict[int, JudgedPhotometry]
+    judged: dict[int, JudgedPhotometry] = field(default_factory=dict)
+
+    def system_id(self, unit: int) -> int:
+        return self.rows[self.units[unit].rows[0]].record.system.id
+
+    def judge(
+        self, unit: int, photometry: Mapping[int, PhotometryArrays], as_of: float
+    ) -> JudgedPhotometry | None:
+        """Verdicts on the light curve of a unit's system up to ``as_of``, made once; None without any."""
+        record = self.rows[self.units[unit].rows[0]].record
+        number = record.system.id
+        if number not in self.judged:
+            arrays = photometry.get(number)
+            if arrays is None or not arrays.bmjd_tdb.size:
+                return None
+            self.judged[number] = judge(record, arrays, as_of)
+        return self.judged[number]
 
 
 def prepare(
@@ -69,7 +85,7 @@ def prepare(
     Returns
     -------
     Prepared
-        Rows, units, learned dates and judged light curves.
+        Rows, units and learned dates.
 
     Notes
     -----
@@ -77,10 +93,9 @@ def prepare(
 
     Source: design, section 2 (solution, rule) and 4 (Forecast).
     """
-    prepared = Prepared([], [], {}, {})
+    prepared = Prepared([], [], {})
     for whole in records:
         record = hide_later_episodes(whole, question.as_of)
-        arrays = photometry.get(record.system.id)
         for solutions, weights in _speakers(record, question.solutions):
             rows = tuple(_add_row(prepared, record, solution) for solution in solutions)
             first = prepared.rows[rows[0]]
@@ -89,11 +104,9 @@ def prepare(
                 weights=weights,
                 label=" + ".join(s.label for s in solutions if s is not None) or None,
                 episodes=_episodes_with_cycles(first),
-                watched=arrays is not None and arrays.bmjd_tdb.size > 0,
+                watched=record.system.id in photometry,
             )
             prepared.units.append(unit)
-        if arrays is not None and arrays.bmjd_tdb.size:
-            prepared.judged[record.system.id] = judge(record, arrays, question.as_of)
     return prepared
 
 

@@ -89,6 +89,37 @@ def covered_share(onset: DatedEvent, judged: JudgedPhotometry, visible_d: float)
     return float(np.mean(reachable & (following - onset.grid <= visible_d)))
 
 
+def needs_photometry(onset: DatedEvent, episode: Episode | None, as_of: float, period_d: float) -> bool:
+    """Whether the light curve can change the status of an onset today.
+
+    Parameters
+    ----------
+    onset : DatedEvent
+        Forecast of the onset.
+    episode : Episode or None
+        Confirmed episode of this cycle.
+    as_of : float
+        The instant of the question, ``bmjd_tdb``.
+    period_d : float
+        Period, days.
+
+    Returns
+    -------
+    bool
+        False for an onset that is seen, undated, or still far ahead.
+
+    Notes
+    -----
+    Accuracy: as ``onset_state``.
+
+    Source: project convention.
+    """
+    if onset.phase_lost or onset.quantiles is None or np.isnan(onset.quantiles[0]) or episode is not None:
+        return False
+    median, low95 = float(onset.quantiles[0]), float(onset.quantiles[3])
+    return _search_start(median, low95, not onset.missing, period_d, as_of) <= as_of
+
+
 def onset_state(
     onset: DatedEvent,
     end: DatedEvent | None,

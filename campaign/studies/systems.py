@@ -257,9 +257,7 @@ def show_system(db: str, name: str) -> ShownSystem:
     with store.reading(db) as connection:
         system = systems.find_system(connection, name)
         record = records.load_records(connection, [system.id], include_retired=True)[0]
-        counts: dict[str, int] = {}
-        for observation in observations.observations_of(connection, [system.id]):
-            counts[observation.kind] = counts.get(observation.kind, 0) + 1
+        counts = observations.count_observations(connection, [system.id]).get(system.id, {})
     adopted = next((s for s in record.solutions if s.adopted), None)
     return ShownSystem(record, derive(record, adopted) if adopted is not None else (), counts)
 

@@ -14,8 +14,9 @@ from campaign.physics.timescales import utc_iso
 from campaign.studies.basis import describe_basis, dust_windows, event_forecasts
 from campaign.studies.dateless import dateless_events
 from campaign.studies.forecast import KEEP_LISTED_D, DatedEvent, Forecaster
+from campaign.studies.lightcurves import CataloguedCurves
 from campaign.studies.preparing import Prepared, Question, prepare
-from campaign.studies.status import OnsetState, onset_state
+from campaign.studies.status import OnsetState, needs_photometry, onset_state
 
 # More than this and nobody reads a timeline.
 TIMELINE_SYSTEMS = 200
@@ -61,7 +62,7 @@ def forecast_campaign(
     # The status of an onset needs the end, whatever is listed.
     wanted = tuple(e for e in EVENT_NAMES if e in question.events or e in ("onset", "end"))
     dated = forecaster.run(question.window, wanted)
-    states = onset_states(prepared, forecaster, dated, question)
+    states = onset_states(prepared, forecaster, dated, photometry, question)
     listed = [d for d in dated if d.event in question.events and _is_listed(d, states, question)]
     listed = [d for d in listed if d.in_window is None or d.in_window >= question.min_probability]
     dateless = dateless_events(prepared, question)
@@ -91,7 +92,11 @@ def forecast_campaign(
 
 
 def onset_states(
-    prepared: Prepared, forecaster: Forecaster, dated: Sequence[DatedEvent], question: Question
+    prepared: Prepared,
+    forecaster: Forecaster,
+    dated: Sequence[DatedEvent],
+    photometry: Mapping[int, PhotometryArrays],
+    question: Question,
 ) -> dict[tuple[int, int | None], OnsetState]:
     """Status of every dated onset, by (unit, cycle).
 
@@ -103,6 +108,8 @@ def onset_states(
         For the periods, days.
     dated : sequence of DatedEvent
         All dated events, ``bmjd_tdb``.
+    photometry : mapping of int to PhotometryArrays
+        Light curves by system id; only those that can matter today are looked at.
     question : Question
         ``as_of`` in ``bmjd_tdb``.
 
@@ -118,21 +125,20 @@ def onset_states(
     Source: design, section 4 (Status).
     """
     ends = {(d.unit, d.cycle): d for d in dated if d.event == "end"}
-    states: dict[tuple[int, int | None], OnsetState] = {}
-    for onset in dated:
-        if onset.event != "onset":
-            continue
+    onsets = [d for d in dated if d.event == "onset"]
+    asked = []
+    for onset in onsets:
         unit = prepared.units[onset.unit]
-        row = prepared.rows[unit.rows[0]]
         episode = unit.confirmed(onset.cycle) if onset.cycle is not None else None
-        states[onset.unit, onset.cycle] = onset_state(
-            onset,
-            ends.get((onset.unit, onset.cycle)),
-            episode,
-            prepared.judged.get(row.record.system.id),
-            question.as_of,
-            forecaster.period_d(unit.rows[0]),
-        )
+        period_d = forecaster.period_d(unit.rows[0])
+        asked.append((onset, episode, period_d, needs_photometry(onset, episode, question.as_of, period_d)))
+    if isinstance(photometry, CataloguedCurves):
+        photometry.fetch([prepared.system_id(onset.unit) for onset, _, _, needed in asked if needed])
+    states: dict[tuple[int, int | None], OnsetState] = {}
+    for onset, episode, period_d, needed in asked:
+        judged = prepared.judge(onset.unit, photometry, question.as_of) if needed else None
+        end = ends.get((onset.unit, onset.cycle))
+        states[onset.unit, onset.cycle] = onset_state(onset, end, episode, judged, question.as_of, period_d)
     return states
 
 

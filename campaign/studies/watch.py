@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import UTC, datetime, timedelta
 from difflib import get_close_matches
@@ -23,6 +23,7 @@ from campaign.model.records import SystemRecord
 from campaign.reading.numbers import name_key
 from campaign.studies.cycles import nominal_period_d
 from campaign.studies.instants import axis_instant
+from campaign.studies.lightcurves import CataloguedCurves
 from campaign.studies.sampling import DEFAULT_DRAWS, DEFAULT_SEED
 from campaign.studies.upcoming import Question, forecast_campaign
 
@@ -36,7 +37,7 @@ class Campaign:
     """What a forecast works on: systems and light curves, and the date that stands in for today, if any."""
 
     records: tuple[SystemRecord, ...]
-    photometry: dict[int, PhotometryArrays]
+    photometry: Mapping[int, PhotometryArrays]
     own_as_of: float | None = None
     is_sample: bool = False
 
@@ -76,9 +77,11 @@ def load_campaign(
     with store.reading(db) as connection:
         ids = None if names is None else [systems.find_system(connection, name).id for name in names]
         found = records.load_records(connection, ids, known_at=entered, include_retired=ids is not None)
-        curves = observations.photometry_arrays(connection, ids, as_of_bmjd_tdb=observed, known_at=entered)
+        counts = observations.count_observations(connection, ids)
         own = info.read_info(connection).get("sample_as_of")
     own_as_of = None if own is None else mjd_of(datetime.fromisoformat(own.replace("Z", "+00:00")))
+    watched = [number for number, kinds in counts.items() if kinds.get("photometry")]
+    curves = CataloguedCurves(db, watched, observed, entered)
     return Campaign(tuple(found), curves, own_as_of, own is not None)
 
 
