@@ -178,7 +178,8 @@ def event_notes(events: Sequence[EventForecast]) -> list[str]:
     about: dict[tuple[str, str], list[str]] = {}
     for event in by_date(events):
         notes = list(event.notes)
-        if event.disagreement_sigma is not None:
+        # A mixture tells in its own note how far its solutions are apart.
+        if event.disagreement_sigma is not None and not any("disagree by" in note for note in notes):
             by = f"by {event.solution} it" if event.solution else "it"
             notes.append(f"{by} is {event.disagreement_sigma:+.1f} sigma from the solution listed first")
         for note in notes:
