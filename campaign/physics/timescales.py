@@ -164,8 +164,8 @@ def utc_iso(bmjd_tdb: ArrayLike) -> list[str | None]:
     Returns
     -------
     list of str or None
-        Such as ``2031-04-07T03:12:10Z``, to the nearest second; None where the instant is not finite or
-        lies outside the years 1 to 9999. A leap second reads ``23:59:60``.
+        Such as ``2031-04-07T03:12:10Z``, rounded to 1 s; None where the instant is not finite or lies
+        outside the years 1 to 9999. A leap second reads ``23:59:60``.
 
     Notes
     -----
