@@ -13,21 +13,14 @@ from campaign.catalogue.converting import (
     columns_of,
     in_force,
     kept,
-    measured_names,
-    measured_or_none,
-    measured_values,
-    moment_names,
-    moment_values,
 )
 from campaign.catalogue.naming import name_key, nearest_names, tidy_name
+from campaign.catalogue.solution_rows import SOLUTION_COLUMNS, element_values, solution_from_row
 from campaign.catalogue.sources import source_id, source_titles
 from campaign.catalogue.store import Writing
 from campaign.catalogue.tables import adoptions, solutions
-from campaign.catalogue.tables_knowledge import ELEMENT_QUANTITIES
 from campaign.catalogue.types import ValueRefused
 from campaign.errors import Conflict, NotFound
-from campaign.model.instants import Moment
-from campaign.model.measured import Covariance, Limit, Measured, Range
 from campaign.model.systems import Solution
 
 
@@ -61,7 +54,7 @@ def add_solution(writing: Writing, solution: Solution) -> int:
             "system_id": solution.system_id,
             "label": label,
             "label_key": name_key(label),
-            **_element_values(solution),
+            **element_values(solution),
             "source_id": source_id(writing, solution.source),
             "entered_at": writing.at,
         },
@@ -206,7 +199,7 @@ def load_solutions(
     adopted = in_force(adoptions.c.adopted_at, adoptions.c.ended_at, known_at)
     entered: ColumnElement[bool] = true() if known_at is None else solutions.c.entered_at <= known_at
     rows = connection.execute(
-        select(*columns_of(solutions, _COLUMNS), adoptions.c.id, adoptions.c.weight)
+        select(*columns_of(solutions, SOLUTION_COLUMNS), adoptions.c.id, adoptions.c.weight)
         .outerjoin_from(solutions, adoptions, and_(adoptions.c.solution_id == solutions.c.id, adopted))
         .where(among(solutions.c.system_id, system_ids), entered)
         .order_by(solutions.c.system_id, solutions.c.id, adoptions.c.id)
@@ -216,115 +209,13 @@ def load_solutions(
         if not kept(row[1], system_ids):
             continue
         found = by_system.setdefault(row[1], [])
-        solution = _solution(row, titles)
+        solution = solution_from_row(row, titles)
         # A clock that was set back can make two adoptions overlap: the later entry counts.
         if found and found[-1].id == solution.id:
             found[-1] = solution
         else:
             found.append(solution)
     return by_system
-
-
-_COLUMNS = (
-    "id",
-    "system_id",
-    "label",
-    "epoch_marks",
-    "omega_of",
-    "data_until_bmjd_tdb",
-    "epoch_cycle",
-    "published_cycle_offset",
-    "note",
-    "source_id",
-    "covariance",
-    "period_kind",
-    "period_high_d",
-    "period_limit_sigma",
-    *measured_names("period_d"),
-    *moment_names("epoch"),
-    *measured_names(*ELEMENT_QUANTITIES),
-)
-
-
-def _solution(row: Any, titles: Mapping[int, str]) -> Solution:
-    epoch = row[17:23]
-    return Solution(
-        id=row[0],
-        system_id=row[1],
-        label=row[2],
-        epoch_marks=row[3],
-        omega_of=row[4],
-        data_until_bmjd_tdb=row[5],
-        epoch_cycle=row[6],
-        published_cycle_offset=row[7],
-        note=row[8],
-        source="" if row[9] is None else titles[row[9]],
-        covariance=None if row[10] is None else _covariance(row[10]),
-        period_d=_period(row[11:17]),
-        epoch=None if epoch[0] is None else Moment(*epoch),
-        eccentricity=measured_or_none(row[23], row[24], row[25]),
-        omega_deg=measured_or_none(row[26], row[27], row[28]),
-        inclination_deg=measured_or_none(row[29], row[30], row[31]),
-        node_deg=measured_or_none(row[32], row[33], row[34]),
-        k_a_kms=measured_or_none(row[35], row[36], row[37]),
-        k_b_kms=measured_or_none(row[38], row[39], row[40]),
-        gamma_kms=measured_or_none(row[41], row[42], row[43]),
-        a_au=measured_or_none(row[44], row[45], row[46]),
-        a_arcsec=measured_or_none(row[47], row[48], row[49]),
-        adopted=row[50] is not None,
-        weight=row[51],
-    )
-
-
-def _period(columns: Any) -> Measured | Limit | Range | None:
-    kind, high_d, limit_sigma, value, minus, plus = columns
-    if kind is None:
-        return None
-    if kind == "measured":
-        return Measured(value, minus, plus)
-    if kind == "range":
-        return Range(value, high_d)
-    return Limit(value, "above" if kind == "above" else "below", limit_sigma)
-
-
-def _period_values(period: Measured | Limit | Range | None) -> dict[str, Any]:
-    values: dict[str, Any] = {"period_kind": None, "period_high_d": None, "period_limit_sigma": None}
-    if isinstance(period, Range):
-        values |= measured_values("period_d", Measured(period.low))
-        return values | {"period_kind": "range", "period_high_d": period.high}
-    if isinstance(period, Limit):
-        values |= measured_values("period_d", Measured(period.bound))
-        return values | {"period_kind": period.side, "period_limit_sigma": period.limit_sigma}
-    values |= measured_values("period_d", period)
-    return values | {"period_kind": None if period is None else "measured"}
-
-
-def _covariance(document: Mapping[str, Any]) -> Covariance:
-    return Covariance(
-        tuple(document["names"]), tuple(tuple(float(x) for x in line) for line in document["matrix"])
-    )
-
-
-def _element_values(solution: Solution) -> dict[str, Any]:
-    covariance = solution.covariance
-    values: dict[str, Any] = {
-        "epoch_marks": solution.epoch_marks,
-        "omega_of": solution.omega_of,
-        "data_until_bmjd_tdb": solution.data_until_bmjd_tdb,
-        "epoch_cycle": solution.epoch_cycle,
-        "published_cycle_offset": solution.published_cycle_offset,
-        "note": solution.note,
-        "covariance": None
-        if covariance is None
-        else {
-            "names": list(covariance.names),
-            "matrix": [[float(x) for x in line] for line in covariance.matrix],
-        },
-    }
-    values |= _period_values(solution.period_d) | moment_values("epoch", solution.epoch)
-    for name in ELEMENT_QUANTITIES:
-        values |= measured_values(name, getattr(solution, name))
-    return values
 
 
 def _current(writing: Writing, solution_id: int) -> tuple[int, list[Any]]:

@@ -1,0 +1,239 @@
+"""Reading observations: as dataclasses, as counts, and light curves as columns."""
+
+from __future__ import annotations
+
+from collections.abc import Collection
+from datetime import datetime
+from typing import TYPE_CHECKING
+
+from sqlalchemy import ColumnElement, Connection, and_, func, or_, select, true
+
+from campaign.catalogue.converting import among, columns_of, kept, measured_or_none
+from campaign.catalogue.sources import source_titles
+from campaign.catalogue.tables import observations, sites
+from campaign.catalogue.types import Names
+from campaign.errors import NotFound
+from campaign.model.instants import Moment
+from campaign.model.observations import Observation
+
+if TYPE_CHECKING:
+    from campaign.model.arrays import PhotometryArrays
+
+# Columns that bear the name of their field and its value as it is.
+PLAIN_COLUMNS = (
+    "system_id",
+    "kind",
+    "unit",
+    "limit_side",
+    "limit_sigma",
+    "band",
+    "photometric_system",
+    "frequency_ghz",
+    "energy_low_kev",
+    "energy_high_kev",
+    "star",
+    "species",
+    "correlation",
+    "feature",
+    "measured_at",
+    "plate_scale_error",
+    "shell_index",
+    "observer",
+    "instrument",
+    "comparison_star",
+    "quality",
+    "text",
+)
+
+
+def get_observation(connection: Connection, observation_id: int) -> Observation:
+    """The observation of that number, in use or not.
+
+    Raises
+    ------
+    NotFound
+    """
+    found = _read(connection, observations.c.id == observation_id)
+    if not found:
+        raise no_observation(observation_id)
+    return found[0]
+
+
+def observations_of(
+    connection: Connection,
+    system_ids: Collection[int] | None = None,
+    kinds: Collection[str] | None = None,
+    *,
+    as_of_bmjd_tdb: float | None = None,
+    known_at: datetime | None = None,
+) -> list[Observation]:
+    """Observations in use, by system and then by time.
+
+    Parameters
+    ----------
+    system_ids, kinds
+        Only these; None for all.
+    as_of_bmjd_tdb
+        Hide what was observed later.
+    known_at
+        Hide what was entered later; what was in use then counts.
+    """
+    wanted = None if system_ids is None else set(system_ids)
+    condition = and_(
+        among(observations.c.system_id, wanted),
+        true() if kinds is None else observations.c.kind.in_(sorted(kinds)),
+        _in_use(as_of_bmjd_tdb, known_at),
+    )
+    return [found for found in _read(connection, condition) if kept(found.system_id, wanted)]
+
+
+def count_observations(
+    connection: Connection, system_ids: Collection[int] | None = None
+) -> dict[int, dict[str, int]]:
+    """How many observations are in use, by system and kind."""
+    wanted = None if system_ids is None else set(system_ids)
+    rows = connection.execute(
+        select(observations.c.system_id, observations.c.kind, func.count())
+        .where(among(observations.c.system_id, wanted), _in_use(None, None))
+        .group_by(observations.c.system_id, observations.c.kind)
+        .order_by(observations.c.system_id, observations.c.kind)
+    )
+    counts: dict[int, dict[str, int]] = {}
+    for system_id, kind, number in rows.all():
+        if kept(system_id, wanted):
+            counts.setdefault(system_id, {})[kind] = number
+    return counts
+
+
+def photometry_arrays(
+    connection: Connection,
+    system_ids: Collection[int] | None = None,
+    *,
+    as_of_bmjd_tdb: float | None = None,
+    known_at: datetime | None = None,
+) -> dict[int, PhotometryArrays]:
+    """Light curves as columns, by system; systems without photometry are left out."""
+    import numpy as np
+
+    from campaign.model.arrays import PhotometryArrays
+
+    wanted = None if system_ids is None else set(system_ids)
+    rows = connection.execute(
+        select(*columns_of(observations, _ARRAY_COLUMNS))
+        .where(
+            among(observations.c.system_id, wanted),
+            observations.c.kind == "photometry",
+            _in_use(as_of_bmjd_tdb, known_at),
+        )
+        .order_by(observations.c.system_id, observations.c.bmjd_tdb, observations.c.id)
+    ).all()
+    if not rows:
+        return {}
+    titles = source_titles(connection)
+    columns = list(zip(*rows, strict=True))
+    system = np.array(columns[0])
+    starts = np.flatnonzero(np.r_[True, system[1:] != system[:-1]])
+    # None becomes NaN, which is what an unknown error is in these columns.
+    reals = [np.array(columns[index], dtype=np.float64) for index in range(2, 9)]
+    side = np.array([_SIDE[value] for value in columns[9]], dtype=np.int8)
+    band = np.array([value or "" for value in columns[10]])
+    source = np.array(["" if value is None else titles[value] for value in columns[11]])
+    site = np.array([-1 if value is None else value for value in columns[12]], dtype=np.int64)
+    quality, number = np.array(columns[13]), np.array(columns[1], dtype=np.int64)
+    found = {}
+    for first, last in zip(starts, [*starts[1:], len(system)], strict=True):
+        if not kept(int(system[first]), wanted):
+            continue
+        part = slice(first, last)
+        time, time_minus, time_plus, mag, mag_minus, mag_plus, limit_sigma = (x[part] for x in reals)
+        found[int(system[first])] = PhotometryArrays(
+            id=number[part],
+            bmjd_tdb=time,
+            minus_d=time_minus,
+            plus_d=time_plus,
+            mag=mag,
+            mag_minus=mag_minus,
+            mag_plus=mag_plus,
+            limit_side=side[part],
+            limit_sigma=limit_sigma,
+            band=band[part],
+            source=source[part],
+            site_id=site[part],
+            quality=quality[part],
+        )
+    return found
+
+
+_SIDE = {None: 0, "above": 1, "below": -1}
+_ARRAY_COLUMNS = (
+    "system_id",
+    "id",
+    "bmjd_tdb",
+    "time_minus_d",
+    "time_plus_d",
+    "value",
+    "value_minus",
+    "value_plus",
+    "limit_sigma",
+    "limit_side",
+    "band",
+    "source_id",
+    "site_id",
+    "quality",
+)
+_TIME = ("bmjd_tdb", "time_minus_d", "time_plus_d", "time_text", "time_scale", "time_place")
+_VALUES = ("value", "value_minus", "value_plus")
+_ANGLE = ("position_angle_deg", "position_angle_deg_minus", "position_angle_deg_plus")
+_READ = ("id", "uid", "site_id", "source_id", *_TIME, *_VALUES, *_ANGLE, *PLAIN_COLUMNS)
+
+
+def _in_use(as_of_bmjd_tdb: float | None, known_at: datetime | None) -> ColumnElement[bool]:
+    columns = observations.c
+    conditions: list[ColumnElement[bool]] = []
+    if known_at is None:
+        conditions += [columns.superseded_at.is_(None), columns.withdrawn_at.is_(None)]
+    else:
+        conditions += [
+            columns.entered_at <= known_at,
+            or_(columns.superseded_at.is_(None), columns.superseded_at > known_at),
+            or_(columns.withdrawn_at.is_(None), columns.withdrawn_at > known_at),
+        ]
+    if as_of_bmjd_tdb is not None:
+        conditions.append(columns.bmjd_tdb <= as_of_bmjd_tdb)
+    return and_(*conditions)
+
+
+def _read(connection: Connection, condition: ColumnElement[bool]) -> list[Observation]:
+    rows = connection.execute(
+        select(*columns_of(observations, _READ))
+        .where(condition)
+        .order_by(observations.c.system_id, observations.c.bmjd_tdb, observations.c.id)
+    ).all()
+    if not rows:
+        return []
+    titles = source_titles(connection)
+    site_rows = connection.execute(select(sites.c.id, sites.c.name))
+    site_names = Names((number, name) for number, name in site_rows)
+    return [
+        Observation(
+            id=row[0],
+            uid=row[1],
+            site_id=row[2],
+            site=None if row[2] is None else site_names[row[2]],
+            source=None if row[3] is None else titles[row[3]],
+            moment=Moment(*row[4:10]),
+            value=measured_or_none(row[10], row[11], row[12]),
+            position_angle_deg=measured_or_none(row[13], row[14], row[15]),
+            **dict(zip(PLAIN_COLUMNS, row[16:], strict=True)),
+        )
+        for row in rows
+    ]
+
+
+def no_observation(observation_id: int) -> NotFound:
+    """The error for a number that is not there."""
+    return NotFound(
+        f"There is no observation number {observation_id}.",
+        hint="See their numbers with: campaign observations.",
+        code="observation-not-found",
+    )
