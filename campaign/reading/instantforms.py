@@ -271,10 +271,12 @@ def read_form(plain: str, context: FormContext) -> FormRead | None:
 def ut_error_floor_d(mjd: Fraction) -> float:
     """The least one-sigma error of an instant given in universal time, before UTC began in 1960.
 
-    The offset of universal from uniform time is known to about 1 s since 1800, to a minute since the
-    year 1000 and to ten minutes before (rounded up; after the reconstructions from eclipses, memory).
+    The offset of universal from uniform time is known to about 1 s since 1900, 6 s since 1700, 20 s since
+    1600, and to ten minutes before: so far do published reconstructions differ, rounded up (Espenak &
+    Meeus 2006 against the table carried by skyfield).
     """
     if mjd >= UTC_FROM_MJD:
         return 0.0
-    seconds = 1.0 if mjd >= mjd_of_date(1800, 1, 1) else 60.0 if mjd >= mjd_of_date(1000, 1, 1) else 600.0
+    floors_s = ((1900, 1.0), (1700, 6.0), (1600, 20.0))
+    seconds = next((s for year, s in floors_s if mjd >= mjd_of_date(year, 1, 1)), 600.0)
     return seconds / 86400.0

@@ -165,8 +165,8 @@ def read_instant(
         decimal year or epoch carries its rounding error; a time to the second has error zero; a Julian date
         without a typed error has an unknown one. A typed error replaces these, but cannot make a calendar
         interval narrower than it is.
-        UTC before 1960 is universal time (scale ``ut``), with an error of at least 1 s (1 min before 1800,
-        10 min before 1000).
+        UTC before 1960 is universal time (scale ``ut``), with an error of at least 1 s (6 s before 1900,
+        20 s before 1700, 10 min before 1600).
 
     Raises
     ------

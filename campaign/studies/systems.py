@@ -77,14 +77,14 @@ def parallax_method(system: System) -> str:
 
     Notes
     -----
-    Accuracy: words only. Source: Bailer-Jones 2015, PASP 127, 994.
+    Accuracy: words only. Source: ``campaign.physics.distance``.
     """
+    from campaign.physics.distance import distance_from_parallax
+
     parallax = system.parallax_mas
     if parallax is None or parallax.sigma is None:
         return "plain inversion, error unknown"
-    if 0.0 < parallax.sigma <= 0.05 * parallax.value:
-        return "plain inversion, relative error at most 5 %"
-    return "posterior with an exponentially decreasing space density prior, length scale 1.35 kpc"
+    return distance_from_parallax(parallax.value, parallax.sigma).method
 
 
 def change_system(db: str, stamp: Stamp, name: str, changes: dict[str, Any]) -> Kept:
