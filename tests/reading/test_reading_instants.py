@@ -141,7 +141,7 @@ UNDERSTOOD = [
     ("J2015.5 TDB ±0.1", 51544.5 + 15.5 * 365.25, 36.525, 36.525, 0, "tdb", "observatory", "Julian epoch"),
     ("1931-04-07", 26438.5, DAY, DAY, 1, "ut", "observatory", "day"),
     ("1931-04-07T03:00:00Z", 26438.125, 1 / 86400, 1 / 86400, 0, "ut", "observatory", "second"),
-    ("1631-11-07T09:00:00", OLD, 60 / 86400, 60 / 86400, 0, "ut", "observatory", "second"),
+    ("1631-11-07T09:00:00", OLD, 20 / 86400, 20 / 86400, 0, "ut", "observatory", "second"),
     ("1931-04-07T03:00:00 TDB", 26438.125, 0, 0, 0, "tdb", "observatory", "second"),
     ("BJD 2426438.625", 26438.125, None, None, 0, "tdb", "barycentre", "Julian date"),
 ]  # fmt: skip
