@@ -16,6 +16,8 @@ COVERED_SHARE = 0.95
 # How long an episode can be seen when nothing says when it ends: this share of a period, at least 60 d.
 VISIBLE_PERIODS = 0.03
 VISIBLE_MINIMUM_D = 60.0
+# An episode whose end nobody recorded or can forecast is taken to be over after this share of a period.
+FORGOTTEN_PERIODS = 0.5
 # An excess up to this share of a period before the interval counts as a suspected onset.
 SEARCH_PERIODS = 0.1
 
@@ -157,7 +159,7 @@ def onset_state(
     if onset.phase_lost or onset.quantiles is None:
         return OnsetState("phase lost")
     if episode is not None:
-        return _seen_state(episode, end, as_of)
+        return _seen_state(episode, end, as_of, period_d)
     median, _, _, low95, high95 = (float(q) for q in onset.quantiles)
     known = not onset.missing
     if judged is not None:
@@ -197,7 +199,7 @@ def _quiet_note(judged: JudgedPhotometry | None, as_of: float) -> str:
     return f"quiet {as_of - judged.last_quiet:.0f} d ago: no onset then"
 
 
-def _seen_state(episode: Episode, end: DatedEvent | None, as_of: float) -> OnsetState:
+def _seen_state(episode: Episode, end: DatedEvent | None, as_of: float, period_d: float) -> OnsetState:
     if episode.onset is not None and episode.onset.moment.bmjd_tdb > as_of:
         return OnsetState("expected")
     if episode.end is not None:
@@ -205,6 +207,9 @@ def _seen_state(episode: Episode, end: DatedEvent | None, as_of: float) -> Onset
     if end is not None and end.quantiles is not None:
         over = float(end.quantiles[0]) if end.missing else float(end.quantiles[4])
         return OnsetState("over" if over < as_of else "under way")
+    seen = [d.moment.bmjd_tdb for d in (episode.onset, episode.maximum) if d is not None]
+    if seen and as_of - max(seen) > FORGOTTEN_PERIODS * period_d:
+        return OnsetState("over", "no end was ever recorded, and half a period has passed")
     return OnsetState("under way", "no end is forecast or observed")
 
 

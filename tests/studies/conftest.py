@@ -1,0 +1,45 @@
+"""A fresh database for each test, copied from one that was begun once, and what goes in and comes out."""
+
+from __future__ import annotations
+
+import shutil
+from collections.abc import Callable
+from pathlib import Path
+
+import pytest
+from studies_examples import CLOCK, stamp
+
+from campaign.model.forecasts import UpcomingResult
+from campaign.studies.begin import begin_campaign
+
+
+@pytest.fixture(scope="session")
+def begun(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    path = tmp_path_factory.mktemp("begun") / "campaign.db"
+    begin_campaign(str(path), stamp())
+    return path
+
+
+@pytest.fixture
+def db(begun: Path, tmp_path: Path) -> str:
+    path = tmp_path / "campaign.db"
+    shutil.copy(begun, path)
+    return str(path)
+
+
+@pytest.fixture
+def ask_catalogue(db: str) -> Callable[..., UpcomingResult]:
+    """The forecast that somebody gets who types these instants."""
+    from campaign.reading.instants import read_instant
+    from campaign.studies import watch
+
+    def ask(as_of: str, until: str, names: list[str] | None = None, **options: object) -> UpcomingResult:
+        now, end = read_instant(as_of), read_instant(until)
+        campaign = watch.load_campaign(db, names, None, now)
+        asked = {
+            "now": CLOCK, "as_of": now, "start": None, "end": end, "within_d": None, "events": (),
+            "min_probability": 0.0, "draws": None, "seed": None, "solutions": "adopted", **options,
+        }  # fmt: skip
+        return watch.upcoming(campaign, watch.ask(campaign, **asked))  # type: ignore[arg-type]
+
+    return ask
