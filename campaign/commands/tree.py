@@ -81,6 +81,8 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
     ),
     Leaf("begin", "Make the database, empty or with the sample campaign.", "campaign.commands.begin", "begin",
          "Keep the catalogue"),
+    Leaf("upgrade", "Bring an older database up to this program, after a snapshot.", "campaign.commands.upgrade",
+         "upgrade", "Keep the catalogue"),
     _group(
         "system", "The binaries under watch.", "Keep the catalogue",
         ("add", "Put a system under watch."),

@@ -139,3 +139,35 @@ def _where(db: str) -> str:
     from sqlalchemy.engine import make_url
 
     return make_url(db).render_as_string(hide_password=True)
+
+
+def upgrade_campaign(db: str) -> Kept:
+    """Bring an older database up to this program, after a snapshot.
+
+    Parameters
+    ----------
+    db : str
+        Path or SQLAlchemy URL.
+
+    Returns
+    -------
+    Kept
+        ``changed`` is False when it was up to date.
+
+    Raises
+    ------
+    DatabaseUnusable
+        If it is missing, foreign, damaged or newer than this program.
+
+    Notes
+    -----
+    Accuracy: not applicable. Source: project convention.
+    """
+    report = upgrade.upgrade_database(db)
+    data = {"database": _where(db), "from_revision": report.from_revision, "to_revision": report.to_revision}
+    if report.from_revision == report.to_revision:
+        return Kept("upgrade", False, (f"{_where(db)} is up to date",), data | {"snapshot": None})
+    lines = [f"upgraded {_where(db)} from revision {report.from_revision} to {report.to_revision}"]
+    if report.snapshot:
+        lines.append(f"the database as it was is kept as {report.snapshot}")
+    return Kept("upgrade", True, tuple(lines), data | {"snapshot": report.snapshot})
