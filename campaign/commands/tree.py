@@ -51,6 +51,11 @@ class Branch:
 Table = Sequence[Leaf | Branch]
 
 
+def _command(name: str, text: str, section: str) -> Leaf:
+    """A command that is the one function of the module named after it."""
+    return Leaf(name, text, f"campaign.commands.{name}", name, section)
+
+
 def _group(name: str, text: str, section: str, *leaves: tuple[str, str]) -> Branch:
     """A branch whose commands are functions of one module, named after it."""
     module = f"campaign.commands.{name}"
@@ -59,10 +64,8 @@ def _group(name: str, text: str, section: str, *leaves: tuple[str, str]) -> Bran
 
 
 COMMANDS: tuple[Leaf | Branch, ...] = (
-    Leaf("upcoming", "The episodes to come: when, how sure, and why.", "campaign.commands.upcoming", "upcoming",
-         "Look ahead"),
-    Leaf("ephemeris", "Phase, true anomaly, separation, position and velocities, dated.",
-         "campaign.commands.ephemeris", "ephemeris", "Look ahead"),
+    _command("upcoming", "The episodes to come: when, how sure, and why.", "Look ahead"),
+    _command("ephemeris", "Phase, true anomaly, separation, position and velocities, dated.", "Look ahead"),
     _group(
         "log", "Log one observation from the terminal.", "Observe",
         ("photometry", "Log magnitudes, in one band or in several."),
@@ -79,10 +82,8 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
         ("add", "Add a confirmed episode with the dates known of it."),
         ("list", "The dated episodes, oldest first."),
     ),
-    Leaf("begin", "Make the database, empty or with the sample campaign.", "campaign.commands.begin", "begin",
-         "Keep the catalogue"),
-    Leaf("upgrade", "Bring an older database up to this program, after a snapshot.", "campaign.commands.upgrade",
-         "upgrade", "Keep the catalogue"),
+    _command("begin", "Make the database, empty or with the sample campaign.", "Keep the catalogue"),
+    _command("upgrade", "Bring an older database up to this program, after a snapshot.", "Keep the catalogue"),
     _group(
         "system", "The binaries under watch.", "Keep the catalogue",
         ("add", "Put a system under watch."),
