@@ -83,7 +83,7 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
         ("list", "The dated episodes, oldest first."),
     ),
     _command("begin", "Make the database, empty or with the sample campaign.", "Keep the catalogue"),
-    _command("upgrade", "Bring an older database up to this program, after a snapshot.", "Keep the catalogue"),
+    _command("upgrade", "Bring an older database up to date, after a snapshot.", "Keep the catalogue"),
     _group(
         "system", "The binaries under watch.", "Keep the catalogue",
         ("add", "Put a system under watch."),

@@ -7,7 +7,7 @@ from campaign.commands.common import DbOption, JsonOption, QuietOption
 
 
 def upgrade(db: DbOption = None, json: JsonOption = False, quiet: QuietOption = False) -> None:
-    """Bring an older database up to this program, after a snapshot."""
+    """Bring an older database up to date, after a snapshot."""
     from campaign.studies import begin as study
 
     common.report(study.upgrade_campaign(common.database(db)), json=json, quiet=quiet)

@@ -142,7 +142,7 @@ def _where(db: str) -> str:
 
 
 def upgrade_campaign(db: str) -> Kept:
-    """Bring an older database up to this program, after a snapshot.
+    """Bring an older database up to date, after a snapshot.
 
     Parameters
     ----------
