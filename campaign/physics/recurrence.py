@@ -16,6 +16,8 @@ FloatArray = NDArray[np.float64]
 PRIOR_SCATTER_PERIODS = 0.01
 PRIOR_LOG_WIDTH = 1.0
 _GRID = 80
+# With fewer degrees of freedom than this, dates of poor precision not counted, the prior is used too.
+_LEAST_FREEDOM = 1.5
 # Points at which the distribution function of a mixture is tabulated before it is inverted.
 _TABLE = 401
 
@@ -77,8 +79,9 @@ def predict_recurrence(
     scatter, plus the dating errors. The constant has a flat prior; the period has a normal prior when
     an orbit gives one, else a flat one. Given the scatter everything is linear and exact; the scatter is
     marginalised on a grid. With enough dates its prior is 1/scatter, so that the prediction tends to
-    Student's t with the usual degrees of freedom; with fewer than two degrees of freedom the stated
-    log-normal prior (1 % of the period, width a factor of e) takes over.
+    Student's t with the usual degrees of freedom; with fewer than two degrees of freedom, or where most
+    dates are known worse than onsets scatter, the stated log-normal prior (1 % of the period, width a
+    factor of e) takes over.
 
     Parameters
     ----------
@@ -138,7 +141,10 @@ def predict_recurrence(
         prior_precision = 0.0
         typical_period_d = float(np.sum(x * y) / np.sum(x * x))
         freedom = count - 2
-    prior_used = freedom < 2
+    # A date known far worse than the onsets usually scatter tells nothing of the scatter.
+    usual_d = PRIOR_SCATTER_PERIODS * abs(typical_period_d)
+    telling = float(np.sum(usual_d**2 / (usual_d**2 + np.asarray(sigmas_d, dtype=float) ** 2)))
+    prior_used = freedom < 2 or freedom - (count - telling) < _LEAST_FREEDOM
 
     scatters = _scatter_grid(np.asarray(sigmas_d, dtype=float), abs(typical_period_d), y, x, prior_used)
     variance = np.asarray(sigmas_d, dtype=float)[None, :] ** 2 + scatters[:, None] ** 2
@@ -188,10 +194,14 @@ def _scatter_grid(
     if prior_used:
         centre = np.log(PRIOR_SCATTER_PERIODS * period_d)
         return np.exp(np.linspace(centre - 4.5 * PRIOR_LOG_WIDTH, centre + 4.5 * PRIOR_LOG_WIDTH, _GRID))
-    slope = float(np.sum(x * y) / np.sum(x * x)) if np.sum(x * x) > 0 else 0.0
-    spread = float(np.std(y - y.mean() - slope * x))
-    dating = float(np.sqrt(np.mean(sigmas_d**2)))
+    # The best dated onsets set the scale: one poor date must not hide a small scatter.
+    floor = max(float(sigmas_d.min()), 1e-6 * period_d)
+    w = 1.0 / (sigmas_d**2 + floor**2)
+    across, up = x - w @ x / w.sum(), y - w @ y / w.sum()
+    slope = float(w @ (across * up) / (w @ across**2)) if np.any(across != 0.0) else 0.0
+    spread = float(np.sqrt(w @ (up - slope * across) ** 2 / w.sum()))
+    dating = float(np.mean(1.0 / np.maximum(sigmas_d, floor) ** 2) ** -0.5)
     # Below a third of the dating error the scatter changes nothing; 1/scatter must stop somewhere.
     low = max(dating / 3.0, spread / 50.0, 1e-6 * period_d)
-    high = max(100.0 * spread, 10.0 * dating, 1e-3 * period_d)
+    high = max(100.0 * spread, 10.0 * float(np.sqrt(np.mean(sigmas_d**2))), 1e-3 * period_d)
     return np.exp(np.linspace(np.log(low), np.log(max(high, 2.0 * low)), _GRID))
