@@ -20,6 +20,7 @@ from campaign.model.systems import Solution
 from campaign.physics.timescales import utc_iso
 from campaign.studies.forecast import DatedEvent, ForecastUnit
 from campaign.studies.learned import LearnedDates
+from campaign.studies.reach import reach_note
 from campaign.studies.rows import SCATTERS, ForecastRow
 from campaign.studies.status import OnsetState, later_status, plain_status, visible_span_d
 from campaign.studies.summaries import share_before
@@ -238,6 +239,7 @@ def describe_basis(
             parts.append("one episode only, so no period" if confirmed == 1 else "no confirmed episode")
         if first.rule is not None and first.events and dates is None:
             parts.append(f"rule {first.rule.kind}")
+            parts.extend(dict.fromkeys(note for i in unit.rows if (note := reach_note(rows[i]))))
         parts.extend(dict.fromkeys(n for i in unit.rows for n in rows[i].notes))
         result.append(SystemBasis(first.record.system.name, "; ".join(parts), bool(first.events)))
     return tuple(result)

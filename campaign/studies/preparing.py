@@ -179,8 +179,8 @@ def _add_row(prepared: Prepared, record: SystemRecord, solution: Solution | None
                 row.notes = [n for n in row.notes if n != "no dust rule: periastron alone"]
             if learned.predict(learned.events()[0], 0).prior_used:
                 row.assumptions.append(
-                    "few well dated episodes: cycle-to-cycle scatter from the stated prior, 1 % of the period "
-                    "within a factor of e"
+                    "few well dated episodes: cycle-to-cycle scatter from the stated prior, 1 % of the "
+                    "period within a factor of e"
                 )
     prepared.rows.append(row)
     return position

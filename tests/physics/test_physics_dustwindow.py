@@ -1,4 +1,4 @@
-"""When the separation is small enough for dust. Rows of checks_forecast.csv (source in each), own geometry."""
+"""When the separation is small enough for dust: rows of checks_forecast.csv (source in each), geometry."""
 
 from __future__ import annotations
 
