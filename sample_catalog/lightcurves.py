@@ -194,6 +194,7 @@ def _measure(
         source=np.array([one.source for one in SERIES])[series],
         site_id=np.array([one.site_id for one in SERIES], dtype=np.int64)[series],
         quality=quality,
+        photometric_system=np.array([one.photometric_system for one in SERIES])[series],
     )
     return photometry, series
 

@@ -14,6 +14,7 @@ from sqlalchemy import Connection, select
 from campaign.catalogue.converting import measured_values
 from campaign.catalogue.observed import (
     PLAIN_COLUMNS,
+    band_uses,
     count_observations,
     get_observation,
     no_observation,
@@ -31,6 +32,7 @@ from campaign.model.observations import Observation
 __all__ = [
     "add_observation",
     "add_observations",
+    "band_uses",
     "count_observations",
     "get_observation",
     "observations_of",

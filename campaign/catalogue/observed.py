@@ -10,9 +10,10 @@ from sqlalchemy import ColumnElement, Connection, and_, func, or_, select, true
 
 from campaign.catalogue.converting import among, columns_of, kept, measured_or_none
 from campaign.catalogue.sources import source_titles
-from campaign.catalogue.tables import observations, sites
+from campaign.catalogue.tables import observations, sites, system_names
 from campaign.catalogue.types import Names
 from campaign.errors import NotFound
+from campaign.model.bands import BandUse
 from campaign.model.instants import Moment
 from campaign.model.observations import Observation
 
@@ -105,6 +106,32 @@ def count_observations(
     return counts
 
 
+def band_uses(connection: Connection, system_ids: Collection[int] | None = None) -> list[BandUse]:
+    """How many magnitudes in use are in which band and photometric system, by primary name."""
+    wanted = None if system_ids is None else set(system_ids)
+    columns = observations.c
+    counted = (
+        select(columns.system_id, columns.band, columns.photometric_system, func.count().label("points"))
+        .where(
+            among(columns.system_id, wanted),
+            columns.kind == "photometry",
+            _in_use(None, None),
+        )
+        .group_by(columns.system_id, columns.band, columns.photometric_system)
+        .subquery()
+    )
+    rows = connection.execute(
+        select(counted.c.system_id, system_names.c.name, *list(counted.c)[1:])
+        .join(system_names, system_names.c.system_id == counted.c.system_id)
+        .where(system_names.c.name_rank == 0)
+    )
+    return [
+        BandUse(name, band or "", own, points)
+        for number, name, band, own, points in rows.all()
+        if kept(number, wanted)
+    ]
+
+
 def photometry_arrays(
     connection: Connection,
     system_ids: Collection[int] | None = None,
@@ -139,6 +166,7 @@ def photometry_arrays(
     band = np.array([value or "" for value in columns[10]])
     source = np.array(["" if value is None else titles[value] for value in columns[11]])
     site = np.array([-1 if value is None else value for value in columns[12]], dtype=np.int64)
+    own_system = np.array([value or "" for value in columns[14]])
     quality, number = np.array(columns[13]), np.array(columns[1], dtype=np.int64)
     found = {}
     for first, last in zip(starts, [*starts[1:], len(system)], strict=True):
@@ -160,6 +188,7 @@ def photometry_arrays(
             source=source[part],
             site_id=site[part],
             quality=quality[part],
+            photometric_system=own_system[part],
         )
     return found
 
@@ -180,6 +209,7 @@ _ARRAY_COLUMNS = (
     "source_id",
     "site_id",
     "quality",
+    "photometric_system",
 )
 _TIME = ("bmjd_tdb", "time_minus_d", "time_plus_d", "time_text", "time_scale", "time_place")
 _VALUES = ("value", "value_minus", "value_plus")

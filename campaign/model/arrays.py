@@ -14,8 +14,8 @@ class PhotometryArrays:
 
     ``minus_d``/``plus_d`` and ``mag_minus``/``mag_plus`` are NaN where the error is unknown.
     ``limit_side`` is 0 for a measurement, +1 for 'fainter than ``mag``', -1 for 'brighter than ``mag``'
-    (saturated). ``site_id`` is -1 where no site was given; ``band``, ``source`` and ``quality`` are
-    arrays of text.
+    (saturated). ``site_id`` is -1 where no site was given; ``band``, ``source``, ``quality`` and
+    ``photometric_system`` (empty where none was stated) are arrays of text.
     """
 
     id: NDArray[np.int64]
@@ -31,3 +31,4 @@ class PhotometryArrays:
     source: NDArray[np.str_]
     site_id: NDArray[np.int64]
     quality: NDArray[np.str_]
+    photometric_system: NDArray[np.str_]

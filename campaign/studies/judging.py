@@ -2,8 +2,12 @@
 
 from __future__ import annotations
 
+import numpy as np
+from numpy.typing import NDArray
+
 from campaign.model.arrays import PhotometryArrays
 from campaign.model.records import SystemRecord
+from campaign.studies.bands import photometric_system_key
 from campaign.studies.quietness import JudgedPhotometry, judge_photometry
 
 
@@ -44,6 +48,16 @@ def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> Judge
         error[past],
         arrays.limit_side[past],
         [str(b) for b in arrays.band[past]],
-        [f"{s}/{i}" for s, i in zip(arrays.source[past], arrays.site_id[past], strict=True)],
+        _series(arrays, past),
         spans,
     )
+
+
+def _series(arrays: PhotometryArrays, chosen: NDArray[np.bool_]) -> list[str]:
+    """What a level is taken of, beside the band: photometric system, source and site, never mixed."""
+    return [
+        f"{photometric_system_key(own)}\0{source}\0{site}"
+        for own, source, site in zip(
+            arrays.photometric_system[chosen], arrays.source[chosen], arrays.site_id[chosen], strict=True
+        )
+    ]

@@ -138,6 +138,7 @@ def light_curve(
     source: str | Sequence[str] = "Cold Mesa",
     limit_side: Sequence[int] | int = 0,
     quality: str | Sequence[str] = "good",
+    photometric_system: str | Sequence[str] = "",
 ) -> PhotometryArrays:
     n = len(times)
 
@@ -159,6 +160,7 @@ def light_curve(
         source=column(source, np.str_),
         site_id=np.full(n, -1),
         quality=column(quality, np.str_),
+        photometric_system=column(photometric_system, np.str_),
     )
 
 
