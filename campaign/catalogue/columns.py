@@ -87,8 +87,13 @@ def maybe_choice(*accepted: str) -> MaybeText:
     return Column(Choice(*accepted), nullable=True)
 
 
-def maybe_document() -> Column[Any]:
+def document() -> Column[Any]:
     """A JSON document."""
+    return Column(_JSON, nullable=False)
+
+
+def maybe_document() -> Column[Any]:
+    """A JSON document that may be absent."""
     return Column(_JSON, nullable=True)
 
 
@@ -129,13 +134,13 @@ def moment() -> MomentColumns:
     )
 
 
-def partial_index(name: str, column: str, condition: str, *, unique: bool) -> Index:
+def partial_index(name: str, *columns: str, condition: str, unique: bool) -> Index:
     """An index over the rows that fulfil ``condition``.
 
     The migrations name the condition for PostgreSQL too. Here that would load its dialect, a tenth of the
     start-up of every command, for tables that only serve statements and are never created from here.
     """
-    return Index(name, column, unique=unique, sqlite_where=text(condition))
+    return Index(name, *columns, unique=unique, sqlite_where=text(condition))
 
 
 def check(name: str, condition: str) -> CheckConstraint:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from campaign.catalogue.columns import metadata
-from campaign.catalogue.tables_history import campaign_info, changes, operations
+from campaign.catalogue.tables_history import campaign_info, changes, column_mappings, lapses, operations
 from campaign.catalogue.tables_knowledge import adoptions, dust_rules, episodes, solutions
 from campaign.catalogue.tables_observations import observations
 from campaign.catalogue.tables_systems import sites, sources, stars, system_names, systems
@@ -12,8 +12,10 @@ __all__ = [
     "adoptions",
     "campaign_info",
     "changes",
+    "column_mappings",
     "dust_rules",
     "episodes",
+    "lapses",
     "metadata",
     "observations",
     "operations",

@@ -27,6 +27,7 @@ from campaign.catalogue.columns import (
     reference,
     whole,
 )
+from campaign.catalogue.tables_systems import IN_USE
 from campaign.model.systems import EPOCH_MARKS, RULE_KINDS
 
 PERIOD_KINDS = ("measured", "above", "below", "range")
@@ -66,6 +67,7 @@ class SolutionColumns(TypedColumns):
     published_cycle_offset = maybe_whole()
     note = prose()
     entered_at = instant()
+    withdrawn_at = maybe_instant()
 
 
 ELEMENT_QUANTITIES = (
@@ -84,7 +86,6 @@ solutions = Table(
     "solutions",
     metadata,
     SolutionColumns,
-    UniqueConstraint("system_id", "label_key"),
     # Lets an adoption name solution and system together, so that the two cannot disagree.
     UniqueConstraint("id", "system_id"),
     check("label_key", "label_key <> ''"),
@@ -103,6 +104,9 @@ solutions = Table(
     check("sizes", "k_a_kms >= 0 AND k_b_kms >= 0 AND a_au > 0 AND a_arcsec > 0"),
     *error_checks("period_d", *ELEMENT_QUANTITIES),
     *moment_checks("epoch"),
+    partial_index(
+        "uq_solutions_system_id_label_key", "system_id", "label_key", condition=IN_USE, unique=True
+    ),
 )
 
 
@@ -131,8 +135,8 @@ adoptions = Table(
     ),
     check("weight", "weight > 0"),
     Index("ix_adoptions_system_id", "system_id"),
-    partial_index("uq_adoptions_current_alone", "system_id", _CURRENT_ALONE, unique=True),
-    partial_index("uq_adoptions_current_solution", "solution_id", _CURRENT, unique=True),
+    partial_index("uq_adoptions_current_alone", "system_id", condition=_CURRENT_ALONE, unique=True),
+    partial_index("uq_adoptions_current_solution", "solution_id", condition=_CURRENT, unique=True),
 )
 
 
@@ -178,7 +182,7 @@ dust_rules = Table(
     check("scatter", "scatter_onset_d >= 0 AND scatter_maximum_d >= 0 AND scatter_end_d >= 0"),
     *error_checks(*RULE_QUANTITIES),
     Index("ix_dust_rules_system_id", "system_id"),
-    partial_index("uq_dust_rules_current", "system_id", _CURRENT, unique=True),
+    partial_index("uq_dust_rules_current", "system_id", condition=_CURRENT, unique=True),
 )
 
 

@@ -33,8 +33,9 @@ class ObservationColumns(TypedColumns):
     """``value`` is in ``unit``; for a limit it is the bound. Old versions stay, marked as such.
 
     ``sameness`` is the digest by which a second entry of the same observation is known; it is NULL
-    once a row is superseded or withdrawn. Rows loaded in bulk have no line each in ``changes``:
-    ``operation_id`` ties them to the command that brought them.
+    once a row is superseded or withdrawn. Rows of a load that was taken back keep it aside in
+    ``former_sameness``, so that the load can be put back. Rows loaded in bulk have no line each in
+    ``changes``: ``operation_id`` ties them to the command that brought them.
     """
 
     id = identity()
@@ -77,6 +78,8 @@ class ObservationColumns(TypedColumns):
     superseded_by_id = maybe_reference("observations.id")
     superseded_at = maybe_instant()
     withdrawn_at = maybe_instant()
+    withdrawn_why = maybe_line(500)
+    former_sameness = maybe_line(32)
 
 
 observations = Table(
@@ -100,6 +103,9 @@ observations = Table(
     Index("ix_observations_operation_id", "operation_id"),
     # Without it each deleted row would scan the table for rows that it superseded.
     partial_index(
-        "ix_observations_superseded_by_id", "superseded_by_id", "superseded_by_id IS NOT NULL", unique=False
+        "ix_observations_superseded_by_id",
+        "superseded_by_id",
+        condition="superseded_by_id IS NOT NULL",
+        unique=False,
     ),
 )

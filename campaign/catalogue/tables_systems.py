@@ -11,16 +11,21 @@ from campaign.catalogue.columns import (
     identity,
     instant,
     line,
+    maybe_instant,
     maybe_line,
     maybe_number,
     measured,
     metadata,
     number,
+    partial_index,
     prose,
     reference,
     whole,
 )
 from campaign.model.systems import SYSTEM_STATES
+
+# An entry that was taken back stays, and no longer holds its name.
+IN_USE = "withdrawn_at IS NULL"
 
 
 class SystemColumns(TypedColumns):
@@ -40,6 +45,7 @@ class SystemColumns(TypedColumns):
     cycle_anchor_bmjd_tdb = maybe_number()
     cycle_anchor_period_d = maybe_number()
     entered_at = instant()
+    withdrawn_at = maybe_instant()
 
 
 systems = Table(
@@ -63,16 +69,19 @@ class SystemNameColumns(TypedColumns):
     name_rank = whole()
     name = line(200)
     name_key = line(200)
+    withdrawn_at = maybe_instant()
 
 
 system_names = Table(
     "system_names",
     metadata,
     SystemNameColumns,
-    UniqueConstraint("name_key"),
-    UniqueConstraint("system_id", "name_rank"),
     check("name_rank", "name_rank >= 0"),
     check("name_key", "name_key <> ''"),
+    partial_index("uq_system_names_name_key", "name_key", condition=IN_USE, unique=True),
+    partial_index(
+        "uq_system_names_system_id_name_rank", "system_id", "name_rank", condition=IN_USE, unique=True
+    ),
 )
 
 
@@ -126,13 +135,13 @@ class SiteColumns(TypedColumns):
     time_zone = maybe_line(100)
     notes = prose()
     entered_at = instant()
+    withdrawn_at = maybe_instant()
 
 
 sites = Table(
     "sites",
     metadata,
     SiteColumns,
-    UniqueConstraint("name_key"),
     check("name_key", "name_key <> ''"),
     check("latitude", "latitude_deg BETWEEN -90 AND 90"),
     check("longitude", "longitude_deg_east BETWEEN -180 AND 360"),
@@ -144,6 +153,7 @@ sites = Table(
         " AND elongation_min_deg <= elongation_max_deg",
     ),
     check("ground", "kind <> 'ground' OR (latitude_deg IS NOT NULL AND longitude_deg_east IS NOT NULL)"),
+    partial_index("uq_sites_name_key", "name_key", condition=IN_USE, unique=True),
 )
 
 

@@ -31,7 +31,7 @@ def test_the_migrations_make_what_the_tables_say(begun: Path):
 
 def normal(statement: str) -> tuple[str, frozenset[str]]:
     """Head of a CREATE statement and its parts; columns keep their place, constraints need not."""
-    squeezed = re.sub(r"\s+", " ", statement).strip()
+    squeezed = re.sub(r"\s+", " ", statement).strip().replace('"', "")
     if "(" not in squeezed or not squeezed.startswith("CREATE TABLE"):
         return squeezed, frozenset()
     head, body = squeezed.split("(", 1)
@@ -86,7 +86,18 @@ def test_the_migrations_make_the_same_tables_on_postgresql():
     made = {}
     for statement in buffer.getvalue().split(";"):
         head, parts = normal(statement)
-        if head:
+        if altered := re.match(r"ALTER TABLE (\w+) (ADD COLUMN|ADD|DROP CONSTRAINT) (.*)", head):
+            table, act, what = altered.groups()
+            columns, constraints = made[table]
+            if act == "ADD COLUMN":
+                made[table] = f"{columns}, {what}", constraints
+            elif act == "ADD":
+                made[table] = columns, constraints | {what}
+            else:
+                assert any(part.startswith(f"CONSTRAINT {what} ") for part in constraints)
+                left = {part for part in constraints if not part.startswith(f"CONSTRAINT {what} ")}
+                made[table] = columns, frozenset(left)
+        elif head:
             made[re.split(r"[ (]", re.sub(r"CREATE (UNIQUE )?(TABLE|INDEX) ", "", head))[0]] = head, parts
     wanted = {}
     dialect = postgresql.dialect()

@@ -1,6 +1,6 @@
 """Making and upgrading a catalogue: in one piece, after a snapshot, or not at all.
 
-The later revisions here are invented: they are written to a folder beside a copy of the real first one.
+The later revisions here are invented: they are written to a folder beside a copy of the real ones.
 """
 
 from __future__ import annotations
@@ -14,6 +14,7 @@ import pytest
 from catalogue_examples import FIRST, bare_system, photometry
 
 from campaign.catalogue import info, observations, opening, store, systems, upgrade
+from campaign.catalogue.revision import HEAD_REVISION, KNOWN_REVISIONS
 from campaign.errors import CampaignError, DatabaseUnusable, StorageFull
 
 MIGRATION = """
@@ -27,6 +28,13 @@ def upgrade():
 {body}
 """
 
+
+def further(number: int) -> str:
+    """The revision ``number`` migrations after this program's."""
+    return f"{int(HEAD_REVISION) + number:04d}"
+
+
+NEXT = further(1)
 ADD_COLUMN = '    op.add_column("sites", sa.Column("nickname_{revision}", sa.String(20)))'
 
 
@@ -42,7 +50,7 @@ def later_program(tmp_path, monkeypatch):
     def install(*bodies: str) -> None:
         shutil.rmtree(folder, ignore_errors=True)
         shutil.copytree(real_folder, folder, ignore=shutil.ignore_patterns("__pycache__"))
-        known = ["0001"]
+        known = list(KNOWN_REVISIONS)
         for body in bodies:
             revision = f"{len(known) + 1:04d}"
             text = MIGRATION.format(revision=revision, before=known[-1], body=body.format(revision=revision))
@@ -67,7 +75,7 @@ def filled(write, database):
 def test_beginning_makes_a_catalogue_once(tmp_path):
     database = tmp_path / "new.db"
     first = upgrade.begin_database(database, at=FIRST)
-    assert (first.created, first.from_revision, first.to_revision) == (True, None, "0001")
+    assert (first.created, first.from_revision, first.to_revision) == (True, None, HEAD_REVISION)
     before = digest(database)
     again = upgrade.begin_database(database, at=FIRST)
     assert not again.created
@@ -108,13 +116,13 @@ def test_an_upgrade_keeps_a_snapshot_and_every_row(filled, later_program):
         before = observations.observations_of(connection)
     later_program(ADD_COLUMN)
     report = upgrade.upgrade_database(filled)
-    assert (report.created, report.from_revision, report.to_revision) == (False, "0001", "0002")
-    assert report.snapshot == str(filled.with_name("campaign-before-0002.db"))
+    assert (report.created, report.from_revision, report.to_revision) == (False, HEAD_REVISION, NEXT)
+    assert report.snapshot == str(filled.with_name(f"campaign-before-{NEXT}.db"))
     with store.reading(filled) as connection:
         assert observations.observations_of(connection) == before
-        connection.exec_driver_sql("SELECT nickname_0002 FROM sites")
+        connection.exec_driver_sql(f"SELECT nickname_{NEXT} FROM sites")
     kept = sqlite3.connect(report.snapshot)
-    assert kept.execute("SELECT version_num FROM alembic_version").fetchone() == ("0001",)
+    assert kept.execute("SELECT version_num FROM alembic_version").fetchone() == (HEAD_REVISION,)
     assert kept.execute("SELECT count(*) FROM observations").fetchone() == (20,)
     assert kept.execute("PRAGMA integrity_check").fetchone() == ("ok",)
     kept.close()
@@ -126,24 +134,22 @@ def test_an_upgrade_keeps_a_snapshot_and_every_row(filled, later_program):
 def test_the_last_three_snapshots_are_kept_and_other_files_left_alone(filled, later_program):
     other = filled.with_name("campaign-before-the-flood.txt")
     other.write_text("notes")
-    for number in range(2, 7):
-        later_program(*[ADD_COLUMN] * (number - 1))
+    for number in range(1, 6):
+        later_program(*[ADD_COLUMN] * number)
         upgrade.upgrade_database(filled)
     found = sorted(entry.name for entry in filled.parent.glob("*before*"))
     assert found == [
-        "campaign-before-0004.db",
-        "campaign-before-0005.db",
-        "campaign-before-0006.db",
+        *(f"campaign-before-{further(number)}.db" for number in (3, 4, 5)),
         "campaign-before-the-flood.txt",
     ]
 
 
 def test_an_earlier_snapshot_is_never_written_over(filled, later_program):
-    earlier = filled.with_name("campaign-before-0002.db")
+    earlier = filled.with_name(f"campaign-before-{NEXT}.db")
     earlier.write_bytes(b"precious")
     later_program(ADD_COLUMN)
     report = upgrade.upgrade_database(filled)
-    assert report.snapshot == str(filled.with_name("campaign-before-0002-2.db"))
+    assert report.snapshot == str(filled.with_name(f"campaign-before-{NEXT}-2.db"))
     assert earlier.read_bytes() == b"precious"
 
 
@@ -166,7 +172,7 @@ def test_an_upgrade_that_goes_wrong_is_taken_back_whole(body, filled, later_prog
         assert failed.value.exit_status == 7
     assert digest(filled) == before
     later_program(ADD_COLUMN)
-    assert upgrade.upgrade_database(filled).to_revision == "0002"
+    assert upgrade.upgrade_database(filled).to_revision == NEXT
 
 
 REBUILD = """\
@@ -228,7 +234,7 @@ def test_a_snapshot_that_cannot_be_written_stops_the_upgrade(filled, later_progr
 
 
 def test_left_overs_of_a_killed_upgrade_are_cleared_away(filled, later_program):
-    left = filled.with_name(".campaign-before-0002.db.unfinished")
+    left = filled.with_name(f".campaign-before-{NEXT}.db.unfinished")
     left.write_bytes(b"half")
     later_program(ADD_COLUMN)
     upgrade.upgrade_database(filled)

@@ -162,7 +162,8 @@ def test_a_fault_at_any_statement_of_a_first_start_leaves_nothing(tmp_path: Path
             try:
                 upgrade.begin_database(database, at=NOW)
             except (FaultError, CampaignError):
-                assert len(tried) == number
+                # A migration that rebuilds a table clears its copy away after a fault.
+                assert tried[number:] in ([], [s for s in tried[number:] if "_alembic_tmp_" in s])
                 found = content(database) if database.exists() else {}
                 # After the last commit comes only the check that the new file is whole.
                 assert len(found.get("campaign_info", [])) == (3 if "COMMIT" in tried[:-1] else 0)
