@@ -86,7 +86,7 @@ def event_forecasts(
                 probability_per_yr=one.probability_per_yr,
                 observed=one.observed,
                 disagreement_sigma=one.disagreement_sigma,
-                notes=tuple([*extra, *one.notes, *_error_notes(one), *_mixture_notes(unit, one)]),
+                notes=tuple([*extra, *one.notes, *_error_notes(one), *_mixture_notes(rows, unit, one)]),
             )
         )
     return result
@@ -122,11 +122,15 @@ def _error_notes(one: DatedEvent) -> list[str]:
     return [f"error unknown: {', '.join(one.missing)}; no interval"]
 
 
-def _mixture_notes(unit: ForecastUnit, one: DatedEvent) -> list[str]:
+def _mixture_notes(rows: Sequence[ForecastRow], unit: ForecastUnit, one: DatedEvent) -> list[str]:
     if len(unit.rows) == 1 or one.observed:
         return []
-    weights = ", ".join(f"{w:.2g}" for w in unit.weights)
-    text = f"mixture of {len(unit.rows)} solutions with weights {weights}"
+    dating = [(i, w) for i, w in zip(unit.rows, unit.weights, strict=True) if one.event in rows[i].events]
+    if len(dating) == 1:
+        solution = rows[dating[0][0]].solution
+        return [f"from '{solution.label}' alone, which has what it needs"] if solution is not None else []
+    weights = ", ".join(f"{w:.2g}" for _, w in dating)
+    text = f"mixture of {len(dating)} solutions with weights {weights}"
     if one.disagreement_sigma is not None:
         text += f", which disagree by {abs(one.disagreement_sigma):.1f} sigma"
     return [text]

@@ -27,7 +27,8 @@ def dateless_events(prepared: Prepared, question: Question) -> list[DatedEvent]:
 
     Notes
     -----
-    Accuracy: rests on a scale-free prior, P(period > p) = limit / p beyond a lower limit; below an upper
+    Accuracy: rests on a scale-free prior, P(period > p) = limit / p beyond a lower limit (the time already
+    passed without one, where that is longer); below an upper
     limit the period is taken to be the limit itself.
 
     Source: Gott 1993, Nature 363, 315 (the scale-free survival law).
@@ -50,8 +51,8 @@ def dateless_events(prepared: Prepared, question: Question) -> list[DatedEvent]:
         notes = [*row.notes]
         if row.period_limit.side == "above":
             survived = max(bound, since)
-            until = question.end - solution.epoch.bmjd_tdb
-            chance = max(0.0, 1.0 - survived / until) if until > 0 else 0.0
+            opens, closes = (t - solution.epoch.bmjd_tdb for t in (question.start, question.end))
+            chance = max(0.0, survived / max(opens, survived) - survived / max(closes, survived))
             yearly = 365.25 / (survived + 365.25) if since >= bound - 365.25 else 0.0
             earliest = utc_iso(np.array([solution.epoch.bmjd_tdb + bound]))[0]
             if since < bound and earliest:

@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
-from copy import copy
+from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from campaign.model.arrays import PhotometryArrays
 from campaign.model.forecasts import (
@@ -15,18 +17,21 @@ from campaign.model.forecasts import (
     ExplainedSystem,
     VarianceTerm,
 )
+from campaign.model.instants import Moment
+from campaign.model.measured import Measured
 from campaign.model.records import SystemRecord
-from campaign.model.systems import DustRule
+from campaign.physics.recurrence import RecurrencePrediction
 from campaign.studies.elements import cycle_count, elements
+from campaign.studies.following import days_since_onset, needed_since_onset
+from campaign.studies.forecast import COUNTED_FROM_ONSET
 from campaign.studies.learned import LearnedDates
 from campaign.studies.preparing import Prepared, Question, prepare
-from campaign.studies.rows import SCATTERS, SPOKEN, ForecastRow
+from campaign.studies.rows import SCATTERS, ForecastRow
 from campaign.studies.sampling import Sampler
 from campaign.studies.upcoming import forecast_campaign
+from campaign.studies.variance import nominal, terms_of, with_remainder
 
-# Terms smaller than this share of the whole are not worth a line.
-_SMALL = 0.02
-_DRAWS = 20_000
+FloatArray = NDArray[np.float64]
 
 
 def explain_system(
@@ -81,29 +86,39 @@ def explain_system(
 # ------------------------------------------------------------------------------------------- events
 
 
+@dataclass(frozen=True, slots=True)
+class _Story:
+    """How one solution comes to its date: in words, term by term, and the date without any error."""
+
+    text: str
+    terms: tuple[VarianceTerm, ...]
+    centre: float
+
+
 def _explain_event(forecast: EventForecast, prepared: Prepared, seed: int) -> ExplainedEvent:
     unit = next(u for u in prepared.units if u.label == forecast.solution or u.label is None)
-    cycle = forecast.cycle
+    event, cycle = forecast.event, forecast.cycle
     assert cycle is not None
     if forecast.observed:
         return ExplainedEvent(forecast, "observed", _total_only(forecast))
-    learned = prepared.learned.get(unit.rows[0])
-    if learned is not None and forecast.event in SCATTERS:
-        return ExplainedEvent(forecast, *_learned_story(learned, forecast.event, cycle))
     dating = [
-        (i, w) for i, w in zip(unit.rows, unit.weights, strict=True) if _dates(prepared.rows[i], forecast)
+        (i, w) for i, w in zip(unit.rows, unit.weights, strict=True) if event in prepared.rows[i].events
     ]
-    stories = [_orbit_story(prepared.rows[i], forecast.event, cycle, seed) for i, _ in dating]
+    episode = unit.confirmed(cycle) if COUNTED_FROM_ONSET in forecast.notes else None
+    stories = []
+    for i, _ in dating:
+        row, learned = prepared.rows[i], prepared.learned.get(i)
+        if episode is not None and episode.onset is not None:
+            stories.append(_following_story(row, learned, event, cycle, episode.onset.moment, seed))
+        elif learned is not None and event in SCATTERS:
+            stories.append(_learned_story(learned, event, cycle))
+        else:
+            stories.append(_orbit_story(row, event, cycle, seed))
     if len(stories) == 1:
-        return ExplainedEvent(forecast, *stories[0])
-    rows = [i for i, _ in dating]
+        return ExplainedEvent(forecast, stories[0].text, stories[0].terms)
     total = sum(w for _, w in dating)
-    weights = [w / total for _, w in dating]
-    return ExplainedEvent(forecast, *_mixture_story(stories, prepared, rows, weights, forecast, seed))
-
-
-def _dates(row: ForecastRow, forecast: EventForecast) -> bool:
-    return forecast.event in row.events
+    labels = [_label(prepared.rows[i]) for i, _ in dating]
+    return ExplainedEvent(forecast, *_mixture_story(stories, labels, [w / total for _, w in dating]))
 
 
 def _total_only(forecast: EventForecast) -> tuple[VarianceTerm, ...]:
@@ -111,29 +126,37 @@ def _total_only(forecast: EventForecast) -> tuple[VarianceTerm, ...]:
     return (VarianceTerm("dating of the observation", sigma, ""),) if sigma else ()
 
 
-def _learned_story(
-    learned: LearnedDates, event: EventName, cycle: int
-) -> tuple[str, tuple[VarianceTerm, ...]]:
+def _learned_story(learned: LearnedDates, event: EventName, cycle: int) -> _Story:
     prediction = learned.predict(event, cycle)
+    count = learned.cycles[event].size
+    dated = f"{event} date" if count == 1 else f"{event} dates"
+    text = f"line through {count} {dated}, carried to cycle {cycle}"
+    centre = float(prediction.weights @ prediction.means_d)
+    line = _learned_terms(
+        prediction, "line: constant and period", "grows with the distance from the dated cycles"
+    )
+    return _Story(text, line, centre)
+
+
+def _learned_terms(prediction: RecurrencePrediction, cause: str, note: str) -> tuple[VarianceTerm, ...]:
     scatter = float(np.sqrt(prediction.weights @ prediction.scatters_d**2))
     line = float(np.sqrt(prediction.weights @ (prediction.sigmas_d**2 - prediction.scatters_d**2)))
-    count = learned.cycles[event].size
     prior = (
         "with the stated prior"
         if prediction.prior_used
         else f"{prediction.degrees_of_freedom} degrees of freedom"
     )
-    dated = f"{event} date" if count == 1 else f"{event} dates"
-    text = f"line through {count} {dated}, carried to cycle {cycle}"
-    return text, (
-        VarianceTerm("line: constant and period", line, "grows with the distance from the dated cycles"),
+    terms = (
+        VarianceTerm(cause, line, note),
         VarianceTerm("cycle-to-cycle scatter", scatter, f"marginalised, {prior}"),
     )
+    return with_remainder(terms, prediction.sigma_d**2)
 
 
-def _orbit_story(
-    row: ForecastRow, event: EventName, cycle: int, seed: int
-) -> tuple[str, tuple[VarianceTerm, ...]]:
+def _orbit_story(row: ForecastRow, event: EventName, cycle: int, seed: int) -> _Story:
+    def draw(sampler: Sampler) -> FloatArray:
+        return sampler.event_times(event, np.array([0]), np.array([cycle]))
+
     step = cycle - row.epoch_cycle
     epoch, period = row.values["epoch"][0], row.values["period_d"][0]
     base = epoch + step * period
@@ -141,133 +164,97 @@ def _orbit_story(
     text = (
         f"T({cycle}) = T0 {sign} {abs(step)} P = {epoch:.3f} {sign} {abs(step)} x {period:.4f} = {base:.3f}"
     )
-    nominal = _median(row, event, cycle, seed)
+    centre = nominal(row, draw, seed)
     if event != row.mark:
-        text += f"; {event} = T({cycle}) {nominal - base:+.2f} d{_reason(row, event)} = {nominal:.3f}"
-    return text, _terms(row, event, cycle, seed)
+        text += f"; {event} = T({cycle}) {centre - base:+.2f} d{_reason(row, event)} = {centre:.3f}"
+    scatter = getattr(row.rule, f"scatter_{event}_d", None) if event in SCATTERS else None
+    terms = terms_of(
+        row, draw, row.events[event], seed, scatter_d=scatter or 0.0,
+        notes={"period_d": f"times {abs(step)}"}, extra=_covariance_terms(row, step),
+    )  # fmt: skip
+    return _Story(text, terms, centre)
+
+
+def _covariance_terms(row: ForecastRow, step: int) -> tuple[VarianceTerm, ...]:
+    covariance = row.solution.covariance if row.solution is not None else None
+    both = covariance.between("epoch", "period_d") if covariance is not None else None
+    if not both or not step:
+        return ()
+    size = float(np.copysign(np.sqrt(abs(2.0 * step * both)), step * both))
+    return (VarianceTerm("covariance of epoch and period", size, ""),)
 
 
 def _reason(row: ForecastRow, event: EventName) -> str:
     rule = row.rule
     if event not in SCATTERS or rule is None:
-        return " (from e and omega)" if event != "periastron" else ""
+        return " (from e and omega)"
     if rule.kind == "separation":
         return " (window from the critical separation, plus the delay to condensation)"
     return f" (rule {rule.kind})"
 
 
-def _median(row: ForecastRow, event: EventName, cycle: int, seed: int) -> float:
-    bare = _with_errors(row, set())
-    times = Sampler([bare], 3, seed).event_times(event, np.array([0]), np.array([cycle]))
-    return float(np.median(times))
-
-
-def _with_errors(row: ForecastRow, kept: set[str]) -> ForecastRow:
-    """The row with only the named errors left, and no scatter unless it is named."""
-    one = copy(row)
-    one.values = {
-        name: (v, m if name in kept else 0.0, p if name in kept else 0.0)
-        for name, (v, m, p) in row.values.items()
-    }
-    if row.rule is not None:
-        one.rule = DustRule(
-            id=0,
-            system_id=row.rule.system_id,
-            kind=row.rule.kind,
-            scatter_onset_d=row.rule.scatter_onset_d if "scatter" in kept else 0.0,
-            scatter_maximum_d=row.rule.scatter_maximum_d if "scatter" in kept else 0.0,
-            scatter_end_d=row.rule.scatter_end_d if "scatter" in kept else 0.0,
-        )
-    return one
-
-
-def _spread(row: ForecastRow, event: EventName, cycle: int, seed: int, kept: set[str]) -> float:
-    times = Sampler([_with_errors(row, kept)], _DRAWS, seed).event_times(
-        event, np.array([0]), np.array([cycle])
+def _following_story(
+    row: ForecastRow, learned: LearnedDates | None, event: EventName, cycle: int, onset: Moment, seed: int
+) -> _Story:
+    """An event counted from the onset that was observed in its cycle."""
+    dated = Measured(onset.bmjd_tdb, onset.minus_d, onset.plus_d).sigma
+    dating = (
+        VarianceTerm("dating of the observed onset", float("nan"), "error unknown")
+        if dated is None
+        else VarianceTerm("dating of the observed onset", dated, "")
     )
-    return float(np.nanstd(times)) if not np.all(np.isnan(times)) else 0.0
+    if learned is not None:
+        days, terms = _learned_lag(learned, event, cycle)
+        return _Story(_counted(event, onset, days, ""), (dating, *terms), onset.bmjd_tdb + days)
+
+    def draw(sampler: Sampler) -> FloatArray:
+        return days_since_onset(sampler, None, 0, event, cycle)
+
+    days = nominal(row, draw, seed)
+    scatter = math.hypot(*(getattr(row.rule, f"scatter_{e}_d", None) or 0.0 for e in ("onset", event)))
+    terms = terms_of(row, draw, needed_since_onset(row, event), seed, scatter_d=scatter)
+    return _Story(_counted(event, onset, days, _reason(row, event)), (dating, *terms), onset.bmjd_tdb + days)
 
 
-def _terms(row: ForecastRow, event: EventName, cycle: int, seed: int) -> tuple[VarianceTerm, ...]:
-    needed = row.events[event]
-    step = cycle - row.epoch_cycle
-    terms: list[VarianceTerm] = []
-    covariance = row.solution.covariance if row.solution is not None else None
-    for name in needed:
-        _, minus, plus = row.values[name]
-        if minus is None or plus is None:
-            terms.append(VarianceTerm(SPOKEN[name], float("nan"), "error unknown"))
-            continue
-        alone = row if covariance is None else _without_covariance(row)
-        size = _spread(alone, event, cycle, seed, {name})
-        note = f"times {abs(step)}" if name == "period_d" else ""
-        if size > 0.0:
-            terms.append(VarianceTerm(SPOKEN[name], size, note))
-    scatter = (
-        getattr(row.rule, f"scatter_{event}_d", None) if row.rule is not None and event in SCATTERS else None
+def _learned_lag(
+    learned: LearnedDates, event: EventName, cycle: int
+) -> tuple[float, tuple[VarianceTerm, ...]]:
+    lag = learned.predict_lag(event)
+    if lag is not None:
+        cause = "mean time from the onset"
+        return float(lag.weights @ lag.means_d), _learned_terms(lag, cause, "from the dated episodes")
+    onset, later = (learned.predict(e, cycle) for e in ("onset", event))
+    days = float(later.weights @ later.means_d - onset.weights @ onset.means_d)
+    spread = math.hypot(onset.sigma_d, later.sigma_d)
+    return days, (VarianceTerm("time from the onset", spread, "no episode has both dates"),)
+
+
+def _counted(event: EventName, onset: Moment, days: float, reason: str) -> str:
+    return (
+        f"onset observed at {onset.bmjd_tdb:.3f}; {event} = onset {days:+.2f} d{reason} "
+        f"= {onset.bmjd_tdb + days:.3f}"
     )
-    if scatter:
-        terms.append(VarianceTerm("cycle-to-cycle scatter", float(scatter), ""))
-    if covariance is not None:
-        both = covariance.between("epoch", "period_d")
-        if both:
-            size = float(np.sqrt(abs(2.0 * step * both)))
-            terms.append(
-                VarianceTerm("covariance of epoch and period", float(np.copysign(size, step * both)), "")
-            )
-    return _with_remainder(row, event, cycle, seed, terms)
-
-
-def _without_covariance(row: ForecastRow) -> ForecastRow:
-    one = copy(row)
-    assert row.solution is not None
-    from dataclasses import replace
-
-    one.solution = replace(row.solution, covariance=None)
-    return one
-
-
-def _with_remainder(
-    row: ForecastRow, event: EventName, cycle: int, seed: int, terms: list[VarianceTerm]
-) -> tuple[VarianceTerm, ...]:
-    if any(np.isnan(term.size_d) for term in terms):
-        return tuple(terms)
-    total = Sampler([row], _DRAWS, seed).event_times(event, np.array([0]), np.array([cycle]))
-    variance = float(np.nanvar(total))
-    kept = _SMALL * 0.1 * np.sqrt(variance)
-    terms = [term for term in terms if abs(term.size_d) > kept]
-    explained = sum(np.copysign(term.size_d**2, term.size_d) for term in terms)
-    rest = variance - explained
-    if abs(rest) > _SMALL * max(variance, 1e-12):
-        size = float(np.copysign(np.sqrt(abs(rest)), rest))
-        terms.append(VarianceTerm("together rather than one by one", size, "non-linear or correlated"))
-    return tuple(terms)
 
 
 def _mixture_story(
-    stories: Sequence[tuple[str, tuple[VarianceTerm, ...]]],
-    prepared: Prepared,
-    rows: Sequence[int],
-    weights: Sequence[float],
-    forecast: EventForecast,
-    seed: int,
+    stories: Sequence[_Story], labels: Sequence[str], weights: Sequence[float]
 ) -> tuple[str, tuple[VarianceTerm, ...]]:
-    assert forecast.cycle is not None
     share = np.array(weights)
-    centres = np.array([_median(prepared.rows[i], forecast.event, forecast.cycle, seed) for i in rows])
+    centres = np.array([story.centre for story in stories])
     mean = float(share @ centres)
-    within = np.array([np.sqrt(sum(t.size_d**2 for t in terms)) for _, terms in stories])
-    terms = [
+    within = np.array(
+        [sum(float(np.copysign(t.size_d**2, t.size_d)) for t in story.terms) for story in stories]
+    )
+    terms = (
         VarianceTerm(
             "between the solutions", float(np.sqrt(share @ (centres - mean) ** 2)), "their disagreement"
         ),
-        VarianceTerm("within the solutions", float(np.sqrt(share @ within**2)), "their own errors"),
-    ]
-    text = " | ".join(
-        f"{_label(prepared.rows[i])} ({w:.2g}): {story}"
-        for i, w, (story, _) in zip(rows, weights, stories, strict=True)
+        VarianceTerm("within the solutions", float(np.sqrt(share @ within)), "their own errors"),
     )
-    return text, tuple(terms)
+    text = " | ".join(
+        f"{label} ({w:.2g}): {story.text}" for label, w, story in zip(labels, weights, stories, strict=True)
+    )
+    return text, terms
 
 
 def _label(row: ForecastRow) -> str:

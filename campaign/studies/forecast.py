@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from itertools import combinations
 
@@ -14,6 +14,7 @@ from campaign.model.forecasts import EventName
 from campaign.model.systems import Episode
 from campaign.physics.intervals import normal_quantiles
 from campaign.studies.cycles import SAFE_SIGMA
+from campaign.studies.following import days_since_onset, missing_since_onset
 from campaign.studies.learned import LearnedDates
 from campaign.studies.rows import SCATTERS, ForecastRow
 from campaign.studies.sampling import MARK_CODES, RULE_CODES, Sampler
@@ -27,6 +28,7 @@ _BLOCK = 65_536
 _PILOT_DRAWS = 64
 # How long an unseen or finished cycle stays on the list, days.
 KEEP_LISTED_D = 365.25
+COUNTED_FROM_ONSET = "counted from the observed onset"
 
 
 @dataclass(slots=True)
@@ -276,14 +278,23 @@ class Forecaster:
 
     def unit_times(self, unit: int, event: EventName, cycle: int) -> FloatArray:
         """Draws of one event of one unit, mixed by weight, shape (draws,)."""
+        at = np.array([cycle])
+        return self._mixed(unit, event, lambda i: self.sampler.event_times(event, np.array([i]), at)[0])
+
+    def _since_onset(self, unit: int, event: EventName, cycle: int) -> FloatArray:
+        return self._mixed(
+            unit, event, lambda i: days_since_onset(self.sampler, self.learned.get(i), i, event, cycle)
+        )
+
+    def _mixed(self, unit: int, event: EventName, draw: Callable[[int], FloatArray]) -> FloatArray:
+        """Draws of the rows that date an event, by weight; the others leave their share to them."""
         one, draws = self.units[unit], self.sampler.draws
         parts, taken = [], 0
         for i, (row, weight) in enumerate(zip(one.rows, one.weights, strict=True)):
             last = i == len(one.rows) - 1
             count = draws - taken if last else round(weight * draws)
             if event in self.rows[row].events:
-                times = self.sampler.event_times(event, np.array([row]), np.array([cycle]))[0]
-                parts.append(times[taken : taken + count])
+                parts.append(draw(row)[taken : taken + count])
             taken += count
         return np.concatenate(parts) if parts else np.full(draws, np.nan)
 
@@ -299,20 +310,24 @@ class Forecaster:
                 times = self._observed_draws(seen.moment.bmjd_tdb, seen.moment.minus_d, seen.moment.plus_d)
                 notes.append(f"{event} observed" + (f" in {seen.band}" if seen.band else ""))
             elif episode.onset is not None and event in ("maximum", "end"):
-                moment = episode.onset.moment
-                onset = self.unit_times(unit, "onset", cycle)
-                if not np.all(np.isnan(onset)):
-                    shift = self._observed_draws(moment.bmjd_tdb, moment.minus_d, moment.plus_d)
-                    times = times - onset + shift
-                    notes.append("counted from the observed onset")
+                since = self._since_onset(unit, event, cycle)
+                if not np.all(np.isnan(since)):
+                    moment = episode.onset.moment
+                    times = since + self._observed_draws(moment.bmjd_tdb, moment.minus_d, moment.plus_d)
+                    notes.append(COUNTED_FROM_ONSET)
         dated = self._collect(unit, event, cycle, summarise(times[None, :], window, event in SCATTERS), 0)
-        if episode is not None and getattr(episode, event, None) is not None:
+        if episode is not None and event in SCATTERS and getattr(episode, event) is not None:
             moment = getattr(episode, event).moment
-            dated.missing = () if moment.minus_d is not None else (f"observed {event}",)
+            error_known = moment.minus_d is not None and moment.plus_d is not None
+            dated.missing = () if error_known else (f"observed {event}",)
             dated.probability = 1.0
             dated.observed = True
-        elif notes:
-            dated.missing = ()
+        elif notes and episode is not None and episode.onset is not None:
+            moment = episode.onset.moment
+            lacking = (missing_since_onset(self.rows[row], event, moment) for row in one.rows)
+            dated.missing = tuple(dict.fromkeys(name for names in lacking for name in names))
+        if dated.missing:
+            dated.in_window = None
         dated.notes.extend(notes)
         if len(one.rows) > 1 and not dated.observed:
             dated.disagreement_sigma = self._disagreement(unit, event, cycle)

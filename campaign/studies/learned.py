@@ -40,6 +40,18 @@ class LearnedDates:
             self.period_sigma_d,
         )  # fmt: skip
 
+    def predict_lag(self, event: EventName) -> RecurrencePrediction | None:
+        """Days from onset to a later event, from the episodes that have both; None where none has."""
+        both, first, second = np.intersect1d(self.cycles["onset"], self.cycles[event], return_indices=True)
+        if not both.size:
+            return None
+        lags = self.dates_d[event][second] - self.dates_d["onset"][first]
+        errors = np.hypot(self.sigmas_d[event][second], self.sigmas_d["onset"][first])
+        # A lag recurs without any period: the line through the lags is level, its period known exactly.
+        period_d = self.rough_period_d
+        numbers = np.arange(both.size, dtype=float) - both.size
+        return predict_recurrence(numbers, lags + period_d * numbers, errors, 0.0, period_d, 0.0)
+
     def draws(self, event: EventName, cycle: int, normals: dict[str, FloatArray]) -> FloatArray:
         if event not in self.events():
             return np.full(normals[f"scatter {event}"].shape, np.nan)

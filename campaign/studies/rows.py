@@ -96,10 +96,15 @@ class ForecastRow:
         for name in self.events.get(event, ()):
             _, minus, plus = self.values[name]
             if minus is None or plus is None:
-                if name == "period_d" and cycle == self.epoch_cycle and event == self.mark:
+                if name == "period_d" and cycle == self.epoch_cycle and not self._needs_period(event):
                     continue
                 missing.append(SPOKEN[name])
         return missing
+
+    def _needs_period(self, event: EventName) -> bool:
+        """Whether the period enters even in the cycle of the epoch: as a share of it, or in the size."""
+        lagged = event in SCATTERS and self.rule is not None and self.rule.kind == "lag"
+        return event != self.mark and not (lagged and self.mark == "periastron")
 
 
 def _take(row: ForecastRow, name: str, measured: Measured | None) -> bool:
@@ -238,6 +243,8 @@ def build_row(record: SystemRecord, solution: Solution | None) -> ForecastRow:
         if has_direction:
             both = tuple(dict.fromkeys((*base, "eccentricity", "omega_b_deg")))
             row.events["A in front"] = row.events["B in front"] = both
+            if row.mark in ("A in front", "B in front"):
+                row.events[row.mark] = ("epoch", "period_d")  # type: ignore[index]
         else:
             row.notes.append("no e and omega: conjunctions are not forecast")
     _apply_rule(row, base if dated else ())

@@ -82,19 +82,22 @@ def separation_case(rng: np.random.Generator, number: int, ratio_low: float, rat
     truth = None if start is None else epoch + cycle * period + start + far * AU_PER_KMS_D / speed
     t0 = scattered(rng, epoch, 12.0, 12.0)
     solution = Solution(
-        number, number, "given", period_d=scattered(rng, period, 4.0, 4.0), epoch=Moment(t0.value, 12.0, 12.0),
-        eccentricity=scattered(rng, e, 0.008, 0.008), a_au=scattered(rng, a, 0.02 * a, 0.02 * a),
+        number, number, "given", period_d=scattered(rng, period, 4.0, 4.0),
+        epoch=Moment(t0.value, 12.0, 12.0), eccentricity=scattered(rng, e, 0.008, 0.008), a_au=scattered(rng, a, 0.02 * a, 0.02 * a),
         adopted=True, epoch_cycle=0,
     )  # fmt: skip
     rule = DustRule(
         number, number, "separation",
         critical_separation_au=scattered(rng, critical, 0.03 * critical, 0.03 * critical),
-        condensation_distance_au=scattered(rng, far, 5.0, 5.0), flow_speed_kms=scattered(rng, speed, 60.0, 60.0),
+        condensation_distance_au=scattered(rng, far, 5.0, 5.0),
+        flow_speed_kms=scattered(rng, speed, 60.0, 60.0),
     )  # fmt: skip
     return Case(SystemRecord(System(number, f"case {number}", 10.0, -30.0), (solution,), rule), cycle, truth)
 
 
-def learned_case(rng: np.random.Generator, number: int, count: int, scatter_d: float | None, orbit: bool) -> Case:
+def learned_case(
+    rng: np.random.Generator, number: int, count: int, scatter_d: float | None, orbit: bool
+) -> Case:
     """A system known by ``count`` dated onsets; the scatter is drawn from the stated prior when None."""
     period, first = rng.uniform(1500, 9000), rng.uniform(30_000, 40_000)
     if scatter_d is None:
@@ -128,4 +131,3 @@ def forecast(cases: list[Case], event: EventName, draws: int) -> list[DatedEvent
     pairs: dict[EventName, list[tuple[int, int]]] = {event: [(i, case.cycle) for i, case in enumerate(cases)]}
     dated = forecaster.date_pairs(pairs, window)
     return sorted(dated, key=lambda d: d.unit)
-

@@ -33,7 +33,10 @@ def check_intervals(cases: list[Case]) -> None:
         held68 += low68 <= case.truth <= high68
         held95 += low95 <= case.truth <= high95
     z68, z95 = share_z(held68, total, 0.68), share_z(held95, total, 0.95)
-    print(f"n {total}: 68 % held {held68 / total:.4f} (z {z68:+.2f}), 95 % held {held95 / total:.4f} (z {z95:+.2f})")
+    print(
+        f"n {total}: 68 % held {held68 / total:.4f} (z {z68:+.2f}), "
+        f"95 % held {held95 / total:.4f} (z {z95:+.2f})"
+    )
     assert abs(z68) < 3.0
     assert abs(z95) < 3.0
 
@@ -80,7 +83,10 @@ def test_probability_of_an_episode_is_its_frequency(grazing: list[Case]) -> None
         chosen = (probability >= low) & (probability <= high)
         p = probability[chosen]
         z = (happens[chosen].sum() - p.sum()) / math.sqrt(np.sum(p * (1.0 - p)))
-        print(f"{low} to {high}: {chosen.sum()} systems, mean {p.mean():.3f}, seen {happens[chosen].mean():.3f}, z {z:+.2f}")
+        print(
+            f"{low} to {high}: {chosen.sum()} systems, mean {p.mean():.3f}, "
+            f"seen {happens[chosen].mean():.3f}, z {z:+.2f}"
+        )
         assert chosen.sum() > 100
         assert abs(z) < 3.0
 

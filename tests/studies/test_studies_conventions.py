@@ -88,7 +88,7 @@ def test_a_conjunction_at_apastron_is_one_event_whichever_way_its_draws_fall():
     one = replace(orbit(0.6, 90.0), omega_deg=Measured(90.0, 5.0, 5.0))
     found = find(upcoming(record(one), years=12), "B in front")
     median, sigma, low68, high68, low95, high95 = dates(found)
-    # d(phase)/d(nu) at apastron is (1 - e)^2/sqrt(1 - e^2)... of the ellipse: (1 + e)^2 (1 - e^2)^-0.5 / (2 pi).
+    # Second law at apastron: d(phase)/d(nu) = (1 - e^2)^1.5 / (1 - e)^2 / (2 pi).
     rate = (1.0 - 0.6**2) ** 1.5 / (1.0 - 0.6) ** 2 / (2.0 * math.pi)
     assert sigma == pytest.approx(3_000.0 * rate * math.radians(5.0), rel=0.02)
     assert (median - 60_500.0) / 3_000.0 % 1.0 == pytest.approx(0.5, abs=0.002)
