@@ -6,8 +6,9 @@ from collections.abc import Collection, Iterable
 from datetime import datetime
 from typing import Any
 
-from sqlalchemy import Column, ColumnElement, Table, and_, or_, true
+from sqlalchemy import Column, ColumnElement, Table, and_, or_, select, true
 
+from campaign.catalogue.tables_history import lapses
 from campaign.model.instants import Moment
 from campaign.model.measured import Measured
 
@@ -65,9 +66,24 @@ def in_force(
     begin: Column[datetime], end: Column[datetime | None], known_at: datetime | None
 ) -> ColumnElement[bool]:
     """The condition that a row holds: now, or at ``known_at``."""
+    return in_use(end, known_at) if known_at is None else and_(begin <= known_at, in_use(end, known_at))
+
+
+def in_use(end: Column[datetime | None], known_at: datetime | None) -> ColumnElement[bool]:
+    """The condition that a row is not ended or withdrawn: now, or at ``known_at``.
+
+    What was taken back and put back again was out of use in between.
+    """
     if known_at is None:
         return end.is_(None)
-    return and_(begin <= known_at, or_(end.is_(None), end > known_at))
+    table = end.table
+    lapsed = select(lapses.c.row_id).where(
+        lapses.c.table_name == table.name,
+        lapses.c.row_id.is_not(None),
+        lapses.c.from_at <= known_at,
+        lapses.c.until_at > known_at,
+    )
+    return and_(or_(end.is_(None), end > known_at), table.c.id.not_in(lapsed))
 
 
 def kept(number: int, numbers: Collection[int] | None) -> bool:

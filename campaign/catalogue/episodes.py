@@ -11,7 +11,7 @@ from sqlalchemy import Connection, select
 from campaign.catalogue.converting import among, columns_of, in_force, kept, moment_names, moment_values
 from campaign.catalogue.sources import source_id, source_titles
 from campaign.catalogue.store import Writing
-from campaign.catalogue.tables import episodes
+from campaign.catalogue.tables import changes, episodes, operations
 from campaign.errors import Conflict, NotFound
 from campaign.model.instants import Moment
 from campaign.model.systems import DatedEvent, Episode
@@ -80,15 +80,31 @@ def load_episodes(
         .order_by(episodes.c.system_id, episodes.c.id)
     ).all()
     titles = source_titles(connection) if rows else {}
+    states = _states_then(connection, known_at) if rows and known_at is not None else {}
     by_system: dict[int, list[Episode]] = {}
     for row in rows:
         if kept(row[1], system_ids):
-            undecided = known_at is not None and row[6] is not None and row[6] > known_at
-            episode = _episode(row, titles, "proposed" if undecided else row[3])
+            episode = _episode(row, titles, states.get(row[0]) or row[3])
             by_system.setdefault(row[1], []).append(episode)
     for found in by_system.values():
         found.sort(key=_earliest_bmjd_tdb)
     return by_system
+
+
+def _states_then(connection: Connection, known_at: datetime) -> dict[int, EpisodeState]:
+    """The state at ``known_at`` of every episode that was decided later, from the journal.
+
+    The row itself knows the last decision only, and one that was taken back not at all.
+    """
+    rows = connection.execute(
+        select(changes.c.row_id, changes.c.before)
+        .join(operations, operations.c.id == changes.c.operation_id)
+        .where(
+            changes.c.table_name == episodes.name, changes.c.action == "update", operations.c.at > known_at
+        )
+        .order_by(changes.c.id.desc())
+    )
+    return {row_id: before["state"] for row_id, before in rows if "state" in before}
 
 
 _COLUMNS = (
@@ -98,7 +114,6 @@ _COLUMNS = (
     "state",
     "source_id",
     "note",
-    "decided_at",
     *(name for stage in _STAGES for name in (f"{stage}_band", f"{stage}_method", *moment_names(stage))),
 )
 
@@ -109,9 +124,9 @@ def _episode(row: Any, titles: Mapping[int, str], state: EpisodeState) -> Episod
         system_id=row[1],
         cycle=row[2],
         state=state,
-        onset=_dated_event(row[7:15]),
-        maximum=_dated_event(row[15:23]),
-        end=_dated_event(row[23:31]),
+        onset=_dated_event(row[6:14]),
+        maximum=_dated_event(row[14:22]),
+        end=_dated_event(row[22:30]),
         source="" if row[4] is None else titles[row[4]],
         note=row[5],
     )

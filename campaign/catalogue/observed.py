@@ -6,11 +6,11 @@ from collections.abc import Collection
 from datetime import datetime
 from typing import TYPE_CHECKING
 
-from sqlalchemy import ColumnElement, Connection, and_, func, or_, select, true
+from sqlalchemy import ColumnElement, Connection, and_, func, select, true
 
-from campaign.catalogue.converting import among, columns_of, kept, measured_or_none
+from campaign.catalogue.converting import among, columns_of, in_use, kept, measured_or_none
 from campaign.catalogue.sources import source_titles
-from campaign.catalogue.tables import observations, sites, system_names
+from campaign.catalogue.tables import lapses, observations, sites, system_names
 from campaign.catalogue.types import Names
 from campaign.errors import NotFound
 from campaign.model.bands import BandUse
@@ -123,7 +123,7 @@ def band_uses(connection: Connection, system_ids: Collection[int] | None = None)
     rows = connection.execute(
         select(counted.c.system_id, system_names.c.name, *list(counted.c)[1:])
         .join(system_names, system_names.c.system_id == counted.c.system_id)
-        .where(system_names.c.name_rank == 0)
+        .where(system_names.c.name_rank == 0, system_names.c.withdrawn_at.is_(None))
     )
     return [
         BandUse(name, band or "", own, points)
@@ -220,14 +220,16 @@ _READ = ("id", "uid", "site_id", "source_id", *_TIME, *_VALUES, *_ANGLE, *PLAIN_
 def _in_use(as_of_bmjd_tdb: float | None, known_at: datetime | None) -> ColumnElement[bool]:
     columns = observations.c
     conditions: list[ColumnElement[bool]] = []
-    if known_at is None:
-        conditions += [columns.superseded_at.is_(None), columns.withdrawn_at.is_(None)]
-    else:
-        conditions += [
-            columns.entered_at <= known_at,
-            or_(columns.superseded_at.is_(None), columns.superseded_at > known_at),
-            or_(columns.withdrawn_at.is_(None), columns.withdrawn_at > known_at),
-        ]
+    conditions += [in_use(columns.superseded_at, known_at), in_use(columns.withdrawn_at, known_at)]
+    if known_at is not None:
+        # A whole load that was taken back and put back again was out of use in between.
+        lapsed = select(lapses.c.brought_by_id).where(
+            lapses.c.brought_by_id.is_not(None),
+            lapses.c.table_name == observations.name,
+            lapses.c.from_at <= known_at,
+            lapses.c.until_at > known_at,
+        )
+        conditions += [columns.entered_at <= known_at, columns.operation_id.not_in(lapsed)]
     if as_of_bmjd_tdb is not None:
         conditions.append(columns.bmjd_tdb <= as_of_bmjd_tdb)
     return and_(*conditions)

@@ -33,7 +33,7 @@ def load_records(
         Whether retired systems come too.
     """
     wanted = None if system_ids is None else set(system_ids)
-    found = load_systems(connection, wanted, include_retired=include_retired)
+    found = load_systems(connection, wanted, include_retired=include_retired, known_at=known_at)
     solutions = load_solutions(connection, wanted, known_at)
     rules = load_rules(connection, wanted, known_at)
     episodes = load_episodes(connection, wanted, known_at)

@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from dataclasses import fields
 from typing import Any
 
-from sqlalchemy import Connection, select
+from sqlalchemy import Connection, and_, select
 
 from campaign.catalogue.converting import columns_of
 from campaign.catalogue.naming import name_key, nearest_names, tidy_name
@@ -88,7 +88,8 @@ def get_site(connection: Connection, site_id: int) -> Site:
     ------
     NotFound
     """
-    row = connection.execute(select(*columns_of(sites, _FIELDS)).where(sites.c.id == site_id)).first()
+    wanted = and_(sites.c.id == site_id, sites.c.withdrawn_at.is_(None))
+    row = connection.execute(select(*columns_of(sites, _FIELDS)).where(wanted)).first()
     if row is None:
         raise NotFound(
             f"There is no site number {site_id}.",
@@ -100,9 +101,10 @@ def get_site(connection: Connection, site_id: int) -> Site:
 
 def list_sites(connection: Connection) -> list[Site]:
     """All sites in the order of entry."""
-    return [
-        Site(*row) for row in connection.execute(select(*columns_of(sites, _FIELDS)).order_by(sites.c.id))
-    ]
+    rows = connection.execute(
+        select(*columns_of(sites, _FIELDS)).where(sites.c.withdrawn_at.is_(None)).order_by(sites.c.id)
+    )
+    return [Site(*row) for row in rows]
 
 
 def _site_values(site: Site) -> dict[str, Any]:
@@ -113,7 +115,9 @@ def _site_values(site: Site) -> dict[str, Any]:
 
 def _refuse_taken(connection: Connection, values: Mapping[str, Any], own_id: int | None) -> None:
     row = connection.execute(
-        select(sites.c.id, sites.c.name).where(sites.c.name_key == values["name_key"])
+        select(sites.c.id, sites.c.name).where(
+            sites.c.name_key == values["name_key"], sites.c.withdrawn_at.is_(None)
+        )
     ).first()
     if row is not None and row.id != own_id:
         raise Conflict(

@@ -6,7 +6,7 @@ from collections.abc import Collection, Mapping
 from datetime import datetime
 from typing import Any
 
-from sqlalchemy import ColumnElement, Connection, and_, select, true
+from sqlalchemy import Connection, and_, select
 
 from campaign.catalogue.converting import (
     among,
@@ -37,7 +37,9 @@ def add_solution(writing: Writing, solution: Solution) -> int:
     label = tidy_name(solution.label)
     taken = writing.connection.execute(
         select(solutions.c.label).where(
-            solutions.c.system_id == solution.system_id, solutions.c.label_key == name_key(label)
+            solutions.c.system_id == solution.system_id,
+            solutions.c.label_key == name_key(label),
+            solutions.c.withdrawn_at.is_(None),
         )
     ).scalar_one_or_none()
     if taken is not None:
@@ -197,7 +199,7 @@ def load_solutions(
     """Solutions by system, in two statements however many there are."""
     titles = source_titles(connection)
     adopted = in_force(adoptions.c.adopted_at, adoptions.c.ended_at, known_at)
-    entered: ColumnElement[bool] = true() if known_at is None else solutions.c.entered_at <= known_at
+    entered = in_force(solutions.c.entered_at, solutions.c.withdrawn_at, known_at)
     rows = connection.execute(
         select(*columns_of(solutions, SOLUTION_COLUMNS), adoptions.c.id, adoptions.c.weight)
         .outerjoin_from(solutions, adoptions, and_(adoptions.c.solution_id == solutions.c.id, adopted))

@@ -5,13 +5,15 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Collection
 from dataclasses import fields, replace
+from datetime import datetime
 from typing import Any
 
-from sqlalchemy import ColumnElement, Connection, select, true
+from sqlalchemy import ColumnElement, Connection, and_, or_, select, true
 
 from campaign.catalogue.converting import (
     among,
     columns_of,
+    in_use,
     kept,
     measured_names,
     measured_or_none,
@@ -25,6 +27,7 @@ from campaign.catalogue.types import unreadable
 from campaign.errors import Conflict, NotFound
 from campaign.model.systems import Star, System, SystemState
 
+_NAMES_IN_USE = system_names.c.withdrawn_at.is_(None)
 _PLAIN = (
     "position_epoch_jyr",
     "ra_deg",
@@ -68,13 +71,11 @@ def find_system(connection: Connection, name: str) -> System:
         ``system-not-found``; ``details["nearest"]`` lists names like it.
     """
     found = connection.execute(
-        select(system_names.c.system_id).where(system_names.c.name_key == name_key(name))
+        select(system_names.c.system_id).where(system_names.c.name_key == name_key(name), _NAMES_IN_USE)
     ).scalar_one_or_none()
     if found is None:
-        known = {
-            key: shown
-            for key, shown in connection.execute(select(system_names.c.name_key, system_names.c.name))
-        }
+        rows = connection.execute(select(system_names.c.name_key, system_names.c.name).where(_NAMES_IN_USE))
+        known = {key: shown for key, shown in rows}
         raise _no_system(name, nearest_names(name, known), bool(known))
     return get_system(connection, found)
 
@@ -150,17 +151,18 @@ def set_cycle_anchor(
 
 
 def load_systems(
-    connection: Connection, system_ids: Collection[int] | None, *, include_retired: bool
+    connection: Connection,
+    system_ids: Collection[int] | None,
+    *,
+    include_retired: bool,
+    known_at: datetime | None = None,
 ) -> list[System]:
-    """Systems by number with names and stars, in three statements however many there are."""
-    wanted = among(systems.c.id, system_ids)
-    names = defaultdict(list)
-    for system_id, name in connection.execute(
-        select(system_names.c.system_id, system_names.c.name)
-        .where(among(system_names.c.system_id, system_ids))
-        .order_by(system_names.c.system_id, system_names.c.name_rank)
-    ):
-        names[system_id].append(name)
+    """Systems by number with names and stars, in three statements however many there are.
+
+    With ``known_at`` those too that were taken back only after it; all values are the present ones.
+    """
+    wanted = and_(among(systems.c.id, system_ids), in_use(systems.c.withdrawn_at, known_at))
+    names = _load_names(connection, system_ids, known_at)
     star_of = _load_stars(connection, among(stars.c.system_id, system_ids))
     shown: ColumnElement[bool] = true() if include_retired else systems.c.state != "retired"
     rows = connection.execute(
@@ -213,6 +215,27 @@ def _load_stars(connection: Connection, wanted: ColumnElement[bool]) -> dict[tup
     }
 
 
+def _load_names(
+    connection: Connection, system_ids: Collection[int] | None, known_at: datetime | None
+) -> dict[int, list[str]]:
+    """Names by system, the primary one first; of a system that was taken back those that it had then."""
+    columns = system_names.c
+    query = select(columns.system_id, columns.name).where(among(columns.system_id, system_ids))
+    if known_at is None:
+        query = query.where(_NAMES_IN_USE)
+    else:
+        query = query.join(systems, systems.c.id == columns.system_id).where(
+            or_(
+                and_(columns.withdrawn_at.is_(None), systems.c.withdrawn_at.is_(None)),
+                columns.withdrawn_at == systems.c.withdrawn_at,
+            )
+        )
+    names: dict[int, list[str]] = defaultdict(list)
+    for system_id, name in connection.execute(query.order_by(columns.system_id, columns.name_rank)):
+        names[system_id].append(name)
+    return names
+
+
 def _primary(names: list[str], system_id: int) -> str:
     if not names:
         raise unreadable(f"system number {system_id} without a name")
@@ -251,7 +274,7 @@ def _change_names(writing: Writing, system: System) -> bool:
         row.name_rank: row
         for row in writing.connection.execute(
             select(system_names.c.id, system_names.c.name_rank, system_names.c.name).where(
-                system_names.c.system_id == system.id
+                system_names.c.system_id == system.id, _NAMES_IN_USE
             )
         )
     }
@@ -269,7 +292,7 @@ def _refuse_taken(connection: Connection, names: list[str], own_id: int | None) 
     for name in names:
         row = connection.execute(
             select(system_names.c.system_id, system_names.c.name).where(
-                system_names.c.name_key == name_key(name)
+                system_names.c.name_key == name_key(name), _NAMES_IN_USE
             )
         ).first()
         if row is not None and row.system_id != own_id:
