@@ -83,8 +83,8 @@ def separation_case(rng: np.random.Generator, number: int, ratio_low: float, rat
     t0 = scattered(rng, epoch, 12.0, 12.0)
     solution = Solution(
         number, number, "given", period_d=scattered(rng, period, 4.0, 4.0),
-        epoch=Moment(t0.value, 12.0, 12.0), eccentricity=scattered(rng, e, 0.008, 0.008), a_au=scattered(rng, a, 0.02 * a, 0.02 * a),
-        adopted=True, epoch_cycle=0,
+        epoch=Moment(t0.value, 12.0, 12.0), eccentricity=scattered(rng, e, 0.008, 0.008),
+        a_au=scattered(rng, a, 0.02 * a, 0.02 * a), adopted=True, epoch_cycle=0,
     )  # fmt: skip
     rule = DustRule(
         number, number, "separation",
