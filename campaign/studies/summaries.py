@@ -63,14 +63,15 @@ def summarise(times: FloatArray, window: Window, keep_grid: bool) -> Summary:
     draws = times.shape[1]
     counts = draws - np.isnan(ordered).sum(axis=1)
     quantiles = row_quantiles(ordered, counts, PROBABILITIES)
-    if np.all(counts == draws):
-        sigma = ordered.std(axis=1)
-    else:
-        origin = np.where(counts > 0, ordered[:, 0], 0.0)[:, None]
-        shifted = np.nan_to_num(ordered - origin)
-        n = np.maximum(counts, 1)
+    # Row by row, whatever else is in the block: a forecast must not depend on its neighbours.
+    whole = counts == draws
+    sigma = np.empty(times.shape[0])
+    sigma[whole] = ordered[whole].std(axis=1)
+    if not whole.all():
+        some, n = ordered[~whole], np.maximum(counts[~whole], 1)
+        shifted = np.nan_to_num(some - np.where(counts[~whole] > 0, some[:, 0], 0.0)[:, None])
         mean = shifted.sum(axis=1) / n
-        sigma = np.sqrt(np.maximum((shifted**2).sum(axis=1) / n - mean**2, 0.0))
+        sigma[~whole] = np.sqrt(np.maximum((shifted**2).sum(axis=1) / n - mean**2, 0.0))
     inside = ((ordered >= window.start) & (ordered <= window.end)).sum(axis=1) / draws
     return Summary(
         quantiles=quantiles,

@@ -64,9 +64,9 @@ def forecast_campaign(
     dated = forecaster.run(question.window, wanted)
     states = onset_states(prepared, forecaster, dated, photometry, question)
     listed = [d for d in dated if d.event in question.events and _is_listed(d, states, question)]
+    listed.extend(dateless_events(prepared, question))
     listed = [d for d in listed if d.in_window is None or d.in_window >= question.min_probability]
-    dateless = dateless_events(prepared, question)
-    events = event_forecasts(prepared.rows, prepared.units, listed + dateless, states, question.as_of)
+    events = event_forecasts(prepared.rows, prepared.units, listed, states, question.as_of)
     if question.solutions == "each":
         events = with_disagreement(events)
     shown = {d.unit for d in listed}
