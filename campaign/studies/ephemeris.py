@@ -160,6 +160,8 @@ def _columns(
         else:
             assumptions.append("no node: no position angle")
     velocities = [_velocity(nu, e, solution, star, omega_b) for star in ("A", "B")]
+    if solution.gamma_kms is None and any(v is not None for v in velocities):
+        assumptions.append("no systemic velocity: velocities are relative to the pair's own centre of mass")
     return (
         _floats(np.degrees(nu)),
         _floats(ratio * a_au) if a_au is not None else empty,

@@ -46,7 +46,8 @@ def campaign_of_every_kind():
         record(rule=DustRule(1, 1, "learned"), episodes=learned, number=3, name="learned"),
         record(
             solution(2_800.0, 58_000.0, label="one", weight=0.6),
-            solution(2_830.0, 58_050.0, label="two", id=2, weight=0.4, **sky), rule=lag_rule(), number=4, name="mixture",
+            solution(2_830.0, 58_050.0, label="two", id=2, weight=0.4, **sky),
+            rule=lag_rule(), number=4, name="mixture",
         ),
         record(solution(Range(2_600.0, 2_700.0), 58_500.0), number=5, name="range"),
         record(solution(Limit(11_000.0, "above"), 49_000.0, epoch_marks="onset"), number=6, name="limit"),
@@ -88,9 +89,10 @@ def test_the_order_of_the_systems_changes_nothing(order):
 
 
 def test_an_unrelated_system_with_a_light_curve_and_other_errors_changes_nothing(together):
+    covariance = Covariance(("epoch", "omega_deg"), ((25.0, 400.0), (400.0, 8_100.0)))
+    sky = {"eccentricity": known(0.01, 0.02), "omega_deg": known(1.0, 90.0), "omega_of": "B"}
     stranger = record(
-        solution(4_321.0, 57_000.0, period_error=300.0, eccentricity=known(0.01, 0.02), omega_deg=known(1.0, 90.0),
-                 omega_of="B", covariance=Covariance(("epoch", "omega_deg"), ((25.0, 400.0), (400.0, 8_100.0)))),
+        solution(4_321.0, 57_000.0, period_error=300.0, covariance=covariance, **sky),
         rule=lag_rule(known(-1.0, 50.0)), number=77, name="stranger",
     )  # fmt: skip
     more = upcoming(stranger, *RECORDS, draws=3_000, photometry={77: quiet_curve(55_000.0, 61_000.0)})
@@ -158,8 +160,8 @@ def test_the_clock_does_not_enter_a_forecast_of_the_sample():
     """Its own date stands in for today, whatever the clock says."""
     campaign = watch.load_sample_campaign(["Kettle 7", "Quill 9"])
     asked = {
-        "as_of": None, "start": None, "end": None, "within_d": 5 * YEAR_D, "events": (), "min_probability": 0.0,
-        "draws": 1_000, "seed": None, "solutions": "adopted",
+        "as_of": None, "start": None, "end": None, "within_d": 5 * YEAR_D, "events": (),
+        "min_probability": 0.0, "draws": 1_000, "seed": None, "solutions": "adopted",
     }  # fmt: skip
     first, second = (
         watch.upcoming(campaign, watch.ask(campaign, now=now, **asked))

@@ -61,7 +61,7 @@ def test_no_dust_at_apastron(e):
 
 def test_winds_near_one_percent_of_the_speed_of_light_are_thousands_of_km_per_second():
     # Common practice, no source.
-    assert 0.01 * LIGHT_KMS == pytest.approx(3_000.0, rel=0.001)
+    assert abs(0.01 * LIGHT_KMS - 3_000.0) < 3.0
     speed = read_measured("3000±100 km/s", "kms", "--wind-speed-a", low=0.0, high=LIGHT_KMS)
     assert speed == Measured(3_000.0, 100.0, 100.0)
     # At that speed the wind needs two months for the 100 au to where dust condenses.
