@@ -6,7 +6,7 @@ from collections.abc import Collection, Mapping
 from datetime import datetime
 from typing import Any, Literal
 
-from sqlalchemy import Connection, select
+from sqlalchemy import ColumnElement, Connection, select
 
 from campaign.catalogue.converting import among, columns_of, in_force, kept, moment_names, moment_values
 from campaign.catalogue.sources import source_id, source_titles
@@ -74,13 +74,29 @@ def load_episodes(
 ) -> dict[int, list[Episode]]:
     """Episodes by system, in order of their earliest date, in two statements."""
     in_use = in_force(episodes.c.entered_at, episodes.c.withdrawn_at, known_at)
+    states = {} if known_at is None else _states_then(connection, known_at)
+    return _load(connection, system_ids, in_use, states)
+
+
+def load_withdrawn_episodes(
+    connection: Connection, system_ids: Collection[int] | None
+) -> dict[int, list[Episode]]:
+    """Episodes out of use by system, in order of their earliest date."""
+    return _load(connection, system_ids, episodes.c.withdrawn_at.is_not(None), {})
+
+
+def _load(
+    connection: Connection,
+    system_ids: Collection[int] | None,
+    condition: ColumnElement[bool],
+    states: Mapping[int, EpisodeState],
+) -> dict[int, list[Episode]]:
     rows = connection.execute(
         select(*columns_of(episodes, _COLUMNS))
-        .where(among(episodes.c.system_id, system_ids), in_use)
+        .where(among(episodes.c.system_id, system_ids), condition)
         .order_by(episodes.c.system_id, episodes.c.id)
     ).all()
     titles = source_titles(connection) if rows else {}
-    states = _states_then(connection, known_at) if rows and known_at is not None else {}
     by_system: dict[int, list[Episode]] = {}
     for row in rows:
         if kept(row[1], system_ids):
