@@ -28,6 +28,8 @@ _BLOCK = 65_536
 _PILOT_DRAWS = 64
 # How long an unseen or finished cycle stays on the list, days.
 KEEP_LISTED_D = 365.25
+# More cycles of one event than this are no forecast that anybody reads.
+MOST_CYCLES = 100
 COUNTED_FROM_ONSET = "counted from the observed onset"
 
 
@@ -129,6 +131,10 @@ class Forecaster:
         self.learned = learned
         self.unit_of_row = {row: u for u, unit in enumerate(units) for row in unit.rows}
         self.sampler = Sampler(rows, draws, seed, learned)
+        # Cycles in the window of units that have more than MOST_CYCLES of them.
+        self.cut: dict[int, int] = {}
+        # Rows whose rule gives an onset in no draw of the pilot.
+        self.without_onset: set[int] = set()
         # The pilot only finds out which cycles can fall inside the window; no date comes from it.
         self.pilot = self.sampler if draws <= _PILOT_DRAWS else Sampler(rows, _PILOT_DRAWS, seed, learned)
 
@@ -140,7 +146,10 @@ class Forecaster:
         return float(learned.rough_period_d) if learned is not None and np.isnan(value) else float(value)
 
     def tasks(self, window: Window, events: Sequence[EventName]) -> list[tuple[int, EventName, int]]:
-        """(unit, event, cycle) triples that may matter for the window or for the status today."""
+        """(unit, event, cycle) triples that may matter for the window or for the status today.
+
+        Of more than MOST_CYCLES cycles the first are taken; ``cut`` then says how many there are.
+        """
         found: dict[tuple[int, EventName, int], None] = {}
         for event in events:
             index = np.array(
@@ -151,7 +160,10 @@ class Forecaster:
                 continue
             for row, low, high in zip(index, *self._cycle_span(event, index, window), strict=True):
                 unit = self.unit_of_row[int(row)]
-                for cycle in range(int(low), int(high) + 1):
+                count = int(high) - int(low) + 1
+                if count > MOST_CYCLES:
+                    self.cut[unit] = max(count, self.cut.get(unit, 0))
+                for cycle in range(int(low), int(low) + min(count, MOST_CYCLES)):
                     found[(unit, event, cycle)] = None
         return list(found)
 
@@ -160,6 +172,8 @@ class Forecaster:
         pilot = self.pilot.event_times(event, index, reference)
         with np.errstate(invalid="ignore"):
             has = ~np.all(np.isnan(pilot), axis=1)
+            if event == "onset":
+                self.without_onset.update(int(row) for row in index[~has])
             low = np.where(has, np.nanmin(np.where(has[:, None], pilot, 0.0), axis=1), np.nan)
             high = np.where(has, np.nanmax(np.where(has[:, None], pilot, 0.0), axis=1), np.nan)
         period = np.array([self.period_d(int(i)) for i in index])
@@ -171,9 +185,32 @@ class Forecaster:
         with np.errstate(invalid="ignore"):
             first = np.ceil((start - high - slack) / period)
             last = np.floor((window.end - low + slack) / period)
+            # The error of the period widens the neighbours: one more cycle on either side may reach in.
+            # Further ones cannot: a date as uncertain as that has lost its phase.
+            steps = self._steps_d(event, index, reference, pilot)
+            earlier, later = (np.where(has, end, 0.0)[:, None] for end in (first - 1.0, last + 1.0))
+            first -= np.any(pilot + earlier * steps >= (start - slack)[:, None], axis=1)
+            last += np.any(pilot + later * steps <= (window.end + slack)[:, None], axis=1)
         first = np.where(has, first, 1)
         last = np.where(has, last, 0)
         return reference + first.astype(np.int64), reference + last.astype(np.int64)
+
+    def _steps_d(
+        self, event: EventName, index: IntArray, reference: IntArray, pilot: FloatArray
+    ) -> FloatArray:
+        """From one cycle to the next in each draw of the pilot, days."""
+        steps = self.pilot.draw("period_d", index)
+        learned = np.flatnonzero([event in SCATTERS and int(row) in self.learned for row in index])
+        if learned.size:
+            following = self.pilot.event_times(event, index[learned], reference[learned] + 1)
+            steps[learned] = following - pilot[learned]
+        return steps
+
+    def pilot_half_window_d(self, row: int) -> FloatArray:
+        """Half windows of production of one row by the rule 'separation', in the draws of the pilot."""
+        index = np.array([row])
+        half = self.pilot.half_window_d(index, self.pilot.draw("period_d", index))
+        return np.asarray(half[0], dtype=np.float64)
 
     def _looks_back(self, row: int) -> bool:
         unit = self.units[self.unit_of_row[row]]

@@ -167,7 +167,7 @@ def onset_state(
         if since is not None:
             return OnsetState("suspected", "unexplained excess, not confirmed", since)
     if not known:
-        return OnsetState("expected" if as_of < median else "open")
+        return _state_without_error(median, as_of, period_d)
     if as_of < low95:
         return OnsetState("expected")
     if as_of <= high95:
@@ -185,6 +185,15 @@ def onset_state(
         if share >= 0.005:
             return OnsetState("unseen", f"observations cover only {share:.0%} of the onset's interval")
     return OnsetState("unseen", "no observation would have shown it")
+
+
+def _state_without_error(median: float, as_of: float, period_d: float) -> OnsetState:
+    """Nobody knows how wide the interval is; half a period on, it is no longer this cycle's."""
+    if as_of < median:
+        return OnsetState("expected")
+    if as_of - median > FORGOTTEN_PERIODS * period_d:
+        return OnsetState("unseen", "half a period has passed since its date, whose error is unknown")
+    return OnsetState("open")
 
 
 def _search_start(median: float, low95: float, known: bool, period_d: float, as_of: float) -> float:

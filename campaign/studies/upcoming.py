@@ -13,7 +13,7 @@ from campaign.model.records import SystemRecord
 from campaign.physics.timescales import utc_iso
 from campaign.studies.basis import describe_basis, dust_windows, event_forecasts
 from campaign.studies.dateless import dateless_events
-from campaign.studies.forecast import KEEP_LISTED_D, DatedEvent, Forecaster
+from campaign.studies.forecast import KEEP_LISTED_D, MOST_CYCLES, DatedEvent, Forecaster
 from campaign.studies.lightcurves import CataloguedCurves
 from campaign.studies.preparing import Prepared, Question, prepare
 from campaign.studies.status import OnsetState, needs_photometry, onset_state
@@ -88,6 +88,7 @@ def forecast_campaign(
         draws=question.draws,
         seed=question.seed,
         assumptions=_assumptions(prepared),
+        warnings=(*_without_onset(prepared, forecaster), *_cut_short(prepared, forecaster, listed)),
     )
 
 
@@ -227,3 +228,28 @@ def _assumptions(prepared: Prepared) -> tuple[str, ...]:
         f"{text} ({', '.join(names[:few])}{' and others' if len(names) > few else ''})"
         for text, names in said.items()
     )
+
+
+def _without_onset(prepared: Prepared, forecaster: Forecaster) -> list[str]:
+    """Systems whose dust rule gives no onset at all; otherwise they would only be missing from the list."""
+    said: dict[str, None] = {}
+    for row in sorted(forecaster.without_onset):
+        if not np.any(np.isinf(forecaster.pilot_half_window_d(row))):
+            text = "the stars do not come within the critical separation: no episode is forecast"
+        else:
+            text = "the stars do not leave the critical separation: dust without a break, no onset and no end"
+        solution = prepared.rows[row].solution
+        by = f", {solution.label}" if solution is not None else ""
+        said[f"{prepared.rows[row].record.system.name}{by}: {text}"] = None
+    return list(said)
+
+
+def _cut_short(prepared: Prepared, forecaster: Forecaster, listed: Sequence[DatedEvent]) -> list[str]:
+    """Systems with more dated cycles in the period than anybody reads."""
+    dated = {one.unit for one in listed if not one.phase_lost}
+    return [
+        f"{prepared.rows[prepared.units[unit].rows[0]].record.system.name}: {count} cycles fall in this "
+        f"period; only the first {MOST_CYCLES} are looked at"
+        for unit, count in sorted(forecaster.cut.items())
+        if unit in dated
+    ]

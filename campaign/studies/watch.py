@@ -30,6 +30,8 @@ from campaign.studies.upcoming import Question, forecast_campaign
 _MJD_ZERO = datetime(1858, 11, 17, tzinfo=UTC)
 DEFAULT_WITHIN_D = 5.0 * 365.25
 DEFAULT_ROWS = 40
+# 0001-01-01 and 10000-01-01, proleptic Gregorian: the years that a date can be written in.
+FIRST_DAY, LAST_DAY = -678_575.0, 2_973_484.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -224,6 +226,13 @@ def ask(
             "The period ends before it begins.",
             why="--until is not later than --from (or than now, when --from is not given).",
             hint="For example --from 2030-01-01 --until 2035-01-01, or --within 5yr.",
+            code="span-refused",
+        )
+    if last > LAST_DAY or first < FIRST_DAY:
+        raise InputRefused(
+            "The period reaches beyond the years 1 to 9999.",
+            why="No calendar date can be given there, and no ephemeris holds that long.",
+            hint="For example --within 5yr, or --from 1700-01-01 --until 1800-01-01.",
             code="span-refused",
         )
     return Question(
