@@ -106,7 +106,8 @@ def with_cycles(
     Returns
     -------
     tuple of Episode
-        Confirmed episodes, oldest first, each with a cycle where one could be given.
+        Confirmed episodes, oldest first, one a cycle where a cycle could be given; where two entries date
+        the same stage of a cycle, the earlier entry in time is kept.
 
     Notes
     -----
@@ -135,7 +136,29 @@ def with_cycles(
         elif cycle is None:
             cycle = origin_cycle if date == origin else None
         result.append(replace(episode, cycle=cycle))
-    return tuple(result)
+    return _one_a_cycle(result)
+
+
+def _one_a_cycle(episodes: Sequence[Episode]) -> tuple[Episode, ...]:
+    """Entries of one cycle told together: an onset logged first, its end in another entry later."""
+    by_cycle: dict[int, Episode] = {}
+    result: list[Episode] = []
+    for episode in episodes:
+        if episode.cycle is None:
+            result.append(episode)
+            continue
+        known = by_cycle.get(episode.cycle)
+        by_cycle[episode.cycle] = (
+            episode
+            if known is None
+            else replace(
+                known,
+                onset=known.onset or episode.onset,
+                maximum=known.maximum or episode.maximum,
+                end=known.end or episode.end,
+            )
+        )
+    return tuple(sorted([*result, *by_cycle.values()], key=lambda e: _date(e) or 0.0))
 
 
 def _date(episode: Episode) -> float | None:

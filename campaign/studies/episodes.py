@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from itertools import pairwise
 
 from campaign.catalogue import episodes, records, store, systems
-from campaign.errors import InputRefused
+from campaign.errors import Conflict, InputRefused
 from campaign.model.instants import TypedInstant
 from campaign.model.kept import Kept, Stamp
 from campaign.model.systems import DatedEvent, Episode
@@ -44,7 +44,7 @@ def add_episode(
     Raises
     ------
     NotFound, InputRefused, Conflict
-        Unknown system; no date or dates out of order; the cycle has an episode already.
+        Unknown system; no date or dates out of order; the cycle has one of these dates already.
 
     Notes
     -----
@@ -59,6 +59,7 @@ def add_episode(
         )
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
         system = systems.find_system(writing.connection, system_name)
+        _refuse_second_date(episodes.episodes_of(writing.connection, system.id), draft, dates, system.name)
         dated = {n: DatedEvent(moment_of(t, system), band, method) for n, (t, band, method) in dates.items()}
         ordered = [(n, dated[n].moment.bmjd_tdb) for n in ("onset", "maximum", "end") if n in dated]
         for (first, earlier), (second, later) in pairwise(ordered):
@@ -83,6 +84,25 @@ def add_episode(
     return Kept(
         "episodes-add", True, tuple(lines), {"system": system.name, "id": episode_id, "cycle": draft.cycle}
     )
+
+
+def _refuse_second_date(
+    known: Sequence[Episode], draft: Episode, dates: Mapping[str, object], system_name: str
+) -> None:
+    """A cycle has one onset, one maximum and one end; a stage still undated may come later."""
+    for episode in known:
+        if draft.cycle is None or episode.cycle != draft.cycle or episode.state != "confirmed":
+            continue
+        for stage in dates:
+            found = getattr(episode, stage)
+            if found is not None:
+                raise Conflict(
+                    f"Cycle {draft.cycle} of {system_name} has its {stage} already.",
+                    why=f"Episode {episode.id} dates it {spoken_moment(found.moment)}.",
+                    hint=f'See what is known with: campaign episodes list "{system_name}"',
+                    code="episode-known",
+                    details={"episode": episode.id},
+                )
 
 
 def list_episodes(db: str, system_name: str | None) -> list[tuple[str, Episode]]:

@@ -36,12 +36,7 @@ def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> Judge
     """
     past = (arrays.bmjd_tdb <= as_of) & (arrays.quality == "good")
     error = 0.5 * (arrays.mag_minus + arrays.mag_plus)
-    spans = []
-    for episode in record.episodes:
-        dates = [d.moment.bmjd_tdb for d in (episode.onset, episode.maximum, episode.end) if d is not None]
-        if episode.state == "confirmed" and dates:
-            # Dust outlasts its production: leave a generous tail out of the level.
-            spans.append((min(dates) - 30.0, max(dates) + max(2.0 * (max(dates) - min(dates)), 365.25)))
+    spans = [(start, end) for start, end, _ in confirmed_spans(record)]
     return judge_photometry(
         arrays.bmjd_tdb[past],
         arrays.mag[past],
@@ -51,6 +46,35 @@ def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> Judge
         _series(arrays, past),
         spans,
     )
+
+
+def confirmed_spans(record: SystemRecord) -> list[tuple[float, float, int | None]]:
+    """When a system's light held, or may have held, the dust of its confirmed episodes.
+
+    Parameters
+    ----------
+    record : SystemRecord
+        The system and its episodes.
+
+    Returns
+    -------
+    list of (float, float, int or None)
+        From and until (``bmjd_tdb``) and the cycle of each; dust outlasts its production, so a generous
+        tail is left.
+
+    Notes
+    -----
+    Accuracy: a convention, not a measurement.
+
+    Source: project convention, common practice.
+    """
+    spans = []
+    for episode in record.episodes:
+        dates = [d.moment.bmjd_tdb for d in (episode.onset, episode.maximum, episode.end) if d is not None]
+        if episode.state == "confirmed" and dates:
+            tail_d = max(2.0 * (max(dates) - min(dates)), 365.25)
+            spans.append((min(dates) - 30.0, max(dates) + tail_d, episode.cycle))
+    return spans
 
 
 def _series(arrays: PhotometryArrays, chosen: NDArray[np.bool_]) -> list[str]:

@@ -13,15 +13,17 @@ from campaign.catalogue import observations, records, sites, store, systems
 from campaign.model.instants import Moment, TypedInstant
 from campaign.model.kept import Stamp
 from campaign.model.observations import Observation
+from campaign.model.records import SystemRecord
 from campaign.model.shown import Logged, LoggedEntry
 from campaign.model.systems import Site
 from campaign.reading.instants import describe_instant, read_instant
 from campaign.studies.instants import moment_of, spoken_moment
 from campaign.studies.quietness import (
+    CONSECUTIVE_D,
     CONSECUTIVE_SIGMA,
     MINIMUM_LEVEL_POINTS,
-    SINGLE_SIGMA,
     JudgedPhotometry,
+    suspected_since,
 )
 
 _MJD_OF_UNIX_EPOCH = 40_587.0
@@ -121,9 +123,9 @@ def _knowledge(
     suspected = False
     bands = [e.observation for e in entries if e.observation.kind == "photometry"]
     if bands:
-        judged = _judge_now(connection, system_id, moment.bmjd_tdb)
+        record, judged = _judge_now(connection, system_id, moment.bmjd_tdb)
         for observation in bands:
-            line, strong = _verdict(judged, observation)
+            line, strong = _verdict(record, judged, observation)
             lines.append(line)
             suspected |= strong
     for kind in dict.fromkeys(e.observation.kind for e in entries):
@@ -141,18 +143,20 @@ def _plural(kind: str) -> str:
     }.get(kind, kind + "s")
 
 
-def _judge_now(connection: Connection, system_id: int, as_of: float) -> JudgedPhotometry:
+def _judge_now(connection: Connection, system_id: int, as_of: float) -> tuple[SystemRecord, JudgedPhotometry]:
     from campaign.studies.judging import judge
 
     record = records.load_records(connection, [system_id], include_retired=True)[0]
     arrays = observations.photometry_arrays(connection, [system_id])[system_id]
-    return judge(record, arrays, max(as_of, float(arrays.bmjd_tdb.max())))
+    return record, judge(record, arrays, max(as_of, float(arrays.bmjd_tdb.max())))
 
 
-def _verdict(judged: JudgedPhotometry, observation: Observation) -> tuple[str, bool]:
-    here = np.flatnonzero(np.abs(judged.bmjd_tdb - observation.moment.bmjd_tdb) < 1e-7)
+def _verdict(record: SystemRecord, judged: JudgedPhotometry, observation: Observation) -> tuple[str, bool]:
+    band, at = observation.band or "?", observation.moment.bmjd_tdb
+    if observation.quality != "good":
+        return f"{band}: {observation.quality}, so nothing is concluded from it", False
+    here = np.flatnonzero(np.abs(judged.bmjd_tdb - at) < 1e-7)
     position = next((int(i) for i in here if judged.band[int(i)] == observation.band), None)
-    band = observation.band or "?"
     if position is None or (np.isnan(judged.excess_sigma[position]) and not judged.is_quiet[position]):
         if position is not None and observation.limit_side is not None:
             return f"{band}: the limit says nothing about an excess here", False
@@ -160,11 +164,26 @@ def _verdict(judged: JudgedPhotometry, observation: Observation) -> tuple[str, b
             f"{band}: no stellar level yet; it takes {MINIMUM_LEVEL_POINTS} points of this band and source "
             "outside episodes"
         ), False
-    sigma = float(judged.excess_sigma[position])
     if judged.is_quiet[position]:
         return f"{band}: quiet, no onset yet", False
-    if sigma >= SINGLE_SIGMA:
-        return f"{band}: {sigma:.1f} sigma above the stellar level: onset suspected, confirm it", True
-    if sigma >= CONSECUTIVE_SIGMA:
-        return f"{band}: {sigma:.1f} sigma above the stellar level: observe again within 30 d", False
-    return f"{band}: too uncertain to tell an excess", False
+    sigma = float(judged.excess_sigma[position])
+    if sigma < CONSECUTIVE_SIGMA:
+        return f"{band}: too uncertain to tell an excess", False
+    text = f"{band}: {sigma:.1f} sigma above the stellar level"
+    known = _known_episode(record, at)
+    if known is not None:
+        return f"{text}, {known}", False
+    # The same two criteria as for the status: one strong excess, or a second one within a month.
+    if suspected_since(judged, at - CONSECUTIVE_D, at) is not None:
+        return f"{text}: onset suspected, confirm it", True
+    return f"{text}: observe again within {CONSECUTIVE_D:.0f} d", False
+
+
+def _known_episode(record: SystemRecord, at: float) -> str | None:
+    """The confirmed episode that explains an excess."""
+    from campaign.studies.judging import confirmed_spans
+
+    for start, end, cycle in confirmed_spans(record):
+        if start <= at <= end:
+            return "as in the confirmed episode" + ("" if cycle is None else f" of cycle {cycle}")
+    return None

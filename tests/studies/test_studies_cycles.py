@@ -95,6 +95,17 @@ def test_only_confirmed_episodes_count_in_order_of_time():
     assert [(e.id, e.cycle) for e in found] == [(4, 0), (1, 2)]
 
 
+def test_two_entries_of_one_cycle_are_told_as_one_episode():
+    entered = [
+        episode(None, 58_010.0, number=1),
+        episode(None, None, end=58_260.0, number=2),
+        episode(None, None, maximum=58_090.0, end=58_300.0, number=3),
+    ]
+    (one,) = with_cycles(record(episodes=entered), [(0, 58_000.0)], 3_000.0)
+    dated = [d.moment.bmjd_tdb for d in (one.onset, one.maximum, one.end)]
+    assert (one.id, one.cycle, dated) == (1, 0, [58_010.0, 58_090.0, 58_300.0])
+
+
 def test_an_episode_entered_without_a_number_ends_the_wait_for_its_cycle():
     one = solution(3_000.0, 58_000.0)
     seen = episode(None, 60_950.0)
