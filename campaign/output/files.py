@@ -12,6 +12,7 @@ from pathlib import Path
 
 from campaign.errors import CampaignError, InputRefused, NotFound, StorageFull
 
+_DATABASE = b"SQLite format 3\0"
 _FULL = (errno.ENOSPC, errno.EDQUOT, errno.EFBIG)
 
 
@@ -41,6 +42,13 @@ def is_kept_file(path: str) -> bool:
         )
     if stat.S_ISREG(found.st_mode) and not os.access(path, os.W_OK):
         raise _not_writable(path, "The file is protected against writing.")
+    if stat.S_ISREG(found.st_mode) and _begins_with(path, _DATABASE):
+        raise InputRefused(
+            f"{path} is a database, and no table is written over it.",
+            why="Everything that it holds would be lost.",
+            hint="Name another file.",
+            code="file-is-database",
+        )
     return stat.S_ISREG(found.st_mode)
 
 
@@ -93,6 +101,14 @@ def _write(path: str, pieces: Iterable[str]) -> int:
         raise
     _sync_folder(folder)
     return size
+
+
+def _begins_with(path: str, start: bytes) -> bool:
+    try:
+        with open(path, "rb") as stream:
+            return stream.read(len(start)) == start
+    except OSError:
+        return False
 
 
 def _pour(descriptor: int, pieces: Iterable[str]) -> int:

@@ -96,11 +96,13 @@ def _choice(connection: Connection, asked: Asked) -> ObservationChoice:
     from campaign.catalogue.sites import find_site
     from campaign.studies.instants import axis_instant
 
+    start, end = asked.start, asked.end
     return ObservationChoice(
         kinds=asked.kinds,
         bands=asked.bands,
-        from_bmjd_tdb=None if asked.start is None else axis_instant(asked.start),
-        until_bmjd_tdb=None if asked.end is None else axis_instant(asked.end),
+        # A day, month or year is an interval: it is asked for whole.
+        from_bmjd_tdb=None if start is None else axis_instant(start) - 0.5 * start.width_d,
+        until_bmjd_tdb=None if end is None else axis_instant(end) + 0.5 * end.width_d,
         site_ids=tuple(find_site(connection, name).id for name in asked.sites),
         source=asked.source,
         qualities=asked.qualities,

@@ -1,0 +1,265 @@
+"""The catalogue for Python: ``campaign.open(path)``.
+
+Every call opens the database, reads and closes it; nothing has to be closed. Tables come as pandas
+DataFrames, forecasts as the dataclasses that the terminal shows too.
+"""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Iterable
+from datetime import UTC, datetime
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from campaign.model.exchange_columns import ExchangeKind
+    from campaign.model.forecasts import UpcomingResult
+    from campaign.model.instants import TypedInstant
+
+Several = str | Iterable[str] | None
+When = str | datetime | None
+
+
+class Campaign:
+    """One catalogue, read when it is asked.
+
+    Parameters
+    ----------
+    path : str, path or None
+        A file or an SQLAlchemy URL; None for ``$CAMPAIGN_DB``, else the user's data folder.
+
+    Raises
+    ------
+    DatabaseUnusable
+        When there is no catalogue that can be read.
+    """
+
+    def __init__(self, path: str | os.PathLike[str] | None = None) -> None:
+        from campaign import settings
+        from campaign.studies.opening import require_catalogue
+
+        self._db = settings.database_location(None if path is None else os.fspath(path), os.environ)
+        require_catalogue(self._db)
+
+    def __repr__(self) -> str:
+        shown = "an SQLAlchemy URL" if "://" in self._db else repr(self._db)
+        return f"<campaign in {shown}>"
+
+    def observations(
+        self,
+        system: Several = None,
+        *,
+        kind: Several = None,
+        band: Several = None,
+        start: When = None,
+        end: When = None,
+        site: Several = None,
+        source: str | None = None,
+        quality: Several = None,
+        also_withdrawn: bool = False,
+    ) -> pd.DataFrame:
+        """Observations by system, time and ``uid``.
+
+        Parameters
+        ----------
+        system, kind, band, site, quality : str, iterable of str or None
+            Only these; None for all. Systems and sites by name or alias, whatever their case and spaces.
+        start, end : str, datetime or None
+            Only what was observed from then until then: an instant as on the command line (a day counts
+            whole), or an aware datetime.
+        source : str or None
+            Only where the source holds this text.
+        also_withdrawn : bool
+            Also what was superseded or withdrawn, told in ``out_of_use``.
+
+        Returns
+        -------
+        DataFrame
+            One row an observation, with the columns of ``campaign export observations``. ``bmjd_tdb`` is
+            MJD in TDB at the barycentre (d); ``value``, ``value_minus`` and ``value_plus`` are in the unit
+            that ``unit`` names row by row. ``attrs["units"]`` holds the unit of every column that has one
+            (that of ``value`` where all rows share it), ``attrs["descriptions"]`` what each column means.
+            NaN and NA are unknown.
+
+        Raises
+        ------
+        NotFound
+            Unknown system or site; the nearest names are in ``details``.
+        InputRefused
+            An instant, kind or quality that cannot be read.
+        """
+        from campaign.model.observations import OBSERVATION_KINDS
+
+        return self._table(
+            "observations",
+            systems=_several(system),
+            kinds=_words(kind, OBSERVATION_KINDS, "kind"),
+            bands=_several(band),
+            start=_instant(start, "start"),
+            end=_instant(end, "end"),
+            sites=_several(site),
+            source=source or "",
+            qualities=_words(quality, ("good", "doubtful", "bad"), "quality"),
+            also_out_of_use=also_withdrawn,
+        )
+
+    def systems(self) -> pd.DataFrame:
+        """Systems with their stars and the dust rule in force, by name.
+
+        Returns
+        -------
+        DataFrame
+            One row a system, retired ones too, with the columns of ``campaign export systems``;
+            ``attrs["units"]`` holds their units (deg, mas/yr, pc, solMass, km/s, d, ...).
+        """
+        return self._table("systems")
+
+    def solutions(self, system: Several = None) -> pd.DataFrame:
+        """Sets of orbital elements, by system and label.
+
+        Parameters
+        ----------
+        system : str, iterable of str or None
+            Only of these, by name or alias; None for all.
+
+        Returns
+        -------
+        DataFrame
+            One row a solution, with the columns of ``campaign export solutions``; ``attrs["units"]``
+            holds their units (d, deg, km/s, au, arcsec). ``adopted`` and ``weight`` say what the forecast
+            rests on.
+
+        Raises
+        ------
+        NotFound
+            Unknown system.
+        """
+        return self._table("solutions", systems=_several(system))
+
+    def episodes(self, system: Several = None, *, also_withdrawn: bool = False) -> pd.DataFrame:
+        """Dated bursts of dust production, by system and date.
+
+        Parameters
+        ----------
+        system : str, iterable of str or None
+            Only of these, by name or alias; None for all.
+        also_withdrawn : bool
+            Also those out of use, told in ``out_of_use``.
+
+        Returns
+        -------
+        DataFrame
+            One row an episode, with the columns of ``campaign export episodes``; instants are MJD in TDB
+            at the barycentre, their errors in days.
+
+        Raises
+        ------
+        NotFound
+            Unknown system.
+        """
+        return self._table("episodes", systems=_several(system), also_out_of_use=also_withdrawn)
+
+    def upcoming(
+        self,
+        within_d: float | None = None,
+        as_of: When = None,
+        *,
+        system: Several = None,
+        min_probability: float = 0.0,
+        draws: int | None = None,
+        seed: int | None = None,
+    ) -> UpcomingResult:
+        """The events to come, as ``campaign upcoming`` shows them.
+
+        Parameters
+        ----------
+        within_d : float or None
+            Length of the period from now on, d; None for five Julian years.
+        as_of : str, datetime or None
+            In place of now; observations made after it are not looked at.
+        system : str, iterable of str or None
+            Only these, by name or alias; None for all that are not retired.
+        min_probability : float
+            Only events with at least this probability (dimensionless) inside the period.
+        draws, seed : int or None
+            Of the random draws; None for 20,000 draws and seed 1.
+
+        Returns
+        -------
+        UpcomingResult
+            ``events`` with medians and intervals as ``bmjd_tdb`` (d) and UTC text.
+
+        Raises
+        ------
+        NotFound
+            Unknown system.
+        InputRefused
+            An instant or a length that cannot be used.
+        """
+        from campaign.studies import watch
+
+        asked = _instant(as_of, "as_of")
+        loaded = watch.load_campaign(self._db, _several(system) or None, None, asked)
+        question = watch.ask(
+            loaded,
+            now=datetime.now(UTC),
+            as_of=asked,
+            start=None,
+            end=None,
+            within_d=within_d,
+            events=(),
+            min_probability=min_probability,
+            draws=draws,
+            seed=seed,
+            solutions="adopted",
+        )
+        return watch.upcoming(loaded, question)
+
+    def _table(self, kind: ExchangeKind, **asked: Any) -> pd.DataFrame:
+        from campaign.output.frames import frame_of
+        from campaign.studies.export import Asked, outgoing_table
+
+        with outgoing_table(self._db, Asked(kind, **asked)) as table:
+            return frame_of(table)
+
+
+def _several(given: Several) -> tuple[str, ...]:
+    if given is None:
+        return ()
+    return (given,) if isinstance(given, str) else tuple(given)
+
+
+def _words(given: Several, accepted: tuple[str, ...], name: str) -> tuple[Any, ...]:
+    from campaign.errors import InputRefused
+
+    words = _several(given)
+    for word in words:
+        if word not in accepted:
+            raise InputRefused(
+                f"{name} {word!r} is not understood.",
+                why=f"It is one of: {', '.join(accepted)}.",
+                hint=f"For example {name}={accepted[0]!r}.",
+                code="choice-refused",
+                details={"accepted": list(accepted)},
+            )
+    return words
+
+
+def _instant(given: When, name: str) -> TypedInstant | None:
+    from campaign.errors import InputRefused
+    from campaign.reading.instants import read_instant
+
+    if given is None:
+        return None
+    if isinstance(given, datetime):
+        if given.utcoffset() is None:
+            raise InputRefused(
+                f"{name}: the time {given.isoformat()} has no time zone.",
+                why="Without its offset from UTC it could be any of 26 instants.",
+                hint="Give an aware datetime, for example datetime.now(UTC), or text.",
+                code="instant-unreadable",
+            )
+        given = given.astimezone(UTC).isoformat().replace("+00:00", "Z")
+    return read_instant(given, default_scale="utc", default_place="geocentre", name=name)
