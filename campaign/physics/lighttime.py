@@ -3,18 +3,19 @@
 from __future__ import annotations
 
 import numpy as np
-from erfa import ufunc
 from numpy.typing import ArrayLike, NDArray
 
 from campaign.errors import InputRefused
-from campaign.physics.constants import AU_KM, LIGHT_TIME_AU_D, MJD_ZERO_JD
-from campaign.physics.timescales import tdb_to_tt, tdb_to_utc, to_tdb
+from campaign.physics.constants import LIGHT_TIME_AU_D
+from campaign.physics.earth import EarthDays, earth_along_au, earth_days, site_along_au
+from campaign.physics.timescales import tdb_to_utc, to_tdb
 
 FloatArray = NDArray[np.float64]
 
 # Dates for which erfa's positions of Earth and Sun are claimed: the years 1900 to 2100.
 EPHEMERIS_FIRST_MJD, EPHEMERIS_LAST_MJD = 15_020.0, 88_069.0
-_WGS84 = 1
+# Light crosses the Earth's orbit in less; what is known of the Earth serves instants so far apart.
+_MARGIN_D = 0.01
 # HJD to BJD: the two differ by under 10 s and Earth and Sun move too little in that for a third round.
 _ROUNDS = 2
 
@@ -85,9 +86,7 @@ def barycentric_light_time_d(
     >>> round(float(barycentric_light_time_d(60389.209134, 270.625, -23.5)) * 86400, 2)
     -5.49
     """
-    return _light_time_d(
-        np.asarray(mjd_tdb, dtype=np.float64), unit_vector(ra_deg, dec_deg), site_geodetic, 1
-    )
+    return _light_time_d(*_known(mjd_tdb), unit_vector(ra_deg, dec_deg), site_geodetic, 1)
 
 
 def heliocentric_light_time_d(
@@ -123,9 +122,7 @@ def heliocentric_light_time_d(
     >>> round(float(heliocentric_light_time_d(60389.209134, 270.625, -23.5)) * 86400, 2)
     -7.17
     """
-    return _light_time_d(
-        np.asarray(mjd_tdb, dtype=np.float64), unit_vector(ra_deg, dec_deg), site_geodetic, 0
-    )
+    return _light_time_d(*_known(mjd_tdb), unit_vector(ra_deg, dec_deg), site_geodetic, 0)
 
 
 def to_barycentre(
@@ -189,13 +186,14 @@ def to_barycentre(
                 code="site-missing",
             )
         site = site_geodetic if place == "observatory" else None
-        return day + (rest + _light_time_d(day + rest, n, site, 1))
+        return day + (rest + _light_time_d(*_known(day + rest), n, site, 1))
     if place == "heliocentre":
         # The observer's instant is not known, so it is approached from the Sun's.
+        days = _earth_around(day + rest)
         at_earth = rest
         for _ in range(_ROUNDS):
-            at_earth = rest - _light_time_d(day + at_earth, n, None, 0)
-        return day + (at_earth + _light_time_d(day + at_earth, n, None, 1))
+            at_earth = rest - _light_time_d(day + at_earth, days, n, None, 0)
+        return day + (at_earth + _light_time_d(day + at_earth, days, n, None, 1))
     raise InputRefused(
         f"'{place}' is no place known here.",
         why="An instant needs the place at which it is counted.",
@@ -233,27 +231,31 @@ def ephemeris_covers(mjd_tdb: ArrayLike) -> NDArray[np.bool_]:
     return (mjd >= EPHEMERIS_FIRST_MJD) & (mjd < EPHEMERIS_LAST_MJD)
 
 
+def _earth_around(mjd_tdb: FloatArray) -> EarthDays:
+    return earth_days(np.where(np.isfinite(mjd_tdb), mjd_tdb, 0.0), _MARGIN_D)
+
+
+def _known(mjd_tdb: ArrayLike) -> tuple[FloatArray, EarthDays]:
+    """Instants, and the Earth around them."""
+    mjd = np.asarray(mjd_tdb, dtype=np.float64)
+    return mjd, earth_days(np.where(np.isfinite(mjd), mjd, 0.0))
+
+
 def _light_time_d(
-    mjd_tdb: FloatArray, n: FloatArray, site_geodetic: tuple[float, float, float] | None, origin: int
+    mjd_tdb: FloatArray,
+    days: EarthDays,
+    n: FloatArray,
+    site_geodetic: tuple[float, float, float] | None,
+    origin: int,
 ) -> FloatArray:
-    """``origin`` 0 is the Sun, 1 the barycentre, in the order in which erfa gives Earth's position."""
+    """``origin`` 0 is the Sun, 1 the barycentre."""
     finite = np.isfinite(mjd_tdb)
     safe = np.where(finite, mjd_tdb, 0.0)
-    # The status only says whether the date is within 1900 to 2100.
-    earth_au = ufunc.epv00(MJD_ZERO_JD, safe)[origin]["p"]
+    along_au = earth_along_au(days, safe, n, origin)
     if site_geodetic is not None:
-        earth_au = earth_au + _site_au(safe, site_geodetic)
-    return np.where(finite, np.sum(earth_au * n, axis=-1), np.nan)[()] * LIGHT_TIME_AU_D
-
-
-def _site_au(mjd_tdb: FloatArray, site_geodetic: tuple[float, float, float]) -> FloatArray:
-    """Place of an observatory from the geocentre in ICRS axes, au; UT1 read as UTC, no polar motion."""
-    longitude, latitude, height_m = site_geodetic
-    terrestrial_m, _ = ufunc.gd2gc(_WGS84, np.radians(longitude), np.radians(latitude), height_m)
-    tt_day, tt_rest = tdb_to_tt(np.floor(mjd_tdb), mjd_tdb - np.floor(mjd_tdb))
-    utc_day, utc_rest = tdb_to_utc(mjd_tdb)
-    inside = np.isfinite(utc_day)
-    ut_day, ut_rest = np.where(inside, utc_day, 0.0), np.where(inside, utc_rest, 0.0)
-    matrix = ufunc.c2t00b(tt_day + MJD_ZERO_JD, tt_rest, ut_day + MJD_ZERO_JD, ut_rest, 0.0, 0.0)
-    celestial: FloatArray = np.einsum("...ji,...j->...i", matrix, terrestrial_m)
-    return celestial / (1000.0 * AU_KM)
+        # UT1 is read as UTC; before the calendar begins and after it ends it does not matter.
+        ut_day, ut_rest = tdb_to_utc(safe)
+        inside = np.isfinite(ut_day)
+        ut_day, ut_rest = np.where(inside, ut_day, 0.0), np.where(inside, ut_rest, 0.0)
+        along_au = along_au + site_along_au(safe, ut_day, ut_rest, n, site_geodetic)
+    return np.where(finite, along_au, np.nan)[()] * LIGHT_TIME_AU_D
