@@ -30,6 +30,8 @@ _PILOT_DRAWS = 64
 KEEP_LISTED_D = 365.25
 # More cycles of one event than this are no forecast that anybody reads.
 MOST_CYCLES = 100
+# Sigma of the period that a neighbouring cycle may be nearer: a little beyond the 95 % interval.
+_REACH = 2.5
 COUNTED_FROM_ONSET = "counted from the observed onset"
 
 
@@ -187,24 +189,13 @@ class Forecaster:
             last = np.floor((window.end - low + slack) / period)
             # The error of the period widens the neighbours: one more cycle on either side may reach in.
             # Further ones cannot: a date as uncertain as that has lost its phase.
-            steps = self._steps_d(event, index, reference, pilot)
-            earlier, later = (np.where(has, end, 0.0)[:, None] for end in (first - 1.0, last + 1.0))
-            first -= np.any(pilot + earlier * steps >= (start - slack)[:, None], axis=1)
-            last += np.any(pilot + later * steps <= (window.end + slack)[:, None], axis=1)
+            errors = np.nan_to_num(self.sampler.columns["period_d"][index, 1:]).max(axis=1)
+            before, after = first - 1.0, last + 1.0
+            first -= high + before * period + _REACH * np.abs(before) * errors >= start - slack
+            last += low + after * period - _REACH * np.abs(after) * errors <= window.end + slack
         first = np.where(has, first, 1)
         last = np.where(has, last, 0)
         return reference + first.astype(np.int64), reference + last.astype(np.int64)
-
-    def _steps_d(
-        self, event: EventName, index: IntArray, reference: IntArray, pilot: FloatArray
-    ) -> FloatArray:
-        """From one cycle to the next in each draw of the pilot, days."""
-        steps = self.pilot.draw("period_d", index)
-        learned = np.flatnonzero([event in SCATTERS and int(row) in self.learned for row in index])
-        if learned.size:
-            following = self.pilot.event_times(event, index[learned], reference[learned] + 1)
-            steps[learned] = following - pilot[learned]
-        return steps
 
     def pilot_half_window_d(self, row: int) -> FloatArray:
         """Half windows of production of one row by the rule 'separation', in the draws of the pilot."""
