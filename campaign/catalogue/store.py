@@ -14,7 +14,7 @@ from contextlib import contextmanager
 from datetime import datetime
 from typing import Any
 
-from sqlalchemy import Connection, Table, insert, select
+from sqlalchemy import ColumnElement, Connection, Table, insert, select
 from sqlalchemy import delete as sql_delete
 from sqlalchemy import update as sql_update
 
@@ -40,6 +40,7 @@ class Writing:
         self._command = command
         self._summary = summary
         self._operation_id: int | None = None
+        self._undoes_id: int | None = None
         # 96 random bits name the operation; the last 32 number what it makes, so that identifiers
         # of one load follow each other and their index grows at one end.
         self._uid_base = secrets.randbits(96) << 32
@@ -56,6 +57,7 @@ class Writing:
                 "command": self._command,
                 "summary": self._summary,
                 "program_version": campaign.__version__,
+                "undoes_id": self._undoes_id,
             }
             self._operation_id = _inserted(self.connection, operations, row)
         return self._operation_id
@@ -72,6 +74,13 @@ class Writing:
         """Say in one line what the operation did; the last word counts."""
         self._summary = summary
 
+    def undoes(self, operation_id: int) -> None:
+        """Say, before anything is changed, which operation this one takes back."""
+        if self._operation_id is not None:
+            raise ValueError("the operation has begun already")
+        self._undoes_id = operation_id
+        self.changed = True
+
     def insert(self, table: Table[Any], values: Values) -> int:
         """Insert one row and return its number.
 
@@ -81,7 +90,8 @@ class Writing:
             When a column must not hold the value; ``details`` names table and column.
         """
         row_id = _inserted(self.connection, table, values)
-        self._record(table, row_id, "insert", None, _stored(table, values))
+        kept = {name: value for name, value in values.items() if name != "id"}
+        self._record(table, row_id, "insert", None, _stored(table, kept))
         return row_id
 
     def update(self, table: Table[Any], row_id: int, values: Values) -> bool:
@@ -133,6 +143,18 @@ class Writing:
             raise
         self._record(table, None, "insert many", None, {"rows": len(rows)})
         return len(rows)
+
+    def update_many(
+        self, table: Table[Any], condition: ColumnElement[bool], values: Values, action: str, about: Values
+    ) -> int:
+        """Change all rows that fulfil ``condition`` with one line in the journal, and return their number.
+
+        ``about`` is what the journal keeps, together with that number; it must tell how to find the rows.
+        """
+        rows = self.connection.execute(sql_update(table).where(condition).values(values)).rowcount
+        if rows:
+            self._record(table, None, action, None, {**about, "rows": rows})
+        return rows
 
     def stored_row(self, table: Table[Any], row_id: int) -> dict[str, Any]:
         """The row as the database holds it.

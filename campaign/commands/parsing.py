@@ -68,3 +68,31 @@ def plain(text: str | None, name: str, longest: int = 200) -> str | None:
     from campaign.reading.numbers import check_plain_text
 
     return check_plain_text(text, name, longest)
+
+
+def entry_number(text: str, name: str) -> int:
+    """The number of an entry, as lists and the history show it."""
+    if text.isascii() and text.isdigit() and 0 < len(text.lstrip("0")) < 10:
+        return int(text)
+    raise InputRefused(
+        f"{name} '{text}' is not the number of an entry.",
+        why="Entries are numbered 1, 2, 3, ...; lists and the history show the numbers.",
+        hint="For example 12.",
+        code="number-refused",
+        details={"accepted_form": "12"},
+    )
+
+
+def upper_bound(text: str | None, default: int) -> int | None:
+    """How many entries at most; 0 means no bound."""
+    if text is None:
+        return default
+    if text.isascii() and text.isdigit() and len(text) < 10:
+        return int(text) or None
+    raise InputRefused(
+        f"--limit '{text}' is not a whole number.",
+        why="It says how many entries are shown at most.",
+        hint="For example --limit 50, or --limit 0 for all.",
+        code="number-refused",
+        details={"accepted_form": "50"},
+    )

@@ -85,6 +85,8 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
     _command("begin", "Make the database, empty or with the sample campaign.", "Keep the catalogue"),
     _command("upgrade", "Bring an older database up to date, after a snapshot.", "Keep the catalogue"),
     _command("export", "Write a table for others, or for another catalogue.", "Keep the catalogue"),
+    _command("history", "Who changed what and when, newest first.", "Keep the catalogue"),
+    _command("undo", "Take back one whole command; nothing is erased.", "Keep the catalogue"),
     _group(
         "system", "The binaries under watch.", "Keep the catalogue",
         ("add", "Put a system under watch."),
