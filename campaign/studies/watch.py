@@ -30,6 +30,8 @@ from campaign.studies.upcoming import Question, forecast_campaign
 _MJD_ZERO = datetime(1858, 11, 17, tzinfo=UTC)
 DEFAULT_WITHIN_D = 5.0 * 365.25
 DEFAULT_ROWS = 40
+# How far ahead to look for the first event when the period asked for holds none.
+NEXT_SEARCH_D = 60.0 * 365.25
 # 0001-01-01 and 10000-01-01, proleptic Gregorian: the years that a date can be written in.
 FIRST_DAY, LAST_DAY = -678_575.0, 2_973_484.0
 
@@ -272,9 +274,23 @@ def upcoming(campaign: Campaign, question: Question) -> UpcomingResult:
     -----
     Accuracy: see ``forecast_campaign``. Source: design, section 4.
     """
-    return _with_date_note(
-        forecast_campaign(campaign.records, campaign.photometry, question), campaign, question
-    )
+    result = forecast_campaign(campaign.records, campaign.photometry, question)
+    return _with_date_note(_with_next(result, campaign, question), campaign, question)
+
+
+def _with_next(result: UpcomingResult, campaign: Campaign, question: Question) -> UpcomingResult:
+    """Where the period holds nothing, say what comes first after it."""
+    if result.events or not any(basis.has_forecast for basis in result.bases):
+        return result
+    longer = replace(question, start=question.end, end=question.end + NEXT_SEARCH_D, min_probability=0.0)
+    later = forecast_campaign(campaign.records, campaign.photometry, longer).events
+    dated = [event for event in later if event.utc is not None and event.utc.median is not None]
+    if not dated:
+        return result
+    first = dated[0]
+    day = (first.utc.median or "")[:10] if first.utc is not None else ""
+    text = f"nothing in this period; the first after it is {first.event} of {first.system}, {day}"
+    return replace(result, assumptions=(text, *result.assumptions))
 
 
 def _with_date_note(result: UpcomingResult, campaign: Campaign, question: Question) -> UpcomingResult:
@@ -309,7 +325,8 @@ def explain(campaign: Campaign, question: Question) -> ExplainedSystem:
     from campaign.studies.explain import explain_system
 
     told = explain_system(campaign.records[0], campaign.photometry, question)
-    return replace(told, upcoming=_with_date_note(told.upcoming, campaign, question))
+    found = _with_next(told.upcoming, campaign, question)
+    return replace(told, upcoming=_with_date_note(found, campaign, question))
 
 
 def tabulate(
@@ -361,4 +378,9 @@ def tabulate(
     first = today if start is None else axis_instant(start)
     last = axis_instant(end) if end is not None else first + (nominal_period_d(solution) or DEFAULT_WITHIN_D)
     step = step_d if step_d is not None else max((last - first) / DEFAULT_ROWS, 1e-6)
-    return ephemeris(record, solution, first, last, step, utc_iso(np.array([today]))[0] or "")
+    table = ephemeris(record, solution, first, last, step, utc_iso(np.array([today]))[0] or "")
+    adopted = sum(1 for s in record.solutions if s.adopted)
+    if label is not None or adopted < 2:
+        return table
+    text = f"'{solution.label}' is one of {adopted} adopted solutions; the forecast mixes them"
+    return replace(table, assumptions=(text, *table.assumptions))
