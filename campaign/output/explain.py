@@ -17,8 +17,9 @@ _BAR_CELLS = 12
 def render_explained(screen: Screen, explained: ExplainedSystem) -> None:
     """Write the dates of one system and how each came about."""
     render_dates(screen, explained.upcoming)
-    screen.line("")
-    screen.heading(f"How the dates of {explained.system} come about")
+    if explained.elements or explained.events:
+        screen.line("")
+        screen.heading(f"How the dates of {explained.system} come about")
     if explained.elements:
         columns = (
             Column("element", shrinks=True, min_width=12),
@@ -33,8 +34,10 @@ def render_explained(screen: Screen, explained: ExplainedSystem) -> None:
         _render_event(screen, event)
     render_bases(screen, explained.upcoming)
     render_notes(screen, explained.upcoming)
+    told = "; ".join(basis.text for basis in explained.upcoming.bases).split("; ")
     for line in explained.notes:
-        screen.wrapped(line, label="- ", hang=2)
+        if line not in told and not any(a.startswith(line) for a in explained.upcoming.assumptions):
+            screen.wrapped(line, label="- ", hang=2)
 
 
 def _render_event(screen: Screen, each: ExplainedEvent) -> None:
@@ -50,8 +53,9 @@ def _date(each: ExplainedEvent) -> str:
     if dates is None:
         return yearly(each.forecast)
     interval = spread(dates.median, dates.lo68, dates.hi68)
-    interval += "" if interval[-1].isalpha() else " d"
-    return f"{day(utc.median if utc else None, dates.median)} ({interval}, 68 %), {each.forecast.status}"
+    if dates.lo68 is not None:
+        interval += ", 68 %" if interval.endswith("yr") else " d, 68 %"
+    return f"{day(utc.median if utc else None, dates.median)} ({interval}), {each.forecast.status}"
 
 
 _TERM_COLUMNS = (
@@ -64,6 +68,9 @@ _TERM_COLUMNS = (
 
 
 def _term_rows(terms: Sequence[VarianceTerm]) -> list[tuple[str, str, str, str, str]]:
+    if any(math.isnan(term.size_d) for term in terms):
+        # Shares of a whole that nobody knows would be false.
+        return [(term.cause, _size(term.size_d), "", "", term.note) for term in terms]
     parts = [math.copysign(term.size_d**2, term.size_d) for term in terms]
     whole = sum(parts)
     largest = max(abs(term.size_d) for term in terms)
@@ -88,6 +95,8 @@ def _share(part: float) -> str:
 
 
 def _size(days: float) -> str:
+    if math.isnan(days):
+        return "unknown"
     return f"{days:.3g}".replace("-", "−") if abs(days) < 1000.0 else f"{days:.0f}".replace("-", "−")
 
 

@@ -11,8 +11,9 @@ from campaign.model.measured import Limit, Measured, Range
 from campaign.model.systems import DustRule, Solution
 from campaign.physics.timescales import utc_iso
 from campaign.studies.cycles import count_is_safe
+from campaign.studies.ephemeris import semi_major_axis
 from campaign.studies.preparing import Prepared
-from campaign.studies.rows import SCATTERS, ForecastRow
+from campaign.studies.rows import SCATTERS, SPOKEN, ForecastRow
 
 Element = tuple[str, str, str]
 
@@ -42,7 +43,8 @@ def elements(rows: Sequence[ForecastRow], rule: DustRule | None) -> tuple[Elemen
         if solution is None:
             continue
         prefix = f"{solution.label}: " if len(rows) > 1 else ""
-        lines.extend((prefix + name, text, note) for name, text, note in _solution_lines(solution))
+        told = (*_solution_lines(solution), *_size_lines(row))
+        lines.extend((prefix + name, text, note) for name, text, note in told)
     if rule is not None:
         lines.extend(_rule_lines(rule))
     return tuple(lines)
@@ -70,6 +72,20 @@ def _solution_lines(solution: Solution) -> list[Element]:
     ):
         if value is not None:
             lines.append((name, _text(value, unit), ""))
+    return lines
+
+
+def _size_lines(row: ForecastRow) -> list[Element]:
+    """What the semi-major axis in au is computed from, where the dust rule needs it and nobody gave it."""
+    if row.a_source in (None, "given") or row.solution is None:
+        return []
+    lines: list[Element] = []
+    for name, unit in (("distance_pc", "pc"), ("mass_a_msun", "Msun"), ("mass_b_msun", "Msun")):
+        if name in row.values:
+            lines.append((SPOKEN[name], _text(Measured(*row.values[name]), unit), ""))
+    axis = semi_major_axis(row.record, row.solution, row.values["period_d"][0])
+    if axis is not None:
+        lines.append(("a", f"{axis[0]:.4g} au", f"from {axis[1]}"))
     return lines
 
 
@@ -146,12 +162,15 @@ def cycle_count(prepared: Prepared, events: Sequence[EventForecast]) -> tuple[st
                 lines.append(
                     f"published counts run {row.solution.published_cycle_offset:+d} ahead of the system's"
                 )
+            known = None not in (minus, plus, epoch_minus, epoch_plus)
             for cycle in listed:
                 step = cycle - row.epoch_cycle
                 safe = count_is_safe(
                     step, period, max(epoch_minus or 0.0, epoch_plus or 0.0), max(minus or 0.0, plus or 0.0)
                 )
                 verdict = "count is safe" if safe else "count may be off by one"
+                if step and not known:
+                    verdict = "an error is unknown, so the count cannot be checked"
                 side = "after" if step >= 0 else "before"
                 periods = "1 period" if abs(step) == 1 else f"{abs(step)} periods"
                 lines.append(f"cycle {cycle}: {periods} {side} the epoch, {verdict}")

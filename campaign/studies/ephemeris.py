@@ -73,6 +73,8 @@ def ephemeris(
         )
     times = start + step_d * np.arange(int(np.floor((end - start) / step_d + 1e-9)) + 1)
     epoch, assumptions = _phase_zero(solution, period)
+    if not isinstance(solution.period_d, Measured):
+        assumptions.append(f"the period is a range: its middle, {period:.8g} d, is used")
     turns = (times - epoch) / period
     # Cycles are counted from half a period before periastron, as an onset before it belongs to it.
     whole = np.floor(turns + 0.5)
@@ -85,6 +87,7 @@ def ephemeris(
         EphemerisRow(float(times[i]), iso[i], int(cycle[i]), float(phase[i]), *(c[i] for c in columns))
         for i in range(times.size)
     )
+    assumptions.append("nominal elements: their errors are not carried into the table")
     return EphemerisResult(record.system.name, solution.label, as_of_utc, rows, tuple(assumptions))
 
 
@@ -140,7 +143,10 @@ def _columns(
     anomaly = kepler.eccentric_anomaly(2.0 * np.pi * phase, e)
     nu = kepler.true_from_eccentric(anomaly, e)
     ratio = kepler.separation_ratio(anomaly, e)
-    a_au = semi_major_axis_au(record, solution, period_d)
+    axis = semi_major_axis(record, solution, period_d)
+    a_au = None if axis is None else axis[0]
+    if axis is not None and solution.a_au is None:
+        assumptions.append(f"semi-major axis {axis[0]:.4g} au from {axis[1]}")
     distance = distance_of(record)
     a_mas = _a_mas(solution, a_au, distance)
     omega_b = omega_b_deg(solution)
@@ -174,7 +180,7 @@ def _columns(
 
 
 def semi_major_axis_au(record: SystemRecord, solution: Solution, period_d: float) -> float | None:
-    """Nominal semi-major axis from whatever the catalogue holds.
+    """Nominal semi-major axis in au; see ``semi_major_axis``, whose number this is.
 
     Parameters
     ----------
@@ -192,25 +198,50 @@ def semi_major_axis_au(record: SystemRecord, solution: Solution, period_d: float
 
     Notes
     -----
+    Accuracy and source: see ``semi_major_axis``.
+    """
+    found = semi_major_axis(record, solution, period_d)
+    return None if found is None else found[0]
+
+
+def semi_major_axis(record: SystemRecord, solution: Solution, period_d: float) -> tuple[float, str] | None:
+    """Nominal semi-major axis from whatever the catalogue holds, and what that is.
+
+    Parameters
+    ----------
+    record : SystemRecord
+        For distance and masses.
+    solution : Solution
+        Elements.
+    period_d : float
+        Period, days.
+
+    Returns
+    -------
+    (float, str) or None
+        au, and where it comes from; None when nothing gives it.
+
+    Notes
+    -----
     Accuracy: nominal values only.
 
     Source: given; angle times distance; velocities with inclination; Kepler's third law with masses.
     """
     if solution.a_au is not None:
-        return solution.a_au.value
+        return solution.a_au.value, "as given"
     distance = distance_of(record)
     if solution.a_arcsec is not None and distance is not None:
-        return solution.a_arcsec.value * distance.value
+        return solution.a_arcsec.value * distance.value, "a in arcsec times the distance"
     k_a, k_b, tilt, e = solution.k_a_kms, solution.k_b_kms, solution.inclination_deg, solution.eccentricity
     if k_a is not None and k_b is not None and tilt is not None and e is not None:
-        return float(
-            masses.semi_major_axis_from_velocities(
-                period_d, e.value, k_a.value, k_b.value, np.radians(tilt.value)
-            )
+        size = masses.semi_major_axis_from_velocities(
+            period_d, e.value, k_a.value, k_b.value, np.radians(tilt.value)
         )
+        return float(size), "the velocities and the inclination"
     mass_a, mass_b = record.system.star_a.mass_msun, record.system.star_b.mass_msun
     if mass_a is not None and mass_b is not None:
-        return float(masses.semi_major_axis_au(period_d, mass_a.value + mass_b.value))
+        size = masses.semi_major_axis_au(period_d, mass_a.value + mass_b.value)
+        return float(size), "the masses of the stars and the period"
     return None
 
 

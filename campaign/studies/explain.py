@@ -251,7 +251,7 @@ def _mixture_story(
         ),
         VarianceTerm("within the solutions", float(np.sqrt(share @ within)), "their own errors"),
     )
-    text = " | ".join(
+    text = "\n".join(
         f"{label} ({w:.2g}): {story.text}" for label, w, story in zip(labels, weights, stories, strict=True)
     )
     return text, terms

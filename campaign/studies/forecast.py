@@ -135,8 +135,6 @@ class Forecaster:
         self.sampler = Sampler(rows, draws, seed, learned)
         # Cycles in the window of units that have more than MOST_CYCLES of them.
         self.cut: dict[int, int] = {}
-        # Rows whose rule gives an onset in no draw of the pilot.
-        self.without_onset: set[int] = set()
         # The pilot only finds out which cycles can fall inside the window; no date comes from it.
         self.pilot = self.sampler if draws <= _PILOT_DRAWS else Sampler(rows, _PILOT_DRAWS, seed, learned)
 
@@ -174,8 +172,6 @@ class Forecaster:
         pilot = self.pilot.event_times(event, index, reference)
         with np.errstate(invalid="ignore"):
             has = ~np.all(np.isnan(pilot), axis=1)
-            if event == "onset":
-                self.without_onset.update(int(row) for row in index[~has])
             low = np.where(has, np.nanmin(np.where(has[:, None], pilot, 0.0), axis=1), np.nan)
             high = np.where(has, np.nanmax(np.where(has[:, None], pilot, 0.0), axis=1), np.nan)
         period = np.array([self.period_d(int(i)) for i in index])
@@ -196,12 +192,6 @@ class Forecaster:
         first = np.where(has, first, 1)
         last = np.where(has, last, 0)
         return reference + first.astype(np.int64), reference + last.astype(np.int64)
-
-    def pilot_half_window_d(self, row: int) -> FloatArray:
-        """Half windows of production of one row by the rule 'separation', in the draws of the pilot."""
-        index = np.array([row])
-        half = self.pilot.half_window_d(index, self.pilot.draw("period_d", index))
-        return np.asarray(half[0], dtype=np.float64)
 
     def _looks_back(self, row: int) -> bool:
         unit = self.units[self.unit_of_row[row]]

@@ -15,7 +15,7 @@ from campaign.studies.forecast import ForecastUnit
 from campaign.studies.judging import judge
 from campaign.studies.learned import LearnedDates, learn
 from campaign.studies.quietness import JudgedPhotometry
-from campaign.studies.rows import ForecastRow, build_row
+from campaign.studies.rows import NO_RULE, ForecastRow, build_row
 from campaign.studies.sampling import DEFAULT_DRAWS, DEFAULT_SEED
 from campaign.studies.summaries import Window
 
@@ -176,7 +176,7 @@ def _add_row(prepared: Prepared, record: SystemRecord, solution: Solution | None
             row.notes.extend(learned.notes)
             if row.rule is None or row.rule.kind != "learned":
                 row.rule = DustRule(id=0, system_id=record.system.id, kind="learned")
-                row.notes = [n for n in row.notes if n != "no dust rule: periastron alone"]
+                row.notes = [n for n in row.notes if not n.startswith(NO_RULE)]
             if learned.predict(learned.events()[0], 0).prior_used:
                 row.assumptions.append(
                     "few well dated episodes: cycle-to-cycle scatter from the stated prior, 1 % of the "

@@ -32,6 +32,7 @@ DOMAINS: dict[str, tuple[float, float]] = {
     "flow_speed_kms": (1e-3, 299_792.458),
     "maximum_lag_d": (-float("inf"), float("inf")),
 }
+NO_RULE = "no dust rule"
 SCATTERS: tuple[EventName, ...] = ("onset", "maximum", "end")
 
 # How a person calls each quantity in a note.
@@ -272,7 +273,7 @@ def _explain_dateless(row: ForecastRow) -> None:
 def _apply_rule(row: ForecastRow, base: tuple[str, ...]) -> None:
     rule = row.rule
     if rule is None:
-        row.notes.append("no dust rule: periastron alone")
+        row.notes.append(f"{NO_RULE}: periastron alone" if base else NO_RULE)
         return
     if rule.kind == "learned":
         return  # dated from the episodes, see campaign.studies.learned

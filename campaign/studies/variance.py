@@ -20,6 +20,8 @@ Draw = Callable[[Sampler], FloatArray]
 # Terms smaller than this share of the whole are not worth a line.
 _SMALL = 0.02
 _DRAWS = 20_000
+# Smaller than this, days, is the rounding of the arithmetic.
+_ROUNDING_D = 1e-7
 
 
 def only(row: ForecastRow, kept: Iterable[str]) -> ForecastRow:
@@ -101,7 +103,7 @@ def terms_of(
             terms.append(VarianceTerm(SPOKEN[name], float("nan"), "error unknown"))
             continue
         size = _spread(draw(Sampler([only(alone, (name,))], _DRAWS, seed)))
-        if size > 0.0:
+        if size > _ROUNDING_D:
             terms.append(VarianceTerm(SPOKEN[name], size, (notes or {}).get(name, "")))
     if scatter_d > 0.0:
         terms.append(VarianceTerm("cycle-to-cycle scatter", scatter_d, ""))
