@@ -88,7 +88,7 @@ def forecast_campaign(
         draws=question.draws,
         seed=question.seed,
         assumptions=_assumptions(prepared),
-        warnings=(*_without_onset(prepared, forecaster), *_cut_short(prepared, forecaster, listed)),
+        warnings=tuple(_cut_short(prepared, forecaster, listed)),
     )
 
 
@@ -228,20 +228,6 @@ def _assumptions(prepared: Prepared) -> tuple[str, ...]:
         f"{text} ({', '.join(names[:few])}{' and others' if len(names) > few else ''})"
         for text, names in said.items()
     )
-
-
-def _without_onset(prepared: Prepared, forecaster: Forecaster) -> list[str]:
-    """Systems whose dust rule gives no onset at all; otherwise they would only be missing from the list."""
-    said: dict[str, None] = {}
-    for row in sorted(forecaster.without_onset):
-        if not np.any(np.isinf(forecaster.pilot_half_window_d(row))):
-            text = "the stars do not come within the critical separation: no episode is forecast"
-        else:
-            text = "the stars do not leave the critical separation: dust without a break, no onset and no end"
-        solution = prepared.rows[row].solution
-        by = f", {solution.label}" if solution is not None else ""
-        said[f"{prepared.rows[row].record.system.name}{by}: {text}"] = None
-    return list(said)
 
 
 def _cut_short(prepared: Prepared, forecaster: Forecaster, listed: Sequence[DatedEvent]) -> list[str]:
