@@ -28,6 +28,7 @@ class LearnedDates:
     period_sigma_d: float | None
     rough_period_d: float
     notes: list[str] = field(default_factory=list)
+    _known: dict[tuple[EventName, int], RecurrencePrediction] = field(default_factory=dict, repr=False)
 
     def events(self) -> tuple[EventName, ...]:
         """Events that these dates can predict."""
@@ -35,10 +36,14 @@ class LearnedDates:
         return tuple(e for e in SCATTERS if np.unique(self.cycles[e]).size >= needed)
 
     def predict(self, event: EventName, cycle: int) -> RecurrencePrediction:
-        return predict_recurrence(
-            self.cycles[event], self.dates_d[event], self.sigmas_d[event], cycle, self.period_d,
-            self.period_sigma_d,
-        )  # fmt: skip
+        """The date of a cycle; each is worked out once."""
+        known = self._known.get((event, cycle))
+        if known is None:
+            known = self._known[event, cycle] = predict_recurrence(
+                self.cycles[event], self.dates_d[event], self.sigmas_d[event], cycle, self.period_d,
+                self.period_sigma_d,
+            )  # fmt: skip
+        return known
 
     def predict_lag(self, event: EventName) -> RecurrencePrediction | None:
         """Days from onset to a later event, from the episodes that have both; None where none has."""
