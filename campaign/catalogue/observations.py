@@ -111,7 +111,7 @@ def supersede_observation(writing: Writing, observation_id: int, observation: Ob
     Conflict
         When the old one is out of use already, or the corrected one is in the catalogue already.
     """
-    _refuse_out_of_use(writing.connection, observation_id)
+    refuse_out_of_use(writing.connection, observation_id)
     # The old row gives up its digest first: a correction of the error alone has the same one.
     writing.update(observations, observation_id, {"sameness": None})
     new_id, already_logged = add_observation(writing, observation)
@@ -127,8 +127,8 @@ def supersede_observation(writing: Writing, observation_id: int, observation: Ob
     return new_id
 
 
-def withdraw_observation(writing: Writing, observation_id: int) -> None:
-    """Take an observation out of use; it stays in the catalogue.
+def withdraw_observation(writing: Writing, observation_id: int, why: str | None = None) -> None:
+    """Take an observation out of use, for a reason; it stays in the catalogue.
 
     Raises
     ------
@@ -136,8 +136,12 @@ def withdraw_observation(writing: Writing, observation_id: int) -> None:
     Conflict
         When it is out of use already.
     """
-    _refuse_out_of_use(writing.connection, observation_id)
-    writing.update(observations, observation_id, {"sameness": None, "withdrawn_at": writing.at})
+    refuse_out_of_use(writing.connection, observation_id)
+    writing.update(
+        observations,
+        observation_id,
+        {"sameness": None, "withdrawn_at": writing.at, "withdrawn_why": why or None},
+    )
 
 
 class _Numbers:
@@ -212,7 +216,7 @@ def _already_logged(connection: Connection, rows: Sequence[Mapping[str, Any]]) -
     return found
 
 
-def _refuse_out_of_use(connection: Connection, observation_id: int) -> None:
+def refuse_out_of_use(connection: Connection, observation_id: int) -> None:
     columns = observations.c
     row = connection.execute(
         select(columns.superseded_by_id, columns.withdrawn_at).where(columns.id == observation_id)

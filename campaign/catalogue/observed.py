@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection
+from collections.abc import Collection, Sequence
 from datetime import datetime
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from sqlalchemy import ColumnElement, Connection, and_, func, select, true
 
@@ -214,13 +214,12 @@ _ARRAY_COLUMNS = (
 _TIME = ("bmjd_tdb", "time_minus_d", "time_plus_d", "time_text", "time_scale", "time_place")
 _VALUES = ("value", "value_minus", "value_plus")
 _ANGLE = ("position_angle_deg", "position_angle_deg_minus", "position_angle_deg_plus")
-_READ = ("id", "uid", "site_id", "source_id", *_TIME, *_VALUES, *_ANGLE, *PLAIN_COLUMNS)
+READ_COLUMNS = ("id", "uid", "site_id", "source_id", *_TIME, *_VALUES, *_ANGLE, *PLAIN_COLUMNS)
 
 
 def _in_use(as_of_bmjd_tdb: float | None, known_at: datetime | None) -> ColumnElement[bool]:
     columns = observations.c
-    conditions: list[ColumnElement[bool]] = []
-    conditions += [in_use(columns.superseded_at, known_at), in_use(columns.withdrawn_at, known_at)]
+    conditions = [in_use(columns.superseded_at, known_at), in_use(columns.withdrawn_at, known_at)]
     if known_at is not None:
         # A whole load that was taken back and put back again was out of use in between.
         lapsed = select(lapses.c.brought_by_id).where(
@@ -237,12 +236,15 @@ def _in_use(as_of_bmjd_tdb: float | None, known_at: datetime | None) -> ColumnEl
 
 def _read(connection: Connection, condition: ColumnElement[bool]) -> list[Observation]:
     rows = connection.execute(
-        select(*columns_of(observations, _READ))
+        select(*columns_of(observations, READ_COLUMNS))
         .where(condition)
         .order_by(observations.c.system_id, observations.c.bmjd_tdb, observations.c.id)
     ).all()
-    if not rows:
-        return []
+    return observations_from_rows(connection, rows) if rows else []
+
+
+def observations_from_rows(connection: Connection, rows: Sequence[Sequence[Any]]) -> list[Observation]:
+    """Observations from rows that begin with ``READ_COLUMNS``."""
     titles = source_titles(connection)
     site_rows = connection.execute(select(sites.c.id, sites.c.name))
     site_names = Names((number, name) for number, name in site_rows)
@@ -256,7 +258,7 @@ def _read(connection: Connection, condition: ColumnElement[bool]) -> list[Observ
             moment=Moment(*row[4:10]),
             value=measured_or_none(row[10], row[11], row[12]),
             position_angle_deg=measured_or_none(row[13], row[14], row[15]),
-            **dict(zip(PLAIN_COLUMNS, row[16:], strict=True)),
+            **dict(zip(PLAIN_COLUMNS, row[16 : 16 + len(PLAIN_COLUMNS)], strict=True)),
         )
         for row in rows
     ]

@@ -8,7 +8,7 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import measured, one_of, plain
+from campaign.commands.parsing import limited, measured, one_of, plain, shell_index
 from campaign.errors import InputRefused, UsageRefused
 
 Text = str | None
@@ -54,7 +54,7 @@ def photometry(
     if band is not None or mag is not None or not pairs:
         pairs.insert(0, (_ask(band, "--band", "Band", "K"), _ask(mag, "--mag", "Magnitude", "7.31±0.03")))
     drafts = [
-        _limited(text, "mag", f"{name} magnitude", limit_sigma, shared, low=-30.0, high=40.0)
+        limited(text, "mag", f"{name} magnitude", limit_sigma, low=-30.0, high=40.0)
         | {
             "kind": "photometry",
             "band": plain(name, "--band", 24),
@@ -108,7 +108,7 @@ def flux(
             why="A flux without its band, frequency or energy range cannot be used.",
             hint='Add --band N, --frequency "8.4 GHz" or --energy "0.5..10 keV".',
         )
-    draft = _limited(text, unit, "--value", limit_sigma, shared) | {
+    draft = limited(text, unit, "--value", limit_sigma) | {
         "kind": "flux",
         "band": plain(band, "--band", 24),
         "frequency_ghz": wave.value if wave is not None else None,
@@ -256,7 +256,7 @@ def shell(
         "feature": plain(feature, "--feature", 60),
         "measured_at": one_of(measured_at, ("edge", "peak"), "--measured-at"),
         "plate_scale_error": scale.value if scale is not None else None,
-        "shell_index": None if index is None else _index(index),
+        "shell_index": None if index is None else shell_index(index),
         "band": plain(band, "--band", 24),
     }
     _log(shared, [draft], db, json, quiet)
@@ -347,47 +347,6 @@ def _shared(
         "quality": one_of(quality, ("good", "doubtful", "bad"), "--quality") or "good",
         "text": plain(note, "--note", 2000) or "",
     }
-
-
-def _limited(
-    text: str, unit: str, name: str, limit_sigma: str | None, shared: dict[str, Any], **domain: Any
-) -> dict[str, Any]:
-    """Value or limit of one observation as fields."""
-    from campaign.model.measured import Limit, Measured, Range
-    from campaign.reading.numbers import read_number
-    from campaign.reading.values import read_measured_or_bound
-
-    sigma = 3.0 if limit_sigma is None else read_number(limit_sigma, "--limit-sigma")
-    value = read_measured_or_bound(text, unit, name, limit_sigma=sigma, **domain)
-    if isinstance(value, Range):
-        raise InputRefused(
-            f"{name}: a range is no observation.",
-            why="An observation is a value with its error, or a limit.",
-            hint="For example 7.31±0.03, or >12.1 for too faint, or <6.0 for saturated.",
-            code="value-unreadable",
-        )
-    if isinstance(value, Limit):
-        return {
-            "value": Measured(value.bound),
-            "unit": unit,
-            "limit_side": value.side,
-            "limit_sigma": value.limit_sigma,
-        }
-    return {"value": value, "unit": unit}
-
-
-def _index(text: str) -> int:
-    from campaign.reading.numbers import read_number
-
-    value = read_number(text, "--index")
-    if value != int(value) or value < 1:
-        raise InputRefused(
-            f"A shell cannot have the index {text}.",
-            why="The youngest visible shell has index 1, the next 2, and so on.",
-            hint="For example --index 1, or leave it out when it is not known.",
-            code="index-refused",
-        )
-    return int(value)
 
 
 def _log(

@@ -61,6 +61,45 @@ def one_of(text: str | None, accepted: tuple[str, ...], name: str) -> str | None
     )
 
 
+def limited(text: str, unit: str, name: str, limit_sigma: str | None, **domain: Any) -> dict[str, Any]:
+    """Value or limit of one observation, as fields of it."""
+    from campaign.reading.numbers import read_number
+    from campaign.reading.values import read_measured_or_bound
+
+    sigma = 3.0 if limit_sigma is None else read_number(limit_sigma, "--limit-sigma")
+    value = read_measured_or_bound(text, unit, name, limit_sigma=sigma, **domain)
+    if isinstance(value, Range):
+        raise InputRefused(
+            f"{name}: a range is no observation.",
+            why="An observation is a value with its error, or a limit.",
+            hint="For example 7.31±0.03, or >12.1 for too faint, or <6.0 for saturated.",
+            code="value-unreadable",
+        )
+    if isinstance(value, Limit):
+        return {
+            "value": Measured(value.bound),
+            "unit": unit,
+            "limit_side": value.side,
+            "limit_sigma": value.limit_sigma,
+        }
+    return {"value": value, "unit": unit}
+
+
+def shell_index(text: str) -> int:
+    """The index of a shell: 1 for the youngest visible."""
+    from campaign.reading.numbers import read_number
+
+    value = read_number(text, "--index")
+    if value != int(value) or value < 1:
+        raise InputRefused(
+            f"A shell cannot have the index {text}.",
+            why="The youngest visible shell has index 1, the next 2, and so on.",
+            hint="For example --index 1, or leave it out when it is not known.",
+            code="index-refused",
+        )
+    return int(value)
+
+
 def plain(text: str | None, name: str, longest: int = 200) -> str | None:
     """Short text without control characters."""
     if text is None:

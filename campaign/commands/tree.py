@@ -77,6 +77,9 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
         ("attempt", "Log that it was tried and nothing was obtained."),
         ("remark", "Log a remark on a system."),
     ),
+    _command("observations", "List observations with their numbers, or draw them.", "Observe"),
+    _command("amend", "Correct an observation; the old one is kept beside it.", "Observe"),
+    _command("withdraw", "Take observations out of use; they stay, with the reason.", "Observe"),
     _group(
         "episodes", "Dated bursts of dust production.", "Observe",
         ("add", "Add a confirmed episode with the dates known of it."),

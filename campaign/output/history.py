@@ -99,6 +99,8 @@ def both(field: FieldChange) -> tuple[str, str]:
     """A field before and after; with all digits where rounding would make them look alike."""
     before = told_value(field.name, field.before, field.unit)
     after = told_value(field.name, field.after, field.unit)
+    if before == after and isinstance(field.before, Moment) and isinstance(field.after, Moment):
+        before, after = (f"BMJD_TDB {moment.bmjd_tdb:.9f}" for moment in (field.before, field.after))
     if before == after:
         return _exact(field.before), _exact(field.after)
     return before, after

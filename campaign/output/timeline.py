@@ -11,6 +11,7 @@ from rich.cells import cell_len, set_cell_size
 
 from campaign.model.forecasts import DustWindow, EventForecast, UpcomingResult
 from campaign.output.console import Screen, Span
+from campaign.output.timeaxis import TimeAxis
 from campaign.output.wording import by_date, yearly
 
 # The lowest probability of each shade, and its look; every shade also differs without colour.
@@ -25,7 +26,6 @@ _TODAY, _MEDIAN, _INTERVAL = "│", "◇", "╌"
 _PIPE_WIDTH = 100
 _LABEL_LIMIT = 18
 _LONG_LABEL_LIMIT = 26
-_MONTH_STEPS = (1, 2, 3, 6, 12, 24, 60, 120, 240, 600, 1200, 2400, 6000, 12_000)
 
 
 def render_timeline(screen: Screen, result: UpcomingResult) -> None:
@@ -151,24 +151,8 @@ def _legend(stories: Sequence[_Story], axis: _Axis) -> str:
     )
 
 
-class _Axis:
-    """Cells of equal length in days from ``start`` on (bmjd_tdb)."""
-
-    def __init__(self, start: float, end: float, cells: int) -> None:
-        self.start = start
-        self.cells = max(cells, 1)
-        self.step_d = (end - start) / self.cells
-
-    def place(self, instant: float) -> int:
-        """The cell of an instant, also outside the picture."""
-        return int((instant - self.start) // self.step_d)
-
-    def cell(self, instant: float) -> int | None:
-        """The cell of an instant, None outside; the very end belongs to the last cell."""
-        place = self.place(instant)
-        if place == self.cells and instant <= self.start + self.step_d * self.cells:
-            place -= 1
-        return place if 0 <= place < self.cells else None
+class _Axis(TimeAxis):
+    """The time axis, with the probability of dust in each of its cells."""
 
     def probabilities(self, windows: Sequence[DustWindow]) -> list[float]:
         """Per cell the highest probability in it; windows of several cycles count as independent."""
@@ -185,31 +169,6 @@ class _Axis:
         inside = window.probability[bisect_left(times, low) : bisect_right(times, high)]
         return max([_interpolated(window, low), _interpolated(window, high), *inside])
 
-    def ticks(self) -> tuple[str, str]:
-        """The axis with a tick at each labelled month or year, and the labels under it."""
-        rule, labels = ["─"] * self.cells, [" "] * self.cells
-        months = self._month_step()
-        free_from = 0
-        number = -(-_month_number(self.start) // months) * months
-        while (instant := _month_start(number)) <= self.start + self.step_d * self.cells:
-            place = self.cell(instant)
-            number += months
-            if place is None:
-                continue
-            rule[place] = "┬"
-            text = _month_label(number - months, months)
-            if place >= free_from and place + len(text) <= self.cells:
-                labels[place : place + len(text)] = text
-                free_from = place + len(text) + 1
-        return "".join(rule), "".join(labels)
-
-    def _month_step(self) -> int:
-        for months in _MONTH_STEPS:
-            room = months * 30.436875 / self.step_d
-            if room >= (8 if months < 12 else 6):
-                return months
-        return _MONTH_STEPS[-1] * max(1, round(self.step_d * 8 / (_MONTH_STEPS[-1] * 30.436875) + 0.5))
-
 
 def _interpolated(window: DustWindow, instant: float) -> float:
     times, values = window.bmjd_tdb, window.probability
@@ -220,27 +179,3 @@ def _interpolated(window: DustWindow, instant: float) -> float:
         return values[right]
     share = (instant - times[right - 1]) / (times[right] - times[right - 1])
     return values[right - 1] + share * (values[right] - values[right - 1])
-
-
-def _month_start(number: int) -> float:
-    """MJD of the first day of a month counted from year 0, in the Gregorian calendar without end."""
-    year, month0 = divmod(number, 12)
-    # March begins the count, so that a leap day is the last of its year.
-    shifted = year - (month0 < 2)
-    month_from_march = (month0 - 2) % 12
-    days = 365 * shifted + shifted // 4 - shifted // 100 + shifted // 400 + (153 * month_from_march + 2) // 5
-    return float(days - 678_881)
-
-
-def _month_number(instant: float) -> int:
-    number = int((instant + 678_941.0) / 30.436875)
-    while _month_start(number) > instant:
-        number -= 1
-    while _month_start(number + 1) <= instant:
-        number += 1
-    return number
-
-
-def _month_label(number: int, months: int) -> str:
-    year, month0 = divmod(number, 12)
-    return f"{year}" if months >= 12 else f"{year}-{month0 + 1:02d}"
