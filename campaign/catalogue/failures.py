@@ -150,7 +150,7 @@ def _damaged(address: Address) -> DatabaseUnusable:
     return DatabaseUnusable(
         f"The database {address.shown} is damaged.",
         why="Parts of the file are not what SQLite wrote there.",
-        hint="Keep the file as it is and restore a backup beside it: campaign restore FILE.",
+        hint="Keep the file as it is and put a copy from before beside it; name that one with --db.",
         code="database-damaged",
     )
 
@@ -199,7 +199,7 @@ def _full(address: Address) -> StorageFull:
 
 
 def _unusable(address: Address, code: str, message: str, why: str) -> DatabaseUnusable:
-    return DatabaseUnusable(message, why=why, hint="Check it with: campaign health.", code=code)
+    return DatabaseUnusable(message, why=why, hint="Try again; if it stays so, keep the file and name a copy from before with --db.", code=code)
 
 
 def _without_password(text: str, address: Address) -> str:

@@ -39,7 +39,7 @@ def unreadable(what: str) -> StoredValueUnreadable:
     return StoredValueUnreadable(
         f"The database holds {what}, which campaign never writes.",
         why="The file was damaged, or changed by another program.",
-        hint="Check it with: campaign health. A backup can be restored beside it: campaign restore FILE.",
+        hint="Keep the file as it is, and name a copy from before with --db.",
     )
 
 

@@ -188,7 +188,7 @@ def _refuse_unsound(connection: Connection, rows_before: dict[str, int]) -> None
         raise DatabaseUnusable(
             "The upgrade was taken back: it would have changed the number of rows or broken references.",
             why=f"Other counts in: {', '.join(sorted(lost)) or 'no table'}; broken references: {broken}.",
-            hint="The database is as it was. Please report this with the output of: campaign health.",
+            hint="The database is as it was. Please report this.",
             code="upgrade-unsound",
             details={"tables": sorted(lost), "broken_references": broken},
         )
@@ -201,7 +201,7 @@ def _refuse_damaged(connection: Connection, address: Address) -> None:
         raise DatabaseUnusable(
             f"The database {address.shown} is damaged.",
             why=f"The check after the upgrade found: {found}",
-            hint="Restore the snapshot that was taken before the upgrade: campaign restore FILE.",
+            hint="The snapshot taken before the upgrade is beside it, named -before-; name that one with --db.",
             code="database-damaged",
         )
 

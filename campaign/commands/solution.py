@@ -146,10 +146,11 @@ def show(
     """One solution, element by element, and what follows from it."""
     from campaign.output import systems as output
     from campaign.studies import systems as study
+    from campaign.studies.derived import derive
 
     record = study.load_record(common.database(db), system)
     solution = study.require_solution(record, label)
-    derived = study.derive(record, solution)
+    derived = derive(record, solution)
     if json:
         common.write_json(output.solution_json(record, solution, derived, common.now_iso()))
     else:

@@ -10,8 +10,11 @@ from campaign.catalogue import episodes, records, store, systems
 from campaign.errors import Conflict, InputRefused
 from campaign.model.instants import TypedInstant
 from campaign.model.kept import Kept, Stamp
+from campaign.model.records import SystemRecord
 from campaign.model.systems import DatedEvent, Episode
 from campaign.studies.instants import moment_of, spoken_moment
+from campaign.studies.preparing import episodes_with_cycles
+from campaign.studies.rows import build_row
 
 
 def add_episode(
@@ -118,7 +121,8 @@ def list_episodes(db: str, system_name: str | None) -> list[tuple[str, Episode]]
     Returns
     -------
     list of (str, Episode)
-        System name and episode; instants ``bmjd_tdb``.
+        System name and episode; instants ``bmjd_tdb``; confirmed ones with the cycle that the adopted
+        solution gives them, where none was stated.
 
     Raises
     ------
@@ -132,4 +136,10 @@ def list_episodes(db: str, system_name: str | None) -> list[tuple[str, Episode]]
     with store.reading(db) as connection:
         ids = None if system_name is None else [systems.find_system(connection, system_name).id]
         found = records.load_records(connection, ids, include_retired=True)
-    return [(r.system.name, e) for r in sorted(found, key=lambda r: r.system.name) for e in r.episodes]
+    return [(r.system.name, e) for r in sorted(found, key=lambda r: r.system.name) for e in _counted(r)]
+
+
+def _counted(record: SystemRecord) -> list[Episode]:
+    adopted = next((s for s in record.solutions if s.adopted), None)
+    counted = {e.id: e for e in episodes_with_cycles(build_row(record, adopted))}
+    return [counted.get(e.id, e) for e in record.episodes]
