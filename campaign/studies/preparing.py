@@ -103,7 +103,7 @@ def prepare(
                 rows=rows,
                 weights=weights,
                 label=" + ".join(s.label for s in solutions if s is not None) or None,
-                episodes=_episodes_with_cycles(first),
+                episodes=episodes_with_cycles(first),
                 watched=record.system.id in photometry,
             )
             prepared.units.append(unit)
@@ -168,7 +168,7 @@ def _add_row(prepared: Prepared, record: SystemRecord, solution: Solution | None
     has_dates = "epoch" in row.values and "period_d" in row.values
     rule_learns = row.rule is not None and row.rule.kind == "learned"
     if (rule_learns or not has_dates) and record.episodes:
-        learned = learn(row, _episodes_with_cycles(row))
+        learned = learn(row, episodes_with_cycles(row))
         if learned is not None:
             prepared.learned[position] = learned
             for event in learned.events():
@@ -186,7 +186,23 @@ def _add_row(prepared: Prepared, record: SystemRecord, solution: Solution | None
     return position
 
 
-def _episodes_with_cycles(row: ForecastRow) -> tuple[Episode, ...]:
+def episodes_with_cycles(row: ForecastRow) -> tuple[Episode, ...]:
+    """Confirmed episodes of a row's system, each with the cycle it belongs to by the row's solution.
+
+    Parameters
+    ----------
+    row : ForecastRow
+        A system with one solution, or none.
+
+    Returns
+    -------
+    tuple of Episode
+        Oldest first; cycles are dimensionless counts.
+
+    Notes
+    -----
+    Accuracy: see ``campaign.studies.cycles.with_cycles``. Source: project convention.
+    """
     period = nominal_period_d(row.solution) if row.solution is not None else None
     predicted = []
     if row.solution is not None and "epoch" in row.values and period is not None:
