@@ -55,7 +55,7 @@ class Campaign:
         band: Several = None,
         start: When = None,
         end: When = None,
-        site: Several = None,
+        site: str | None = None,
         source: str | None = None,
         quality: Several = None,
         also_withdrawn: bool = False,
@@ -64,11 +64,13 @@ class Campaign:
 
         Parameters
         ----------
-        system, kind, band, site, quality : str, iterable of str or None
-            Only these; None for all. Systems and sites by name or alias, whatever their case and spaces.
+        system, kind, band, quality : str, iterable of str or None
+            Only these; None for all. Systems by name or alias, whatever their case and spaces.
         start, end : str, datetime or None
             Only what was observed from then until then: an instant as on the command line (a day counts
             whole), or an aware datetime.
+        site : str or None
+            Only what was observed there.
         source : str or None
             Only where the source holds this text.
         also_withdrawn : bool
@@ -91,18 +93,19 @@ class Campaign:
             An instant, kind or quality that cannot be read.
         """
         from campaign.model.observations import OBSERVATION_KINDS
+        from campaign.studies.observations import Wanted
 
-        return self._table(
-            "observations",
-            systems=_several(system),
+        wanted = Wanted(
             kinds=_words(kind, OBSERVATION_KINDS, "kind"),
-            bands=_several(band),
-            start=_instant(start, "start"),
-            end=_instant(end, "end"),
-            sites=_several(site),
-            source=source or "",
+            bands=_several(band) or None,
+            since=_instant(start, "start"),
+            until=_instant(end, "end"),
+            site=site,
+            source=source or None,
             qualities=_words(quality, ("good", "doubtful", "bad"), "quality"),
-            also_out_of_use=also_withdrawn,
+        )
+        return self._table(
+            "observations", systems=_several(system), wanted=wanted, also_out_of_use=also_withdrawn
         )
 
     def systems(self) -> pd.DataFrame:
@@ -231,7 +234,7 @@ def _several(given: Several) -> tuple[str, ...]:
     return (given,) if isinstance(given, str) else tuple(given)
 
 
-def _words(given: Several, accepted: tuple[str, ...], name: str) -> tuple[Any, ...]:
+def _words(given: Several, accepted: tuple[str, ...], name: str) -> tuple[Any, ...] | None:
     from campaign.errors import InputRefused
 
     words = _several(given)
@@ -244,7 +247,7 @@ def _words(given: Several, accepted: tuple[str, ...], name: str) -> tuple[Any, .
                 code="choice-refused",
                 details={"accepted": list(accepted)},
             )
-    return words
+    return words or None
 
 
 def _instant(given: When, name: str) -> TypedInstant | None:

@@ -9,12 +9,11 @@ from typing import Any
 
 from sqlalchemy import Connection, func, select
 
-from campaign.catalogue.choosing import chosen
 from campaign.catalogue.converting import among, columns_of, kept, measured_names
+from campaign.catalogue.listing import Filters, condition_of
 from campaign.catalogue.sources import source_titles
 from campaign.catalogue.tables import observations, sites
 from campaign.catalogue.types import unreadable
-from campaign.model.choice import ObservationChoice
 from campaign.model.exchange_columns import UNIT_WORDS, Cell
 
 _BEFORE_UNIT = (
@@ -52,7 +51,7 @@ def exchanged_columns() -> tuple[str, ...]:
 
 
 def exchanged_observations(
-    connection: Connection, systems: Sequence[tuple[int, str]], choice: ObservationChoice
+    connection: Connection, systems: Sequence[tuple[int, str]], filters: Filters
 ) -> Iterator[tuple[Cell, ...]]:
     """Rows of the chosen observations: system by system as given, then by time, then by ``uid``.
 
@@ -60,14 +59,18 @@ def exchanged_observations(
     ----------
     systems
         Number and primary name of each system wanted.
-    choice
-        Its ``system_ids`` are not looked at. The last three cells are there only where what is out of use
-        is wanted too.
+    filters
+        Of other kinds than by system. The last three cells are there only where what is out of use is
+        wanted too.
     """
     # Neither numbers nor the order of entry may show: they differ from catalogue to catalogue. What
     # sorts a text differs too, from database to database, so that ties in time are broken here.
-    query = select(*columns_of(observations, _READ)).where(chosen(choice)).order_by(observations.c.bmjd_tdb)
-    cells_of = _Cells(connection, also_out_of_use=choice.also_out_of_use)
+    query = (
+        select(*columns_of(observations, _READ))
+        .where(condition_of(filters))
+        .order_by(observations.c.bmjd_tdb)
+    )
+    cells_of = _Cells(connection, also_out_of_use=filters.out_of_use)
     for number, name in systems:
         rows = connection.execute(
             query.where(observations.c.system_id == number),
@@ -79,13 +82,13 @@ def exchanged_observations(
 
 
 def count_exchanged(
-    connection: Connection, system_ids: Collection[int], choice: ObservationChoice
+    connection: Connection, system_ids: Collection[int], filters: Filters
 ) -> Mapping[str | None, int]:
     """How many of the chosen observations have a value in which unit."""
     columns = observations.c
     rows = connection.execute(
         select(columns.system_id, columns.unit, func.count())
-        .where(among(columns.system_id, system_ids), chosen(choice))
+        .where(among(columns.system_id, system_ids), condition_of(filters))
         .group_by(columns.system_id, columns.unit)
     )
     counts: dict[str | None, int] = {}

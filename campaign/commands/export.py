@@ -41,7 +41,7 @@ def export(
     band: Annotated[Words, _repeated("--band", "BAND", "Only this band")] = None,
     from_: Annotated[Text, option("--from", "INSTANT", "Only what was observed then or later.")] = None,
     until: Annotated[Text, option("--until", "INSTANT", "Only what was observed then or before.")] = None,
-    site: Annotated[Words, _repeated("--site", "SITE", "Only what was observed there")] = None,
+    site: Annotated[Text, option("--site", "SITE", "Only what was observed there.")] = None,
     source: Annotated[Text, option("--source", "TEXT", "Only where the source holds this text.")] = None,
     quality: Annotated[Words, _repeated("--quality", "WORD", "Only good, doubtful or bad")] = None,
     also_withdrawn: Annotated[
@@ -77,6 +77,7 @@ def _asked(kind: str | None, systems: Words, chosen: dict[str, Any], also_withdr
     from campaign.model.exchange_columns import EXCHANGE_KINDS, OUT_OF_USE_COLUMNS
     from campaign.model.observations import OBSERVATION_KINDS
     from campaign.studies.export import Asked
+    from campaign.studies.observations import Wanted
 
     if kind is None:
         raise UsageRefused(
@@ -84,36 +85,38 @@ def _asked(kind: str | None, systems: Words, chosen: dict[str, Any], also_withdr
             why=f"It is one of: {', '.join(EXCHANGE_KINDS)}.",
             hint="For example: campaign export observations --to observations.csv",
         )
-    wanted: Any = one_of(kind, EXCHANGE_KINDS, "KIND")
+    asked_kind: Any = one_of(kind, EXCHANGE_KINDS, "KIND")
     given = [flag for flag, value in chosen.items() if value]
-    if wanted != "observations" and given:
+    if asked_kind != "observations" and given:
         raise UsageRefused(
-            f"{given[0]} chooses among observations, not among {wanted}.",
-            why=f"The table of {wanted} can be narrowed by system only.",
+            f"{given[0]} chooses among observations, not among {asked_kind}.",
+            why=f"The table of {asked_kind} can be narrowed by system only.",
             hint=f"Leave {given[0]} out, or export observations.",
         )
-    if also_withdrawn and not OUT_OF_USE_COLUMNS[wanted]:
+    if also_withdrawn and not OUT_OF_USE_COLUMNS[asked_kind]:
         raise UsageRefused(
-            f"--also-withdrawn has no meaning for {wanted}.",
+            f"--also-withdrawn has no meaning for {asked_kind}.",
             why="Only observations and episodes stay in the table when they are withdrawn.",
             hint="Leave --also-withdrawn out; retired systems are exported anyway.",
         )
     return Asked(
-        wanted,
+        asked_kind,
         systems=tuple(systems or ()),
-        kinds=_words(chosen["--kind"], OBSERVATION_KINDS, "--kind"),
-        bands=tuple(plain(each, "--band", 50) or "" for each in chosen["--band"] or ()),
-        start=clock_instant(chosen["--from"], "--from"),
-        end=clock_instant(chosen["--until"], "--until"),
-        sites=tuple(chosen["--site"] or ()),
-        source=plain(chosen["--source"], "--source", 500) or "",
-        qualities=_words(chosen["--quality"], ("good", "doubtful", "bad"), "--quality"),
+        wanted=Wanted(
+            kinds=_words(chosen["--kind"], OBSERVATION_KINDS, "--kind"),
+            bands=tuple(plain(each, "--band", 50) or "" for each in chosen["--band"] or ()) or None,
+            since=clock_instant(chosen["--from"], "--from"),
+            until=clock_instant(chosen["--until"], "--until"),
+            site=chosen["--site"],
+            source=plain(chosen["--source"], "--source", 500),
+            qualities=_words(chosen["--quality"], ("good", "doubtful", "bad"), "--quality"),
+        ),
         also_out_of_use=also_withdrawn,
     )
 
 
 def _words(given: Words, accepted: tuple[str, ...], flag: str) -> Any:
-    return tuple(one_of(each, accepted, flag) for each in given or ())
+    return tuple(one_of(each, accepted, flag) for each in given or ()) or None
 
 
 def _place(to: str | None, as_: str | None, *, json: bool) -> tuple[str | None, ExchangeForm]:

@@ -4,17 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Any
 
-from campaign.model.choice import ObservationChoice
 from campaign.model.exchange_columns import UNIT_WORDS, Cell, ExchangeKind, exchange_columns
 from campaign.model.exported import OutgoingTable
-from campaign.model.instants import TypedInstant
-from campaign.model.observations import ObservationKind, Quality
 from campaign.model.records import SystemRecord
 from campaign.model.systems import Episode
 from campaign.studies.exchange_rows import Cells, episode_cells, in_order, solution_cells, system_cells
+from campaign.studies.observations import Wanted, filters_of
 
 if TYPE_CHECKING:
     from sqlalchemy import Connection
@@ -22,18 +20,14 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class Asked:
-    """What is to be exported; empty tuples ask for everything. All but ``systems`` and
-    ``also_out_of_use`` concern observations."""
+    """What is to be exported: of which systems (empty: of all), and which observations.
+
+    ``wanted`` concerns observations alone; its ``system`` and ``out_of_use`` are not looked at.
+    """
 
     kind: ExchangeKind
     systems: tuple[str, ...] = ()
-    kinds: tuple[ObservationKind, ...] = ()
-    bands: tuple[str, ...] = ()
-    start: TypedInstant | None = None
-    end: TypedInstant | None = None
-    sites: tuple[str, ...] = ()
-    source: str = ""
-    qualities: tuple[Quality, ...] = ()
+    wanted: Wanted = field(default_factory=Wanted)
     also_out_of_use: bool = False
 
 
@@ -79,34 +73,18 @@ def outgoing_table(db: str, asked: Asked) -> Iterator[OutgoingTable]:
 def _observations(connection: Connection, asked: Asked, systems: Sequence[tuple[int, str]]) -> OutgoingTable:
     from campaign.catalogue.exchanged import count_exchanged, exchanged_observations
 
-    choice = _choice(connection, asked)
-    counts = count_exchanged(connection, {number for number, _ in systems}, choice)
+    filters = replace(
+        filters_of(connection, replace(asked.wanted, system=None)), out_of_use=asked.also_out_of_use
+    )
+    counts = count_exchanged(connection, {number for number, _ in systems}, filters)
     units = {unit for unit in counts if unit is not None}
     common = units.pop() if len(units) == 1 else None
     return OutgoingTable(
         kind="observations",
         columns=exchange_columns("observations", also_out_of_use=asked.also_out_of_use),
-        rows=exchanged_observations(connection, _by_name(systems), choice),
+        rows=exchanged_observations(connection, _by_name(systems), filters),
         row_count=sum(counts.values()),
         value_unit=None if common is None else UNIT_WORDS.get(common),
-    )
-
-
-def _choice(connection: Connection, asked: Asked) -> ObservationChoice:
-    from campaign.catalogue.sites import find_site
-    from campaign.studies.instants import axis_instant
-
-    start, end = asked.start, asked.end
-    return ObservationChoice(
-        kinds=asked.kinds,
-        bands=asked.bands,
-        # A day, month or year is an interval: it is asked for whole.
-        from_bmjd_tdb=None if start is None else axis_instant(start) - 0.5 * start.width_d,
-        until_bmjd_tdb=None if end is None else axis_instant(end) + 0.5 * end.width_d,
-        site_ids=tuple(find_site(connection, name).id for name in asked.sites),
-        source=asked.source,
-        qualities=asked.qualities,
-        also_out_of_use=asked.also_out_of_use,
     )
 
 

@@ -7,7 +7,7 @@ from catalogue_examples import bare_system, every_kind, full_site, later, photom
 
 from campaign.catalogue import observations, sites, store, systems, tables, types
 from campaign.catalogue.exchanged import count_exchanged, exchanged_columns, exchanged_observations
-from campaign.model.choice import ObservationChoice
+from campaign.catalogue.listing import Filters
 from campaign.model.exchange_columns import EXCHANGE_KINDS, exchange_columns
 from campaign.model.observations import OBSERVATION_KINDS
 
@@ -41,7 +41,7 @@ NOT_KEPT = {"aliases", "covariance", "out_of_use"}
 
 def rows_of(database, systems_wanted, **choice):
     with store.reading(database) as connection:
-        return list(exchanged_observations(connection, systems_wanted, ObservationChoice(**choice)))
+        return list(exchanged_observations(connection, systems_wanted, Filters(**choice)))
 
 
 def column(rows, name):
@@ -71,7 +71,7 @@ def filled(write):
 def test_cells_come_in_the_order_of_the_agreed_columns(filled, database):
     agreed = tuple(each.name for each in exchange_columns("observations", also_out_of_use=True))
     assert exchanged_columns() == agreed
-    assert all(len(row) == len(agreed) for row in rows_of(database, filled, also_out_of_use=True))
+    assert all(len(row) == len(agreed) for row in rows_of(database, filled, out_of_use=True))
     assert {len(row) for row in rows_of(database, filled)} == {len(exchange_columns("observations"))}
 
 
@@ -99,7 +99,7 @@ def test_every_kind_of_observation_is_agreed():
 
 
 def test_ties_in_time_are_broken_by_uid_and_not_by_the_order_of_entry(filled, database):
-    rows = rows_of(database, filled[1:], also_out_of_use=True)
+    rows = rows_of(database, filled[1:], out_of_use=True)
     assert column(rows, "uid") == ["a", "b", "c", "d"]
 
 
@@ -112,7 +112,7 @@ def test_systems_come_in_the_order_asked_for(filled, database):
 
 def test_what_is_out_of_use_comes_only_when_asked_for_and_says_why(filled, database):
     assert column(rows_of(database, filled[1:]), "uid") == ["b", "d"]
-    rows = rows_of(database, filled[1:], also_out_of_use=True)
+    rows = rows_of(database, filled[1:], out_of_use=True)
     told = list(
         zip(column(rows, "uid"), column(rows, "out_of_use"), column(rows, "superseded_by"), strict=True)
     )
@@ -138,9 +138,9 @@ def test_units_are_told_as_others_know_them(filled, database):
         ({"bands": ("L",)}, ["b"]),
         ({"bands": ("K", "L")}, ["a", "b", "c", "d"]),
         ({"kinds": ("velocity",)}, []),
-        ({"from_bmjd_tdb": 61501.5}, ["c", "d"]),
-        ({"from_bmjd_tdb": 61501.0, "until_bmjd_tdb": 61501.0}, ["a", "b"]),
-        ({"site_ids": (2,)}, ["b"]),
+        ({"since_bmjd_tdb": 61501.5}, ["c", "d"]),
+        ({"since_bmjd_tdb": 61501.0, "until_bmjd_tdb": 61501.0}, ["a", "b"]),
+        ({"site_id": 2}, ["b"]),
         ({"source": "night BOOK"}, ["c"]),
         ({"source": "book%"}, []),
         ({"qualities": ("bad",)}, ["a"]),
@@ -148,16 +148,14 @@ def test_units_are_told_as_others_know_them(filled, database):
     ids=str,
 )
 def test_observations_are_chosen_by_what_they_are(choice, uids, filled, database):
-    rows = rows_of(database, filled[1:], also_out_of_use=True, **choice)
+    rows = rows_of(database, filled[1:], out_of_use=True, **choice)
     assert column(rows, "uid") == uids
     with store.reading(database) as connection:
-        counts = count_exchanged(
-            connection, {filled[1][0]}, ObservationChoice(also_out_of_use=True, **choice)
-        )
+        counts = count_exchanged(connection, {filled[1][0]}, Filters(out_of_use=True, **choice))
     assert sum(counts.values()) == len(uids)
 
 
 def test_counts_are_told_by_unit(filled, database):
     with store.reading(database) as connection:
-        counts = count_exchanged(connection, {number for number, _ in filled}, ObservationChoice())
+        counts = count_exchanged(connection, {number for number, _ in filled}, Filters())
     assert counts == {"mag": 3, "jy": 2, "kms": 1, "angstrom": 1, "mas": 1, "arcsec": 1, None: 2}

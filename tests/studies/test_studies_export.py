@@ -25,6 +25,7 @@ from campaign.reading.instants import read_instant
 from campaign.studies.begin import begin_sample_campaign
 from campaign.studies.exchange_rows import episode_cells, in_order, solution_cells, system_cells
 from campaign.studies.export import Asked, outgoing_table
+from campaign.studies.observations import Wanted
 
 forms = pytest.mark.parametrize("form", EXCHANGE_FORMS)
 quick = settings(
@@ -210,15 +211,15 @@ def test_a_day_is_asked_for_whole(lanterns):
         read_instant(f"2027-04-0{number}", default_scale="utc", default_place="geocentre")
         for number in (4, 5, 6)
     )
-    assert len(column(lanterns, "observations", "uid", start=day, end=day)) == 3
-    assert column(lanterns, "observations", "uid", start=after) == []
-    assert column(lanterns, "observations", "uid", end=before) == []
+    assert len(column(lanterns, "observations", "uid", wanted=Wanted(since=day, until=day))) == 3
+    assert column(lanterns, "observations", "uid", wanted=Wanted(since=after)) == []
+    assert column(lanterns, "observations", "uid", wanted=Wanted(until=before)) == []
 
 
 def test_values_of_one_unit_are_told_to_have_it(lanterns):
     with outgoing_table(str(lanterns), Asked("observations")) as table:
         assert table.value_unit == "mag"
-    with outgoing_table(str(lanterns), Asked("observations", bands=("Q",))) as table:
+    with outgoing_table(str(lanterns), Asked("observations", wanted=Wanted(bands=("Q",)))) as table:
         assert (table.value_unit, table.row_count) == (None, 0)
 
 
@@ -230,5 +231,8 @@ def test_an_unknown_system_is_refused_with_the_nearest(kind, lanterns):
 
 
 def test_an_unknown_site_is_refused(lanterns):
-    with pytest.raises(NotFound), outgoing_table(str(lanterns), Asked("observations", sites=("Cold",))):
+    with (
+        pytest.raises(NotFound),
+        outgoing_table(str(lanterns), Asked("observations", wanted=Wanted(site="Cold"))),
+    ):
         pass
