@@ -34,8 +34,8 @@ OURS = {
     "migrations": set(),
     "sample_catalog": {"model"},
 }
-# The libraries of each layer. astropy and pandas have no place on the way of an everyday command: pandas is
-# imported where a DataFrame is made, and nowhere else.
+# The libraries of each layer. astropy and pandas have no place on the way of an everyday command: astropy is
+# imported where an ECSV or VOTable of others is read, pandas where a DataFrame is made, and nowhere else.
 LIBRARIES = {
     "__init__": set(),
     "__main__": {"typer"},
@@ -44,7 +44,7 @@ LIBRARIES = {
     # sqlalchemy in studies names the type of a connection that the catalogue hands over.
     "studies": {"numpy", "scipy", "sqlalchemy"},
     "output": {"rich", "pandas"},
-    "reading": {"erfa"},
+    "reading": {"erfa", "numpy", "astropy"},
     "catalogue": {"sqlalchemy", "alembic", "numpy"},
     "physics": {"numpy", "scipy", "erfa"},
     "settings": {"platformdirs"},
