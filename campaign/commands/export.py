@@ -175,5 +175,8 @@ def _to_stdout(db: str, asked: Asked, form: ExchangeForm) -> None:
             for piece in table_text(table, form):
                 spool.write(piece.encode("utf-8"))
         spool.seek(0)
-        if sys.stdout is not None:
+        if hasattr(sys.stdout, "buffer"):
+            # Bytes, so that no locale changes the table.
             copyfileobj(spool, sys.stdout.buffer)
+        elif sys.stdout is not None:
+            sys.stdout.write(spool.read().decode("utf-8"))

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import inspect
 import os
+import re
+import shutil
 import subprocess
 import sys
 from datetime import UTC, datetime
@@ -199,3 +201,15 @@ def test_every_method_is_documented_with_units():
         assert "Returns\n-------" in text, name
         for parameter in list(inspect.signature(method).parameters)[1:]:
             assert parameter in text.split("Returns")[0], f"{name}: {parameter}"
+
+
+def test_the_example_of_the_readme_runs(sample, tmp_path, monkeypatch, capsys):
+    text = (ROOT / "README.md").read_text(encoding="utf-8")
+    (block,) = re.findall(r"^```python\n(.*?)^```$", text, re.S | re.M)
+    shutil.copy(sample._db, tmp_path / "sample.db")
+    monkeypatch.chdir(tmp_path)
+    exec(block, {})
+    shown = capsys.readouterr().out
+    assert "bmjd_tdb" in shown
+    assert " mag\n" in shown
+    assert "onset" in shown
