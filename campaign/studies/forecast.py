@@ -18,7 +18,7 @@ from campaign.studies.following import days_since_onset, missing_since_onset
 from campaign.studies.learned import LearnedDates
 from campaign.studies.rows import SCATTERS, ForecastRow
 from campaign.studies.sampling import MARK_CODES, RULE_CODES, Sampler
-from campaign.studies.summaries import GRID, Summary, Window, summarise
+from campaign.studies.summaries import GRID, Summary, Window, summarise, summarise_recurrence
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
@@ -211,20 +211,22 @@ class Forecaster:
     def run(self, window: Window, events: Sequence[EventName], keep_grid: bool = True) -> list[DatedEvent]:
         """Date every event that may matter; see ``tasks``."""
         single: dict[EventName, list[tuple[int, int]]] = {event: [] for event in events}
-        special: list[tuple[int, EventName, int]] = []
-        lost: dict[tuple[int, EventName], int] = {}
-        for unit, event, cycle in self.tasks(window, events):
-            if self._phase_lost(unit, event, cycle):
-                lost.setdefault((unit, event), cycle)
-                continue
+        mixed: dict[EventName, list[tuple[int, int]]] = {event: [] for event in events}
+        seen: list[tuple[int, EventName, int]] = []
+        tasks = self.tasks(window, events)
+        lost: dict[tuple[int, EventName], None] = {}
+        for (unit, event, cycle), is_lost in zip(tasks, self._phase_lost(tasks), strict=True):
             one = self.units[unit]
-            episode = one.confirmed(cycle)
-            if len(one.rows) > 1 or (episode is not None and event in SCATTERS):
-                special.append((unit, event, cycle))
+            if is_lost:
+                lost[unit, event] = None
+            elif one.episodes and event in SCATTERS and one.confirmed(cycle) is not None:
+                seen.append((unit, event, cycle))
             else:
-                single[event].append((unit, cycle))
+                (mixed if len(one.rows) > 1 else single)[event].append((unit, cycle))
         dated = self.date_pairs(single, window, keep_grid)
-        dated.extend(self._dated_specially(unit, event, cycle, window) for unit, event, cycle in special)
+        for event, pairs in mixed.items():
+            dated.extend(self._dated_mixtures(event, pairs, window, keep_grid))
+        dated.extend(self._dated_after_onset(unit, event, cycle, window) for unit, event, cycle in seen)
         dated.extend(self._without_date(unit, event, window) for unit, event in lost)
         return dated
 
@@ -234,20 +236,39 @@ class Forecaster:
         """Date given (unit, cycle) pairs of each event; every unit has one row and nothing observed."""
         dated: list[DatedEvent] = []
         for event, chosen in pairs.items():
-            dated.extend(self._dated_in_blocks(event, chosen, window, keep_grid))
+            drawn = []
+            for unit, cycle in chosen:
+                learned = self.learned.get(self.units[unit].rows[0]) if event in SCATTERS else None
+                if learned is not None and event in learned.events():
+                    summary = summarise_recurrence(learned.predict(event, cycle), window)
+                    dated.append(self._collect(unit, event, cycle, summary, 0))
+                else:
+                    drawn.append((unit, cycle))
+            dated.extend(self._dated_in_blocks(event, drawn, window, keep_grid))
         return dated
 
-    def _phase_lost(self, unit: int, event: EventName, cycle: int) -> bool:
-        for row in self.units[unit].rows:
-            if row in self.learned and event in SCATTERS:
-                sigma = self.learned[row].predict(event, cycle).typical_sigma_d
-            elif np.isnan(self.sampler.columns["epoch"][row, 0]):
-                continue
-            else:
-                sigma = float(periastron_sigma_d(self.sampler, np.array([row]), np.array([cycle]))[0])
-            if SAFE_SIGMA * sigma >= 0.5 * self.period_d(row):
-                return True
-        return False
+    def _phase_lost(self, tasks: Sequence[tuple[int, EventName, int]]) -> NDArray[np.bool_]:
+        """Of each task, whether 3 sigma of its date in any of its rows reach half a period."""
+        lost = np.zeros(len(tasks), dtype=bool)
+        where, rows, cycles = [], [], []
+        for position, (unit, event, cycle) in enumerate(tasks):
+            for row in self.units[unit].rows:
+                learned = self.learned.get(row) if event in SCATTERS else None
+                if learned is not None:
+                    sigma = learned.predict(event, cycle).typical_sigma_d
+                    lost[position] |= SAFE_SIGMA * sigma >= 0.5 * self.period_d(row)
+                else:
+                    where.append(position)
+                    rows.append(row)
+                    cycles.append(cycle)
+        index, at = np.array(rows, dtype=np.int64), np.array(cycles, dtype=np.int64)
+        sigmas = periastron_sigma_d(self.sampler, index, at)
+        # A row without an epoch has no date to lose.
+        half = (
+            0.5 * self.sampler.columns["period_d"][index, 0] + 0.0 * self.sampler.columns["epoch"][index, 0]
+        )
+        np.logical_or.at(lost, np.array(where, dtype=np.int64), SAFE_SIGMA * sigmas >= half)
+        return lost
 
     def _dated_in_blocks(
         self, event: EventName, pairs: list[tuple[int, int]], window: Window, keep_grid: bool
@@ -316,53 +337,72 @@ class Forecaster:
             taken += count
         return np.concatenate(parts) if parts else np.full(draws, np.nan)
 
-    def _dated_specially(self, unit: int, event: EventName, cycle: int, window: Window) -> DatedEvent:
-        """A mixture, or a cycle whose episode has been seen."""
+    def _dated_mixtures(
+        self, event: EventName, pairs: list[tuple[int, int]], window: Window, keep_grid: bool
+    ) -> list[DatedEvent]:
+        """Mixtures of several solutions, the rows of a few units drawn together."""
+        result: list[DatedEvent] = []
+        draws = self.sampler.draws
+        widest = max((len(self.units[unit].rows) for unit, _ in pairs), default=1)
+        step = max(1, _BLOCK // (draws * widest))
+        for start in range(0, len(pairs), step):
+            block = pairs[start : start + step]
+            owners, rows, cycles = [], [], []
+            for place, (unit, cycle) in enumerate(block):
+                dating = [row for row in self.units[unit].rows if event in self.rows[row].events]
+                owners += [place] * len(dating)
+                rows += dating
+                cycles += [cycle] * len(dating)
+            times = self.sampler.event_times(event, np.array(rows), np.array(cycles))
+            by_unit: dict[int, dict[int, FloatArray]] = {place: {} for place in range(len(block))}
+            for i, (place, row) in enumerate(zip(owners, rows, strict=True)):
+                by_unit[place][row] = times[i]
+            whole = np.stack(
+                [
+                    self._mixed(unit, event, by_unit[place].__getitem__)
+                    for place, (unit, _) in enumerate(block)
+                ]
+            )
+            summary = summarise(whole, window, keep_grid and event in SCATTERS)
+            alone = summarise(times, window, False)
+            for place, (unit, cycle) in enumerate(block):
+                dated = self._collect(unit, event, cycle, summary, place)
+                mine = [i for i, owner in enumerate(owners) if owner == place]
+                dated.disagreement_sigma = _disagreement(alone.quantiles[mine, 0], alone.sigma_d[mine])
+                result.append(dated)
+        return result
+
+    def _dated_after_onset(self, unit: int, event: EventName, cycle: int, window: Window) -> DatedEvent:
+        """A stage of an episode that has been seen: observed itself, or counted from the observed onset."""
         one = self.units[unit]
         episode = one.confirmed(cycle)
-        times = self.unit_times(unit, event, cycle)
+        assert episode is not None
+        seen = getattr(episode, event)
         notes: list[str] = []
-        if episode is not None and event in SCATTERS:
-            seen = getattr(episode, event)
-            if seen is not None:
-                times = self._observed_draws(seen.moment.bmjd_tdb, seen.moment.minus_d, seen.moment.plus_d)
-                notes.append(f"{event} observed" + (f" in {seen.band}" if seen.band else ""))
-            elif episode.onset is not None and event in ("maximum", "end"):
+        if seen is not None:
+            times = self._observed_draws(seen.moment.bmjd_tdb, seen.moment.minus_d, seen.moment.plus_d)
+            notes.append(f"{event} observed" + (f" in {seen.band}" if seen.band else ""))
+        else:
+            times = self.unit_times(unit, event, cycle)
+            if episode.onset is not None and event in ("maximum", "end"):
                 since = self._since_onset(unit, event, cycle)
                 if not np.all(np.isnan(since)):
                     moment = episode.onset.moment
                     times = since + self._observed_draws(moment.bmjd_tdb, moment.minus_d, moment.plus_d)
                     notes.append(COUNTED_FROM_ONSET)
-        dated = self._collect(unit, event, cycle, summarise(times[None, :], window, event in SCATTERS), 0)
-        if episode is not None and event in SCATTERS and getattr(episode, event) is not None:
-            moment = getattr(episode, event).moment
-            error_known = moment.minus_d is not None and moment.plus_d is not None
+        dated = self._collect(unit, event, cycle, summarise(times[None, :], window, True), 0)
+        if seen is not None:
+            error_known = seen.moment.minus_d is not None and seen.moment.plus_d is not None
             dated.missing = () if error_known else (f"observed {event}",)
             dated.probability = 1.0
             dated.observed = True
-        elif notes and episode is not None and episode.onset is not None:
-            moment = episode.onset.moment
-            lacking = (missing_since_onset(self.rows[row], event, moment) for row in one.rows)
+        elif notes and episode.onset is not None:
+            lacking = (missing_since_onset(self.rows[row], event, episode.onset.moment) for row in one.rows)
             dated.missing = tuple(dict.fromkeys(name for names in lacking for name in names))
         if dated.missing:
             dated.in_window = None
         dated.notes.extend(notes)
-        if len(one.rows) > 1 and not dated.observed:
-            dated.disagreement_sigma = self._disagreement(unit, event, cycle)
         return dated
-
-    def _disagreement(self, unit: int, event: EventName, cycle: int) -> float | None:
-        """Largest difference between the solutions of a mixture, in sigma of the difference, signed."""
-        at = np.array([cycle])
-        rows = [row for row in self.units[unit].rows if event in self.rows[row].events]
-        times = [self.sampler.event_times(event, np.array([row]), at)[0] for row in rows]
-        found = [(float(np.nanmedian(t)), float(np.nanstd(t))) for t in times if not np.all(np.isnan(t))]
-        tensions = [
-            (later - earlier) / math.hypot(first, second)
-            for (earlier, first), (later, second) in combinations(found, 2)
-            if math.hypot(first, second) > 0.0
-        ]
-        return max(tensions, key=abs, default=None)
 
     def _observed_draws(self, value: float, minus: float | None, plus: float | None) -> FloatArray:
         z = self.sampler.normals["recurrence"]
@@ -418,3 +458,13 @@ class Forecaster:
             in_window=np.where(sigma > 0.0, inside, certain),
             grid=normal_quantiles(mean, sigma, GRID) if event in SCATTERS else None,
         )
+
+
+def _disagreement(medians: FloatArray, sigmas_d: FloatArray) -> float | None:
+    """Largest difference between solutions, in sigma of the difference, signed; None for a single one."""
+    tensions = [
+        float((medians[later] - medians[earlier]) / math.hypot(sigmas_d[earlier], sigmas_d[later]))
+        for earlier, later in combinations(range(medians.size), 2)
+        if math.hypot(sigmas_d[earlier], sigmas_d[later]) > 0.0
+    ]
+    return max((t for t in tensions if not math.isnan(t)), key=abs, default=None)

@@ -9,7 +9,12 @@ from numpy.typing import NDArray
 
 from campaign.model.forecasts import EventName
 from campaign.model.systems import Episode
-from campaign.physics.recurrence import RecurrencePrediction, predict_recurrence
+from campaign.physics.recurrence import (
+    RecurrenceFit,
+    RecurrencePrediction,
+    fit_recurrence,
+    predict_recurrence,
+)
 from campaign.studies.rows import SCATTERS, ForecastRow
 
 FloatArray = NDArray[np.float64]
@@ -28,21 +33,28 @@ class LearnedDates:
     period_sigma_d: float | None
     rough_period_d: float
     notes: list[str] = field(default_factory=list)
+    _fits: dict[EventName, RecurrenceFit] = field(default_factory=dict, repr=False)
     _known: dict[tuple[EventName, int], RecurrencePrediction] = field(default_factory=dict, repr=False)
+    _events: tuple[EventName, ...] | None = field(default=None, repr=False)
 
     def events(self) -> tuple[EventName, ...]:
         """Events that these dates can predict."""
-        needed = 1 if self.period_sigma_d is not None else 2
-        return tuple(e for e in SCATTERS if np.unique(self.cycles[e]).size >= needed)
+        if self._events is None:
+            needed = 1 if self.period_sigma_d is not None else 2
+            self._events = tuple(e for e in SCATTERS if np.unique(self.cycles[e]).size >= needed)
+        return self._events
 
     def predict(self, event: EventName, cycle: int) -> RecurrencePrediction:
-        """The date of a cycle; each is worked out once."""
+        """The date of a cycle; the line is fitted once and each cycle worked out once."""
         known = self._known.get((event, cycle))
         if known is None:
-            known = self._known[event, cycle] = predict_recurrence(
-                self.cycles[event], self.dates_d[event], self.sigmas_d[event], cycle, self.period_d,
-                self.period_sigma_d,
-            )  # fmt: skip
+            fit = self._fits.get(event)
+            if fit is None:
+                fit = self._fits[event] = fit_recurrence(
+                    self.cycles[event], self.dates_d[event], self.sigmas_d[event], self.period_d,
+                    self.period_sigma_d,
+                )  # fmt: skip
+            known = self._known[event, cycle] = fit.at(cycle)
         return known
 
     def predict_lag(self, event: EventName) -> RecurrencePrediction | None:

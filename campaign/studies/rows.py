@@ -86,6 +86,7 @@ class ForecastRow:
     period_limit: Limit | None = None
     notes: list[str] = field(default_factory=list)
     assumptions: list[str] = field(default_factory=list)
+    _unknown: dict[EventName, tuple[str, ...]] = field(default_factory=dict, repr=False)
 
     @property
     def mark(self) -> str:
@@ -94,13 +95,19 @@ class ForecastRow:
     def missing_errors(self, event: EventName, cycle: int) -> list[str]:
         """Names of the quantities whose unknown error leaves this date without an interval."""
         missing = []
-        for name in self.events.get(event, ()):
-            _, minus, plus = self.values[name]
-            if minus is None or plus is None:
-                if name == "period_d" and cycle == self.epoch_cycle and not self._needs_period(event):
-                    continue
-                missing.append(SPOKEN[name])
+        for name in self._without_error(event):
+            if name == "period_d" and cycle == self.epoch_cycle and not self._needs_period(event):
+                continue
+            missing.append(SPOKEN[name])
         return missing
+
+    def _without_error(self, event: EventName) -> tuple[str, ...]:
+        known = self._unknown.get(event)
+        if known is None:
+            needed = ((name, self.values[name]) for name in self.events.get(event, ()))
+            known = tuple(name for name, (_, minus, plus) in needed if minus is None or plus is None)
+            self._unknown[event] = known
+        return known
 
     def _needs_period(self, event: EventName) -> bool:
         """Whether the period enters even in the cycle of the epoch: as a share of it, or in the size."""

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from campaign.physics.intervals import PROBABILITIES, row_quantiles
+from campaign.physics.recurrence import RecurrencePrediction
 
 FloatArray = NDArray[np.float64]
 
@@ -79,6 +80,37 @@ def summarise(times: FloatArray, window: Window, keep_grid: bool) -> Summary:
         probability=counts / draws,
         in_window=inside,
         grid=row_quantiles(ordered, counts, GRID) if keep_grid else None,
+    )
+
+
+def summarise_recurrence(prediction: RecurrencePrediction, window: Window) -> Summary:
+    """The same of a date learned from episodes, whose distribution is known without draws.
+
+    Parameters
+    ----------
+    prediction : RecurrencePrediction
+        A mixture of normals, days (``bmjd_tdb``).
+    window : Window
+        For the probability inside it.
+
+    Returns
+    -------
+    Summary
+        One row.
+
+    Notes
+    -----
+    Accuracy: 0.3 % of the width of the 95 % interval, from the tabulated distribution function.
+
+    Source: see ``campaign.physics.recurrence``.
+    """
+    inside = prediction.share_before(window.end) - prediction.share_before(window.start)
+    return Summary(
+        quantiles=prediction.quantiles_d(PROBABILITIES)[None, :],
+        sigma_d=np.array([prediction.sigma_d]),
+        probability=np.ones(1),
+        in_window=np.array([inside]),
+        grid=prediction.quantiles_d(GRID)[None, :],
     )
 
 

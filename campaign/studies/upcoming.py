@@ -161,18 +161,21 @@ def _is_listed(
     if event.event == "onset" and state is not None and high < question.start:
         recent = question.as_of - high < KEEP_LISTED_D
         if state.status in ("under way", "suspected", "late"):
-            return _is_latest(event, states, question)
-        return state.status == "unseen" and recent and _is_latest(event, states, question)
+            return _is_latest(event, states)
+        return state.status == "unseen" and recent and _is_latest(event, states)
     return False
 
 
-def _is_latest(
-    event: DatedEvent, states: Mapping[tuple[int, int | None], OnsetState], question: Question
-) -> bool:
+def _is_latest(event: DatedEvent, states: Mapping[tuple[int, int | None], OnsetState]) -> bool:
     """No later cycle of the same unit has anything but 'expected' to say."""
     assert event.cycle is not None
-    later = (s for (u, c), s in states.items() if u == event.unit and c is not None and c > event.cycle)
-    return all(s.status in ("expected", "phase lost") for s in later)
+    # Cycles of a unit are dated without gaps.
+    cycle = event.cycle + 1
+    while (state := states.get((event.unit, cycle))) is not None:
+        if state.status not in ("expected", "phase lost"):
+            return False
+        cycle += 1
+    return True
 
 
 def with_disagreement(events: Sequence[EventForecast]) -> list[EventForecast]:
