@@ -32,7 +32,16 @@ def main() -> NoReturn:
     for stream in (sys.stdout, sys.stderr):
         if hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="backslashreplace")  # a narrow locale never stops an answer
+    sys.argv[1:] = [_as_typed(word) for word in sys.argv[1:]]
     sys.exit(run(sys.argv[1:]))
+
+
+def _as_typed(word: str) -> str:
+    """A word of the command line in UTF-8, which a narrow locale had left undecoded."""
+    try:
+        return os.fsencode(word).decode("utf-8")
+    except UnicodeError:
+        return word
 
 
 def run(argv: Sequence[str], root: LazyGroup | None = None) -> int:

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from campaign import settings
-from campaign.errors import Declined
+from campaign.errors import Declined, UsageRefused
 from campaign.output.safe import visible
 
 if TYPE_CHECKING:
@@ -64,8 +64,34 @@ DryRunOption = Annotated[
 
 
 def database(option: str | None) -> str:
-    """Where the database is, as a path or URL."""
+    """Where the database is, as a path or URL.
+
+    Raises
+    ------
+    UsageRefused
+        When ``--db`` was given without a name, as an unset variable of a script would: falling back to
+        another database would write to the wrong one.
+    """
+    if option is not None and not option.strip():
+        raise UsageRefused(
+            "--db names no database.",
+            why="Its value is empty.",
+            hint="Give a path or URL, for example --db campaign.db, or leave --db out.",
+            code="database-unnamed",
+        )
     return settings.database_location(option, os.environ)
+
+
+def refuse_with_sample(db: str | None, known_at: str | None = None) -> None:
+    """The sample campaign is no database and nobody entered it: these options would be passed over."""
+    for name, value in (("--db", db), ("--known-at", known_at)):
+        if value is not None:
+            raise UsageRefused(
+                f"{name} does not go with --sample.",
+                why="The sample campaign is made anew each time, without any database.",
+                hint="Leave one of them out; to keep the sample in a database: campaign begin --sample.",
+                code="sample-alone",
+            )
 
 
 def observer(option: str | None) -> str:
@@ -152,7 +178,7 @@ def stamp(observer_option: str | None) -> Stamp:
 
 def command_typed() -> str:
     """The command as typed, without what could be a password."""
-    words = ["campaign", *sys.argv[1:]]
+    words = ["campaign", *(visible(word) for word in sys.argv[1:])]
     return shlex.join("(database URL)" if "://" in word else word for word in words)[:2000]
 
 

@@ -34,6 +34,7 @@ def ephemeris(
 
     asked = clock_instant(as_of, "--as-of")
     if sample:
+        common.refuse_with_sample(db)
         campaign = watch.load_sample_campaign([system])
     else:
         campaign = watch.load_campaign(common.database(db), [system], None, asked)

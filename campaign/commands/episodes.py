@@ -8,7 +8,7 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import plain
+from campaign.commands.parsing import plain, whole_number
 
 Text = str | None
 
@@ -31,10 +31,8 @@ def add(
     quiet: QuietOption = False,
 ) -> None:
     """Add a confirmed episode with the dates known of it."""
-    from campaign.commands.solution import _whole
     from campaign.model.systems import Episode
     from campaign.reading.instants import read_instant
-    from campaign.reading.numbers import read_number
     from campaign.studies import episodes as study
 
     how = plain(method, "--method", 80)
@@ -47,7 +45,7 @@ def add(
     draft = Episode(
         id=0,
         system_id=0,
-        cycle=None if cycle is None else _whole(read_number(cycle, "--cycle")),
+        cycle=None if cycle is None else whole_number(cycle, "--cycle", 1_000_000, 11),
         source=plain(source, "--source", 400) or "",
         note=plain(note, "--note", 2000) or "",
     )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Annotated, Any
 
 import typer
@@ -50,11 +51,17 @@ def photometry(
     from campaign.reading.values import read_assignment
 
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
+
+    def magnitude(text: str, name: str = "--mag") -> dict[str, Any]:
+        return limited(text, "mag", name, limit_sigma, low=-30.0, high=40.0)
+
     pairs = [read_assignment(text) for text in values or []]
     if band is not None or mag is not None or not pairs:
-        pairs.insert(0, (_ask(band, "--band", "Band", "K"), _ask(mag, "--mag", "Magnitude", "7.31±0.03")))
+        asked = _ask(band, "--band", "Band", "K", lambda text: plain(text, "--band", 24))
+        pairs.insert(0, (asked, _ask(mag, "--mag", "Magnitude", "7.31±0.03", magnitude)))
+    _each_band_once([name for name, _ in pairs])
     drafts = [
-        limited(text, "mag", f"{name} magnitude", limit_sigma, low=-30.0, high=40.0)
+        magnitude(text, f"{name} magnitude")
         | {
             "kind": "photometry",
             "band": plain(name, "--band", 24),
@@ -91,8 +98,12 @@ def flux(
     from campaign.reading.values import read_measured_or_bound
 
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
-    text = _ask(value, "--value", "Flux with its unit", "2.3±0.2 mJy")
+    band, frequency, energy = _where_in_the_spectrum(band, frequency, energy)
     unit = "erg/s/cm2" if energy is not None else "jy"
+    example = "(4.1±0.3)e-12 erg/s/cm2" if energy is not None else "2.3±0.2 mJy"
+    text = _ask(
+        value, "--value", "Flux with its unit", example, lambda t: limited(t, unit, "--value", limit_sigma)
+    )
     wave = measured(frequency, "ghz", "--frequency", low=0.0, low_open=True)
     span = read_measured_or_bound(energy, "kev", "--energy", low=0.0, low_open=True) if energy else None
     if energy is not None and not isinstance(span, Range):
@@ -138,12 +149,17 @@ def velocity(
 ) -> None:
     """Log a radial velocity of one star."""
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
+
+    def of(text: str) -> str | None:
+        return one_of(text, ("A", "B"), "--star")
+
+    def speed(text: str) -> Any:
+        return measured(text, "kms", "--velocity", low=-1e5, high=1e5)
+
     draft = {
         "kind": "velocity",
-        "star": one_of(_ask(star, "--star", "Star (A or B)", "A"), ("A", "B"), "--star"),
-        "value": measured(
-            _ask(value, "--velocity", "Velocity", "-45.2±3.1 km/s"), "kms", "--velocity", low=-1e5, high=1e5
-        ),
+        "star": of(_ask(star, "--star", "Star (A or B)", "A", of)),
+        "value": speed(_ask(value, "--velocity", "Velocity", "-45.2±3.1 km/s", speed)),
         "unit": "kms",
         "species": plain(species, "--species", 60),
     }
@@ -170,10 +186,14 @@ def line(
 ) -> None:
     """Log the equivalent width of a line."""
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
+
+    def strength(text: str) -> Any:
+        return measured(text, "angstrom", "--width")
+
     draft = {
         "kind": "line",
         "species": plain(_ask(species, "--species", "Species", "C III 5696"), "--species", 60),
-        "value": measured(_ask(width, "--width", "Equivalent width", "-12.4±0.5 A"), "angstrom", "--width"),
+        "value": strength(_ask(width, "--width", "Equivalent width", "-12.4±0.5 A", strength)),
         "unit": "angstrom",
         "star": one_of(star, ("A", "B"), "--star"),
     }
@@ -201,15 +221,18 @@ def position(
     """Log the position of star B relative to star A."""
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
     rho = measured(correlation, "", "--correlation", low=-1.0, high=1.0, low_open=True, high_open=True)
+
+    def apart(text: str) -> Any:
+        return measured(text, "mas", "--separation", low=0.0)
+
+    def towards(text: str) -> Any:
+        return measured(text, "deg", "--angle", low=-360.0, high=360.0)
+
     draft = {
         "kind": "position",
-        "value": measured(
-            _ask(separation, "--separation", "Separation", "12.1±0.3 mas"), "mas", "--separation", low=0.0
-        ),
+        "value": apart(_ask(separation, "--separation", "Separation", "12.1±0.3 mas", apart)),
         "unit": "mas",
-        "position_angle_deg": measured(
-            _ask(angle, "--angle", "Position angle", "143±2 deg"), "deg", "--angle", low=-360.0, high=360.0
-        ),
+        "position_angle_deg": towards(_ask(angle, "--angle", "Position angle", "143±2 deg", towards)),
         "correlation": rho.value if rho is not None else None,
     }
     _log(shared, [draft], db, json, quiet)
@@ -242,15 +265,13 @@ def shell(
     """Log the radius of a dust shell in an image."""
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
     scale = measured(plate_scale_error, "fraction", "--plate-scale-error", low=0.0, high=1.0)
+
+    def size(text: str) -> Any:
+        return measured(text, "arcsec", "--radius", low=0.0, low_open=True)
+
     draft = {
         "kind": "shell",
-        "value": measured(
-            _ask(radius, "--radius", "Radius", "1.20±0.05 arcsec"),
-            "arcsec",
-            "--radius",
-            low=0.0,
-            low_open=True,
-        ),
+        "value": size(_ask(radius, "--radius", "Radius", "1.20±0.05 arcsec", size)),
         "unit": "arcsec",
         "position_angle_deg": measured(angle, "deg", "--angle", low=-360.0, high=360.0),
         "feature": plain(feature, "--feature", 60),
@@ -306,19 +327,62 @@ def remark(
 # ------------------------------------------------------------------------------------------ helpers
 
 
-def _ask(value: str | None, name: str, question: str, example: str) -> str:
-    """The option, or an answer at the terminal; in a script a usage error."""
+def _ask(
+    value: str | None, name: str, question: str, example: str, check: Callable[[str], object] | None = None
+) -> str:
+    """The option, or an answer at the terminal; in a script a usage error.
+
+    An answer that ``check`` refuses is asked for again; an option that it refuses ends the command later.
+    """
     if value is not None:
         return value
-    if common.asks_questions():
+    if not common.asks_questions():
+        raise UsageRefused(
+            f"{name} is missing.",
+            why="It cannot be asked for: there is no terminal.",
+            hint=f'For example {name} "{example}".' if name.startswith("-") else f'For example "{example}".',
+            details={"missing": name},
+        )
+    while True:
         answer: str = typer.prompt(f"{question} (as {example})", err=True)
+        try:
+            if check is not None:
+                check(answer)
+        except InputRefused as problem:
+            common.tell(f"{problem.message} {problem.why}")
+            continue
         return answer
-    raise UsageRefused(
-        f"{name} is missing.",
-        why="It cannot be asked for: there is no terminal.",
-        hint=f'For example {name} "{example}".' if name.startswith("-") else f'For example "{example}".',
-        details={"missing": name},
-    )
+
+
+def _when(at: str | None) -> str:
+    """The instant as typed; somebody at a terminal may mean now."""
+    from campaign.reading.instants import read_instant
+
+    if at is not None or not common.asks_questions():
+        return _ask(at, "--at", "When, UTC", "2031-04-07T03:12:10Z")
+    while True:
+        answer = typer.prompt(
+            "When, UTC (as 2031-04-07T03:12:10Z; empty for now)", default="", show_default=False, err=True
+        )
+        try:
+            read_instant(answer or common.now_iso())
+        except InputRefused as problem:
+            common.tell(f"{problem.message} {problem.why}")
+            continue
+        return answer or common.now_iso()
+
+
+def _where_in_the_spectrum(
+    band: str | None, frequency: str | None, energy: str | None
+) -> tuple[str | None, str | None, str | None]:
+    """Band, frequency and energy range of a flux, asked for at a terminal when none was given."""
+    if not (band is None and frequency is None and energy is None and common.asks_questions()):
+        return band, frequency, energy
+    answer = typer.prompt("Band, frequency or energies (as N, 8.4 GHz or 0.5..10 keV)", err=True)
+    unit = answer.casefold()
+    if unit.endswith("hz"):
+        return None, answer, None
+    return (None, None, answer) if unit.endswith("ev") else (answer, None, None)
 
 
 def _shared(
@@ -334,7 +398,7 @@ def _shared(
     """What every kind of observation shares, asked for where it is missing."""
     bare = system is None and common.asks_questions()
     name = _ask(system, "SYSTEM", "System", "Lantern 3")
-    when = _ask(at, "--at", "When, UTC", "2031-04-07T03:12:10Z")
+    when = _when(at)
     if bare and site is None:
         site = typer.prompt("Site (empty for none)", default="", show_default=False, err=True) or None
     return {
@@ -347,6 +411,21 @@ def _shared(
         "quality": one_of(quality, ("good", "doubtful", "bad"), "--quality") or "good",
         "text": plain(note, "--note", 2000) or "",
     }
+
+
+def _each_band_once(bands: list[str]) -> None:
+    """Two magnitudes of one band at one instant are most likely a slip of the fingers."""
+    seen: set[str] = set()
+    for band in bands:
+        if band in seen:
+            raise InputRefused(
+                f"The band {band} is given twice.",
+                why="One line holds one magnitude a band; the second would stand against the first.",
+                hint="For example J=8.91±0.03 K=7.31±0.03, and a second point with its own --at.",
+                code="band-repeated",
+                details={"band": band},
+            )
+        seen.add(band)
 
 
 def _log(

@@ -24,7 +24,8 @@ def period(text: str | None) -> Measured | Limit | Range | None:
         return None
     from campaign.reading.values import read_measured_or_bound
 
-    return read_measured_or_bound(text, "d", "--period", low=0.0, low_open=True)
+    # From stars that all but touch to orbits that no observer will see closed.
+    return read_measured_or_bound(text, "d", "--period", low=0.01, high=3.6525e9)
 
 
 def elements_instant(text: str | None, name: str) -> TypedInstant | None:
@@ -85,12 +86,15 @@ def limited(text: str, unit: str, name: str, limit_sigma: str | None, **domain: 
     return {"value": value, "unit": unit}
 
 
+MOST_SHELLS = 10_000
+
+
 def shell_index(text: str) -> int:
     """The index of a shell: 1 for the youngest visible."""
     from campaign.reading.numbers import read_number
 
     value = read_number(text, "--index")
-    if value != int(value) or value < 1:
+    if value != int(value) or not 1 <= value <= MOST_SHELLS:
         raise InputRefused(
             f"A shell cannot have the index {text}.",
             why="The youngest visible shell has index 1, the next 2, and so on.",
@@ -98,6 +102,36 @@ def shell_index(text: str) -> int:
             code="index-refused",
         )
     return int(value)
+
+
+def whole_number(text: str, name: str, limit: int, example: int) -> int:
+    """A whole number no farther from zero than ``limit``."""
+    from campaign.reading.numbers import read_number
+
+    value = read_number(text, name)
+    if value == int(value) and abs(value) <= limit:
+        return int(value)
+    raise InputRefused(
+        f"{name} {text} cannot be.",
+        why=f"It is a whole number from {-limit} to {limit}.",
+        hint=f"For example {name} {example}.",
+        code="out-of-range",
+    )
+
+
+def plain_number(text: str | None, unit: str, name: str, **domain: Any) -> float | None:
+    """A number with an optional unit, for what is kept without an error; an error given is refused."""
+    value = measured(text, unit, name, **domain)
+    if value is None:
+        return None
+    if value.error_known:
+        raise InputRefused(
+            f"{name} takes no error.",
+            why=f'"{text}" has one, and it would be lost.',
+            hint=f"For example {name} {value.value:g}.",
+            code="error-not-kept",
+        )
+    return value.value
 
 
 def plain(text: str | None, name: str, longest: int = 200) -> str | None:

@@ -8,11 +8,12 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import measured, plain
+from campaign.commands.parsing import measured, plain, plain_number
 from campaign.errors import UsageRefused
 
 System = Annotated[str, typer.Argument(metavar="SYSTEM", help="Name or alias.")]
 Text = str | None
+_CENTURY_D = 36_525.0
 
 
 def set_(
@@ -57,7 +58,7 @@ def set_(
     from campaign.studies import rules as study
 
     spread = {
-        name: _days(text if text is not None else scatter, "--scatter")
+        name: _scatter_d(name, text, scatter)
         for name, text in (("onset", scatter_onset), ("maximum", scatter_maximum), ("end", scatter_end))
     }
     kind, fields = _kind(
@@ -117,17 +118,18 @@ def _values(kind: str, fields: tuple[Any, ...]) -> dict[str, Any]:
             "flow_speed_kms": measured(
                 speed, "kms", "--flow-speed", low=0.0, low_open=True, high=299_792.458
             ),
-            "maximum_lag_d": measured(lag, "d", "--maximum-lag"),
+            "maximum_lag_d": measured(lag, "d", "--maximum-lag", low=-_CENTURY_D, high=_CENTURY_D),
         }
     if kind == "learned":
         return {}
-    unit, domain = ("", {"low": -0.5, "high": 1.0}) if kind == "phase" else ("d", {})
+    unit, low, high = ("", -0.5, 1.0) if kind == "phase" else ("d", -_CENTURY_D, _CENTURY_D)
     return {
-        stage: measured(text, unit, f"--{kind}-{stage}", **domain)
+        stage: measured(text, unit, f"--{kind}-{stage}", low=low, high=high)
         for stage, text in zip(("onset", "maximum", "end"), fields, strict=True)
     }
 
 
-def _days(text: str | None, name: str) -> float | None:
-    value = measured(text, "d", name, low=0.0)
-    return None if value is None else value.value
+def _scatter_d(stage: str, own: str | None, shared: str | None) -> float | None:
+    """The scatter of one stage: its own where it has one, else that of all three."""
+    text, name = (own, f"--scatter-{stage}") if own is not None else (shared, "--scatter")
+    return plain_number(text, "d", name, low=0.0, high=_CENTURY_D)

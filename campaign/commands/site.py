@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from difflib import get_close_matches
 from typing import Annotated
 
 import typer
@@ -9,6 +10,7 @@ import typer
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
 from campaign.commands.parsing import measured, plain
+from campaign.errors import InputRefused
 
 Text = str | None
 
@@ -39,6 +41,7 @@ def add(
     span = (
         read_measured_or_bound(elongation, "deg", "--elongation", low=0.0, high=180.0) if elongation else None
     )
+    _one_kind(name, elongation, latitude, longitude, height, horizon)
     metres = measured(height, "m", "--height", low=-500.0, high=9000.0)
     lowest = measured(horizon, "deg", "--horizon", low=-5.0, high=90.0)
     site = Site(
@@ -51,10 +54,38 @@ def add(
         horizon_deg=None if lowest is None else lowest.value,
         elongation_min_deg=span.low if isinstance(span, Range) else None,
         elongation_max_deg=span.high if isinstance(span, Range) else None,
-        time_zone=plain(time_zone, "--time-zone", 60),
+        time_zone=_known_zone(time_zone),
         notes=plain(note, "--note", 2000) or "",
     )
     common.report(study.add_site(common.database(db), common.stamp(observer), site), json=json, quiet=quiet)
+
+
+def _one_kind(name: str, elongation: str | None, *of_the_ground: str | None) -> None:
+    if elongation is not None and any(text is not None for text in of_the_ground):
+        raise InputRefused(
+            f"The site {name} is given as two things at once.",
+            why="It is either a place on the ground or a space platform, which has no latitude.",
+            hint="Leave out --elongation for the ground; give it alone for a space platform.",
+            code="site-kind-unclear",
+        )
+
+
+def _known_zone(name: str | None) -> str | None:
+    """The name of a time zone, as far as this machine can tell."""
+    import zoneinfo
+
+    zone = plain(name, "--time-zone", 60)
+    known = zoneinfo.available_timezones()
+    if zone is None or not known or zone in known:
+        return zone
+    near = get_close_matches(zone, known, n=3, cutoff=0.5)
+    raise InputRefused(
+        f"There is no time zone '{zone}'.",
+        why="Zones are named by region and place, or by their offset, whose sign is turned round.",
+        hint=f"For example {' or '.join([*near, 'Etc/GMT+4'])}; or leave it out.",
+        code="time-zone-unknown",
+        details={"nearest": near},
+    )
 
 
 def list_(db: DbOption = None, json: JsonOption = False) -> None:

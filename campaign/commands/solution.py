@@ -8,7 +8,7 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import elements_instant, measured, one_of, period, plain
+from campaign.commands.parsing import elements_instant, measured, one_of, period, plain, whole_number
 from campaign.errors import InputRefused, UsageRefused
 
 System = Annotated[str, typer.Argument(metavar="SYSTEM", help="Name or alias.")]
@@ -59,7 +59,6 @@ def add(
 ) -> None:
     """Add a set of orbital elements to a system."""
     from campaign.model.systems import EPOCH_MARKS, Solution
-    from campaign.reading.numbers import read_number
     from campaign.studies import solutions as study
 
     star = one_of(omega_of, ("A", "B"), "--omega-of")
@@ -96,7 +95,9 @@ def add(
         draft,
         elements_instant(epoch, "--epoch"),
         elements_instant(data_until, "--data-until"),
-        None if published_cycle is None else _whole(read_number(published_cycle, "--published-cycle")),
+        None
+        if published_cycle is None
+        else whole_number(published_cycle, "--published-cycle", 1_000_000, 11),
         adopt,
         tuple(_correlation(text) for text in correlation),
     )
@@ -166,15 +167,8 @@ def _semi_major_axis(text: str | None):  # type: ignore[no-untyped-def]
     return measured(text, "au", "--a", low=0.0, low_open=True), None
 
 
-def _whole(value: float) -> int:
-    if value != int(value):
-        raise InputRefused(
-            f"{value:g} is no cycle number.",
-            why="Cycles are counted in whole numbers.",
-            hint="For example --published-cycle 11.",
-            code="cycle-refused",
-        )
-    return int(value)
+def _published(cycle: str | None) -> int | None:
+    return None if cycle is None else whole_number(cycle, "--published-cycle", 1_000_000, 11)
 
 
 def _weighted(text: str) -> tuple[str, float | None]:

@@ -60,6 +60,7 @@ def upcoming(
     names = system or None
     asked = clock_instant(as_of, "--as-of")
     if sample:
+        common.refuse_with_sample(db, known_at=known_at)
         campaign = watch.load_sample_campaign(names)
     else:
         entered = clock_instant(known_at, "--known-at")

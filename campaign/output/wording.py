@@ -89,12 +89,7 @@ def yearly(event: EventForecast) -> str:
     """What stands in place of a date when the phase is lost or the date is unknown."""
     if event.probability_per_yr is None:
         return "no date"
-    return f"{percent(event.probability_per_yr)}/yr" if event.probability_per_yr < 1.0 else _often(event)
-
-
-def _often(event: EventForecast) -> str:
-    assert event.probability_per_yr is not None
-    return f"{event.probability_per_yr:.3g}/yr"
+    return f"{percent(event.probability_per_yr)}/yr" if event.probability_per_yr < 1.0 else "each year"
 
 
 def occasion(event: EventForecast) -> str:

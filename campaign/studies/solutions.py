@@ -10,7 +10,7 @@ import numpy as np
 
 from campaign.catalogue import solutions as kept
 from campaign.catalogue import store, systems
-from campaign.errors import InputRefused
+from campaign.errors import Conflict, InputRefused
 from campaign.model.instants import Moment, TypedInstant
 from campaign.model.kept import Kept, Stamp
 from campaign.model.measured import Covariance, Measured
@@ -98,17 +98,25 @@ def add_solution(
             epoch_cycle=cycle,
             published_cycle_offset=None if published_cycle is None else published_cycle - (cycle or 0),
         )
+        others = [s for s in known if s.adopted]
+        if adopt and others:
+            raise _already_adopted(
+                system, others, f"Add it without --adopt, then: {_adopt_line(system, solution)} --instead"
+            )
         solution_id = kept.add_solution(writing, solution)
         if adopt:
             kept.adopt_alone(writing, solution_id)
             _anchor(writing, system, replace(solution, id=solution_id))
         text = describe_solution(solution)
         writing.summarise(f"added solution {text} to {system.name}" + (" and adopted it" if adopt else ""))
-    lines = [f"{system.name}: added solution {text}" + (", adopted" if adopt else ", not adopted")]
+    period = text.removeprefix(f"{solution.label}: ")
+    lines = [
+        f"{system.name}: added '{solution.label}', {period}" + (", adopted" if adopt else ", not adopted")
+    ]
     if moment is not None:
         lines.append(f"epoch ({solution.epoch_marks}) understood as {spoken_moment(moment)}")
     if not adopt:
-        lines.append(f'adopt it with: campaign solution adopt "{system.name}" "{solution.label}"')
+        lines.append(f"adopt it with: {_adopt_line(system, solution)}" + (" --instead" if others else ""))
     data = {
         "system": system.name,
         "solution": solution.label,
@@ -202,6 +210,18 @@ def adopt_solutions(
         found = {label: kept.find_solution(writing.connection, system.id, label) for label in weights}
         if len(found) == 1 and next(iter(weights.values())) is None:
             solution = next(iter(found.values()))
+            others = [
+                s
+                for s in kept.solutions_of(writing.connection, system.id)
+                if s.adopted and s.id != solution.id
+            ]
+            if others and not instead:
+                shares = " ".join(f'"{s.label}=0.5"' for s in (others[0], solution))
+                raise _already_adopted(
+                    system,
+                    others,
+                    f"Replace it: {_adopt_line(system, solution)} --instead; or weigh them, as {shares}.",
+                )
             (kept.adopt_instead if instead else kept.adopt_alone)(writing, solution.id)
             _anchor(writing, system, solution)
             text = f"adopted '{solution.label}' alone"
@@ -220,6 +240,21 @@ def adopt_solutions(
         changed = writing.changed
     data = {"system": system.name, "adopted": dict(weights)}
     return Kept("solution-adopt", changed, (f"{system.name}: {text}",), data)
+
+
+def _adopt_line(system: System, solution: Solution) -> str:
+    return f'campaign solution adopt "{system.name}" "{solution.label}"'
+
+
+def _already_adopted(system: System, others: Sequence[Solution], hint: str) -> Conflict:
+    labels = ", ".join(f"'{s.label}'" for s in others)
+    return Conflict(
+        f"{system.name} is already forecast from {labels}.",
+        why="Two solutions stand side by side only with weights.",
+        hint=hint,
+        code="already-adopted",
+        details={"adopted": [s.label for s in others]},
+    )
 
 
 def _is_clock_reading(epoch: TypedInstant) -> bool:

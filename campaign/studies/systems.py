@@ -6,7 +6,7 @@ from dataclasses import replace
 from typing import Any
 
 from campaign.catalogue import observations, records, store, systems
-from campaign.errors import Conflict
+from campaign.errors import Conflict, NotFound
 from campaign.model.kept import Kept, Stamp
 from campaign.model.records import SystemRecord
 from campaign.model.shown import ShownSystem
@@ -271,8 +271,8 @@ def require_solution(record: SystemRecord, label: str | None) -> Solution:
 
     Raises
     ------
-    Conflict
-        If there is none to use.
+    NotFound, Conflict
+        No solution of that label; none adopted to take in its place.
 
     Notes
     -----
@@ -283,7 +283,7 @@ def require_solution(record: SystemRecord, label: str | None) -> Solution:
             if solution.label.casefold() == label.casefold():
                 return solution
         labels = ", ".join(f"'{s.label}'" for s in record.solutions) or "none at all"
-        raise Conflict(
+        raise NotFound(
             f"{record.system.name} has no solution '{label}'.",
             why=f"Its solutions are: {labels}.",
             hint=f'See them with: campaign solution list "{record.system.name}"',
@@ -292,9 +292,13 @@ def require_solution(record: SystemRecord, label: str | None) -> Solution:
     for solution in record.solutions:
         if solution.adopted:
             return solution
+    name = record.system.name
+    labels = ", ".join(f"'{s.label}'" for s in record.solutions)
     raise Conflict(
-        f"{record.system.name} has no adopted solution.",
-        why="A table needs elements, and none has been chosen.",
-        hint=f'Adopt one with: campaign solution adopt "{record.system.name}" LABEL',
+        f"{name} has no adopted solution.",
+        why=f"None of its solutions has been chosen: {labels}." if labels else "It has no solution at all.",
+        hint=f'Name one of them, or adopt it: campaign solution adopt "{name}" "{record.solutions[0].label}"'
+        if labels
+        else f'Add one: campaign solution add "{name}" --period ... --epoch ... --adopt',
         code="no-adopted-solution",
     )

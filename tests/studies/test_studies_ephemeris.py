@@ -10,7 +10,7 @@ import pytest
 import rebound
 from studies_examples import CLOCK, exact, moment, record, solution
 
-from campaign.errors import Conflict, InputRefused
+from campaign.errors import Conflict, InputRefused, NotFound
 from campaign.model.measured import Limit, Measured, Range
 from campaign.model.systems import Star
 from campaign.reading.instants import read_instant
@@ -247,7 +247,7 @@ def test_asked_for_nothing_in_particular_it_covers_one_period_from_today():
 def test_another_solution_may_be_named_and_an_unknown_one_is_refused():
     _, found = ask(label="ORBIT 2009")
     assert found.solution == "orbit 2009"
-    with pytest.raises(Conflict) as refused:
+    with pytest.raises(NotFound) as refused:
         ask(label="orbit 1066")
     assert refused.value.code == "solution-not-found" and "'orbit 2024'" in refused.value.why
     with pytest.raises(Conflict) as refused:
