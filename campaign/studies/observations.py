@@ -8,9 +8,11 @@ from dataclasses import dataclass, replace
 from sqlalchemy import Connection
 
 from campaign.catalogue import listing, sites, store, systems
+from campaign.model.bands import BandUse
 from campaign.model.history import ListedObservation, ObservationList
 from campaign.model.instants import TypedInstant
 from campaign.physics.timescales import utc_iso
+from campaign.studies.bands import band_warnings, mixed_bands
 from campaign.studies.instants import axis_instant
 
 
@@ -58,7 +60,7 @@ def list_observations(db: str, wanted: Wanted, limit: int | None = None) -> Obse
     with store.reading(db) as connection:
         filters = filters_of(connection, wanted)
         rows, found = listing.find_observations(connection, filters, limit)
-        warnings = [] if found else _nothing_found(connection, filters)
+        warnings = _mixed(rows) if found else _nothing_found(connection, filters)
     return ObservationList(with_utc(rows), found, warnings=tuple(warnings))
 
 
@@ -145,6 +147,16 @@ def with_utc(rows: Sequence[ListedObservation]) -> tuple[ListedObservation, ...]
 
 def _edge(instant: TypedInstant | None, side: float) -> float | None:
     return None if instant is None else axis_instant(instant) + side * instant.width_d
+
+
+def _mixed(rows: Sequence[ListedObservation]) -> list[str]:
+    """Bands of the list in which magnitudes of more than one photometric system stand side by side."""
+    uses = (
+        BandUse(row.system, row.observation.band or "", row.observation.photometric_system, 1)
+        for row in rows
+        if row.observation.kind == "photometry" and row.in_use
+    )
+    return list(band_warnings([mixed for mixed in mixed_bands(uses) if mixed.photometric_systems]))
 
 
 def _nothing_found(connection: Connection, filters: listing.Filters) -> list[str]:

@@ -5,11 +5,15 @@ Common practice, no source: K of one photometric system differs from K of anothe
 
 import numpy as np
 import pytest
-from studies_examples import YEAR_D, light_curve, record
+from studies_examples import CLOCK, NOW, YEAR_D, exact, light_curve, moment, record, stamp, system
 
+from campaign.catalogue import observations, store, systems
 from campaign.model.bands import BandUse, MixedBand
+from campaign.model.observations import Observation
 from campaign.studies.bands import band_warnings, mixed_bands
+from campaign.studies.begin import begin_campaign
 from campaign.studies.judging import judge
+from campaign.studies.observations import Wanted, list_observations
 from campaign.studies.quietness import suspected_since
 
 SYSTEM = "Lantern 3"
@@ -101,3 +105,20 @@ def test_a_change_of_photometric_system_is_no_onset():
 def test_names_that_differ_in_case_share_a_level():
     curve, _ = half_and_half("2MASS", "2mass", 0.0)
     assert judge(record(), curve, 60_000.0).is_quiet.all()
+
+
+def test_a_list_of_observations_warns_of_bands_that_mix_and_not_of_those_that_state_none(tmp_path):
+    path = str(tmp_path / "campaign.db")
+    begin_campaign(path, stamp())
+    with store.writing(path, at=CLOCK, who="Ida Vik", command="campaign test") as writing:
+        number = systems.add_system(writing, system())
+        for day, (band, own) in enumerate((("K", "2MASS"), ("K", "MKO"), ("L", None), ("J", "MKO"))):
+            observations.add_observation(
+                writing,
+                Observation(0, "", number, "photometry", moment(NOW + day), exact(7.0), "mag", band=band,
+                            photometric_system=own),
+            )  # fmt: skip
+    listed = list_observations(path, Wanted())
+    (told,) = listed.warnings
+    assert told.startswith("Lantern 3, band K: 2 magnitudes in different photometric systems (2MASS, MKO)")
+    assert list_observations(path, Wanted(bands=("L", "J"))).warnings == ()
