@@ -78,8 +78,8 @@ def half_and_half(first, second, shift_mag):
     times = np.arange(50_000.0, 50_000.0 + 4 * YEAR_D, 10.0)
     odd = np.arange(times.size) % 2 == 1
     mags = np.where(odd, 7.5 - shift_mag, 7.5) + 0.005 * np.sin(np.arange(times.size))
-    systems = [second if each else first for each in odd]
-    return light_curve(times.tolist(), mags.tolist(), photometric_system=systems), odd
+    stated = [second if each else first for each in odd]
+    return light_curve(times.tolist(), mags.tolist(), photometric_system=stated), odd
 
 
 def test_levels_are_taken_of_one_photometric_system_alone():
@@ -94,11 +94,11 @@ def test_a_change_of_photometric_system_is_no_onset():
     times = np.arange(50_000.0, 52_000.0, 10.0)
     late = times > 51_500.0
     mags = np.where(late, 7.3, 7.5) + 0.005 * np.sin(np.arange(times.size))
-    for systems, suspected in (
+    for stated, suspected in (
         (["MKO" if each else "2MASS" for each in late], False),
         (["2MASS"] * times.size, True),
     ):
-        judged = judge(record(), light_curve(times.tolist(), mags.tolist(), photometric_system=systems), 6e4)
+        judged = judge(record(), light_curve(times.tolist(), mags.tolist(), photometric_system=stated), 6e4)
         assert (suspected_since(judged, 51_000.0, 52_000.0) is not None) is suspected
 
 
