@@ -69,8 +69,12 @@ def export(
 
     if is_kept_file(path):
         common.confirm(f"Replace {path}?", yes=yes)
-    with outgoing_table(common.database(db), asked) as table:
-        _to_file(table, form, path, json=json, quiet=quiet)
+    try:
+        with outgoing_table(common.database(db), asked) as table:
+            _to_file(table, form, path, json=json, quiet=quiet)
+    except KeyboardInterrupt:
+        common.tell(f"Interrupted: {path} was not written, and nothing was left behind.", quiet=quiet)
+        raise
 
 
 def _asked(kind: str | None, systems: Words, chosen: dict[str, Any], also_withdrawn: bool) -> Asked:

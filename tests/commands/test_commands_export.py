@@ -187,6 +187,20 @@ def test_a_reader_that_stops_is_no_error(filled, own_database):
     assert done.stdout.endswith(("141\n", "0\n"))
 
 
+def test_an_interrupt_leaves_nothing_behind_and_says_so(run_campaign, filled, monkeypatch):
+    def interrupted(*_):
+        yield "half"
+        raise KeyboardInterrupt
+
+    (filled / "a.csv").write_text("precious")
+    monkeypatch.setattr("campaign.output.exchange.table_text", interrupted)
+    done = run_campaign("export", "systems", "--to", "a.csv", "--yes")
+    assert (done.status, done.out) == (130, "")
+    assert done.err == "Interrupted: a.csv was not written, and nothing was left behind.\n"
+    assert [path.name for path in filled.iterdir()] == ["a.csv"]
+    assert (filled / "a.csv").read_text() == "precious"
+
+
 def test_everyday_exports_load_neither_pandas_nor_astropy(filled, own_database):
     code = (
         "import sys; from campaign.__main__ import run\n"
