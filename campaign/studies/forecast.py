@@ -18,7 +18,14 @@ from campaign.studies.following import days_since_onset, missing_since_onset
 from campaign.studies.learned import LearnedDates
 from campaign.studies.rows import SCATTERS, ForecastRow
 from campaign.studies.sampling import MARK_CODES, RULE_CODES, Sampler
-from campaign.studies.summaries import GRID, Summary, Window, summarise, summarise_recurrence
+from campaign.studies.summaries import (
+    GRID,
+    Summary,
+    Window,
+    summarise,
+    summarise_observed,
+    summarise_recurrence,
+)
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
@@ -380,7 +387,7 @@ class Forecaster:
         seen = getattr(episode, event)
         notes: list[str] = []
         if seen is not None:
-            times = self._observed_draws(seen.moment.bmjd_tdb, seen.moment.minus_d, seen.moment.plus_d)
+            summary = summarise_observed(seen.moment, window)
             notes.append(f"{event} observed" + (f" in {seen.band}" if seen.band else ""))
         else:
             times = self.unit_times(unit, event, cycle)
@@ -390,7 +397,8 @@ class Forecaster:
                     moment = episode.onset.moment
                     times = since + self._observed_draws(moment.bmjd_tdb, moment.minus_d, moment.plus_d)
                     notes.append(COUNTED_FROM_ONSET)
-        dated = self._collect(unit, event, cycle, summarise(times[None, :], window, True), 0)
+            summary = summarise(times[None, :], window, True)
+        dated = self._collect(unit, event, cycle, summary, 0)
         if seen is not None:
             error_known = seen.moment.minus_d is not None and seen.moment.plus_d is not None
             dated.missing = () if error_known else (f"observed {event}",)

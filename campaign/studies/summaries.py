@@ -7,6 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from campaign.model.instants import Moment
+from campaign.model.measured import Measured
 from campaign.physics.intervals import PROBABILITIES, row_quantiles
 from campaign.physics.recurrence import RecurrencePrediction
 
@@ -111,6 +113,50 @@ def summarise_recurrence(prediction: RecurrencePrediction, window: Window) -> Su
         probability=np.ones(1),
         in_window=np.array([inside]),
         grid=prediction.quantiles_d(GRID)[None, :],
+    )
+
+
+def summarise_observed(moment: Moment, window: Window) -> Summary:
+    """The same of a date that was observed: a two-piece normal about the stated instant.
+
+    Parameters
+    ----------
+    moment : Moment
+        ``bmjd_tdb`` with its errors in days; an unknown error counts as zero and is reported elsewhere.
+    window : Window
+        For the probability inside it.
+
+    Returns
+    -------
+    Summary
+        One row.
+
+    Notes
+    -----
+    Accuracy: exact.
+
+    Source: two-piece normal with the stated value as median, see ``campaign.physics.draws``.
+    """
+    from scipy.special import ndtr, ndtri
+
+    minus, plus = moment.minus_d or 0.0, moment.plus_d or 0.0
+
+    def quantiles(shares: FloatArray) -> FloatArray:
+        z = ndtri(shares)
+        return np.asarray(moment.bmjd_tdb + np.where(z < 0.0, minus, plus) * z)[None, :]
+
+    def before(instant: float) -> float:
+        size = minus if instant < moment.bmjd_tdb else plus
+        if size == 0.0:
+            return float(instant >= moment.bmjd_tdb)
+        return float(ndtr((instant - moment.bmjd_tdb) / size))
+
+    return Summary(
+        quantiles=quantiles(PROBABILITIES),
+        sigma_d=np.array([Measured(moment.bmjd_tdb, minus, plus).sigma or 0.0]),
+        probability=np.ones(1),
+        in_window=np.array([before(window.end) - before(window.start)]),
+        grid=quantiles(GRID),
     )
 
 
