@@ -231,28 +231,29 @@ class Sampler:
         return delay - bounded if event == "onset" else delay + bounded
 
     def _a_au(self, index: IntArray, period: FloatArray) -> FloatArray:
-        given = np.array([self.rows[i].a_source == "given" for i in index])
-        if given.all():
+        sources = np.array([self.rows[i].a_source for i in index])
+        a = np.empty(period.shape)
+        for source in np.unique(sources):
+            chosen = np.flatnonzero(sources == source)
+            a[chosen] = self._a_from(str(source), index[chosen], period[chosen])
+        return a
+
+    def _a_from(self, source: str, index: IntArray, period: FloatArray) -> FloatArray:
+        """Semi-major axis of rows that all have it from the same source, au."""
+        if source == "given":
             return self.draw("a_au", index)
+        if source == "angle and distance":
+            return self.draw("a_arcsec", index) * self.draw("distance_pc", index)
         from campaign.physics import masses
 
-        a = np.empty(period.shape)
-        for position, row in enumerate(index):
-            one = np.array([row])
-            source = self.rows[row].a_source
-            if source == "given":
-                a[position] = self.draw("a_au", one)[0]
-            elif source == "angle and distance":
-                a[position] = (self.draw("a_arcsec", one) * self.draw("distance_pc", one))[0]
-            elif source == "velocities":
-                a[position] = masses.semi_major_axis_from_velocities(
-                    period[position],
-                    self.draw("eccentricity", one)[0],
-                    self.draw("k_a_kms", one)[0],
-                    self.draw("k_b_kms", one)[0],
-                    np.radians(self.draw("inclination_deg", one)[0]),
-                )
-            else:
-                total = self.draw("mass_a_msun", one)[0] + self.draw("mass_b_msun", one)[0]
-                a[position] = masses.semi_major_axis_au(period[position], total)
-        return a
+        if source == "velocities":
+            return masses.semi_major_axis_from_velocities(
+                period,
+                self.draw("eccentricity", index),
+                self.draw("k_a_kms", index),
+                self.draw("k_b_kms", index),
+                np.radians(self.draw("inclination_deg", index)),
+            )
+        return masses.semi_major_axis_au(
+            period, self.draw("mass_a_msun", index) + self.draw("mass_b_msun", index)
+        )
