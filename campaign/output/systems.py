@@ -12,7 +12,7 @@ from campaign.model.systems import DatedEvent, DustRule, Episode, Site, Solution
 from campaign.output.console import Screen
 from campaign.output.documents import document, plain
 from campaign.output.tables import Column, print_table
-from campaign.output.values import epoch, number, period_in_years, sexagesimal
+from campaign.output.values import calendar_day, dated, epoch, number, period_in_years, sexagesimal
 
 _SYSTEMS = (
     Column("system", shrinks=True, min_width=12),
@@ -116,6 +116,12 @@ def render_system(screen: Screen, shown: ShownSystem) -> None:
     screen.heading(system.name)
     where = f"{sexagesimal(system.ra_deg, hours=True)} {sexagesimal(system.dec_deg, hours=False)}"
     lines = [f"{system.state}, priority {system.priority}; {where} ICRS, epoch {system.position_epoch_jyr:g}"]
+    if system.pm_ra_cosdec_mas_yr is not None or system.pm_dec_mas_yr is not None:
+        ra, dec = (
+            "unknown" if pm is None else f"{pm:+g}".replace("-", "−")
+            for pm in (system.pm_ra_cosdec_mas_yr, system.pm_dec_mas_yr)
+        )
+        lines.append(f"proper motion {ra} mas/yr in RA times cos(dec), {dec} mas/yr in declination")
     if system.aliases:
         lines.append(f"also known as: {', '.join(system.aliases)}")
     if system.distance_pc is not None:
@@ -132,6 +138,11 @@ def render_system(screen: Screen, shown: ShownSystem) -> None:
         screen.heading("Solutions")
         print_table(screen, _SOLUTIONS, [_solution_row(s) for s in record.solutions])
     screen.line("")
+    if not record.solutions and not record.episodes:
+        screen.wrapped(
+            "No solution and no episode: nothing is forecast yet. "
+            f'Add one with: campaign solution add "{system.name}" --period ... --epoch ... --adopt'
+        )
     _render_rule_lines(screen, record.rule)
     if record.episodes:
         screen.line("")
@@ -141,8 +152,16 @@ def render_system(screen: Screen, shown: ShownSystem) -> None:
         screen.line("")
         _render_derived(screen, shown.derived)
     screen.line("")
-    counts = ", ".join(f"{n} {kind}" for kind, n in sorted(shown.observation_counts.items()))
+    counts = ", ".join(_counted(n, kind) for kind, n in sorted(shown.observation_counts.items()))
     screen.wrapped(f"Logged: {counts or 'nothing yet'}.")
+
+
+def _counted(count: int, kind: str) -> str:
+    """So many of a kind, in words."""
+    if kind == "photometry":
+        return f"{count} magnitude" + ("s" if count != 1 else "")
+    plural = {"velocity": "velocities", "flux": "fluxes"}.get(kind, kind + "s")
+    return f"{count} {kind if count == 1 else plural}"
 
 
 def _render_stars(screen: Screen, stars: Sequence[Star]) -> None:
@@ -176,7 +195,10 @@ def render_solutions(screen: Screen, record: SystemRecord) -> None:
     """The solutions of a system side by side."""
     if not record.solutions:
         name = record.system.name
-        screen.wrapped(f'{name} has no solution yet. Add one with: campaign solution add "{name}"')
+        screen.wrapped(
+            f"{name} has no solution yet. Add one with: "
+            f'campaign solution add "{name}" --period ... --epoch ... --adopt'
+        )
         return
     print_table(screen, _SOLUTIONS, [_solution_row(s) for s in record.solutions])
 
@@ -222,7 +244,12 @@ def render_solution(
 
 
 def _element_rows(solution: Solution) -> list[tuple[str, str, str]]:
-    cycle = "" if solution.epoch_cycle is None else f"cycle {solution.epoch_cycle} of the system"
+    counts = []
+    if solution.epoch_cycle is not None:
+        counts.append(f"cycle {solution.epoch_cycle} of the system")
+    if solution.published_cycle_offset is not None:
+        counts.append(f"cycle {(solution.epoch_cycle or 0) + solution.published_cycle_offset} of the source")
+    cycle = ", ".join(counts)
     typed = f"typed as {solution.epoch.text}" if solution.epoch is not None and solution.epoch.text else ""
     return [
         ("period", number(solution.period_d, "d"), period_in_years(solution.period_d)),
@@ -235,8 +262,22 @@ def _element_rows(solution: Solution) -> list[tuple[str, str, str]]:
         ("K of star B", number(solution.k_b_kms, "km/s"), ""),
         ("systemic velocity", number(solution.gamma_kms, "km/s"), ""),
         ("semi-major axis", number(solution.a_au, "au"), ""),
-        ("semi-major axis", number(solution.a_arcsec, "arcsec"), ""),
+        ("semi-major axis", number(*_small_angle(solution.a_arcsec)), ""),
+        ("data until", _until(solution), ""),
+        ("note", solution.note, ""),
     ]
+
+
+def _small_angle(angle: Measured | None) -> tuple[Measured | None, str]:
+    """An angle and its unit: below a tenth of an arcsec in mas, as it is published."""
+    if angle is None or angle.value >= 0.1:
+        return angle, "arcsec"
+    return angle.scaled(1000.0), "mas"
+
+
+def _until(solution: Solution) -> str:
+    until = solution.data_until_bmjd_tdb
+    return "" if until is None else calendar_day(until)
 
 
 def _render_derived(screen: Screen, derived: Sequence[DerivedValue]) -> None:
@@ -262,7 +303,7 @@ def render_rule(screen: Screen, name: str, rule: DustRule | None) -> None:
 
 def _render_rule_lines(screen: Screen, rule: DustRule | None) -> None:
     if rule is None:
-        screen.wrapped("No dust rule: periastron alone is forecast.")
+        screen.wrapped("No dust rule: no onset, maximum or end is forecast from the orbit.")
         return
     unit = "P" if rule.kind == "phase" else "d"
     rows = [
@@ -349,9 +390,7 @@ def _episode_row(name: str, episode: Episode) -> tuple[str, ...]:
 def _dated(event: DatedEvent | None) -> str:
     if event is None:
         return ""
-    moment = event.moment
-    text = number(Measured(moment.bmjd_tdb, moment.minus_d, moment.plus_d))
-    return f"MJD {text}" + (f" in {event.band}" if event.band else "")
+    return dated(event.moment) + (f" in {event.band}" if event.band else "")
 
 
 def episodes_json(found: Sequence[tuple[str, Episode]], as_of: str) -> str:

@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 import math
+from datetime import date, timedelta
 
 from campaign.model.instants import Moment
 from campaign.model.measured import Limit, Measured, Range
+
+_FIRST_DAY, _LAST_DAY = -678_575, 2_973_483  # 0001-01-01 and 9999-12-31
 
 
 def number(value: Measured | Limit | Range | None, unit: str = "") -> str:
@@ -46,6 +49,25 @@ def epoch(moment: Moment | None) -> str:
     if moment is None:
         return ""
     return "MJD " + number(Measured(moment.bmjd_tdb, moment.minus_d, moment.plus_d)) + " TDB"
+
+
+def calendar_day(mjd: float) -> str:
+    """The day of an MJD, for people; the MJD itself where no calendar reaches."""
+    days = math.floor(mjd)
+    if not _FIRST_DAY <= days <= _LAST_DAY:
+        return f"MJD {days}"
+    return (date(1858, 11, 17) + timedelta(days=days)).isoformat()
+
+
+def dated(moment: Moment) -> str:
+    """A dated instant by its day, with its error in days."""
+    minus, plus = moment.minus_d, moment.plus_d
+    day = calendar_day(moment.bmjd_tdb)
+    if minus is None or plus is None:
+        return f"{day} (error unknown)"
+    if minus == plus:
+        return f"{day} ± {plus:.2g} d"
+    return f"{day} +{plus:.2g} −{minus:.2g} d"
 
 
 def period_in_years(period: Measured | Limit | Range | None) -> str:

@@ -51,7 +51,7 @@ def derive(record: SystemRecord, solution: Solution) -> tuple[DerivedValue, ...]
     Kepler's third law.
     """
     inputs = _Inputs(record, solution)
-    found = [*_distance(record), *_from_angle_and_size(inputs), *_from_velocities(inputs)]
+    found = [*derive_distance(record), *_from_angle_and_size(inputs), *_from_velocities(inputs)]
     axis = _axis_au(inputs)
     if axis is not None:
         size, how, names = axis
@@ -63,6 +63,10 @@ def derive(record: SystemRecord, solution: Solution) -> tuple[DerivedValue, ...]
                 inputs.value("separation at periastron", near, "au", f"a {how} and e", (*names, "e"))
             )
     return tuple(found)
+
+
+# Sine of an inclination below which the orbit is seen face on.
+_FACE_ON = 1e-6
 
 
 class _Inputs:
@@ -87,6 +91,11 @@ class _Inputs:
     def has(self, *names: str) -> bool:
         return all(self.known[name] is not None for name in names)
 
+    def is_tilted(self) -> bool:
+        """Whether an inclination is known, and one at which velocities say something of masses."""
+        tilt = self.known["i"]
+        return tilt is not None and abs(np.sin(np.radians(tilt.value))) > _FACE_ON
+
     def draws(self, name: str) -> FloatArray:
         value = self.known[name]
         assert value is not None
@@ -102,7 +111,23 @@ class _Inputs:
         return DerivedValue(quantity, Measured(median, *errors), unit, how)
 
 
-def _distance(record: SystemRecord) -> list[DerivedValue]:
+def derive_distance(record: SystemRecord) -> list[DerivedValue]:
+    """The distance that follows from a parallax, and how; none where a distance was given.
+
+    Parameters
+    ----------
+    record : SystemRecord
+        System with a parallax in mas.
+
+    Returns
+    -------
+    list of DerivedValue
+        None or one, in pc.
+
+    Notes
+    -----
+    Accuracy and source: see ``campaign.physics.distance``.
+    """
     parallax, distance = record.system.parallax_mas, distance_of(record)
     if record.system.distance_pc is not None or parallax is None or distance is None:
         return []
@@ -151,7 +176,7 @@ def _from_velocities(inputs: _Inputs) -> list[DerivedValue]:
         for star, mass in least.items()
     ]
     found.append(inputs.value("mass ratio B/A", k_a / k_b, "", "velocities", ("k_a", "k_b")))
-    if inputs.has("i"):
+    if inputs.is_tilted():
         cube = np.sin(np.radians(inputs.draws("i"))) ** 3
         found += [
             inputs.value(
@@ -169,7 +194,7 @@ def _axis_au(inputs: _Inputs) -> tuple[FloatArray, str, tuple[str, ...]] | None:
     if inputs.has("a_arcsec", "distance"):
         size = inputs.draws("a_arcsec") * inputs.draws("distance")
         return size, "from a in arcsec and distance", ("a_arcsec", "distance")
-    if inputs.has("period", "e", "k_a", "k_b", "i"):
+    if inputs.has("period", "e", "k_a", "k_b") and inputs.is_tilted():
         names: tuple[str, ...] = ("period", "e", "k_a", "k_b", "i")
         period, e, k_a, k_b, tilt = (inputs.draws(name) for name in names)
         size = masses.semi_major_axis_from_velocities(period, e, k_a, k_b, np.radians(tilt))

@@ -136,10 +136,26 @@ def list_episodes(db: str, system_name: str | None) -> list[tuple[str, Episode]]
     with store.reading(db) as connection:
         ids = None if system_name is None else [systems.find_system(connection, system_name).id]
         found = records.load_records(connection, ids, include_retired=True)
-    return [(r.system.name, e) for r in sorted(found, key=lambda r: r.system.name) for e in _counted(r)]
+    return [(r.system.name, e) for r in sorted(found, key=lambda r: r.system.name) for e in counted(r)]
 
 
-def _counted(record: SystemRecord) -> list[Episode]:
+def counted(record: SystemRecord) -> tuple[Episode, ...]:
+    """Episodes of a system, confirmed ones with the cycle that the adopted solution gives them.
+
+    Parameters
+    ----------
+    record : SystemRecord
+        A system; instants ``bmjd_tdb``.
+
+    Returns
+    -------
+    tuple of Episode
+        In the order of the record; a stated cycle stays.
+
+    Notes
+    -----
+    Accuracy and source: see ``campaign.studies.cycles.with_cycles``.
+    """
     adopted = next((s for s in record.solutions if s.adopted), None)
-    counted = {e.id: e for e in episodes_with_cycles(build_row(record, adopted))}
-    return [counted.get(e.id, e) for e in record.episodes]
+    known = {e.id: e for e in episodes_with_cycles(build_row(record, adopted))}
+    return tuple(known.get(e.id, e) for e in record.episodes)

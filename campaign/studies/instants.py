@@ -47,6 +47,9 @@ def moment_of(typed: TypedInstant, system: System, site: Site | None = None) -> 
     return Moment(float(bmjd), typed.minus_d, typed.plus_d, typed.text, typed.scale, typed.place)
 
 
+_MINUTE_D = 1.0 / 1440.0
+
+
 def axis_instant(typed: TypedInstant) -> float:
     """An instant that belongs to no system (``--as-of``, ``--from``) on the TDB axis, no light time.
 
@@ -71,7 +74,7 @@ def axis_instant(typed: TypedInstant) -> float:
 
 
 def spoken_moment(moment: Moment) -> str:
-    """The catalogue's instant for an echo: ``BMJD_TDB 65121.133900 (2037-03-04T03:12:10Z)``.
+    """The catalogue's instant for an echo: ``BMJD_TDB 65121.133900 ± 5 d (2037-03-04T03:12:10Z ...)``.
 
     Parameters
     ----------
@@ -90,4 +93,8 @@ def spoken_moment(moment: Moment) -> str:
     Source: project convention.
     """
     iso = utc_iso(np.array([moment.bmjd_tdb]))[0]
-    return f"BMJD_TDB {moment.bmjd_tdb:.6f}" + (f" ({iso} at the barycentre)" if iso else "")
+    minus, plus = moment.minus_d or 0.0, moment.plus_d or 0.0
+    error = ""
+    if max(minus, plus) > _MINUTE_D:
+        error = f" ± {plus:.2g} d" if minus == plus else f" +{plus:.2g} −{minus:.2g} d"
+    return f"BMJD_TDB {moment.bmjd_tdb:.6f}{error}" + (f" ({iso} at the barycentre)" if iso else "")

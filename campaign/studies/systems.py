@@ -11,7 +11,8 @@ from campaign.model.kept import Kept, Stamp
 from campaign.model.records import SystemRecord
 from campaign.model.shown import ShownSystem
 from campaign.model.systems import Solution, System
-from campaign.studies.derived import derive
+from campaign.studies.derived import derive, derive_distance
+from campaign.studies.episodes import counted
 from campaign.studies.rows import distance_of
 
 
@@ -251,7 +252,8 @@ def show_system(db: str, name: str) -> ShownSystem:
         record = records.load_records(connection, [system.id], include_retired=True)[0]
         counts = observations.count_observations(connection, [system.id]).get(system.id, {})
     adopted = next((s for s in record.solutions if s.adopted), None)
-    return ShownSystem(record, derive(record, adopted) if adopted is not None else (), counts)
+    derived = derive(record, adopted) if adopted is not None else tuple(derive_distance(record))
+    return ShownSystem(replace(record, episodes=counted(record)), derived, counts)
 
 
 def require_solution(record: SystemRecord, label: str | None) -> Solution:
