@@ -72,10 +72,14 @@ class RecurrencePrediction:
         return float(np.exp(self.weights @ np.log(self.sigmas_d)))
 
     @property
+    def mean_d(self) -> float:
+        """Mean of the mixture, days."""
+        return float(self.weights @ self.means_d)
+
+    @property
     def sigma_d(self) -> float:
         """Standard deviation of the mixture, days."""
-        mean = float(self.weights @ self.means_d)
-        return float(np.sqrt(self.weights @ (self.sigmas_d**2 + (self.means_d - mean) ** 2)))
+        return float(np.sqrt(self.weights @ (self.sigmas_d**2 + (self.means_d - self.mean_d) ** 2)))
 
 
 @dataclass(frozen=True, slots=True)

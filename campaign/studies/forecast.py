@@ -39,6 +39,8 @@ KEEP_LISTED_D = 365.25
 MOST_CYCLES = 100
 # Sigma of the period that a neighbouring cycle may be nearer: a little beyond the 95 % interval.
 _REACH = 2.5
+# Typical sigma of a learned date within which its cycle is looked for; a slack comes on top.
+_WIDE = 3.0
 COUNTED_FROM_ONSET = "counted from the observed onset"
 
 
@@ -143,7 +145,7 @@ class Forecaster:
         # Cycles in the window of units that have more than MOST_CYCLES of them.
         self.cut: dict[int, int] = {}
         # The pilot only finds out which cycles can fall inside the window; no date comes from it.
-        self.pilot = self.sampler if draws <= _PILOT_DRAWS else Sampler(rows, _PILOT_DRAWS, seed, learned)
+        self.pilot = self.sampler if draws <= _PILOT_DRAWS else self.sampler.thinned(_PILOT_DRAWS, seed)
 
     # ---------------------------------------------------------------- which cycles
 
@@ -176,11 +178,8 @@ class Forecaster:
 
     def _cycle_span(self, event: EventName, index: IntArray, window: Window) -> tuple[IntArray, IntArray]:
         reference = np.array([self._reference_cycle(int(i), window) for i in index], dtype=np.int64)
-        pilot = self.pilot.event_times(event, index, reference)
-        with np.errstate(invalid="ignore"):
-            has = ~np.all(np.isnan(pilot), axis=1)
-            low = np.where(has, np.nanmin(np.where(has[:, None], pilot, 0.0), axis=1), np.nan)
-            high = np.where(has, np.nanmax(np.where(has[:, None], pilot, 0.0), axis=1), np.nan)
+        low, high = self._reach(event, index, reference)
+        has = ~np.isnan(low)
         period = np.array([self.period_d(int(i)) for i in index])
         slack = 0.25 * (high - low)
         start = np.full(index.size, window.start)
@@ -199,6 +198,26 @@ class Forecaster:
         first = np.where(has, first, 1)
         last = np.where(has, last, 0)
         return reference + first.astype(np.int64), reference + last.astype(np.int64)
+
+    def _reach(self, event: EventName, index: IntArray, cycles: IntArray) -> tuple[FloatArray, FloatArray]:
+        """Earliest and latest date that an event may well have; NaN where it never happens."""
+        low, high = np.full(index.size, np.nan), np.full(index.size, np.nan)
+        drawn = []
+        for place, row in enumerate(index):
+            learned = self.learned.get(int(row)) if event in SCATTERS else None
+            if learned is not None and event in learned.events():
+                prediction = learned.predict(event, int(cycles[place]))
+                centre, size = prediction.mean_d, _WIDE * prediction.typical_sigma_d
+                low[place], high[place] = centre - size, centre + size
+            else:
+                drawn.append(place)
+        if drawn:
+            pilot = self.pilot.event_times(event, index[drawn], cycles[drawn])
+            happens = ~np.all(np.isnan(pilot), axis=1)
+            some = np.array(drawn)[happens]
+            low[some] = np.nanmin(pilot[happens], axis=1)
+            high[some] = np.nanmax(pilot[happens], axis=1)
+        return low, high
 
     def _looks_back(self, row: int) -> bool:
         unit = self.units[self.unit_of_row[row]]

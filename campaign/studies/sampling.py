@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from copy import copy
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -47,15 +48,27 @@ class Sampler:
         self.draws = draws
         self.learned = learned or {}
         scatter_names = [f"scatter {event}" for event in SCATTERS]
-        self.normals = stratified_normals([*DOMAINS, *scatter_names, "recurrence"], draws, seed)
+        self._names = [*DOMAINS, *scatter_names, "recurrence"]
+        self.normals = stratified_normals(self._names, draws, seed)
         self.columns = {name: self._column(name) for name in DOMAINS}
         self.scatter = {event: self._scatter(event) for event in SCATTERS}
         self.epoch_cycle = np.array([row.epoch_cycle for row in rows], dtype=np.int64)
         self.rule = np.array([RULE_CODES[row.rule.kind] if row.rule else 0 for row in rows])
         self.mark = np.array([MARK_CODES[row.mark] for row in rows])
         self.period_is_range = np.array([row.period_is_range for row in rows], dtype=bool)
-        self.correlated = {i: z for i, row in enumerate(rows) if (z := self._correlate(row))}
-        self._is_correlated = np.zeros(len(rows), dtype=bool)
+        self._find_correlations()
+
+    def thinned(self, draws: int, seed: int) -> Sampler:
+        """The same rows with other, fewer draws."""
+        other = copy(self)
+        other.draws = draws
+        other.normals = stratified_normals(self._names, draws, seed)
+        other._find_correlations()
+        return other
+
+    def _find_correlations(self) -> None:
+        self.correlated = {i: z for i, row in enumerate(self.rows) if (z := self._correlate(row))}
+        self._is_correlated = np.zeros(len(self.rows), dtype=bool)
         self._is_correlated[list(self.correlated)] = True
 
     def _column(self, name: str) -> FloatArray:
