@@ -78,7 +78,7 @@ def two_piece_normal(
     -----
     Accuracy: exact map of the deviates.
 
-    Source: design convention; the two-piece form follows Wallis 2014, Statistical Science 29, 106
+    Source: project convention; the two-piece form follows Wallis 2014, Statistical Science 29, 106
     (there the mode is kept; here the median is, as quoted asymmetric errors are quantiles).
 
     Examples

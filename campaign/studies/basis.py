@@ -57,7 +57,7 @@ def event_forecasts(
     -----
     Accuracy: that of the dates.
 
-    Source: design, section 6 (output contract).
+    Source: DEVELOPERS.md (output contract).
     """
     quantiles = np.array([d.quantiles if d.quantiles is not None else np.full(5, np.nan) for d in dated])
     iso = utc_iso(quantiles.ravel()) if quantiles.size else []

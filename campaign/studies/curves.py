@@ -41,7 +41,7 @@ def curves_of(db: str, wanted: Wanted) -> tuple[Curve, ...]:
     Notes
     -----
     Accuracy: photometry is judged as in ``campaign.studies.quietness``, from all good points of the system
-    whatever the filters. Source: design, section 2 (quiet observation).
+    whatever the filters. Source: DEVELOPERS.md (quiet observation).
     """
     with store.reading(db) as connection:
         rows, _ = listing.find_observations(connection, filters_of(connection, wanted))

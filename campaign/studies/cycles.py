@@ -84,7 +84,7 @@ def count_is_safe(cycles: int, period_d: float, epoch_sigma_d: float, period_sig
     -----
     Accuracy: covariance between epoch and period is not used.
 
-    Source: project convention (design, section 4: phase lost).
+    Source: project convention (DEVELOPERS.md: phase lost).
     """
     return SAFE_SIGMA * math.hypot(epoch_sigma_d, cycles * period_sigma_d) < 0.5 * period_d
 

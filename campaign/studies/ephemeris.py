@@ -60,7 +60,7 @@ def ephemeris(
     Accuracy: of the nominal elements, no errors are propagated; light time within the orbit is left out
     (at most minutes).
 
-    Source: Kepler's equation; conventions of design, section 4.
+    Source: Kepler's equation; conventions of DEVELOPERS.md.
     """
     _check_span(start, end, step_d)
     period = nominal_period_d(solution)

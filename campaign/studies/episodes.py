@@ -51,7 +51,7 @@ def add_episode(
 
     Notes
     -----
-    Accuracy: instants as in ``campaign.studies.instants``. Source: design, section 2 (episode).
+    Accuracy: instants as in ``campaign.studies.instants``. Source: DEVELOPERS.md (episode).
     """
     if not dates:
         raise InputRefused(

@@ -35,7 +35,7 @@ def needed_since_onset(row: ForecastRow, event: EventName) -> tuple[str, ...]:
     -----
     Accuracy: exact for the rules as defined.
 
-    Source: differences of the rules of design, section 4.
+    Source: differences of the rules of DEVELOPERS.md.
     """
     kind = row.rule.kind if row.rule is not None else ""
     if event not in row.events or "onset" not in row.events or kind == "learned":
@@ -73,7 +73,7 @@ def missing_since_onset(row: ForecastRow, event: EventName, onset: Moment) -> li
     -----
     Accuracy: exact.
 
-    Source: design, section 4 (an unknown error is never zero).
+    Source: DEVELOPERS.md (an unknown error is never zero).
     """
     missing = [] if onset.minus_d is not None and onset.plus_d is not None else ["observed onset"]
     for name in needed_since_onset(row, event):
@@ -110,7 +110,7 @@ def days_since_onset(
     -----
     Accuracy: that of the draws. A learned time rests on the episodes that have both dates.
 
-    Source: design, section 4 (rules); see ``campaign.physics.recurrence``.
+    Source: DEVELOPERS.md (rules); see ``campaign.physics.recurrence``.
     """
     if learned is not None:
         lag = learned.predict_lag(event)

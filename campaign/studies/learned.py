@@ -96,7 +96,7 @@ def learn(row: ForecastRow, episodes: tuple[Episode, ...]) -> LearnedDates | Non
     -----
     Accuracy: asymmetric dating errors enter by their standard deviation.
 
-    Source: design, section 4 (rule ``learned``); see ``campaign.physics.recurrence``.
+    Source: DEVELOPERS.md (rule ``learned``); see ``campaign.physics.recurrence``.
     """
     cycles: dict[EventName, list[float]] = {e: [] for e in SCATTERS}
     dates: dict[EventName, list[float]] = {e: [] for e in SCATTERS}

@@ -91,7 +91,7 @@ def prepare(
     -----
     Accuracy: no numbers are changed.
 
-    Source: design, section 2 (solution, rule) and 4 (Forecast).
+    Source: DEVELOPERS.md (solution, rule) and 4 (Forecast).
     """
     prepared = Prepared([], [], {})
     for whole in records:
@@ -129,7 +129,7 @@ def hide_later_episodes(record: SystemRecord, as_of: float) -> SystemRecord:
     -----
     Accuracy: by the dated instants themselves.
 
-    Source: design, section 4 (As of).
+    Source: DEVELOPERS.md (As of).
     """
     kept = []
     for episode in record.episodes:

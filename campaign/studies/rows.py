@@ -223,7 +223,7 @@ def build_row(record: SystemRecord, solution: Solution | None) -> ForecastRow:
     -----
     Accuracy: nothing is computed here except omega_B = omega_A + 180 deg.
 
-    Source: conventions of the project (design, sections 2 and 4).
+    Source: conventions of the project (DEVELOPERS.md).
     """
     rule = record.rule
     row = ForecastRow(record, solution, rule, _epoch_cycle(record, solution))

@@ -68,7 +68,7 @@ def add_solution(
     Accuracy: the cycle of the epoch is the nearest whole number of periods from the system's anchor; a
     count that could be off by one is said.
 
-    Source: design, section 2 (cycle).
+    Source: DEVELOPERS.md (cycle).
     """
     if draft.period_d is None and epoch is None:
         raise InputRefused(
@@ -202,7 +202,7 @@ def adopt_solutions(
     -----
     Accuracy: weights are used relative to their sum.
 
-    Source: design, section 2 (solution).
+    Source: DEVELOPERS.md (solution).
     """
     _check_weights(weights)
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:

@@ -80,7 +80,7 @@ def covered_share(onset: DatedEvent, judged: JudgedPhotometry, visible_d: float)
     -----
     Accuracy: 1 %, the step of the grid.
 
-    Source: project convention (design, section 4: late, unseen).
+    Source: project convention (DEVELOPERS.md: late, unseen).
     """
     if onset.grid is None or np.isnan(onset.grid[0]):
         return 0.0
@@ -152,9 +152,9 @@ def onset_state(
 
     Notes
     -----
-    Accuracy: a status is a rule, not a measurement; the rule is that of the design.
+    Accuracy: a status is a rule, not a measurement; the rule is that of README.md.
 
-    Source: design, section 4 (Status).
+    Source: DEVELOPERS.md (Status).
     """
     if onset.phase_lost or onset.quantiles is None:
         return OnsetState("phase lost")
@@ -237,13 +237,13 @@ def later_status(event: DatedEvent, onset: OnsetState, as_of: float) -> Status:
     Returns
     -------
     str
-        One of the statuses of the design.
+        One of the statuses of README.md.
 
     Notes
     -----
     Accuracy: as ``onset_state``.
 
-    Source: design, section 4 (Status).
+    Source: DEVELOPERS.md (Status).
     """
     if event.phase_lost or event.quantiles is None:
         return "phase lost"
@@ -271,7 +271,7 @@ def plain_status(event: DatedEvent, as_of: float) -> Status:
     -----
     Accuracy: as the forecast.
 
-    Source: design, section 4 (Status).
+    Source: DEVELOPERS.md (Status).
     """
     if event.phase_lost or event.quantiles is None:
         return "phase lost"

@@ -60,7 +60,7 @@ def summarise(times: FloatArray, window: Window, keep_grid: bool) -> Summary:
     Accuracy: that of the draws; with 20,000 stratified draws a bound of the 95 % interval is good to
     about 0.02 sigma.
 
-    Source: equal-tailed quantiles (design, section 4).
+    Source: equal-tailed quantiles (DEVELOPERS.md).
     """
     ordered = np.sort(times, axis=1)
     draws = times.shape[1]

@@ -55,7 +55,7 @@ def forecast_campaign(
     Accuracy: normal dates are exact; drawn ones carry the error of the draws, about 0.02 sigma in the
     bounds of a 95 % interval at 20,000 draws.
 
-    Source: design, section 4 (Forecast, Status, Phase lost).
+    Source: DEVELOPERS.md (Forecast, Status, Phase lost).
     """
     prepared = prepare(records, photometry, question)
     forecaster = Forecaster(prepared.rows, prepared.units, prepared.learned, question.draws, question.seed)
@@ -123,7 +123,7 @@ def onset_states(
     -----
     Accuracy: see ``campaign.studies.status``.
 
-    Source: design, section 4 (Status).
+    Source: DEVELOPERS.md (Status).
     """
     ends = {(d.unit, d.cycle): d for d in dated if d.event == "end"}
     onsets = [d for d in dated if d.event == "onset"]
@@ -195,7 +195,7 @@ def with_disagreement(events: Sequence[EventForecast]) -> list[EventForecast]:
     -----
     Accuracy: for normal dates; (first - second) / root of the summed variances.
 
-    Source: design, section 4 (signed tension).
+    Source: DEVELOPERS.md (signed tension).
     """
     reference: dict[tuple[str, EventName, int | None], EventForecast] = {}
     result = []

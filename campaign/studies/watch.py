@@ -272,7 +272,7 @@ def upcoming(campaign: Campaign, question: Question) -> UpcomingResult:
 
     Notes
     -----
-    Accuracy: see ``forecast_campaign``. Source: design, section 4.
+    Accuracy: see ``forecast_campaign``. Source: DEVELOPERS.md.
     """
     result = forecast_campaign(campaign.records, campaign.photometry, question)
     return _with_date_note(_with_next(result, campaign, question), campaign, question)

@@ -16,7 +16,7 @@ import campaign
 
 ROOT = Path(__file__).resolve().parents[2]
 
-# design, section 3: what each layer may import of ours. A layer may always import itself.
+# DEVELOPERS.md: what each layer may import of ours. A layer may always import itself.
 OURS = {
     "__init__": {"face"},
     "__main__": {"commands", "output", "settings", "errors"},
@@ -232,7 +232,7 @@ def test_the_version_is_told_once():
 
 
 def texts() -> Iterator[tuple[str, str]]:
-    """Every text of the project: what git knows, or what lies in the folders of the design."""
+    """Every text of the project: what git knows, or what lies in the folders of the project."""
     listed = subprocess.run(
         ["git", "ls-files", "-z", "--cached", "--others", "--exclude-standard"],
         cwd=ROOT, capture_output=True, text=True, check=False,

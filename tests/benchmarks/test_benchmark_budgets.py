@@ -1,6 +1,6 @@
 """The speed that the project promises: commands beside what they cannot avoid, a large campaign in seconds.
 
-Budgets are those of the issue of the foundation. Ratios are taken within one run, between the least of
+Budgets are promises to users. Ratios are taken within one run, between the least of
 several interleaved runs, so that other work on the machine does not decide.
 """
 

@@ -23,7 +23,7 @@ def quickest_s(*words, times=9):
 @pytest.mark.slow
 @pytest.mark.parametrize("words", [("--help",), ("--version",)])
 def test_help_costs_at_most_two_and_a_half_times_the_import_of_typer(words):
-    # Budget of the issue: campaign --help <= 2.5 x python -c "import typer".
+    # Budget: campaign --help <= 2.5 x python -c "import typer".
     typer_s = quickest_s("-c", "import typer")
     help_s = quickest_s("-m", "campaign", *words)
     assert help_s / typer_s <= 2.5, f"{help_s:.3f} s against {typer_s:.3f} s"

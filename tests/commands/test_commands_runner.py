@@ -43,7 +43,7 @@ def campaign(capsys):
     return run_line
 
 
-# Exit statuses as promised in the output contract (design, section 6).
+# Exit statuses as promised in the output contract (DEVELOPERS.md).
 @pytest.mark.parametrize(
     ("kind", "status"),
     [("UsageRefused", 2), ("InputRefused", 3), ("NotFound", 4), ("Conflict", 5), ("DatabaseBusy", 6),

@@ -20,7 +20,7 @@ from campaign.output.upcoming_document import upcoming_json
 
 ROOT = Path(__file__).resolve().parents[2]
 
-# Issue contract (design, section 6): the keys of one event, and the additions made since.
+# Issue contract (DEVELOPERS.md): the keys of one event, and the additions made since.
 CONTRACT = {
     "system", "event", "cycle", "basis", "solution", "rule", "bmjd_tdb", "utc", "status", "probability",
     "probability_in_window", "phase_lost", "notes",

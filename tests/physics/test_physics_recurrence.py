@@ -151,7 +151,7 @@ def test_the_farther_ahead_the_less_certain():
     [(3.0, 3.0), (3.0,) * 3, (3.0,) * 3 + (300.0,) * 2, (3.0,) * 2 + (300.0,) * 3, (300.0,) * 5],
 )
 def test_intervals_hold_the_truth_when_the_dates_tell_little_of_the_scatter(errors):
-    # 3,000 cases each, the truth drawn from the stated prior; |z| < 3 (design, coverage checks).
+    # 3,000 cases each, the truth drawn from the stated prior; |z| < 3 (DEVELOPERS.md, coverage).
     rng, cases, count = np.random.default_rng(2), 3_000, len(errors)
     held = {0.68: 0, 0.95: 0}
     for _ in range(cases):

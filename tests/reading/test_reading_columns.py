@@ -1,5 +1,5 @@
 """Whole columns mean what their cells mean alone. Source of the expectations: the readers of single values,
-which have tests of their own, and the issue's words on numbers (`nan`, `1e400`, U+2212)."""
+which have tests of their own, and what numbers are refused (`nan`, `1e400`, U+2212)."""
 
 from __future__ import annotations
 

@@ -8,7 +8,7 @@ from campaign.model.measured import Measured
 
 
 def draws_of(measured, rng, size=40_000):
-    """Two-piece normal with the value as its median (design, section 4)."""
+    """Two-piece normal with the value as its median (DEVELOPERS.md)."""
     z = rng.normal(size=size)
     return measured.value + z * np.where(z < 0.0, measured.minus, measured.plus)
 

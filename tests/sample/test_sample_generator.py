@@ -80,7 +80,7 @@ def test_the_date_of_the_sample_is_the_start_of_march_2027(sample, package):
 
 
 def test_every_case_of_the_plan_is_there_and_told_in_one_sentence(sample):
-    # The list is the issue's own (item 8) and the brief's; not taken from the generator.
+    # What a sample has to show; not taken from the generator.
     wanted = {
         "high e", "low e", "separation rule", "phase rule", "lag rule", "learned rule with orbit",
         "learned rule with episodes only", "period only", "period is a lower limit", "one episode only",
@@ -176,7 +176,7 @@ def test_cycle_zero_is_the_first_adopted_epoch(sample):
 
 
 def test_making_the_sample_costs_little_beside_importing_numpy():
-    # A promise of the project, as a ratio in one run (issue 2, speed): best of five, both sides cold.
+    # A promise of the project, as a ratio in one run: best of five, both sides cold.
     def seconds(code):
         best = math.inf
         for _ in range(5):

@@ -48,7 +48,7 @@ def test_a_day_is_kept_as_its_middle_with_the_error_of_a_day(sample, observation
         system = sample.records[one.system_id - 1].system
         expected = erfa_bmjd(one.moment.text + "T12:00:00", unit_vector(system))
         assert abs(one.moment.bmjd_tdb - expected) * 86400.0 < 2.0
-        # A calendar day is the interval itself: width / sqrt(12) (design, section 4).
+        # A calendar day is the interval itself: width / sqrt(12) (DEVELOPERS.md).
         assert one.moment.plus_d == pytest.approx(1.0 / math.sqrt(12.0))
 
 

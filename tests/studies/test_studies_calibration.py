@@ -1,6 +1,6 @@
 """Intervals hold the truth as often as they say, for each dust rule; so does the probability of no episode.
 
-Nominal shares from the design of the project (equal-tailed 68 % and 95 %); |z| < 3 against them.
+Nominal shares (equal-tailed 68 % and 95 %); |z| < 3 against them.
 """
 
 from __future__ import annotations
@@ -92,7 +92,7 @@ def test_probability_of_an_episode_is_its_frequency(grazing: list[Case]) -> None
 
 
 def test_monte_carlo_and_analytic_sigma_of_periastron_agree() -> None:
-    """Within 2 % (the issue's figure), at 2,000 draws, for twenty invented systems and cycles."""
+    """Within 2 %, at 2,000 draws, for twenty invented systems and cycles."""
     from campaign.studies.forecast import periastron_sigma_d
     from campaign.studies.rows import build_row
     from campaign.studies.sampling import Sampler

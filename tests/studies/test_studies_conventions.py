@@ -1,6 +1,6 @@
 """Statements about the sky that hold whatever the numbers: stars, conjunctions, epochs, extreme orbits.
 
-Geometry from the conventions of the design, section 4 (omega_A = omega_B + 180 deg; B is behind A at
+Geometry from the conventions of the DEVELOPERS.md (omega_A = omega_B + 180 deg; B is behind A at
 nu + omega_B = 90 deg and in front at 270 deg); phases by scalar formulas of this file's own.
 """
 

@@ -1,6 +1,6 @@
 """How errors reach a date: unknown is never zero, asymmetric keeps its median, covariances add up.
 
-Statements of the design, section 4; numbers by scipy.stats and by hand.
+Statements of the DEVELOPERS.md; numbers by scipy.stats and by hand.
 """
 
 from __future__ import annotations

@@ -1,4 +1,4 @@
-"""Every status of an onset, each reached by a smallest invented case (design, section 4: Status)."""
+"""Every status of an onset, each reached by a smallest invented case (DEVELOPERS.md: Status)."""
 
 from __future__ import annotations
 
