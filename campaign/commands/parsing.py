@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from typing import Any
 
 from campaign.errors import InputRefused
@@ -121,7 +122,11 @@ def whole_number(text: str, name: str, limit: int, example: int) -> int:
 
 def plain_number(text: str | None, unit: str, name: str, **domain: Any) -> float | None:
     """A number with an optional unit, for what is kept without an error; an error given is refused."""
-    value = measured(text, unit, name, **domain)
+    try:
+        value = measured(text, unit, name, **domain)
+    except InputRefused as problem:
+        problem.hint = re.sub(r"±[\d.]+", "", problem.hint)  # the accepted form has no error here
+        raise
     if value is None:
         return None
     if value.error_known:

@@ -8,7 +8,7 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import measured, one_of, plain
+from campaign.commands.parsing import measured, one_of, plain, plain_number
 from campaign.errors import InputRefused, UsageRefused
 
 Name = Annotated[str, typer.Argument(metavar="SYSTEM", help="Name or alias.")]
@@ -201,7 +201,6 @@ def _fields(given: dict[str, Any]) -> dict[str, Any]:  # noqa: PLR0912
     """The fields of a system, and of its stars, that were given."""
     from campaign.model.systems import SYSTEM_STATES
     from campaign.reading.angles import read_declination, read_right_ascension
-    from campaign.reading.numbers import read_number
 
     fields: dict[str, Any] = {}
     if given["ra"] is not None:
@@ -209,13 +208,11 @@ def _fields(given: dict[str, Any]) -> dict[str, Any]:  # noqa: PLR0912
     if given["dec"] is not None:
         fields["dec_deg"] = read_declination(given["dec"])
     if given["position_epoch"] is not None:
-        fields["position_epoch_jyr"] = _between(
-            read_number(given["position_epoch"], "--position-epoch"), 1800, 2200
-        )
+        fields["position_epoch_jyr"] = _between(given["position_epoch"], "--position-epoch", 1800, 2200, 2016)
     for key, field in (("pm_ra", "pm_ra_cosdec_mas_yr"), ("pm_dec", "pm_dec_mas_yr")):
-        value = measured(given[key], "mas/yr", "--" + key.replace("_", "-"))
-        if value is not None:
-            fields[field] = value.value
+        motion = plain_number(given[key], "mas/yr", "--" + key.replace("_", "-"), low=-2e4, high=2e4)
+        if motion is not None:
+            fields[field] = motion
     if given["distance"] is not None:
         fields["distance_pc"] = measured(given["distance"], "pc", "--distance", low=0.0, low_open=True)
     if given["parallax"] is not None:
@@ -223,7 +220,7 @@ def _fields(given: dict[str, Any]) -> dict[str, Any]:  # noqa: PLR0912
     if given["state"] is not None:
         fields["state"] = one_of(given["state"], SYSTEM_STATES, "--state")
     if given["priority"] is not None:
-        fields["priority"] = int(_between(read_number(given["priority"], "--priority"), 1, 5, whole=True))
+        fields["priority"] = int(_between(given["priority"], "--priority", 1, 5, 1, whole=True))
     if given["note"] is not None:
         fields["notes"] = plain(given["note"], "--note", 2000)
     if given["alias"]:
@@ -248,12 +245,15 @@ def _star_fields(given: dict[str, Any], star: str) -> dict[str, Any]:
     return values
 
 
-def _between(value: float, low: float, high: float, whole: bool = False) -> float:
+def _between(text: str, name: str, low: float, high: float, example: float, whole: bool = False) -> float:
+    from campaign.reading.numbers import read_number
+
+    value = read_number(text, name)
     if low <= value <= high and not (whole and value != int(value)):
         return value
     raise InputRefused(
-        f"{value:g} is out of range.",
+        f"{name} {text} is out of range.",
         why=f"It is {'a whole number ' if whole else ''}from {low:g} to {high:g}.",
-        hint=f"For example {low:g}.",
+        hint=f"For example {name} {example:g}.",
         code="out-of-range",
     )

@@ -35,6 +35,10 @@ def _observed(observation: Observation) -> str:
         told += f" at {number(observation.position_angle_deg, 'deg')}"
     about = [
         observation.band or "",
+        f"{observation.frequency_ghz:g} GHz" if observation.frequency_ghz is not None else "",
+        f"{observation.energy_low_kev:g}..{observation.energy_high_kev:g} keV"
+        if observation.energy_low_kev is not None
+        else "",
         f"star {observation.star}" if observation.star else "",
         observation.species or "",
         observation.feature or "",
@@ -56,6 +60,9 @@ def logged_json(logged: Logged, as_of: str) -> str:
                 "already_logged": e.already_logged,
                 "kind": e.observation.kind,
                 "band": e.observation.band,
+                "value": plain(e.observation.value),
+                "unit": e.observation.unit,
+                "limit_side": e.observation.limit_side,
             }
             for e in logged.entries
         ],

@@ -46,7 +46,7 @@ def elements(rows: Sequence[ForecastRow], rule: DustRule | None) -> tuple[Elemen
         told = (*_solution_lines(solution), *_size_lines(row))
         lines.extend((prefix + name, text, note) for name, text, note in told)
     if rule is not None:
-        lines.extend(_rule_lines(rule))
+        lines.extend(rule_lines(rule))
     return tuple(lines)
 
 
@@ -89,7 +89,23 @@ def _size_lines(row: ForecastRow) -> list[Element]:
     return lines
 
 
-def _rule_lines(rule: DustRule) -> list[Element]:
+def rule_lines(rule: DustRule) -> list[Element]:
+    """A dust rule as (name, value with error and unit, note), its kind first.
+
+    Parameters
+    ----------
+    rule : DustRule
+        Offsets in periods or days, distances in au, speed in km/s.
+
+    Returns
+    -------
+    list of (str, str, str)
+        What is given of the rule.
+
+    Notes
+    -----
+    Accuracy: as typed. Source: project convention.
+    """
     unit = "P" if rule.kind == "phase" else "d"
     lines: list[Element] = [("dust rule", rule.kind, "")]
     for name, value, its_unit in (

@@ -12,6 +12,7 @@ from sqlalchemy import Connection
 from campaign.catalogue import observations, records, sites, store, systems
 from campaign.model.instants import Moment, TypedInstant
 from campaign.model.kept import Stamp
+from campaign.model.measured import Measured
 from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
 from campaign.model.shown import Logged, LoggedEntry
@@ -69,7 +70,7 @@ def log_observations(
     Accuracy: the instant as in ``campaign.studies.instants``; verdicts as in
     ``campaign.studies.quietness``.
 
-    Source: design, section 2 (quiet observation).
+    Source: DEVELOPERS.md (quiet observation).
     """
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
         system = systems.find_system(writing.connection, system_name)
@@ -77,7 +78,7 @@ def log_observations(
         longitude = site.longitude_deg_east if site is not None else None
         instant = read_instant(at_text, longitude_deg_east=longitude)
         moment = moment_of(instant, system, site)
-        entries = []
+        entries, warnings = [], _warnings(instant, stamp.at, site)
         for draft in drafts:
             observation = replace(
                 draft,
@@ -88,6 +89,10 @@ def log_observations(
                 observer=draft.observer or stamp.who,
             )
             number, known = observations.add_observation(writing, observation)
+            if known:
+                stored = observations.get_observation(writing.connection, number)
+                warnings += _not_kept(stored, observation)
+                observation = stored
             entries.append(LoggedEntry(number, known, observation))
         kinds = ", ".join(sorted({e.observation.kind for e in entries}))
         writing.summarise(f"logged {kinds} of {system.name}")
@@ -101,18 +106,37 @@ def log_observations(
         entries=tuple(entries),
         knowledge=knowledge,
         suspected=suspected,
-        warnings=_warnings(instant, stamp.at, site),
+        warnings=tuple(warnings),
     )
 
 
-def _warnings(instant: TypedInstant, now: datetime, site: Site | None) -> tuple[str, ...]:
+def _not_kept(stored: Observation, typed: Observation) -> list[str]:
+    """The same value again with another error is not a second observation, and not a correction either."""
+    old, new = stored.value, typed.value
+    if old is None or new is None or (old.minus, old.plus) == (new.minus, new.plus) or not new.error_known:
+        return []
+    return [
+        f"observation {stored.id} keeps the error that it has, {_error(old)}; the one typed now, "
+        f"{_error(new)}, was not kept"
+    ]
+
+
+def _error(value: Measured) -> str:
+    if value.minus is None or value.plus is None:
+        return "unknown"
+    return f"±{value.plus:g}" if value.minus == value.plus else f"+{value.plus:g} -{value.minus:g}"
+
+
+def _warnings(instant: TypedInstant, now: datetime, site: Site | None) -> list[str]:
     warnings = []
     today = _MJD_OF_UNIX_EPOCH + now.astimezone(UTC).timestamp() / 86_400.0
     if instant.mjd > today + 1.0:
         warnings.append("the observation is dated in the future")
-    if site is None and instant.place == "observatory":
+    # Only who gives a clock time is told of the 0.021 s that the place on Earth can make.
+    precise = instant.plus_d is not None and instant.plus_d * 86_400.0 < 0.1
+    if site is None and instant.place == "observatory" and precise:
         warnings.append("no site given: the light time is that of the geocentre, within 0.021 s")
-    return tuple(warnings)
+    return warnings
 
 
 def _knowledge(
@@ -165,7 +189,8 @@ def _verdict(record: SystemRecord, judged: JudgedPhotometry, observation: Observ
             "outside episodes"
         ), False
     if judged.is_quiet[position]:
-        return f"{band}: quiet, no onset yet", False
+        latest = at >= float(judged.bmjd_tdb.max()) - 1e-7
+        return f"{band}: quiet, no onset {'yet' if latest else 'then'}", False
     sigma = float(judged.excess_sigma[position])
     if sigma < CONSECUTIVE_SIGMA:
         return f"{band}: too uncertain to tell an excess", False

@@ -9,6 +9,7 @@ from campaign.catalogue import rules, store, systems
 from campaign.errors import InputRefused
 from campaign.model.kept import Kept, Stamp
 from campaign.model.systems import DustRule
+from campaign.studies.elements import rule_lines
 
 
 def set_rule(db: str, stamp: Stamp, system_name: str, rule: DustRule) -> Kept:
@@ -37,7 +38,7 @@ def set_rule(db: str, stamp: Stamp, system_name: str, rule: DustRule) -> Kept:
 
     Notes
     -----
-    Accuracy: not applicable. Source: design, section 4 (dust rules).
+    Accuracy: not applicable. Source: DEVELOPERS.md (dust rules).
     """
     _check(rule)
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
@@ -45,7 +46,9 @@ def set_rule(db: str, stamp: Stamp, system_name: str, rule: DustRule) -> Kept:
         rules.set_rule(writing, replace(rule, system_id=system.id))
         writing.summarise(f"set dust rule {rule.kind} for {system.name}")
     data = {"system": system.name, "rule": rule.kind}
-    return Kept("rule-set", True, (f"{system.name}: dust rule {rule.kind}",), data)
+    values = [f"{name} {text}" for name, text, _ in rule_lines(rule)[1:]]
+    lines = (f"{system.name}: dust rule {rule.kind}", *values)
+    return Kept("rule-set", True, lines, data)
 
 
 def show_rule(db: str, system_name: str) -> tuple[str, DustRule | None]:

@@ -40,12 +40,16 @@ def add_system(db: str, stamp: Stamp, system: System) -> Kept:
 
     Notes
     -----
-    Accuracy: not applicable. Source: design, section 2.
+    Accuracy: not applicable. Source: DEVELOPERS.md.
     """
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
         system_id = systems.add_system(writing, system)
         writing.summarise(f"added system {system.name}")
-    lines = [f"added system {system.name} ({system.state})"]
+    lines = [
+        f"added system {system.name} ({system.state})",
+        f"position: RA {system.ra_deg:.5f} deg ({system.ra_deg / 15.0:.5f} h), "
+        f"Dec {system.dec_deg:+.5f} deg, ICRS, epoch {system.position_epoch_jyr:g}",
+    ]
     if system.distance_pc is None and system.parallax_mas is not None:
         distance = distance_of(SystemRecord(system))
         if distance is not None and distance.minus is not None and distance.plus is not None:
