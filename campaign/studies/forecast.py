@@ -426,8 +426,9 @@ class Forecaster:
         elif notes and episode.onset is not None:
             lacking = (missing_since_onset(self.rows[row], event, episode.onset.moment) for row in one.rows)
             dated.missing = tuple(dict.fromkeys(name for names in lacking for name in names))
-        if dated.missing:
-            dated.in_window = None
+        if notes:
+            # Of what the date now rests on: an unknown error of the orbit no longer matters.
+            dated.in_window = None if dated.missing else float(summary.in_window[0])
         dated.notes.extend(notes)
         return dated
 

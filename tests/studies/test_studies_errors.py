@@ -64,6 +64,7 @@ def intervals(result):
             assert e.probability_in_window is None
             assert any(note.startswith("error unknown") for note in e.notes)
         else:
+            assert e.probability_in_window is not None
             assert not any("error unknown" in note for note in e.notes)
     return with_interval, {e.event for e in first} - with_interval
 
