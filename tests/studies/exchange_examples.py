@@ -14,11 +14,14 @@ from hypothesis import strategies as st
 
 from campaign.catalogue import episodes, observations, rules, sites, solutions, store, systems, upgrade
 from campaign.catalogue import tables as t
+from campaign.catalogue.naming import name_key
+from campaign.model.exchange_columns import exchange_columns
 from campaign.model.exported import (
     ExchangedEpisode,
     ExchangedSolution,
     ExchangedSystem,
     ExchangeForm,
+    OutgoingTable,
 )
 from campaign.model.instants import Moment
 from campaign.model.measured import Covariance, Limit, Measured, Range
@@ -32,6 +35,7 @@ from campaign.reading.exchange_models import (
     solution_from_row,
     system_from_row,
 )
+from campaign.studies.exchange_rows import in_order
 from campaign.studies.export import Asked, outgoing_table
 
 UNITS = ("mag", "jy", "kms", "angstrom", "mas", "arcsec", "erg/s/cm2")
@@ -181,6 +185,27 @@ def entries(data: bytes) -> list[Any]:
         assert row.faults == ()
         found.append(_FROM_ROW[table.kind](row.cells))
     return found
+
+
+def text_of(kind: Any, form: ExchangeForm, cells: list[Any]) -> bytes:
+    """A table of rows given column by column."""
+    columns = exchange_columns(kind)
+    rows = in_order(columns, iter(cells))
+    return "".join(table_text(OutgoingTable(kind, columns, rows, len(cells)), form)).encode()
+
+
+def observe(db: Path, drawn: Iterable[tuple[Observation, Site | None]]) -> None:
+    """Enter observations of the one system of a catalogue; two spellings of a name are one site."""
+    site_of: dict[str, int] = {}
+    with store.writing(db, at=CLOCK, who="Ida Vik", command="campaign test") as writing:
+        (system,) = systems.list_systems(writing.connection, include_retired=True)
+        for entry, site in drawn:
+            place = None
+            if site is not None:
+                key = name_key(site.name)
+                place = site_of.get(key) or sites.add_site(writing, site)
+                site_of[key] = place
+            observations.add_observation(writing, replace(entry, system_id=system.id, site_id=place))
 
 
 def begin(path: Path) -> Path:

@@ -13,17 +13,15 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 from studies_examples import episode, moment, solution, stamp, system
 
-from campaign.catalogue import episodes, observations, sites, solutions, store, systems
+from campaign.catalogue import episodes, observations, solutions, store, systems
 from campaign.catalogue.naming import name_key
 from campaign.errors import NotFound
-from campaign.model.exchange_columns import exchange_columns
-from campaign.model.exported import EXCHANGE_FORMS, OutgoingTable
+from campaign.model.exported import EXCHANGE_FORMS
 from campaign.model.measured import Measured
 from campaign.model.observations import Observation
-from campaign.output.exchange import table_text
 from campaign.reading.instants import read_instant
 from campaign.studies.begin import begin_sample_campaign
-from campaign.studies.exchange_rows import episode_cells, in_order, solution_cells, system_cells
+from campaign.studies.exchange_rows import episode_cells, solution_cells, system_cells
 from campaign.studies.export import Asked, outgoing_table
 from campaign.studies.observations import Wanted
 
@@ -31,12 +29,6 @@ forms = pytest.mark.parametrize("form", EXCHANGE_FORMS)
 quick = settings(
     max_examples=25, deadline=None, suppress_health_check=[HealthCheck.too_slow, HealthCheck.filter_too_much]
 )
-
-
-def text_of(kind, form, cells):
-    columns = exchange_columns(kind)
-    rows = in_order(columns, iter(cells))
-    return "".join(table_text(OutgoingTable(kind, columns, rows, len(cells)), form)).encode()
 
 
 # --------------------------------------------------------------------------------- entries, one at a time
@@ -48,7 +40,7 @@ def text_of(kind, form, cells):
 def test_a_system_with_its_rule_comes_back_to_the_last_bit(form, data):
     drawn = data.draw(examples.systems_at_random)
     rule = data.draw(st.none() | examples.rules_at_random)
-    (back,) = examples.entries(text_of("systems", form, [system_cells(drawn, rule)]))
+    (back,) = examples.entries(examples.text_of("systems", form, [system_cells(drawn, rule)]))
     assert repr(back.system) == repr(drawn)
     assert repr(back.rule) == repr(rule)
 
@@ -58,7 +50,7 @@ def test_a_system_with_its_rule_comes_back_to_the_last_bit(form, data):
 @given(data=st.data())
 def test_a_solution_comes_back_to_the_last_bit(form, data):
     drawn = data.draw(examples.solution())
-    (back,) = examples.entries(text_of("solutions", form, [solution_cells("Lantern 3", drawn)]))
+    (back,) = examples.entries(examples.text_of("solutions", form, [solution_cells("Lantern 3", drawn)]))
     # repr tells every float to the last bit, and the sign of zero.
     assert (back.system, repr(back.solution)) == ("Lantern 3", repr(drawn))
 
@@ -68,7 +60,7 @@ def test_a_solution_comes_back_to_the_last_bit(form, data):
 @given(data=st.data())
 def test_an_episode_comes_back_to_the_last_bit(form, data):
     drawn = data.draw(examples.episodes_at_random)
-    (back,) = examples.entries(text_of("episodes", form, [episode_cells("=Lantern", drawn)]))
+    (back,) = examples.entries(examples.text_of("episodes", form, [episode_cells("=Lantern", drawn)]))
     assert (back.system, repr(back.episode), back.withdrawn) == ("=Lantern", repr(drawn), False)
 
 
@@ -116,17 +108,9 @@ def test_the_whole_sample_comes_back_into_an_empty_catalogue_and_leaves_it_as_th
 def test_observations_of_any_kind_come_back_through_a_catalogue_as_the_same_bytes(form, new, data):
     drawn = data.draw(st.lists(examples.observation(), min_size=1, max_size=4))
     db = new("one.db")
-    known = {}
     with store.writing(db, at=examples.CLOCK, who="Ida Vik", command="campaign test") as writing:
-        number = systems.add_system(writing, data.draw(examples.systems_at_random))
-        for entry, site in drawn:
-            place = None
-            if site is not None:
-                # Two spellings of one name are one site.
-                key = name_key(site.name)
-                known.setdefault(key, None)
-                known[key] = place = known[key] or sites.add_site(writing, site)
-            observations.add_observation(writing, replace(entry, system_id=number, site_id=place))
+        systems.add_system(writing, data.draw(examples.systems_at_random))
+    examples.observe(db, drawn)
     first = examples.every_export(db, form)
     copy = new("two.db")
     examples.bring(copy, first)
@@ -142,9 +126,9 @@ def test_what_is_believed_of_a_system_comes_back_through_a_catalogue_as_the_same
     believed = data.draw(st.lists(examples.solution(), max_size=3, unique_by=lambda s: name_key(s.label)))
     bursts = data.draw(st.lists(examples.episodes_at_random, max_size=3))
     tables = [
-        text_of("systems", form, [system_cells(drawn, rule)]),
-        text_of("solutions", form, [solution_cells(drawn.name, each) for each in believed]),
-        text_of("episodes", form, [episode_cells(drawn.name, each) for each in bursts]),
+        examples.text_of("systems", form, [system_cells(drawn, rule)]),
+        examples.text_of("solutions", form, [solution_cells(drawn.name, each) for each in believed]),
+        examples.text_of("episodes", form, [episode_cells(drawn.name, each) for each in bursts]),
     ]
     db, copy = new("one.db"), new("two.db")
     examples.bring(db, tables)
