@@ -9,7 +9,7 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import limited, measured, one_of, plain, shell_index
+from campaign.commands.parsing import limited, measured, one_of, plain, plain_number, shell_index
 from campaign.errors import InputRefused, UsageRefused
 
 Text = str | None
@@ -104,7 +104,7 @@ def flux(
     text = _ask(
         value, "--value", "Flux with its unit", example, lambda t: limited(t, unit, "--value", limit_sigma)
     )
-    wave = measured(frequency, "ghz", "--frequency", low=0.0, low_open=True)
+    wave = plain_number(frequency, "ghz", "--frequency", low=0.0, low_open=True)
     span = read_measured_or_bound(energy, "kev", "--energy", low=0.0, low_open=True) if energy else None
     if energy is not None and not isinstance(span, Range):
         raise InputRefused(
@@ -122,7 +122,7 @@ def flux(
     draft = limited(text, unit, "--value", limit_sigma) | {
         "kind": "flux",
         "band": plain(band, "--band", 24),
-        "frequency_ghz": wave.value if wave is not None else None,
+        "frequency_ghz": wave,
         "energy_low_kev": span.low if isinstance(span, Range) else None,
         "energy_high_kev": span.high if isinstance(span, Range) else None,
     }
@@ -220,7 +220,9 @@ def position(
 ) -> None:
     """Log the position of star B relative to star A."""
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
-    rho = measured(correlation, "", "--correlation", low=-1.0, high=1.0, low_open=True, high_open=True)
+    rho = plain_number(
+        correlation, "", "--correlation", low=-1.0, high=1.0, low_open=True, high_open=True, shown="0.3"
+    )
 
     def apart(text: str) -> Any:
         return measured(text, "mas", "--separation", low=0.0)
@@ -233,7 +235,7 @@ def position(
         "value": apart(_ask(separation, "--separation", "Separation", "12.1±0.3 mas", apart)),
         "unit": "mas",
         "position_angle_deg": towards(_ask(angle, "--angle", "Position angle", "143±2 deg", towards)),
-        "correlation": rho.value if rho is not None else None,
+        "correlation": rho,
     }
     _log(shared, [draft], db, json, quiet)
 
@@ -264,7 +266,9 @@ def shell(
 ) -> None:
     """Log the radius of a dust shell in an image."""
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
-    scale = measured(plate_scale_error, "fraction", "--plate-scale-error", low=0.0, high=1.0)
+    scale = plain_number(
+        plate_scale_error, "fraction", "--plate-scale-error", low=0.0, high=1.0, shown="0.5 %"
+    )
 
     def size(text: str) -> Any:
         return measured(text, "arcsec", "--radius", low=0.0, low_open=True)
@@ -276,7 +280,7 @@ def shell(
         "position_angle_deg": measured(angle, "deg", "--angle", low=-360.0, high=360.0),
         "feature": plain(feature, "--feature", 60),
         "measured_at": one_of(measured_at, ("edge", "peak"), "--measured-at"),
-        "plate_scale_error": scale.value if scale is not None else None,
+        "plate_scale_error": scale,
         "shell_index": None if index is None else shell_index(index),
         "band": plain(band, "--band", 24),
     }

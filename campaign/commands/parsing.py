@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from typing import Any
 
 from campaign.errors import InputRefused
@@ -122,21 +121,11 @@ def whole_number(text: str, name: str, limit: int, example: int) -> int:
 
 def plain_number(text: str | None, unit: str, name: str, **domain: Any) -> float | None:
     """A number with an optional unit, for what is kept without an error; an error given is refused."""
-    try:
-        value = measured(text, unit, name, **domain)
-    except InputRefused as problem:
-        problem.hint = re.sub(r"±[\d.]+", "", problem.hint)  # the accepted form has no error here
-        raise
-    if value is None:
+    if text is None:
         return None
-    if value.error_known:
-        raise InputRefused(
-            f"{name} takes no error.",
-            why=f'"{text}" has one, and it would be lost.',
-            hint=f"For example {name} {value.value:g}.",
-            code="error-not-kept",
-        )
-    return value.value
+    from campaign.reading.values import read_plain_value
+
+    return read_plain_value(text, unit, name, **domain)
 
 
 def plain(text: str | None, name: str, longest: int = 200) -> str | None:

@@ -9,7 +9,7 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import measured, plain
+from campaign.commands.parsing import plain, plain_number
 from campaign.errors import InputRefused
 
 Text = str | None
@@ -42,16 +42,16 @@ def add(
         read_measured_or_bound(elongation, "deg", "--elongation", low=0.0, high=180.0) if elongation else None
     )
     _one_kind(name, elongation, latitude, longitude, height, horizon)
-    metres = measured(height, "m", "--height", low=-500.0, high=9000.0)
-    lowest = measured(horizon, "deg", "--horizon", low=-5.0, high=90.0)
+    metres = plain_number(height, "m", "--height", low=-500.0, high=9000.0)
+    lowest = plain_number(horizon, "deg", "--horizon", low=-5.0, high=90.0)
     site = Site(
         id=0,
         name=plain(name, "SITE", 120) or "",
         kind="space" if elongation is not None else "ground",
         latitude_deg=None if latitude is None else read_latitude(latitude),
         longitude_deg_east=None if longitude is None else read_longitude(longitude),
-        height_m=None if metres is None else metres.value,
-        horizon_deg=None if lowest is None else lowest.value,
+        height_m=metres,
+        horizon_deg=lowest,
         elongation_min_deg=span.low if isinstance(span, Range) else None,
         elongation_max_deg=span.high if isinstance(span, Range) else None,
         time_zone=_known_zone(time_zone),

@@ -114,11 +114,9 @@ def _event(text: str):  # type: ignore[no-untyped-def]
 def _fraction(text: str | None) -> float:
     if text is None:
         return 0.0
-    from campaign.commands.parsing import measured
+    from campaign.commands.parsing import plain_number
 
-    value = measured(text, "fraction", "--min-probability", low=0.0, high=1.0)
-    assert value is not None
-    return value.value
+    return plain_number(text, "fraction", "--min-probability", low=0.0, high=1.0, shown="0.5") or 0.0
 
 
 def _count(text: str | None, name: str, low: int, high: int) -> int | None:

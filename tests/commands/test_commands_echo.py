@@ -21,8 +21,8 @@ def test_an_error_that_has_no_place_is_refused_and_not_lost(run_campaign: RunCam
     run_campaign("begin")
     ran = run_campaign("system", "add", "Ember 1", "--ra", "18", "--dec", "5", "--pm-ra", "-3.2±0.1 mas/yr")
     assert ran.status == 3
-    assert "--pm-ra takes no error" in ran.err
-    assert "--pm-ra -3.2" in ran.err.splitlines()[2]
+    assert "without an error" in ran.err
+    assert "±" not in ran.err.splitlines()[2]
     unread = run_campaign("system", "add", "Ember 1", "--ra", "18", "--dec", "5", "--pm-ra", "fast")
     assert "±" not in unread.err.splitlines()[2]
 
