@@ -44,7 +44,7 @@ __all__ = [
 _KEYS_IN_STATEMENT = 500
 
 # What was measured, as against how well and by whom: two entries alike in these are one observation.
-_SAMENESS = (
+SAMENESS = (
     "system_id",
     "kind",
     "unit",
@@ -188,7 +188,7 @@ def _row(writing: Writing, observation: Observation, numbers: _Numbers) -> dict[
 
 def _sameness(row: Mapping[str, Any]) -> str:
     """Digest of what was measured; equal for two entries of one observation."""
-    parts = [repr(_plain(row[name])) for name in _SAMENESS]
+    parts = [repr(_plain(row[name])) for name in SAMENESS]
     # Conversions round: instants within half of 1e-8 d (0.4 ms) are one.
     parts.append(f"{row['bmjd_tdb']:.8f}")
     if row["value"] is None:

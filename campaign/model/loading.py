@@ -120,14 +120,15 @@ class TableMapping:
     """Which columns of a table are taken for what.
 
     ``columns`` and ``constants`` belong to every value of a row, ``targets`` to one each: a table with a
-    column for each band has several. ``notes`` say what was concluded and how.
+    column for each band has several. ``instants`` says how the cells of each instant are to be read (of an
+    observation: "time"); ``notes`` say what was concluded and how.
     """
 
     kind: LoadKind
     columns: Mapping[str, ColumnUse]
     constants: Mapping[str, str]
     targets: tuple[ValueTarget, ...]
-    time: TimeMeaning | None = None
+    instants: Mapping[str, TimeMeaning]
     unused: tuple[str, ...] = ()
     missing: tuple[str, ...] = ()
     notes: tuple[str, ...] = ()

@@ -145,15 +145,14 @@ def _contradicted(column: str, what: str, named: str, told: str) -> InputRefused
 def spoken(meaning: TimeMeaning) -> str:
     """The meaning in words, for the mapping that is shown."""
     where = {
-        "observatory": "where it was observed",
-        "geocentre": "at the centre of the Earth",
-        "heliocentre": "at the Sun",
-        "barycentre": "at the barycentre",
-        None: "where it was observed",
+        "observatory": "as observed from the Earth",
+        "geocentre": "geocentric",
+        "heliocentre": "heliocentric",
+        "barycentre": "barycentric",
+        None: "as observed from the Earth",
     }[meaning.place]
-    scale = meaning.scale.upper() if meaning.scale else "the scale that each cell says"
+    scale = meaning.scale.upper() if meaning.scale else "in the scale that each cell says"
     if meaning.count == "text":
         return f"dates written out, {scale}, {where} unless a cell says otherwise"
-    offset = meaning.offset_d
-    added = f" after {'+' if offset > 0 else ''}{float(offset):.15g}" if offset else ""
+    added = f", {float(meaning.offset_d):.15g} added" if meaning.offset_d else ""
     return f"{meaning.count.upper()}{added}, {scale}, {where}"
