@@ -199,7 +199,12 @@ def _full(address: Address) -> StorageFull:
 
 
 def _unusable(address: Address, code: str, message: str, why: str) -> DatabaseUnusable:
-    return DatabaseUnusable(message, why=why, hint="Try again; if it stays so, keep the file and name a copy from before with --db.", code=code)
+    return DatabaseUnusable(
+        message,
+        why=why,
+        hint="Try again; if it stays so, keep the file and name a copy from before with --db.",
+        code=code,
+    )
 
 
 def _without_password(text: str, address: Address) -> str:

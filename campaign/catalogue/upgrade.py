@@ -201,7 +201,7 @@ def _refuse_damaged(connection: Connection, address: Address) -> None:
         raise DatabaseUnusable(
             f"The database {address.shown} is damaged.",
             why=f"The check after the upgrade found: {found}",
-            hint="The snapshot taken before the upgrade is beside it, named -before-; name that one with --db.",
+            hint="The snapshot from before is beside it, named -before-; name that one with --db.",
             code="database-damaged",
         )
 

@@ -144,7 +144,11 @@ def test_scale_and_place_of_the_instants_are_told():
     for kind in ("observations", "episodes", "solutions", "systems"):
         document = votable.parse(io.BytesIO(text_of("votable", kind, system=[]).encode()))
         (system,) = document.iter_timesys()
-        assert (system.timescale, system.refposition, system.timeorigin) == ("TDB", "BARYCENTER", "MJD-origin")
+        assert (system.timescale, system.refposition, system.timeorigin) == (
+            "TDB",
+            "BARYCENTER",
+            "MJD-origin",
+        )
         on_axis = [column.name for column in exchange_columns(kind) if column.on_axis]
         pointing = [f.name for f in document.get_first_table().fields if f.ref == system.ID]
         assert pointing == on_axis
