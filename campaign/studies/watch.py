@@ -21,6 +21,7 @@ from campaign.model.forecasts import (
 from campaign.model.instants import TypedInstant
 from campaign.model.records import SystemRecord
 from campaign.reading.numbers import name_key
+from campaign.studies.collecting import collector_at_rest
 from campaign.studies.cycles import nominal_period_d
 from campaign.studies.instants import axis_instant
 from campaign.studies.lightcurves import CataloguedCurves
@@ -78,7 +79,7 @@ def load_campaign(
 
     entered = None if known_at is None else _MJD_ZERO + timedelta(days=known_at.mjd)
     observed = None if as_of is None else axis_instant(as_of)
-    with store.reading(db) as connection:
+    with collector_at_rest(), store.reading(db) as connection:
         ids = None if names is None else [systems.find_system(connection, name).id for name in names]
         found = records.load_records(connection, ids, known_at=entered, include_retired=ids is not None)
         counts = observations.count_observations(connection, ids)
@@ -274,7 +275,8 @@ def upcoming(campaign: Campaign, question: Question) -> UpcomingResult:
     -----
     Accuracy: see ``forecast_campaign``. Source: DEVELOPERS.md.
     """
-    result = forecast_campaign(campaign.records, campaign.photometry, question)
+    with collector_at_rest():
+        result = forecast_campaign(campaign.records, campaign.photometry, question)
     return _with_date_note(_with_next(result, campaign, question), campaign, question)
 
 
