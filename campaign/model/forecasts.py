@@ -16,6 +16,10 @@ STATUSES: tuple[Status, ...] = (
 )  # fmt: skip
 
 
+# How the note of an event begins that several weighted solutions date together.
+MIXTURE = "mixture of"
+
+
 @dataclass(frozen=True, slots=True)
 class Quantiles:
     """A dated distribution in ``bmjd_tdb``; equal-tailed. Without an error only ``median`` is known."""

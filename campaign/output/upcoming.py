@@ -7,7 +7,7 @@ from dataclasses import replace
 
 from rich.cells import cell_len
 
-from campaign.model.forecasts import EventForecast, UpcomingResult, UtcQuantiles
+from campaign.model.forecasts import MIXTURE, EventForecast, UpcomingResult, UtcQuantiles
 from campaign.output.console import Screen
 from campaign.output.tables import Cell, Column, Row, fits, print_table
 from campaign.output.timeline import render_timeline
@@ -56,6 +56,12 @@ _LABEL_LIMIT = 20
 
 def render_upcoming(screen: Screen, result: UpcomingResult) -> None:
     """Write the whole forecast."""
+    if not result.bases:
+        screen.wrapped(
+            "No system is under watch. Add one with: campaign system add NAME --ra ... --dec ..., "
+            "or look at the invented sample: campaign upcoming --sample"
+        )
+        return
     render_dates(screen, result)
     render_bases(screen, result)
     render_notes(screen, result)
@@ -176,18 +182,29 @@ def render_notes(screen: Screen, result: UpcomingResult) -> None:
 def event_notes(events: Sequence[EventForecast]) -> list[str]:
     """Each note once a system, with the events that it is about."""
     about: dict[tuple[str, str], list[str]] = {}
+    apart: dict[tuple[str, str], list[float]] = {}
     for event in by_date(events):
         notes = list(event.notes)
-        # A mixture tells in its own note how far its solutions are apart.
-        if event.disagreement_sigma is not None and not any("disagree by" in note for note in notes):
+        mixture = next((note for note in notes if note.startswith(MIXTURE)), None)
+        if event.disagreement_sigma is not None and mixture is not None:
+            apart.setdefault((event.system, mixture), []).append(abs(event.disagreement_sigma))
+        elif event.disagreement_sigma is not None:
             by = f"by {event.solution} it" if event.solution else "it"
             notes.append(f"{by} is {event.disagreement_sigma:+.1f} sigma from the solution listed first")
         for note in notes:
             about.setdefault((event.system, note), []).append(occasion(event))
     return [
-        f"{system}, {', '.join(dict.fromkeys(occasions))}: {note}"
+        f"{system}, {', '.join(dict.fromkeys(occasions))}: {note}{_disagreement(apart.get((system, note)))}"
         for (system, note), occasions in about.items()
     ]
+
+
+def _disagreement(sigmas: Sequence[float] | None) -> str:
+    """How far the solutions of a mixture are apart, over all the events that it dates."""
+    if not sigmas:
+        return ""
+    least, most = f"{min(sigmas):.1f}", f"{max(sigmas):.1f}"
+    return f", which disagree by {least if least == most else f'{least} to {most}'} sigma"
 
 
 def _day(utc: str) -> str:

@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 
 from campaign.model.forecasts import (
+    MIXTURE,
     DustWindow,
     EventForecast,
     Quantiles,
@@ -130,10 +131,7 @@ def _mixture_notes(rows: Sequence[ForecastRow], unit: ForecastUnit, one: DatedEv
         solution = rows[dating[0][0]].solution
         return [f"from '{solution.label}' alone, which has what it needs"] if solution is not None else []
     weights = ", ".join(f"{w:.2g}" for _, w in dating)
-    text = f"mixture of {len(dating)} solutions with weights {weights}"
-    if one.disagreement_sigma is not None:
-        text += f", which disagree by {abs(one.disagreement_sigma):.1f} sigma"
-    return [text]
+    return [f"{MIXTURE} {len(dating)} solutions with weights {weights}"]
 
 
 def dust_windows(
@@ -244,9 +242,20 @@ def describe_basis(
         if first.rule is not None and first.events and dates is None:
             parts.append(f"rule {first.rule.kind}")
             parts.extend(dict.fromkeys(note for i in unit.rows if (note := reach_note(rows[i]))))
-        parts.extend(dict.fromkeys(n for i in unit.rows for n in rows[i].notes))
+        parts.extend(_notes_of([rows[i] for i in unit.rows]))
         result.append(SystemBasis(first.record.system.name, "; ".join(parts), bool(first.events)))
     return tuple(result)
+
+
+def _notes_of(rows: Sequence[ForecastRow]) -> list[str]:
+    """Notes of the rows of a unit; one that is not true of all of them names its solution."""
+    notes: dict[str, None] = {}
+    for row in rows:
+        for note in row.notes:
+            shared = all(note in other.notes for other in rows)
+            label = "" if shared or row.solution is None else f"'{row.solution.label}': "
+            notes[label + note] = None
+    return list(notes)
 
 
 def describe_solution(solution: Solution) -> str:
