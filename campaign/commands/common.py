@@ -222,7 +222,11 @@ def ask(question: str) -> str:
     """
     sys.stderr.write(visible(question) + " ")
     sys.stderr.flush()
-    answer = sys.stdin.readline()
+    try:
+        answer = sys.stdin.readline()
+    except KeyboardInterrupt:
+        sys.stderr.write("\n")
+        raise
     if not answer:
         sys.stderr.write("\n")
         raise Declined(

@@ -348,7 +348,9 @@ def _ask(
             details={"missing": name},
         )
     while True:
-        answer: str = typer.prompt(f"{question} (as {example})", err=True)
+        answer = common.ask(f"{question} (as {example}):").strip()
+        if not answer:
+            continue
         try:
             if check is not None:
                 check(answer)
@@ -365,15 +367,14 @@ def _when(at: str | None) -> str:
     if at is not None or not common.asks_questions():
         return _ask(at, "--at", "When, UTC", "2031-04-07T03:12:10Z")
     while True:
-        answer = typer.prompt(
-            "When, UTC (as 2031-04-07T03:12:10Z; empty for now)", default="", show_default=False, err=True
-        )
+        answer = common.ask("When, UTC (as 2031-04-07T03:12:10Z; empty for now):").strip()
+        when = answer or common.now_iso()
         try:
-            read_instant(answer or common.now_iso())
+            read_instant(when)
         except InputRefused as problem:
             common.tell(f"{problem.message} {problem.why}")
             continue
-        return answer or common.now_iso()
+        return when
 
 
 def _where_in_the_spectrum(
@@ -382,7 +383,7 @@ def _where_in_the_spectrum(
     """Band, frequency and energy range of a flux, asked for at a terminal when none was given."""
     if not (band is None and frequency is None and energy is None and common.asks_questions()):
         return band, frequency, energy
-    answer = typer.prompt("Band, frequency or energies (as N, 8.4 GHz or 0.5..10 keV)", err=True)
+    answer = _ask(None, "--band", "Band, frequency or energies", "N, 8.4 GHz or 0.5..10 keV")
     unit = answer.casefold()
     if unit.endswith("hz"):
         return None, answer, None
@@ -404,7 +405,7 @@ def _shared(
     name = _ask(system, "SYSTEM", "System", "Lantern 3")
     when = _when(at)
     if bare and site is None:
-        site = typer.prompt("Site (empty for none)", default="", show_default=False, err=True) or None
+        site = common.ask("Site (empty for none):").strip() or None
     return {
         "system": name,
         "at": when,

@@ -65,9 +65,8 @@ def dated(moment: Moment) -> str:
     day = calendar_day(moment.bmjd_tdb)
     if minus is None or plus is None:
         return f"{day} (error unknown)"
-    if minus == plus:
-        return f"{day} ± {plus:.2g} d"
-    return f"{day} +{plus:.2g} −{minus:.2g} d"
+    below, above = (f"{size:.2g}" if size < 99.5 else f"{size:.0f}" for size in (minus, plus))
+    return f"{day} ± {above} d" if minus == plus else f"{day} +{above} −{below} d"
 
 
 def period_in_years(period: Measured | Limit | Range | None) -> str:

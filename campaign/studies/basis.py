@@ -293,6 +293,7 @@ def describe_solution(solution: Solution) -> str:
 def _with_error(value: Measured) -> str:
     if value.minus is None or value.plus is None:
         return f"{value.value:.8g} (error unknown)"
+    below, above = (f"{size:.3g}" if size < 999.5 else f"{size:.0f}" for size in (value.minus, value.plus))
     if value.minus == value.plus:
-        return f"{value.value:.8g} ± {value.plus:.3g}"
-    return f"{value.value:.8g} +{value.plus:.3g} -{value.minus:.3g}"
+        return f"{value.value:.8g} ± {above}"
+    return f"{value.value:.8g} +{above} -{below}"

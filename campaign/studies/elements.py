@@ -134,9 +134,10 @@ def _text(value: Measured | Limit | Range, unit: str) -> str:
         return f"{value.low:.8g} to {value.high:.8g}{tail}"
     if value.minus is None or value.plus is None:
         return f"{value.value:.9g}{tail} (error unknown)"
+    below, above = (f"{size:.3g}" if size < 999.5 else f"{size:.0f}" for size in (value.minus, value.plus))
     if value.minus == value.plus:
-        return f"{value.value:.9g} ± {value.plus:.3g}{tail}"
-    return f"{value.value:.9g} +{value.plus:.3g} -{value.minus:.3g}{tail}"
+        return f"{value.value:.9g} ± {above}{tail}"
+    return f"{value.value:.9g} +{above} -{below}{tail}"
 
 
 def _years(period: Measured | Limit | Range) -> str:

@@ -96,5 +96,6 @@ def spoken_moment(moment: Moment) -> str:
     minus, plus = moment.minus_d or 0.0, moment.plus_d or 0.0
     error = ""
     if max(minus, plus) > _MINUTE_D:
-        error = f" ± {plus:.2g} d" if minus == plus else f" +{plus:.2g} −{minus:.2g} d"
+        below, above = (f"{size:.2g}" if size < 99.5 else f"{size:.0f}" for size in (minus, plus))
+        error = f" ± {above} d" if minus == plus else f" +{above} −{below} d"
     return f"BMJD_TDB {moment.bmjd_tdb:.6f}{error}" + (f" ({iso} at the barycentre)" if iso else "")

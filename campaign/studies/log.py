@@ -78,7 +78,8 @@ def log_observations(
         longitude = site.longitude_deg_east if site is not None else None
         instant = read_instant(at_text, longitude_deg_east=longitude)
         moment = moment_of(instant, system, site)
-        entries, warnings = [], _warnings(instant, stamp.at, site)
+        measured = any(draft.kind not in ("remark", "attempt") for draft in drafts)
+        entries, warnings = [], _warnings(instant, stamp.at, site, measured)
         for draft in drafts:
             observation = replace(
                 draft,
@@ -127,14 +128,14 @@ def _error(value: Measured) -> str:
     return f"±{value.plus:g}" if value.minus == value.plus else f"+{value.plus:g} -{value.minus:g}"
 
 
-def _warnings(instant: TypedInstant, now: datetime, site: Site | None) -> list[str]:
+def _warnings(instant: TypedInstant, now: datetime, site: Site | None, measured: bool) -> list[str]:
     warnings = []
     today = _MJD_OF_UNIX_EPOCH + now.astimezone(UTC).timestamp() / 86_400.0
     if instant.mjd > today + 1.0:
         warnings.append("the observation is dated in the future")
     # Only who gives a clock time is told of the 0.021 s that the place on Earth can make.
     precise = instant.plus_d is not None and instant.plus_d * 86_400.0 < 0.1
-    if site is None and instant.place == "observatory" and precise:
+    if measured and site is None and instant.place == "observatory" and precise:
         warnings.append("no site given: the light time is that of the geocentre, within 0.021 s")
     return warnings
 
