@@ -95,7 +95,7 @@ def prepare(
     """
     prepared = Prepared([], [], {})
     for whole in records:
-        record = hide_later_episodes(whole, question.as_of)
+        record, before = hide_later_episodes(whole, question.as_of), len(prepared.rows)
         for solutions, weights in _speakers(record, question.solutions):
             rows = tuple(_add_row(prepared, record, solution) for solution in solutions)
             first = prepared.rows[rows[0]]
@@ -107,7 +107,15 @@ def prepare(
                 watched=record.system.id in photometry,
             )
             prepared.units.append(unit)
+        _count_conjunctions_alike(prepared.rows[before:])
     return prepared
+
+
+def _count_conjunctions_alike(rows: Sequence[ForecastRow]) -> None:
+    """A conjunction near apastron lies half a period from two periastra: one solution decides for all."""
+    known = [row.values["omega_b_deg"][0] for row in rows if "omega_b_deg" in row.values]
+    for row in rows:
+        row.omega_reference_deg = known[0] if known else None
 
 
 def hide_later_episodes(record: SystemRecord, as_of: float) -> SystemRecord:

@@ -72,7 +72,8 @@ class ForecastRow:
     """One system with one solution (or none) and its rule, ready to be drawn from.
 
     ``values`` holds (value, minus, plus) of each known quantity, with None for an unknown error.
-    ``events`` maps each event that can be dated to the quantities that it needs.
+    ``events`` maps each event that can be dated to the quantities that it needs. ``omega_reference_deg``
+    is the omega of star B by which all solutions of a system count the cycles of their conjunctions.
     """
 
     record: SystemRecord
@@ -82,6 +83,7 @@ class ForecastRow:
     values: dict[str, tuple[float, float | None, float | None]] = field(default_factory=dict)
     events: dict[EventName, tuple[str, ...]] = field(default_factory=dict)
     a_source: str | None = None
+    omega_reference_deg: float | None = None
     period_is_range: bool = False
     period_limit: Limit | None = None
     notes: list[str] = field(default_factory=list)

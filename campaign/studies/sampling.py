@@ -52,6 +52,8 @@ class Sampler:
         self.normals = stratified_normals(self._names, draws, seed)
         self.columns = {name: self._column(name) for name in DOMAINS}
         self.scatter = {event: self._scatter(event) for event in SCATTERS}
+        references = [row.omega_reference_deg for row in rows]
+        self.omega_reference = np.array([np.nan if r is None else r for r in references], dtype=float)
         self.epoch_cycle = np.array([row.epoch_cycle for row in rows], dtype=np.int64)
         self.rule = np.array([RULE_CODES[row.rule.kind] if row.rule else 0 for row in rows])
         self.mark = np.array([MARK_CODES[row.mark] for row in rows])
@@ -146,11 +148,14 @@ class Sampler:
     def _conjunction_phase(self, index: IntArray, event: EventName) -> FloatArray:
         omega = self.draw("omega_b_deg", index)
         nominal = self.columns["omega_b_deg"][index, 0]
-        # The conjunction nearest to periastron, followed continuously as omega varies.
+        reference = self.omega_reference[index]
+        reference = np.where(np.isnan(reference), nominal, reference)
+        # The conjunction nearest to periastron in the solution that all of a system count by, followed
+        # continuously from there, as omega varies within its error and from solution to solution.
         target = CONJUNCTION_DEG[event]
-        turns = np.round((target - nominal) / 360.0)[:, None]
+        turns = np.round((target - reference) / 360.0) - np.round((nominal - reference) / 360.0)
         return conjunction_offset_phase(
-            self.draw("eccentricity", index), np.radians(target - omega - 360.0 * turns)
+            self.draw("eccentricity", index), np.radians(target - omega - 360.0 * turns[:, None])
         )
 
     def event_times(self, event: EventName, index: IntArray, cycles: IntArray) -> FloatArray:

@@ -66,3 +66,33 @@ def test_a_cycle_of_many_dates_a_year_is_no_share_of_a_year(run_campaign: RunCam
 def test_names_are_found_whatever_their_case_and_spaces(kept: RunCampaign) -> None:
     for name in ("Lantern 3", "lantern3", " LANTERN  3 ", "ln3", "L N 3"):
         assert kept("upcoming", "--system", name, *NOW).status == 0, name
+
+
+def _conjunctions(run: RunCampaign, *more: str) -> list[dict[str, Any]]:
+    words = ("upcoming", "--from", "2027-01-01", "--until", "2040-01-01", *NOW, "--json", *more)
+    events = run(*words).document["data"]["events"]
+    return [event for event in events if event["event"] == "B in front"]
+
+
+@pytest.mark.parametrize("omegas", [("88±1", "92±1"), ("92±1", "88±1"), ("359±1", "3±1"), ("271±1", "267±1")])
+def test_a_conjunction_near_apastron_is_one_event_for_two_solutions(
+    run_campaign: RunCampaign, omegas: tuple[str, str]
+) -> None:
+    """With omega of B at 90 deg it passes in front at apastron, as near to one periastron as to the next."""
+    run_campaign("begin")
+    run_campaign("system", "add", "Twin 1", "--ra", "10", "--dec", "10")
+    for label, omega in zip(("first", "second"), omegas, strict=True):
+        run_campaign(
+            "solution", "add", "Twin 1", "--label", label, "--period", "3000±1 d", "--epoch", "MJD 61233.7±1",
+            "--eccentricity", "0.3±0.01", "--omega", omega, "--omega-of", "B",
+        )  # fmt: skip
+    assert run_campaign("solution", "adopt", "Twin 1", "first=0.5", "second=0.5").status == 0
+    mixed = _conjunctions(run_campaign)
+    assert mixed
+    for event in mixed:
+        # 4 deg of the orbit at its slowest are under 90 d; a miscounted cycle would be 3000 d.
+        assert event["bmjd_tdb"]["hi95"] - event["bmjd_tdb"]["lo95"] < 200.0
+    apart = _conjunctions(run_campaign, "--solutions")
+    for cycle in {event["cycle"] for event in apart}:
+        dates = [event["bmjd_tdb"]["median"] for event in apart if event["cycle"] == cycle]
+        assert max(dates) - min(dates) < 200.0
