@@ -27,7 +27,13 @@ def ephemeris(
     db: DbOption = None,
     json: JsonOption = False,
 ) -> None:
-    """Phase, true anomaly, separation, position and velocities, dated."""
+    """Phase, true anomaly, separation, position and velocities, dated.
+
+    \b
+    For example:
+      campaign ephemeris "Lantern 3" --from 2031-01-01 --until 2032-01-01 \\
+        --step 30d
+    """
     from campaign.output import ephemeris as output
     from campaign.reading.instants import read_duration
     from campaign.studies import watch

@@ -30,7 +30,13 @@ def add(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Add a confirmed episode with the dates known of it."""
+    """Add a confirmed episode with the dates known of it.
+
+    \b
+    For example:
+      campaign episodes add "Lantern 3" --onset "2019-03-14±5 d" \\
+        --maximum 2019-06 --band K --source "..."
+    """
     from campaign.model.systems import Episode
     from campaign.reading.instants import read_instant
     from campaign.studies import episodes as study

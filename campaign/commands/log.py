@@ -47,7 +47,14 @@ def photometry(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Log magnitudes, in one band or in several."""
+    """Log magnitudes, in one band or in several.
+
+    \b
+    For example:
+      campaign log photometry "Lantern 3" K=7.31±0.03 --at 2031-04-07T03:12:10Z
+      campaign log photometry "Lantern 3" J=8.91±0.03 L=">5.0" \\
+        --at 2031-04-07/08 --site "Cold Mesa"
+    """
     from campaign.reading.values import read_assignment
 
     shared = _shared(system, at, site, instrument, source, quality, note, observer)
@@ -93,7 +100,13 @@ def flux(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Log a flux: infrared, radio or X-ray."""
+    """Log a flux: infrared, radio or X-ray.
+
+    \b
+    For example:
+      campaign log flux "Lantern 3" --value "2.3±0.2 mJy" \\
+        --frequency "8.4 GHz" --at 2031-04-07
+    """
     from campaign.model.measured import Range
     from campaign.reading.values import read_measured_or_bound
 

@@ -53,7 +53,16 @@ def set_(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Say how onset, maximum and end follow from the orbit."""
+    """Say how onset, maximum and end follow from the orbit.
+
+    \b
+    For example:
+      campaign rule set "Lantern 3" --separation "6.4±0.8 au" \\
+        --condensation-distance "100±20 au" --flow-speed "2000±200 km/s"
+      campaign rule set "Lantern 3" --phase-onset -0.02±0.01 --phase-end 0.1±0.02
+      campaign rule set "Lantern 3" --lag-onset "-40±10 d" --lag-end "200±20 d"
+      campaign rule set "Lantern 3" --learned
+    """
     from campaign.model.systems import DustRule
     from campaign.studies import rules as study
 

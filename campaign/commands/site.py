@@ -31,7 +31,14 @@ def add(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Add a site on the ground, or a space platform."""
+    """Add a site on the ground, or a space platform.
+
+    \b
+    For example:
+      campaign site add "Cold Mesa" --latitude -31.20 --longitude "70.00 W" \\
+        --height "2300 m"
+      campaign site add "Orbiter" --elongation 85..135
+    """
     from campaign.model.measured import Range
     from campaign.model.systems import Site
     from campaign.reading.angles import read_latitude, read_longitude

@@ -57,7 +57,14 @@ def add(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Add a set of orbital elements to a system."""
+    """Add a set of orbital elements to a system.
+
+    \b
+    For example:
+      campaign solution add "Lantern 3" --period "3127.5±0.3 d" \\
+        --epoch "BJD 2461234.2±0.5" --eccentricity 0.71±0.02 \\
+        --omega "143±2 deg" --omega-of A --source "..." --adopt
+    """
     from campaign.model.systems import EPOCH_MARKS, Solution
     from campaign.studies import solutions as study
 
@@ -118,7 +125,13 @@ def adopt(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Forecast from one solution, or from several with weights."""
+    """Forecast from one solution, or from several with weights.
+
+    \b
+    For example:
+      campaign solution adopt "Lantern 3" "visual 2025" --instead
+      campaign solution adopt "Lantern 3" "visual 2025=0.7" "solution 1=0.3"
+    """
     from campaign.studies import solutions as study
 
     weights = dict(_weighted(text) for text in labels)

@@ -75,7 +75,13 @@ def add(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Put a system under watch."""
+    """Put a system under watch.
+
+    \b
+    For example:
+      campaign system add "Lantern 3" --ra 18:02:31.5 --dec -45:12:30 \\
+        --distance "2.1±0.2 kpc" --alias LN3
+    """
     given = dict(locals())
     if ra is None or dec is None:
         raise UsageRefused(

@@ -53,7 +53,15 @@ def upcoming(
     db: DbOption = None,
     json: JsonOption = False,
 ) -> None:
-    """The episodes to come: when, how sure, and why."""
+    """The episodes to come: when, how sure, and why.
+
+    \b
+    For example:
+      campaign upcoming --within 5yr
+      campaign upcoming --system "Lantern 3"   # its forecast step by step
+      campaign upcoming --event onset --from 2030-01-01 --until 2032-01-01
+      campaign upcoming --sample               # on an invented campaign
+    """
     from campaign.output import upcoming_document as documents
     from campaign.studies import watch
 
