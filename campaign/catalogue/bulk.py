@@ -34,12 +34,11 @@ OTHER_IDENTITY = (
     "measured_at", "shell_index",
 )  # fmt: skip
 _KNOWN_COLUMNS = (
-    "id", "bmjd_tdb", "value", "value_minus", "value_plus", "limit_side", "band", "photometric_system",
-    "site_id", "sameness", *OTHER_IDENTITY,
+    "id", "bmjd_tdb", "value", "value_minus", "value_plus", "position_angle_deg", "limit_side", "band",
+    "photometric_system", "site_id", "sameness", *OTHER_IDENTITY,
 )  # fmt: skip
-# The columns of a digest that come before the value, which few rows share with no other.
 _DIGEST_BYTES = 16
-_WITHOUT_ANGLE, _WITH_ANGLE = "None\x1f{}".format, "{}\x1f{}".format
+# The columns of a digest that come before the value: many rows are alike in them.
 _GROUPED = SAMENESS[: SAMENESS.index("value")]
 
 
@@ -54,23 +53,30 @@ def digests_of(columns: ObservationColumns) -> NDArray[np.uint64]:
         Both halves of each digest, big-endian.
     """
     prefixes, group = _prefixes(columns)
+    # What rows of a group have in common goes into the hash once; each row takes it up from there.
+    begun = [
+        blake2b(prefix.encode("utf-8", "backslashreplace"), digest_size=_DIGEST_BYTES) for prefix in prefixes
+    ]
     found = np.empty((columns.size, 2), dtype=">u8")
     for start in range(0, columns.size, _BLOCK_ROWS):
         part = slice(start, start + _BLOCK_ROWS)
-        begins = map(prefixes.__getitem__, group[part].tolist())
-        values = map(repr, columns.numbers["value"][part].tolist())
-        times = map("{:.8f}".format, columns.numbers["bmjd_tdb"][part].tolist())
-        if "position_angle_deg" in columns.numbers:
-            angles = columns.numbers["position_angle_deg"][part].tolist()
-            ends = map(_WITH_ANGLE, ("None" if isnan(each) else repr(each) for each in angles), times)
-        else:
-            ends = map(_WITHOUT_ANGLE, times)
-        digests = [
-            blake2b(text.encode("utf-8", "backslashreplace"), digest_size=_DIGEST_BYTES).digest()
-            for text in map("\x1f".join, zip(begins, values, ends, strict=True))
-        ]
+        digests = []
+        for number, end in zip(group[part].tolist(), _ends(columns, part), strict=True):
+            hashing = begun[number].copy()
+            hashing.update(end)
+            digests.append(hashing.digest())
         found[part] = np.frombuffer(b"".join(digests), dtype=">u8").reshape(-1, 2)
     return found
+
+
+def _ends(columns: ObservationColumns, part: slice) -> Iterator[bytes]:
+    """Value, position angle and time of some rows, as the digest has them."""
+    values = columns.numbers["value"][part].tolist()
+    times = columns.numbers["bmjd_tdb"][part].tolist()
+    if "position_angle_deg" not in columns.numbers:
+        return (b"\x1f%r\x1fNone\x1f%.8f" % pair for pair in zip(values, times, strict=True))
+    angles = (None if isnan(each) else each for each in columns.numbers["position_angle_deg"][part].tolist())
+    return (b"\x1f%r\x1f%r\x1f%.8f" % triple for triple in zip(values, angles, times, strict=True))
 
 
 def _prefixes(columns: ObservationColumns) -> tuple[list[str], NDArray[np.int64]]:
@@ -131,19 +137,20 @@ def known_rows(
         .order_by(columns.bmjd_tdb, columns.id)
     ).all()
     cells: list[Sequence[Any]] = list(zip(*rows, strict=True)) or [()] * len(_KNOWN_COLUMNS)
-    value, minus, plus = (np.array(cells[place], dtype=np.float64) for place in (2, 3, 4))
+    time, value, minus, plus, angle = (np.array(cells[place], dtype=np.float64) for place in range(1, 6))
     return KnownRows(
-        np.array(cells[0], dtype=np.int64),
-        np.array(cells[1], dtype=np.float64),
-        value,
-        minus,
-        plus,
-        cells[5],
-        cells[6],
-        cells[7],
-        cells[8],
-        list(zip(*cells[10:], strict=True)),
-        cells[9],
+        id=np.array(cells[0], dtype=np.int64),
+        bmjd_tdb=time,
+        value=value,
+        value_minus=minus,
+        value_plus=plus,
+        position_angle_deg=angle,
+        limit_side=cells[6],
+        band=cells[7],
+        photometric_system=cells[8],
+        site_id=cells[9],
+        sameness=cells[10],
+        other=list(zip(*cells[11:], strict=True)),
     )
 
 

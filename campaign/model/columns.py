@@ -44,6 +44,7 @@ class KnownRows:
     value: NDArray[np.float64]
     value_minus: NDArray[np.float64]
     value_plus: NDArray[np.float64]
+    position_angle_deg: NDArray[np.float64]
     limit_side: Sequence[str | None]
     band: Sequence[str | None]
     photometric_system: Sequence[str | None]

@@ -43,15 +43,11 @@ class Misfit:
 
 @dataclass(frozen=True, slots=True)
 class TableBlock:
-    """Some rows of a table, column by column as texts; ``lines`` says where each stood.
-
-    ``is_plain`` is True when no cell holds a character that cannot be seen.
-    """
+    """Some rows of a table, column by column as texts; ``lines`` says where each stood."""
 
     lines: Sequence[int]
     columns: Sequence[Sequence[str]]
     misfits: tuple[Misfit, ...] = ()
-    is_plain: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -195,25 +191,29 @@ class Loaded:
     """What a load came to.
 
     ``added`` is what went in (with ``rehearsed``: what would); ``already_known`` was in the catalogue,
-    ``repeated`` stood more than once in the table. ``bad_rows`` counts rows, ``bad`` lists every cell.
+    ``repeated`` stood more than once in the table. ``bad_rows`` counts rows, ``bad`` lists every cell. With
+    ``is_refused`` nothing went in. ``made`` counts what was made beside the rows, such as sites.
     """
 
     understood: Understood
     rows_read: int
     values_read: int
-    added: int
-    already_known: int
-    repeated: int
-    bad_rows: int
+    added: int = 0
+    already_known: int = 0
+    repeated: int = 0
+    bad_rows: int = 0
     bad: tuple[BadCell, ...] = ()
     conflicts: tuple[LoadConflict, ...] = ()
     warnings: tuple[LoadWarning, ...] = ()
     rehearsed: bool = False
+    is_refused: bool = False
     kept_mapping: str | None = None
     operation_id: int | None = None
     rejects_file: str | None = None
     line_word: Literal["line", "row"] = "line"
     made: Mapping[str, int] = field(default_factory=dict)
+    columns: tuple[str, ...] = ()
+    rejected: tuple[Rejected, ...] = ()
 
     @property
     def reasons(self) -> dict[str, int]:
@@ -222,3 +222,29 @@ class Loaded:
         for cell in self.bad:
             counts[cell.code] = counts.get(cell.code, 0) + 1
         return dict(sorted(counts.items(), key=lambda item: (-item[1], item[0])))
+
+
+@dataclass(frozen=True, slots=True)
+class LoadWanted:
+    """What is asked of a load, beside the file.
+
+    ``request`` is what the user said of the columns; ``mapping`` and ``keep_mapping`` are names of kept
+    mappings. ``keeps_rejected`` asks for the cells of every bad row.
+    """
+
+    request: MappingRequest = field(default_factory=MappingRequest)
+    mapping: str | None = None
+    keep_mapping: str | None = None
+    encoding: str | None = None
+    skip_bad: bool = False
+    also_conflicts: bool = False
+    rehearse: bool = False
+    keeps_rejected: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Rejected:
+    """A bad row with its cells as they stood, and what is wrong with it."""
+
+    cells: tuple[str, ...]
+    bad: tuple[BadCell, ...]

@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from campaign.errors import InputRefused
-from campaign.reading.numbers import MAX_NUMBER_LENGTH, MINUS_SIGN, forbidden_character, read_number
+from campaign.reading.numbers import MAX_NUMBER_LENGTH, MINUS_SIGN, read_number
 
 FloatArray = NDArray[np.float64]
 
@@ -41,20 +41,20 @@ class NumberCells:
     faults: list[CellFault] = field(default_factory=list)
 
 
-def read_numbers(cells: Sequence[str], name: str, missing: Collection[str] = ()) -> NumberCells:
+def read_numbers(cells: Sequence[str], name: str) -> NumberCells:
     """The numbers of a column.
 
     Parameters
     ----------
     cells
-        As they stand; empty ones, and those in ``missing``, are unknown.
+        As they stand; empty ones are unknown.
     name
         Of the column, for the reasons.
     """
     fast = plain_numbers(cells)
     if fast is not None:
         return NumberCells(fast)
-    return _one_by_one(cells, name, missing)
+    return _one_by_one(cells, name)
 
 
 def plain_numbers(cells: Sequence[str]) -> FloatArray | None:
@@ -85,14 +85,14 @@ def _has_vanished(cell: str) -> bool:
     return _DIGIT_BUT_ZERO.search(re.split("[eE]", cell, maxsplit=1)[0]) is not None
 
 
-def _one_by_one(cells: Sequence[str], name: str, missing: Collection[str]) -> NumberCells:
+def _one_by_one(cells: Sequence[str], name: str) -> NumberCells:
     values = np.full(len(cells), np.nan)
     faults = []
     known: dict[str, float | CellFault] = {}
     for place, cell in enumerate(cells):
         found = known.get(cell)
         if found is None:
-            found = known[cell] = _number(cell, name, missing)
+            found = known[cell] = _number(cell, name)
         if isinstance(found, CellFault):
             faults.append(CellFault(place, found.code, found.why))
         else:
@@ -100,9 +100,8 @@ def _one_by_one(cells: Sequence[str], name: str, missing: Collection[str]) -> Nu
     return NumberCells(values, faults)
 
 
-def _number(cell: str, name: str, missing: Collection[str]) -> float | CellFault:
-    text = cell.strip(" ")
-    if not text or text in missing:
+def _number(cell: str, name: str) -> float | CellFault:
+    if not cell.strip(" "):
         return float("nan")
     try:
         return read_number(cell, name)
@@ -119,10 +118,9 @@ class Vocabulary(Generic[Word]):
     ``read`` turns a cell into what it means; what it refuses is a fault of every row that has the cell.
     """
 
-    def __init__(self, read: Callable[[str], Word], missing: Collection[str] = ()) -> None:
+    def __init__(self, read: Callable[[str], Word]) -> None:
         self.words: list[Word] = []
         self._read = read
-        self._missing = missing
         self._numbers: dict[str, int] = {}
         self._same: dict[Word, int] = {}
         self._refused: dict[int, InputRefused] = {}
@@ -146,7 +144,7 @@ class Vocabulary(Generic[Word]):
 
     def _number(self, cell: str) -> int:
         text = cell.strip()
-        if not text or text in self._missing:
+        if not text:
             return -1
         try:
             word = self._read(text)
@@ -160,17 +158,11 @@ class Vocabulary(Generic[Word]):
         return self._same[word]
 
 
-def control_faults(cells: Sequence[str]) -> list[CellFault]:
-    """Cells with characters that cannot be seen."""
-    if "".join(cells).isprintable():
-        return []
-    faults = []
-    for place, cell in enumerate(cells):
-        if not cell.isprintable() and (found := forbidden_character(cell)):
-            faults.append(
-                CellFault(place, "control-character", f"Visible characters are expected, but {found}.")
-            )
-    return faults
+def without_missing(cells: Sequence[str], missing: Collection[str]) -> Sequence[str]:
+    """The cells, with those empty that hold a word for what is not known."""
+    if not missing:
+        return cells
+    return ["" if cell.strip() in missing else cell for cell in cells]
 
 
 def decimal_text(cell: str) -> str:

@@ -7,7 +7,7 @@ each is the same to the last bit as when it is read alone. Everything else is re
 from __future__ import annotations
 
 import re
-from collections.abc import Collection, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from decimal import Decimal, InvalidOperation, localcontext
 from itertools import repeat
@@ -67,7 +67,6 @@ def read_times(
     cells: Sequence[str],
     meaning: TimeMeaning,
     name: str,
-    missing: Collection[str] = (),
     longitudes_deg_east: Sequence[float | None] | None = None,
 ) -> TimeCells:
     """The instants of a column.
@@ -91,7 +90,7 @@ def read_times(
         [""] * size,
     )  # fmt: skip
     done = _counts(cells, meaning, times) if meaning.count != "text" else _clocks(cells, meaning, times)
-    reader = _Alone(meaning, name, missing)
+    reader = _Alone(meaning, name)
     for place in np.flatnonzero(~done).tolist():
         longitude = None if longitudes_deg_east is None else longitudes_deg_east[place]
         reader.read(place, cells[place], longitude, times)
@@ -106,11 +105,11 @@ def _counts(cells: Sequence[str], meaning: TimeMeaning, times: TimeCells) -> NDA
     numbers = plain_numbers(cells)
     if numbers is None:
         return none
-    if any(map(str.startswith, cells, repeat(" "))) or any(map(str.endswith, cells, repeat(" "))):
-        cells = [cell.strip(" ") for cell in cells]
     joined = "".join(cells)
     if "e" in joined or "E" in joined or "+" in joined:
         return none
+    if " " in joined:
+        cells = [cell.strip(" ") for cell in cells]
     size = len(cells)
     points = np.fromiter(map(str.find, cells, repeat(".")), dtype=np.int64, count=size)
     lengths = np.fromiter(map(len, cells), dtype=np.int64, count=size)
@@ -244,10 +243,9 @@ def _mjd_of(year: NDArray[np.int64], month: NDArray[np.int64], date: NDArray[np.
 class _Alone:
     """Reads cells one by one; equal cells once."""
 
-    def __init__(self, meaning: TimeMeaning, name: str, missing: Collection[str]) -> None:
+    def __init__(self, meaning: TimeMeaning, name: str) -> None:
         self._meaning = meaning
         self._name = name
-        self._missing = missing
         self._known: dict[tuple[str, float | None], tuple[TypedInstant, str] | CellFault] = {}
 
     def read(self, place: int, cell: str, longitude: float | None, times: TimeCells) -> None:
@@ -266,7 +264,7 @@ class _Alone:
         times.texts[place] = text
 
     def _read(self, cell: str, longitude: float | None) -> tuple[TypedInstant, str] | CellFault:
-        if not cell.strip() or cell.strip() in self._missing:
+        if not cell.strip():
             return CellFault(0, "time-missing", "The row has no time.")
         try:
             text = self._counted(cell) if self._meaning.count != "text" else self._written(cell)

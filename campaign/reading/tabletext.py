@@ -160,7 +160,7 @@ class _Blocks:
 
     def of(self, chunks: Iterator[tuple[int, list[str]]]) -> Iterator[TableBlock]:
         for first, lines in chunks:
-            if self._is_single and any('"' in line for line in lines):
+            if self._is_single and '"' in "".join(lines):
                 # From here on a cell may span lines, which only a reader of records can tell.
                 yield from self._records(chain([(first, lines)], chunks))
                 return
@@ -171,7 +171,7 @@ class _Blocks:
 
     def _block(self, first: int, lines: list[str]) -> TableBlock:
         numbers: Sequence[int] = range(first, first + len(lines))
-        if not all(lines) or any(map(str.startswith, lines, repeat("#"))) or any(map(str.isspace, lines)):
+        if "" in lines or any(map(str.startswith, lines, repeat("#"))) or any(map(str.isspace, lines)):
             kept = [
                 (number, line)
                 for number, line in zip(numbers, lines, strict=True)
@@ -182,17 +182,13 @@ class _Blocks:
             delimiter = self._shape.delimiter
             counts = list(map(str.count, lines, repeat(delimiter)))
             if counts.count(self._width - 1) == len(lines):
-                joined = delimiter.join(lines)
-                plain = joined.replace("\t", "") if delimiter == "\t" else joined
-                return self._columns(numbers, joined.split(delimiter), is_plain=plain.isprintable())
+                return self._columns(numbers, delimiter.join(lines).split(delimiter))
         return self._of_rows((number, self._split(line)) for number, line in zip(numbers, lines, strict=True))
 
-    def _columns(self, numbers: Sequence[int], cells: list[str], *, is_plain: bool) -> TableBlock:
+    def _columns(self, numbers: Sequence[int], cells: list[str]) -> TableBlock:
         if not numbers:
             return TableBlock((), [[] for _ in range(self._width)])
-        return TableBlock(
-            numbers, [cells[place :: self._width] for place in range(self._width)], is_plain=is_plain
-        )
+        return TableBlock(numbers, [cells[place :: self._width] for place in range(self._width)])
 
     def _of_rows(self, rows: Iterator[tuple[int, list[str]]]) -> TableBlock:
         numbers: list[int] = []
@@ -204,7 +200,7 @@ class _Blocks:
                 cells += row
             else:
                 misfits.append(self._misfit(number, row))
-        block = self._columns(numbers, cells, is_plain=False)
+        block = self._columns(numbers, cells)
         return TableBlock(block.lines, block.columns, tuple(misfits))
 
     def _misfit(self, number: int, row: Sequence[str]) -> Misfit:
