@@ -2,19 +2,25 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from itertools import pairwise
 
 from campaign.catalogue import episodes, records, store, systems
 from campaign.errors import Conflict, InputRefused
-from campaign.model.instants import TypedInstant
+from campaign.model.instants import Moment, TypedInstant
 from campaign.model.kept import Kept, Stamp
 from campaign.model.records import SystemRecord
 from campaign.model.systems import DatedEvent, Episode
-from campaign.studies.instants import moment_of, spoken_moment
+from campaign.studies.instants import mjd_of_clock, moment_of, spoken_moment
 from campaign.studies.preparing import episodes_with_cycles
 from campaign.studies.rows import build_row
+
+# Two entries are the same below this, days: the rounding of light time.
+_SAME_D = 1e-6
+# No system makes dust anew so soon after an onset, days.
+_SAME_BURST_D = 30.0
 
 
 def add_episode(
@@ -62,8 +68,14 @@ def add_episode(
         )
     with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
         system = systems.find_system(writing.connection, system_name)
-        _refuse_second_date(episodes.episodes_of(writing.connection, system.id), draft, dates, system.name)
+        known = episodes.episodes_of(writing.connection, system.id)
+        _refuse_second_date(known, draft, dates, system.name)
         dated = {n: DatedEvent(moment_of(t, system), band, method) for n, (t, band, method) in dates.items()}
+        same = next((e for e in known if e.state == "confirmed" and _says_the_same(e, draft, dated)), None)
+        if same is not None:
+            return _already_known(system.name, same)
+        if draft.cycle is None:
+            _refuse_same_burst(known, dated, system.name)
         ordered = [(n, dated[n].moment.bmjd_tdb) for n in ("onset", "maximum", "end") if n in dated]
         for (first, earlier), (second, later) in pairwise(ordered):
             if later < earlier:
@@ -84,9 +96,58 @@ def add_episode(
         writing.summarise(f"added a confirmed episode of {system.name}")
     lines = [f"{system.name}: confirmed episode {episode_id}"]
     lines.extend(f"{name} understood as {spoken_moment(event.moment)}" for name, event in dated.items())
+    ahead = [name for name, event in dated.items() if event.moment.bmjd_tdb > mjd_of_clock(stamp.at) + 1.0]
     return Kept(
-        "episodes-add", True, tuple(lines), {"system": system.name, "id": episode_id, "cycle": draft.cycle}
+        "episodes-add",
+        True,
+        tuple(lines),
+        {"system": system.name, "id": episode_id, "cycle": draft.cycle},
+        tuple(f"the {name} is dated in the future" for name in ahead),
     )
+
+
+def _says_the_same(known: Episode, draft: Episode, dated: Mapping[str, DatedEvent]) -> bool:
+    """Whether every date given is known already, in the same band and with the same error."""
+    if draft.cycle not in (None, known.cycle):
+        return False
+    pairs = [(getattr(known, stage), event) for stage, event in dated.items()]
+    return all(
+        old is not None
+        and old.band == new.band
+        and abs(old.moment.bmjd_tdb - new.moment.bmjd_tdb) < _SAME_D
+        and (old.moment.minus_d, old.moment.plus_d) == (new.moment.minus_d, new.moment.plus_d)
+        for old, new in pairs
+    )
+
+
+def _already_known(system_name: str, known: Episode) -> Kept:
+    data = {"system": system_name, "id": known.id, "cycle": known.cycle}
+    return Kept("episodes-add", False, (f"{system_name}: already known as episode {known.id}",), data)
+
+
+def _refuse_same_burst(known: Sequence[Episode], dated: Mapping[str, DatedEvent], system_name: str) -> None:
+    """A stage dated nearly alike twice: two papers on one burst, which would read as a short period."""
+    for episode in known:
+        for stage, event in dated.items():
+            found = getattr(episode, stage)
+            if episode.state != "confirmed" or found is None:
+                continue
+            apart = abs(found.moment.bmjd_tdb - event.moment.bmjd_tdb)
+            error = math.hypot(_size(found.moment), _size(event.moment))
+            if apart > max(_SAME_BURST_D, 3.0 * error):
+                continue
+            raise Conflict(
+                f"Episode {episode.id} of {system_name} has its {stage} {apart:.1f} d from this one.",
+                why="So near it is one burst dated twice, and it would be read as a very short period.",
+                hint=f"Keep the better date: campaign undo takes one back. If they are two bursts, say which "
+                f'cycle this is: --cycle N (campaign episodes list "{system_name}").',
+                code="episode-known",
+                details={"episode": episode.id, "apart_d": apart},
+            )
+
+
+def _size(moment: Moment) -> float:
+    return max(moment.minus_d or 0.0, moment.plus_d or 0.0)
 
 
 def _refuse_second_date(

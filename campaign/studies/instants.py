@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from datetime import datetime
+
 import numpy as np
 
 from campaign.model.instants import Moment, TypedInstant
@@ -48,6 +50,27 @@ def moment_of(typed: TypedInstant, system: System, site: Site | None = None) -> 
 
 
 _MINUTE_D = 1.0 / 1440.0
+_MJD_OF_UNIX_EPOCH = 40_587.0
+
+
+def mjd_of_clock(at: datetime) -> float:
+    """A clock reading as MJD, to tell what lies in the future.
+
+    Parameters
+    ----------
+    at : datetime
+        Aware datetime.
+
+    Returns
+    -------
+    float
+        MJD in UTC.
+
+    Notes
+    -----
+    Accuracy: 1 s, without the leap seconds of the time scales. Source: definition of the MJD.
+    """
+    return _MJD_OF_UNIX_EPOCH + at.timestamp() / 86_400.0
 
 
 def axis_instant(typed: TypedInstant) -> float:
