@@ -12,7 +12,9 @@ from campaign.output.console import Screen
 from campaign.output.tables import Cell, Column, Row, fits, print_table
 from campaign.output.timeline import render_timeline
 from campaign.output.wording import (
+    ERROR_UNKNOWN,
     STATUS_STYLES,
+    UNKNOWN,
     UTC_NOTE,
     between,
     by_date,
@@ -95,6 +97,9 @@ def _print_events(screen: Screen, result: UpcomingResult) -> None:
     if not any(chance(event) for event in events):
         kept.remove(_CHANCE)
     print_table(screen, [columns[i] for i in kept], [[row[i] for i in kept] for row in compact])
+    screen.wrapped(
+        "A wider window also shows the chance in the period, the solution and the rule.", style="dim"
+    )
 
 
 def _side_by_side(events: Sequence[EventForecast]) -> bool:
@@ -128,12 +133,17 @@ def _compact_row(event: EventForecast, as_of_bmjd_tdb: float) -> Row:
         event.solution or "",
         occasion(event),
         _date(event),
-        spread(dates.median, dates.lo68, dates.hi68) if dates else "",
-        spread(dates.median, dates.lo95, dates.hi95) if dates else "",
+        _short(spread(dates.median, dates.lo68, dates.hi68)) if dates else "",
+        _short(spread(dates.median, dates.lo95, dates.hi95)) if dates else "",
         Cell(event.status, STATUS_STYLES.get(event.status, "")),
         signed_days(dates.median - as_of_bmjd_tdb) if dates else "",
-        chance(event),
+        "?" if chance(event) == UNKNOWN else chance(event),
     )
+
+
+def _short(interval: str) -> str:
+    """An interval in the few cells that a small window has for it."""
+    return UNKNOWN if interval == ERROR_UNKNOWN else interval
 
 
 def _date(event: EventForecast) -> str:

@@ -6,6 +6,7 @@ from collections.abc import Iterable
 
 from campaign.model.forecasts import EVENT_NAMES, EventForecast, Status
 
+UNKNOWN = "unknown"
 ERROR_UNKNOWN = "error unknown"
 DAYS_PER_YEAR = 365.25
 # From this many days on, an interval is told in years.
@@ -31,7 +32,7 @@ UTC_NOTE = (
 def percent(probability: float | None) -> str:
     """A probability as a whole percentage; never rounded to certainty."""
     if probability is None:
-        return "unknown"
+        return UNKNOWN
     if 0.0 < probability < 0.005:
         return "<1 %"
     if 0.995 < probability < 1.0:
