@@ -13,9 +13,16 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from hypothesis import settings
 
 ROOT = Path(__file__).resolve().parents[1]
 OBSERVER = "Ida Vik"
+
+# The same examples every time, so that a change is judged by what it changed; CAMPAIGN_FUZZ=1 looks for
+# new ones.
+settings.register_profile("steady", derandomize=True)
+if "CAMPAIGN_FUZZ" not in os.environ:
+    settings.load_profile("steady")
 
 
 # ------------------------------------------------------------------------------------------ no network

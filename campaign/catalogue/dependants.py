@@ -14,8 +14,10 @@ from sqlalchemy import ColumnElement, Connection, Table, and_, exists, select
 
 from campaign.catalogue.journal import Undos, in_portions, operations_by_id
 from campaign.catalogue.lifecycle import (
+    FOLLOWING,
     SPOKEN,
     entered_by,
+    goes_out,
     is_lasting,
     loads_out,
     references,
@@ -38,8 +40,6 @@ from campaign.model.history import BulkEffect, Dependant, Effect, RowEffect
 # Of these a system has one state at a time: any later change of the state depends on the one before.
 _ONE_A_SYSTEM = ((adoptions, "adopted otherwise later"), (dust_rules, "set the dust rule later"))
 _ANCHOR = frozenset({"cycle_anchor_bmjd_tdb", "cycle_anchor_period_d"})
-# Follow from what was adopted, whenever that changes: no reason to keep a solution.
-_FOLLOWING = {solutions.name: frozenset({"epoch_cycle", "published_cycle_offset"})}
 
 
 def dependants_of(connection: Connection, operation_id: int, effects: Sequence[Effect]) -> list[Dependant]:
@@ -108,8 +108,8 @@ class _Search:
                 for row in self._later_changes(same):
                     effect = effects[row.row_id]
                     touched = set(row.before or ()) | set(row.after or ())
-                    if effect.kind == "added":
-                        depends = not touched <= _FOLLOWING.get(table, frozenset())
+                    if goes_out(effect) and effect.kind != "replaced":
+                        depends = not touched <= FOLLOWING.get(table, frozenset())
                     else:
                         depends = row.action != "update" or bool(touched & effect.before.keys())
                     if depends:

@@ -36,6 +36,10 @@ MARKER_OF: Final[Mapping[str, str]] = {
 MARKERS: Final = frozenset({"withdrawn_at", "ended_at", "superseded_at"})
 # Words to refer to, and the past itself: what was entered there stays when its operation is taken back.
 LASTING: Final = frozenset({sources.name, lapses.name})
+# Follow from what was adopted, whenever that changes: no entry stands or falls with them.
+FOLLOWING: Final[Mapping[str, frozenset[str]]] = {
+    solutions.name: frozenset({"epoch_cycle", "published_cycle_offset"})
+}
 # Entries that other entries refer to, and what to call one.
 SPOKEN: Final[Mapping[str, str]] = {
     systems.name: "system",

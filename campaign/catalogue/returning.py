@@ -9,7 +9,9 @@ from sqlalchemy import Connection, Table, select
 
 from campaign.catalogue.journal import in_portions
 from campaign.catalogue.lifecycle import (
+    FOLLOWING,
     MARKER_OF,
+    MARKERS,
     SPOKEN,
     comes_back,
     entered_by,
@@ -62,11 +64,31 @@ def holders_of_what_returns(connection: Connection, effects: Sequence[Effect]) -
             for load in loads:
                 for number in _same_as_load(connection, load):
                     yield entered_by(connection, table, number), reason
+    yield from _out_of_use_themselves(connection, rows)
     for parent in _PARENTS:
-        back = {e.row_id for e in rows if e.table == parent.name}
+        back = {e.row_id for e in rows if e.table == parent.name and _returns_to_use(e)}
         wanted = _parents_of_rows(connection, rows, parent) | _parents_of_loads(connection, loads, parent)
         for number in _out_of_use(connection, parent, wanted - back):
             yield withdrawn_by(connection, parent, number), f"took back the {SPOKEN[parent.name]} it needs"
+
+
+def _returns_to_use(effect: RowEffect) -> bool:
+    """Whether the row itself comes back, and not only a value of it."""
+    return effect.kind != "changed" or bool(MARKERS & effect.before.keys())
+
+
+def _out_of_use_themselves(connection: Connection, rows: Sequence[RowEffect]) -> Iterator[Reason]:
+    """Entries of which only a value would come back, and which are out of use by now."""
+    for table_name in {effect.table for effect in rows if effect.table in MARKER_OF}:
+        table = metadata.tables[table_name]
+        following = FOLLOWING.get(table_name, frozenset())
+        numbers = {
+            e.row_id
+            for e in rows
+            if e.table == table_name and not _returns_to_use(e) and not e.before.keys() <= following
+        }
+        for number in _out_of_use(connection, table, numbers):
+            yield withdrawn_by(connection, table, number), "took back the entry itself"
 
 
 def _holders(connection: Connection, table: Table[Any], effect: RowEffect, names: Sequence[str]) -> set[int]:

@@ -226,7 +226,7 @@ def _first_names(connection: Connection) -> dict[int, str]:
 def _action(effect: RowEffect, table: Table[Any]) -> str:
     in_force = {adoptions.name: "adopted", dust_rules.name: "in force"}.get(table.name)
     if effect.kind == "added":
-        return "adopted" if in_force == "adopted" else "added"
+        return in_force or "added"
     if effect.kind == "removed":
         return "removed"
     if cleared_marker(effect) == "superseded_at":
