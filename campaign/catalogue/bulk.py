@@ -35,7 +35,7 @@ OTHER_IDENTITY = (
 )  # fmt: skip
 _KNOWN_COLUMNS = (
     "id", "bmjd_tdb", "value", "value_minus", "value_plus", "position_angle_deg", "limit_side", "band",
-    "photometric_system", "site_id", "sameness", *OTHER_IDENTITY,
+    "photometric_system", "site_id", "sameness", "operation_id", *OTHER_IDENTITY,
 )  # fmt: skip
 _DIGEST_BYTES = 16
 # The columns of a digest that come before the value: many rows are alike in them.
@@ -150,7 +150,8 @@ def known_rows(
         photometric_system=cells[8],
         site_id=cells[9],
         sameness=cells[10],
-        other=list(zip(*cells[11:], strict=True)),
+        operation_id=cells[11],
+        other=list(zip(*cells[12:], strict=True)),
     )
 
 
@@ -231,7 +232,9 @@ def _blocks(
         told(start)
         part = rows[start : start + _BLOCK_ROWS]
         places = part.tolist()
-        block: dict[str, Sequence[Any]] = {"uid": writing.new_uids(len(places))}
+        block: dict[str, Sequence[Any]] = {}
+        if "uid" not in columns.texts:
+            block["uid"] = writing.new_uids(len(places))
         made: dict[int, Sequence[Any]] = {}
         for name, numbers in columns.numbers.items():
             # Equal errors of both sides are one column, which is bound once.

@@ -3,6 +3,9 @@
 from __future__ import annotations
 
 import sys
+import time
+from collections.abc import Callable, Iterator
+from dataclasses import replace
 from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
@@ -13,13 +16,16 @@ from campaign.commands.parsing import clock_instant, one_of, plain
 from campaign.errors import UsageRefused
 
 if TYPE_CHECKING:
+    from campaign.model.exchange_columns import Cell
     from campaign.model.exported import ExchangeForm, OutgoingTable
+    from campaign.output.progress import Progress
     from campaign.studies.export import Asked
 
 Text = str | None
 Words = list[str] | None
 STDOUT = "-"
 _SPOOL_BYTES = 32 << 20
+_TOLD_EVERY = 1_000
 
 
 def _repeated(flag: str, metavar: str, text: str) -> Any:
@@ -63,7 +69,7 @@ def export(
     asked = _asked(kind, system, chosen, also_withdrawn)
     path, form = _place(to, as_, json=json)
     if path is None:
-        _to_stdout(common.database(db), asked, form)
+        _to_stdout(common.database(db), asked, form, quiet=quiet)
         return
     from campaign.output.files import is_kept_file
 
@@ -152,13 +158,32 @@ def _place(to: str | None, as_: str | None, *, json: bool) -> tuple[str | None, 
     return None, form or "json"
 
 
+def _progress(*, quiet: bool) -> Progress:
+    from campaign.output.progress import Progress
+
+    return Progress(common.stderr_screen(), time.monotonic, quiet=quiet)
+
+
+def _counted(table: OutgoingTable, told: Callable[[str, int, int | None], None]) -> OutgoingTable:
+    """The same table, which tells how many of its rows were taken."""
+
+    def rows() -> Iterator[tuple[Cell, ...]]:
+        for number, row in enumerate(table.rows, start=1):
+            yield row
+            if number % _TOLD_EVERY == 0:
+                told("writing", number, table.row_count)
+
+    return replace(table, rows=rows())
+
+
 def _to_file(table: OutgoingTable, form: ExchangeForm, path: str, *, json: bool, quiet: bool) -> None:
     from campaign.model.exported import Exported
     from campaign.output.exchange import table_text
     from campaign.output.exported import exported_json, exported_line
     from campaign.output.files import write_whole
 
-    size = write_whole(path, table_text(table, form))
+    with _progress(quiet=quiet) as progress:
+        size = write_whole(path, table_text(_counted(table, progress.told), form))
     done = Exported(table.kind, form, path, table.row_count, size)
     if json:
         common.write_json(exported_json(done, common.now_iso()))
@@ -166,7 +191,7 @@ def _to_file(table: OutgoingTable, form: ExchangeForm, path: str, *, json: bool,
         common.tell(exported_line(done), quiet=quiet)
 
 
-def _to_stdout(db: str, asked: Asked, form: ExchangeForm) -> None:
+def _to_stdout(db: str, asked: Asked, form: ExchangeForm, *, quiet: bool) -> None:
     from shutil import copyfileobj
     from tempfile import SpooledTemporaryFile
 
@@ -175,8 +200,8 @@ def _to_stdout(db: str, asked: Asked, form: ExchangeForm) -> None:
 
     with SpooledTemporaryFile(max_size=_SPOOL_BYTES) as spool:
         # Everything is read before anything is shown: whoever reads slowly must not keep the catalogue open.
-        with outgoing_table(db, asked) as table:
-            for piece in table_text(table, form):
+        with outgoing_table(db, asked) as table, _progress(quiet=quiet) as progress:
+            for piece in table_text(_counted(table, progress.told), form):
                 spool.write(piece.encode("utf-8"))
         spool.seek(0)
         if hasattr(sys.stdout, "buffer"):

@@ -77,6 +77,7 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
         ("attempt", "Log that it was tried and nothing was obtained."),
         ("remark", "Log a remark on a system."),
     ),
+    _command("load", "Load a table: all of it in one step, or nothing.", "Observe"),
     _command("observations", "List observations with their numbers, or draw them.", "Observe"),
     _command("amend", "Correct an observation; the old one is kept beside it.", "Observe"),
     _command("withdraw", "Take observations out of use; they stay, with the reason.", "Observe"),

@@ -49,5 +49,6 @@ class KnownRows:
     band: Sequence[str | None]
     photometric_system: Sequence[str | None]
     site_id: Sequence[int | None]
+    operation_id: Sequence[int]
     other: Sequence[tuple[Any, ...]]
     sameness: Sequence[str | None]

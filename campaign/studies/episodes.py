@@ -59,6 +59,39 @@ def add_episode(
     -----
     Accuracy: instants as in ``campaign.studies.instants``. Source: DEVELOPERS.md (episode).
     """
+    with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
+        return enter_episode(writing, system_name, draft, dates)
+
+
+def enter_episode(
+    writing: store.Writing,
+    system_name: str,
+    draft: Episode,
+    dates: Mapping[str, tuple[TypedInstant, str | None, str | None]],
+) -> Kept:
+    """Add an episode within an operation that is under way.
+
+    Parameters
+    ----------
+    writing : Writing
+        The operation.
+    system_name, draft, dates
+        As for :func:`add_episode`.
+
+    Returns
+    -------
+    Kept
+        What was written, with the instants as understood.
+
+    Raises
+    ------
+    NotFound, InputRefused, Conflict
+        As :func:`add_episode`.
+
+    Notes
+    -----
+    Accuracy: instants as in ``campaign.studies.instants``. Source: DEVELOPERS.md (episode).
+    """
     if not dates:
         raise InputRefused(
             "The episode has no date.",
@@ -66,37 +99,36 @@ def add_episode(
             hint="For example --onset 2019-03-14±5.",
             code="episode-empty",
         )
-    with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
-        system = systems.find_system(writing.connection, system_name)
-        known = episodes.episodes_of(writing.connection, system.id)
-        _refuse_second_date(known, draft, dates, system.name)
-        dated = {n: DatedEvent(moment_of(t, system), band, method) for n, (t, band, method) in dates.items()}
-        same = next((e for e in known if e.state == "confirmed" and _says_the_same(e, draft, dated)), None)
-        if same is not None:
-            return _already_known(system.name, same)
-        if draft.cycle is None:
-            _refuse_same_burst(known, dated, system.name)
-        ordered = [(n, dated[n].moment.bmjd_tdb) for n in ("onset", "maximum", "end") if n in dated]
-        for (first, earlier), (second, later) in pairwise(ordered):
-            if later < earlier:
-                raise InputRefused(
-                    f"The {second} would come before the {first}.",
-                    why=f"The {first} is dated {earlier - later:.1f} d after the {second}.",
-                    hint="Check the dates; the order is onset, maximum, end.",
-                    code="episode-order",
-                )
-        episode = replace(
-            draft,
-            system_id=system.id,
-            onset=dated.get("onset"),
-            maximum=dated.get("maximum"),
-            end=dated.get("end"),
-        )
-        episode_id = episodes.add_episode(writing, episode)
-        writing.summarise(f"added a confirmed episode of {system.name}")
+    system = systems.find_system(writing.connection, system_name)
+    known = episodes.episodes_of(writing.connection, system.id)
+    _refuse_second_date(known, draft, dates, system.name)
+    dated = {n: DatedEvent(moment_of(t, system), band, method) for n, (t, band, method) in dates.items()}
+    same = next((e for e in known if e.state == "confirmed" and _says_the_same(e, draft, dated)), None)
+    if same is not None:
+        return _already_known(system.name, same)
+    if draft.cycle is None:
+        _refuse_same_burst(known, dated, system.name)
+    ordered = [(n, dated[n].moment.bmjd_tdb) for n in ("onset", "maximum", "end") if n in dated]
+    for (first, earlier), (second, later) in pairwise(ordered):
+        if later < earlier:
+            raise InputRefused(
+                f"The {second} would come before the {first}.",
+                why=f"The {first} is dated {earlier - later:.1f} d after the {second}.",
+                hint="Check the dates; the order is onset, maximum, end.",
+                code="episode-order",
+            )
+    episode = replace(
+        draft,
+        system_id=system.id,
+        onset=dated.get("onset"),
+        maximum=dated.get("maximum"),
+        end=dated.get("end"),
+    )
+    episode_id = episodes.add_episode(writing, episode)
+    writing.summarise(f"added a confirmed episode of {system.name}")
     lines = [f"{system.name}: confirmed episode {episode_id}"]
     lines.extend(f"{name} understood as {spoken_moment(event.moment)}" for name, event in dated.items())
-    ahead = [name for name, event in dated.items() if event.moment.bmjd_tdb > mjd_of_clock(stamp.at) + 1.0]
+    ahead = [name for name, event in dated.items() if event.moment.bmjd_tdb > mjd_of_clock(writing.at) + 1.0]
     return Kept(
         "episodes-add",
         True,

@@ -70,6 +70,45 @@ def add_solution(
 
     Source: DEVELOPERS.md (cycle).
     """
+    with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
+        return enter_solution(
+            writing, system_name, draft, epoch, data_until, published_cycle, adopt, correlations
+        )
+
+
+def enter_solution(
+    writing: store.Writing,
+    system_name: str,
+    draft: Solution,
+    epoch: TypedInstant | None,
+    data_until: TypedInstant | None,
+    published_cycle: int | None,
+    adopt: bool,
+    correlations: Sequence[tuple[str, str, float]] = (),
+) -> Kept:
+    """Add a set of orbital elements within an operation that is under way.
+
+    Parameters
+    ----------
+    writing : Writing
+        The operation.
+    system_name, draft, epoch, data_until, published_cycle, adopt, correlations
+        As for :func:`add_solution`.
+
+    Returns
+    -------
+    Kept
+        What was written, with the epoch as understood.
+
+    Raises
+    ------
+    NotFound, Conflict, InputRefused
+        As :func:`add_solution`.
+
+    Notes
+    -----
+    Accuracy: as :func:`add_solution`. Source: DEVELOPERS.md (cycle).
+    """
     if draft.period_d is None and epoch is None:
         raise InputRefused(
             "The solution says neither a period nor an epoch.",
@@ -77,38 +116,37 @@ def add_solution(
             hint='Give for example --period "3127.5±0.3 d" --epoch "BJD 2461234.2±0.5".',
             code="solution-empty",
         )
-    with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
-        system = systems.find_system(writing.connection, system_name)
-        moment = moment_of(epoch, system) if epoch is not None else None
-        if moment is not None and epoch is not None and _is_clock_reading(epoch):
-            moment = replace(moment, minus_d=None, plus_d=None)
-        until = moment_of(data_until, system).bmjd_tdb if data_until is not None else None
-        known = kept.solutions_of(writing.connection, system.id)
-        solution = replace(
-            draft,
-            system_id=system.id,
-            label=draft.label or _free_label(known),
-            epoch=moment,
-            data_until_bmjd_tdb=until,
+    system = systems.find_system(writing.connection, system_name)
+    moment = moment_of(epoch, system) if epoch is not None else None
+    if moment is not None and epoch is not None and _is_clock_reading(epoch):
+        moment = replace(moment, minus_d=None, plus_d=None)
+    until = moment_of(data_until, system).bmjd_tdb if data_until is not None else None
+    known = kept.solutions_of(writing.connection, system.id)
+    solution = replace(
+        draft,
+        system_id=system.id,
+        label=draft.label or _free_label(known),
+        epoch=moment,
+        data_until_bmjd_tdb=until,
+    )
+    solution = replace(solution, covariance=_covariance(solution, correlations))
+    cycle, warnings = _cycle_in(system, solution)
+    solution = replace(
+        solution,
+        epoch_cycle=cycle,
+        published_cycle_offset=None if published_cycle is None else published_cycle - (cycle or 0),
+    )
+    others = [s for s in known if s.adopted]
+    if adopt and others:
+        raise _already_adopted(
+            system, others, f"Add it without --adopt, then: {_adopt_line(system, solution)} --instead"
         )
-        solution = replace(solution, covariance=_covariance(solution, correlations))
-        cycle, warnings = _cycle_in(system, solution)
-        solution = replace(
-            solution,
-            epoch_cycle=cycle,
-            published_cycle_offset=None if published_cycle is None else published_cycle - (cycle or 0),
-        )
-        others = [s for s in known if s.adopted]
-        if adopt and others:
-            raise _already_adopted(
-                system, others, f"Add it without --adopt, then: {_adopt_line(system, solution)} --instead"
-            )
-        solution_id = kept.add_solution(writing, solution)
-        if adopt:
-            kept.adopt_alone(writing, solution_id)
-            _anchor(writing, system, replace(solution, id=solution_id))
-        text = describe_solution(solution)
-        writing.summarise(f"added solution {text} to {system.name}" + (" and adopted it" if adopt else ""))
+    solution_id = kept.add_solution(writing, solution)
+    if adopt:
+        kept.adopt_alone(writing, solution_id)
+        _anchor(writing, system, replace(solution, id=solution_id))
+    text = describe_solution(solution)
+    writing.summarise(f"added solution {text} to {system.name}" + (" and adopted it" if adopt else ""))
     period = text.removeprefix(f"{solution.label}: ")
     lines = [
         f"{system.name}: added '{solution.label}', {period}" + (", adopted" if adopt else ", not adopted")

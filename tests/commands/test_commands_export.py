@@ -201,6 +201,20 @@ def test_an_interrupt_leaves_nothing_behind_and_says_so(run_campaign, filled, mo
     assert (filled / "a.csv").read_text() == "precious"
 
 
+def test_a_long_export_says_how_far_it_is_on_stderr_and_a_quiet_one_does_not(
+    run_campaign, filled, monkeypatch
+):
+    ticks = iter(range(0, 10_000, 6))
+    monkeypatch.setattr("campaign.commands.export.time.monotonic", lambda: float(next(ticks)))
+    monkeypatch.setattr("campaign.commands.export._TOLD_EVERY", 1)
+    done = run_campaign("export", "observations", "--to", "a.csv")
+    assert "writing: " in done.err
+    assert " % " in done.err.replace("%,", "% ,")
+    assert "wrote a.csv: 3 rows" in done.err
+    assert run_campaign("export", "observations", "--to", "b.csv", "--quiet").err == ""
+    assert (filled / "a.csv").read_bytes() == (filled / "b.csv").read_bytes()
+
+
 def test_everyday_exports_load_neither_pandas_nor_astropy(filled, own_database):
     code = (
         "import sys; from campaign.__main__ import run\n"

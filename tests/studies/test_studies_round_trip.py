@@ -18,6 +18,7 @@ from campaign.studies.begin import begin_sample_campaign
 from campaign.studies.exchange_rows import episode_cells, solution_cells, system_cells
 
 pytest.importorskip("campaign.commands.load")
+pytest.importorskip("campaign.studies.load_exchanged")
 
 KINDS = ("systems", "solutions", "episodes", "observations")
 forms = pytest.mark.parametrize("form", EXCHANGE_FORMS)
@@ -30,7 +31,7 @@ def carried(source, target, folder, form, **asked):
     for kind, data in zip(KINDS, tables, strict=True):
         path = folder / f"{kind}.{ENDINGS[form]}"
         path.write_bytes(data)
-        assert run(["load", str(path), "--yes", "--quiet", "--db", str(target), "--observer", "Ida Vik"]) == 0
+        assert run(["load", str(path), "--quiet", "--db", str(target), "--observer", "Ida Vik"]) == 0
     return tables
 
 

@@ -1,0 +1,214 @@
+"""What a load understood, refused, found and did."""
+
+from __future__ import annotations
+
+import csv
+import io
+from collections.abc import Iterator
+from typing import Any
+
+from campaign.model.loading import BadCell, Loaded, LoadWarning, Understood
+from campaign.output.console import Screen
+from campaign.output.documents import document, plain
+from campaign.output.safe import visible
+from campaign.output.tables import Column, print_table
+
+MOST_SHOWN = 20
+REASON = "reason"
+_SHOWN_TEXT = 40
+_UNITS = {"kms": "km/s", "jy": "Jy", "angstrom": "Å"}
+
+
+def render_understood(screen: Screen, understood: Understood) -> None:
+    """The mapping that was understood."""
+    screen.heading(f"{understood.file}: {understood.form}, taken for {understood.kind}")
+    rows = [(f"  {line.field}", line.origin, line.meaning) for line in understood.lines]
+    columns = (Column("  field"), Column("from", shrinks=True), Column("read as", shrinks=True))
+    print_table(screen, columns, rows)
+    if understood.unused:
+        screen.wrapped("  not used: " + ", ".join(understood.unused), hang=4)
+    for note in understood.notes:
+        screen.wrapped(f"  note: {note}", hang=4)
+
+
+def render_bad(screen: Screen, loaded: Loaded) -> None:
+    """The first bad cells, and how many there are for which reason."""
+    rows = [
+        (str(cell.line), cell.column or "", cell.code, _cut(cell.text), cell.why)
+        for cell in loaded.bad[:MOST_SHOWN]
+    ]
+    columns = (
+        Column(loaded.line_word, align="right"),
+        Column("column", shrinks=True),
+        Column("reason"),
+        Column("cell", shrinks=True),
+        Column("why", shrinks=True, min_width=20),
+    )
+    print_table(screen, columns, rows)
+    if len(loaded.bad) > MOST_SHOWN:
+        screen.wrapped(f"... and {len(loaded.bad) - MOST_SHOWN:,} more; --json and --rejects FILE list all.")
+    screen.wrapped("By reason: " + reasons_text(loaded) + ".", hang=2)
+
+
+def render_conflicts(screen: Screen, loaded: Loaded) -> None:
+    """The first rows that differ in value from what is known."""
+    rows = [
+        (
+            str(each.line),
+            each.system,
+            each.band or "",
+            f"{each.bmjd_tdb:.5f}",
+            f"{each.value:g}",
+            f"{each.known_value:g}",
+            _UNITS.get(each.unit, each.unit),
+            str(each.known_id),
+        )
+        for each in loaded.conflicts[:MOST_SHOWN]
+    ]
+    columns = (
+        Column(loaded.line_word, align="right"),
+        Column("system", shrinks=True),
+        Column("band"),
+        Column("BMJD_TDB", align="right"),
+        Column("new", align="right"),
+        Column("known", align="right"),
+        Column("unit", drop=1),
+        Column("as number", align="right"),
+    )
+    print_table(screen, columns, rows)
+    if len(loaded.conflicts) > MOST_SHOWN:
+        screen.wrapped(f"... and {len(loaded.conflicts) - MOST_SHOWN:,} more; --json lists all.")
+
+
+def render_loaded(screen: Screen, loaded: Loaded) -> None:
+    """What went in, in a few lines."""
+    screen.wrapped(summary(loaded), hang=2)
+    for what, number in loaded.made.items():
+        screen.wrapped(f"  {'would make' if loaded.rehearsed else 'made'} {number} {what}")
+    if loaded.kept_mapping is not None:
+        screen.wrapped(f"  mapping kept as '{loaded.kept_mapping}'")
+    if loaded.rejects_file is not None:
+        screen.wrapped(f"  bad rows written to {loaded.rejects_file}")
+    if loaded.operation_id is not None and loaded.added:
+        screen.wrapped(f"  take it back with: campaign undo {loaded.operation_id}")
+
+
+def render_warnings(screen: Screen, loaded: Loaded) -> None:
+    """What an observer should look at."""
+    for warning in loaded.warnings:
+        screen.wrapped(f"Warning: {warning_text(warning, loaded.line_word)}", hang=2)
+
+
+def warning_text(warning: LoadWarning, line_word: str) -> str:
+    """A warning with the first lines that it concerns."""
+    if not warning.lines:
+        return warning.text
+    more = ", ..." if warning.rows > len(warning.lines) else ""
+    word = line_word if len(warning.lines) == 1 else f"{line_word}s"
+    return f"{warning.text} ({word} {', '.join(map(str, warning.lines))}{more})"
+
+
+def summary(loaded: Loaded) -> str:
+    """One sentence on what went in."""
+    kind = loaded.understood.kind
+    verb = "would add" if loaded.rehearsed else "added"
+    parts = [f"{_counted(loaded.rows_read, 'row')} read", f"{verb} {loaded.added:,} ({kind})"]
+    if loaded.already_known:
+        parts.append(f"{loaded.already_known:,} in the catalogue already")
+    if loaded.repeated:
+        parts.append(f"{loaded.repeated:,} more than once in the table")
+    if loaded.bad_rows:
+        parts.append(f"{_counted(loaded.bad_rows, 'bad row')} left out")
+    if loaded.conflicts:
+        parts.append(f"{len(loaded.conflicts):,} beside a known value that differs")
+    said = "; ".join(parts)
+    if not loaded.added and loaded.already_known and not loaded.bad_rows:
+        said += "; nothing is new"
+    return f"{loaded.understood.file}: {said}"
+
+
+def _counted(number: int, word: str) -> str:
+    return f"{number:,} {word}{'' if number == 1 else 's'}"
+
+
+def reasons_text(loaded: Loaded) -> str:
+    """Bad cells by reason, the most frequent first."""
+    return ", ".join(f"{code} {number:,}" for code, number in loaded.reasons.items())
+
+
+def _cut(text: str) -> str:
+    return text if len(text) <= _SHOWN_TEXT else text[: _SHOWN_TEXT - 1] + "…"
+
+
+def loaded_json(loaded: Loaded, as_of: str) -> str:
+    """Document ``load``."""
+    return document(
+        "load",
+        loaded_data(loaded),
+        as_of=as_of,
+        warnings=[warning_text(warning, loaded.line_word) for warning in loaded.warnings],
+    )
+
+
+def loaded_data(loaded: Loaded) -> dict[str, Any]:
+    """What a load came to, for programs: every bad cell and conflict."""
+    return {
+        "file": loaded.understood.file,
+        "form": loaded.understood.form,
+        "kind": loaded.understood.kind,
+        "mapping": {
+            "fields": plain(loaded.understood.lines),
+            "unused": list(loaded.understood.unused),
+            "notes": list(loaded.understood.notes),
+        },
+        "dry_run": loaded.rehearsed,
+        "refused": loaded.is_refused,
+        "rows_read": loaded.rows_read,
+        "added": loaded.added,
+        "already_known": loaded.already_known,
+        "repeated": loaded.repeated,
+        "bad_rows": loaded.bad_rows,
+        "reasons": loaded.reasons,
+        "bad": [_bad_data(loaded, cell) for cell in loaded.bad],
+        "conflicts": plain(loaded.conflicts),
+        "warnings": plain(loaded.warnings),
+        "made": dict(loaded.made),
+        "kept_mapping": loaded.kept_mapping,
+        "rejects_file": loaded.rejects_file,
+        "operation": loaded.operation_id,
+    }
+
+
+def _bad_data(loaded: Loaded, cell: BadCell) -> dict[str, Any]:
+    return {
+        "file": loaded.understood.file,
+        "line": cell.line,
+        "column": cell.column,
+        "reason": cell.code,
+        "why": cell.why,
+        "text": cell.text,
+    }
+
+
+def rejects_pieces(loaded: Loaded) -> Iterator[str]:
+    """The bad rows as a CSV that can be mended and loaded again: the same columns, and the reason.
+
+    Cells are as they stood, but for characters that cannot be seen. A row that has more cells than there are
+    columns keeps them behind the reason.
+    """
+    buffer = io.StringIO()
+    writer = csv.writer(buffer, lineterminator="\n")
+    # The reasons of an earlier load make way for those of this one.
+    own = [place for place, name in enumerate(loaded.columns) if name.strip().casefold() != REASON]
+    width = len(own)
+    writer.writerow([*(visible(loaded.columns[place]) for place in own), REASON])
+    for row in loaded.rejected:
+        padded = [*row.cells, *[""] * (len(loaded.columns) - len(row.cells))]
+        cells = [*(padded[place] for place in own), *padded[len(loaded.columns) :]]
+        reason = "; ".join(f"{cell.column or 'row'}: {cell.code}: {cell.why}" for cell in row.bad)
+        writer.writerow([visible(text) for text in (*cells[:width], reason, *cells[width:])])
+        if buffer.tell() > 1 << 16:
+            yield buffer.getvalue()
+            buffer.seek(0)
+            buffer.truncate()
+    yield buffer.getvalue()

@@ -1,0 +1,83 @@
+"""What was understood of a table, in lines for people."""
+
+from __future__ import annotations
+
+from campaign.model.loading import (
+    ColumnUse,
+    ForeignTable,
+    MappingLine,
+    TableMapping,
+    Understood,
+    ValueTarget,
+)
+from campaign.reading.columnfields import FIELDS
+from campaign.reading.units import FAMILIES
+from campaign.studies.load_fields import value_column
+
+_OF_VALUE = ("value", "error", "error_minus", "error_plus", "limit", "limit_sigma", "angle", "angle_error")
+
+
+def understood_mapping(file: str, table: ForeignTable, mapping: TableMapping) -> Understood:
+    """The mapping in words: each field with the column or constant that it comes from.
+
+    Parameters
+    ----------
+    file : str
+        Name of the file.
+    table : ForeignTable
+        For its form.
+    mapping : TableMapping
+        As understood; units as in the table.
+
+    Returns
+    -------
+    Understood
+        Lines in the order of the fields.
+
+    Notes
+    -----
+    Accuracy: not applicable. Source: project convention.
+    """
+    lines: list[MappingLine] = []
+    for field in FIELDS[mapping.kind]:
+        if field.name in _OF_VALUE and mapping.targets:
+            if field.name == "value":
+                for target in mapping.targets:
+                    lines += _target_lines(mapping, target)
+            continue
+        use = mapping.columns.get(field.name)
+        if use is not None:
+            lines.append(
+                MappingLine(field.name, f"column {use.column}", use.meaning or _unit(use, field.unit))
+            )
+        elif field.name in mapping.constants:
+            lines.append(MappingLine(field.name, "all rows", mapping.constants[field.name]))
+    notes = list(mapping.notes)
+    if mapping.missing:
+        notes.append(f"cells taken for unknown: empty ones, {', '.join(mapping.missing)}")
+    return Understood(file, table.form, mapping.kind, tuple(lines), mapping.unused, tuple(notes))
+
+
+def _target_lines(mapping: TableMapping, target: ValueTarget) -> list[MappingLine]:
+    has_energies = "energy_low" in mapping.columns or "energy_low" in mapping.constants
+    unit = value_column(mapping.kind, has_energies=has_energies).unit
+    about = "".join(f" of {name} {word}" for name, word in target.constants.items())
+    spoken = {field.name: field for field in FIELDS[mapping.kind]}
+    lines = []
+    for name in _OF_VALUE:
+        use = target.fields.get(name)
+        if use is not None:
+            own = spoken[name].unit
+            family = "" if name in ("limit", "limit_sigma") else (own if name.startswith("angle") else unit)
+            lines.append(MappingLine(spoken[name].spoken + about, f"column {use.column}", _unit(use, family)))
+        elif name in mapping.constants:
+            lines.append(MappingLine(spoken[name].spoken + about, "all rows", mapping.constants[name]))
+    return lines
+
+
+def _unit(use: ColumnUse, family: str) -> str:
+    if not family:
+        return ""
+    return (
+        f"in {use.unit}" if use.unit else f"in {FAMILIES[family].symbol}" if FAMILIES[family].symbol else ""
+    )
