@@ -157,12 +157,16 @@ class LoadConflict:
 
 @dataclass(frozen=True, slots=True)
 class LoadWarning:
-    """Something that an observer would want to know; ``lines`` are the first of those it concerns."""
+    """Something that an observer would want to know.
+
+    ``lines`` are the first of those it concerns, and ``more`` tells that there are others.
+    """
 
     code: str
     text: str
     rows: int = 0
     lines: tuple[int, ...] = ()
+    more: bool = False
 
 
 @dataclass(frozen=True, slots=True)

@@ -103,7 +103,7 @@ def warning_text(warning: LoadWarning, line_word: str) -> str:
     """A warning with the first lines that it concerns."""
     if not warning.lines:
         return warning.text
-    more = ", ..." if warning.rows > len(warning.lines) else ""
+    more = ", ..." if warning.more else ""
     word = line_word if len(warning.lines) == 1 else f"{line_word}s"
     return f"{warning.text} ({word} {', '.join(map(str, warning.lines))}{more})"
 

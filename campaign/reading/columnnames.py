@@ -248,6 +248,8 @@ class _Understanding:
                 by_unit = read_time_name(unit) if unit else None
                 if by_unit is not None and by_unit.count != "text":
                     return by_unit
+                if by_unit is not None and by_unit.scale is not None and by_name.scale is None:
+                    return replace(by_name, scale=by_unit.scale, place=column.place)
         if column.scale is not None and by_name.scale is None:
             return replace(by_name, scale=column.scale, place=column.place or by_name.place)
         return by_name
@@ -311,7 +313,19 @@ class _Understanding:
                     fields["error"] = self._target_use(replace(field, name="error"), place)
                     break
             targets.append(ValueTarget(fields, {constant: word}))
-        return tuple(targets)
+        return tuple(self._with_shared(target, len(targets)) for target in targets)
+
+    def _with_shared(self, target: ValueTarget, number: int) -> ValueTarget:
+        """The target with columns that belong to no band or star by name: to the only one, or as was said."""
+        said = {field.name for name in self._request.columns if (field := self._field(name, "--column"))}
+        shared = {}
+        for name in _PER_VALUE:
+            if name not in self._uses or name in target.fields:
+                continue
+            if number > 1 and name not in said and not self._is_trial:
+                raise refusals.shared_unclear(self._uses[name], self._fields[name])
+            shared[name] = self._uses[name]
+        return replace(target, fields={**target.fields, **shared})
 
     def _target_use(self, field: Field, number: int) -> ColumnUse:
         column = self._columns[number - 1]

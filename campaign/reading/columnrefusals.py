@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 
 from campaign.errors import InputRefused, UsageRefused
-from campaign.model.loading import LOAD_KINDS, LoadKind, TableColumn
+from campaign.model.loading import LOAD_KINDS, ColumnUse, LoadKind, TableColumn
 from campaign.reading.columnfields import FIELDS, TIME_CONSTANTS, Field
 from campaign.reading.numbers import quoted
 from campaign.reading.timenames import EXAMPLES
@@ -113,6 +113,17 @@ def column_ambiguous(names: Sequence[str], field: Field) -> InputRefused:
         hint=f'Say it: --column "{field.name}={names[0]}".',
         code="column-ambiguous",
         details={"field": field.name, "columns": list(names)},
+    )
+
+
+def shared_unclear(use: ColumnUse, field: Field) -> InputRefused:
+    """One column beside several values, which might belong to any of them."""
+    return InputRefused(
+        f"Which of the values does the column {quoted(use.column)} belong to?",
+        why=f"It could be the {field.spoken}, and the table has several columns of values.",
+        hint=f'For all of them: --column "{field.name}={use.column}"; else load one at a time.',
+        code="column-ambiguous",
+        details={"field": field.name, "columns": [use.column]},
     )
 
 

@@ -117,6 +117,9 @@ def find_shape(lines: Sequence[str], name: str) -> TableShape:
     is_named = _are_names(first)
     if is_named:
         names, rest = first, content[1:]
+        below = _names_below(first, rest, split)
+        if below:
+            names, rest = below, rest[1:]
     else:
         names, rest = _names_above(lines[: content[0][0]], delimiter, len(first)), content
     units, rest = _units_below(rest, split, len(names or first))
@@ -211,6 +214,32 @@ def _names_above(lines: Sequence[str], delimiter: str, number: int) -> list[str]
                 if len(cells) == number and _are_names(cells):
                     return cells
     return []
+
+
+def _names_below(
+    first: Sequence[str], rest: Sequence[tuple[int, str]], split: Callable[[str], list[str]]
+) -> list[str]:
+    """Names in the second line, where the first only groups them (cells that a spreadsheet has merged)."""
+    rows = [split(line) for _, line in rest[:2]]
+    if len(rows) < 2 or any(len(row) != len(first) for row in rows):
+        return []
+    second = [cell.strip() for cell in rows[0]]
+    empty = sum(not cell.strip() for cell in first)
+    is_fuller = empty > 0 and sum(not cell for cell in second) < empty
+    if not is_fuller or not _are_names(second) or _are_units(second) or _are_names(rows[1]):
+        return []
+    second = [below or above.strip() for above, below in zip(first, second, strict=True)]
+    if len(set(second)) == len(second):
+        return second
+    # Alike names are told apart by their group, which stands over the first of its columns.
+    groups: list[str] = []
+    for cell in first:
+        groups.append(cell.strip() or (groups[-1] if groups else ""))
+    repeated = {name for name in second if second.count(name) > 1}
+    return [
+        f"{group} {name}".strip() if name in repeated else name
+        for group, name in zip(groups, second, strict=True)
+    ]
 
 
 def _units_below(

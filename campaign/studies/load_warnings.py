@@ -91,7 +91,7 @@ def load_warnings(
     told.add("daylight", _daylight(rows, columns, sites), "at {rows} the Sun was up at the site")
     told.add(
         "no-site",
-        _without_site(rows),
+        _without_site(rows, columns),
         "{rows} name{s} no site: the light time is that of the geocentre, within 0.021 s",
     )
     told.add(
@@ -132,8 +132,9 @@ class _Told:
             their="its" if one else "their",
             kind=self._rows.same["kind"],
         )
-        lines = np.unique(self._rows.line[places])[:_MOST_LINES].tolist()
-        self.found.append(LoadWarning(code, said, int(places.size), tuple(lines)))
+        lines = np.unique(self._rows.line[places])
+        first = tuple(lines[:_MOST_LINES].tolist())
+        self.found.append(LoadWarning(code, said, int(places.size), first, len(lines) > _MOST_LINES))
 
 
 def _future(columns: ObservationColumns, now_mjd: float) -> Mask:
@@ -163,8 +164,11 @@ def _daylight(rows: CheckedRows, columns: ObservationColumns, sites: Sequence[Si
     return up
 
 
-def _without_site(rows: CheckedRows) -> Mask:
+def _without_site(rows: CheckedRows, columns: ObservationColumns) -> Mask:
+    """Rows as observed from the Earth whose site would matter; a day or a night is wider than that."""
     without: Mask = (rows.place == PLACES.index("observatory")) & (rows.site < 0)
+    if "time_minus_d" in columns.numbers:
+        without &= ~(columns.numbers["time_minus_d"] > _SHARP_D)
     return without
 
 
@@ -261,13 +265,14 @@ def _shifted(
     for sign, text in told.items():
         rest = float(np.sqrt(np.mean((later_d - sign * light_d) ** 2)))
         if rest < 0.2 * spread and spread < LIGHT_TIME_D:
-            lines = sorted({int(rows.line[place]) for place in row.tolist()})[:_MOST_LINES]
+            lines = sorted({int(rows.line[place]) for place in row.tolist()})
             said = (
                 f"{len(row):,} rows are known observations but for a shift of their times that follows the "
                 f"seasons as the light time to the Sun does (rms {spread * 86400.0:.0f} s, without it "
                 f"{rest * 86400.0:.1f} s): {text}"
             )
-            return [LoadWarning("light-time-seasonal", said, len(row), tuple(lines))]
+            first, more = tuple(lines[:_MOST_LINES]), len(lines) > _MOST_LINES
+            return [LoadWarning("light-time-seasonal", said, len(row), first, more)]
     return []
 
 

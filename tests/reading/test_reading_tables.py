@@ -295,3 +295,20 @@ def test_the_timesys_of_a_votable_says_scale_place_and_origin():
     assert (second.scale, second.place, second.offset_jd) == ("tdb", "barycentre", "2400000.5")
     # A NaN is how a VOTable says that a float is not there.
     assert [list(column) for column in cells] == [["1.5"], [""]]
+
+
+@pytest.mark.parametrize(
+    ("text", "names"),
+    [
+        ('"","Time","Photometry","",""\nObject,UT date,K,err K,Notes\nA,2031-02-03,7.3,0.1,x\n',
+         ["Object", "UT date", "K", "err K", "Notes"]),
+        (",K,,J,,site\nDate,mag,err,mag,err,\n2031-02-03,7.3,0.1,8.9,0.1,x\n",
+         ["Date", "K mag", "K err", "J mag", "J err", "site"]),
+        # Not words over words: units below names, a row of words, names of which one is empty.
+        ("name,K,\n,(mag),(mag)\nA,7.3,0.1\n", ["name", "K", ""]),
+        ("name,band,\nA,K,good\nB,J,bad\n", ["name", "band", ""]),
+    ],
+    ids=["groups", "alike names", "units", "words"],
+)  # fmt: skip
+def test_words_that_a_spreadsheet_merged_over_the_names_only_group_them(text, names):
+    assert read(text.encode())[0] == names
