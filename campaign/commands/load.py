@@ -205,15 +205,17 @@ def _with_rejects(loaded: Loaded, path: str | None) -> Loaded:
 
 
 def _refusal(loaded: Loaded, rejects: str | None) -> CampaignError:
-    from campaign.output.loading import loaded_data, reasons_text
+    from campaign.output.loading import advice, loaded_data, reasons_text
 
     details = loaded_data(loaded)
     if loaded.bad_rows:
+        said = advice(loaded)
         return InputRefused(
             f"Nothing was loaded: {loaded.bad_rows:,} of {loaded.rows_read:,} rows cannot be.",
             why=f"By reason: {reasons_text(loaded)}.",
             hint=(f"Mend {rejects} and load it; the good rows" if rejects else "Mend the rows; the good ones")
-            + " go in with --skip-bad.",
+            + " go in with --skip-bad"
+            + (f"; {said}." if said else "."),
             code="rows-refused",
             details=details,
         )

@@ -128,6 +128,7 @@ class TableMapping:
     unused: tuple[str, ...] = ()
     missing: tuple[str, ...] = ()
     notes: tuple[str, ...] = ()
+    has_decimal_commas: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -195,8 +196,9 @@ class Loaded:
     """What a load came to.
 
     ``added`` is what went in (with ``rehearsed``: what would); ``already_known`` was in the catalogue,
-    ``repeated`` stood more than once in the table. ``bad_rows`` counts rows, ``bad`` lists every cell. With
-    ``is_refused`` nothing went in. ``made`` counts what was made beside the rows, such as sites.
+    ``repeated`` stood more than once in the table. ``without_value`` counts rows whose value is a text that
+    was said to stand for unknown. ``bad_rows`` counts rows, ``bad`` lists every cell. With ``is_refused``
+    nothing went in. ``made`` counts what was made beside the rows, such as sites.
     """
 
     understood: Understood
@@ -205,6 +207,7 @@ class Loaded:
     added: int = 0
     already_known: int = 0
     repeated: int = 0
+    without_value: int = 0
     bad_rows: int = 0
     bad: tuple[BadCell, ...] = ()
     conflicts: tuple[LoadConflict, ...] = ()

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
+import re
 from collections.abc import Iterator
 from typing import Any
 
@@ -16,6 +17,12 @@ from campaign.output.tables import Column, print_table
 MOST_SHOWN = 20
 REASON = "reason"
 _SHOWN_TEXT = 40
+# Cells that are no value, and how tables say that there is none (common practice, no source).
+_NO_VALUE = frozenset({"value-unreadable", "number-unreadable", "out-of-range", "error-negative"})
+_UNKNOWN = re.compile(
+    r"[+-]?9+(?:\.9+0*|\.0+)?|[+-]?99+\.[0-9]|n\.?/?a\.?n?|null|none|nd|-+|\.\.+|[*?x]", re.IGNORECASE
+)
+_DECIMAL_COMMA = re.compile(r"[+\-\u2212<>]?[0-9]+,[0-9]+(?:\s*(?:±|\+-)\s*[0-9]+,[0-9]+)?")
 _UNITS = {"kms": "km/s", "jy": "Jy", "angstrom": "Å"}
 
 
@@ -117,6 +124,8 @@ def summary(loaded: Loaded) -> str:
         parts.append(f"{loaded.already_known:,} in the catalogue already")
     if loaded.repeated:
         parts.append(f"{loaded.repeated:,} more than once in the table")
+    if loaded.without_value:
+        parts.append(f"{_counted(loaded.without_value, 'row')} without a value left out")
     if loaded.bad_rows:
         parts.append(f"{_counted(loaded.bad_rows, 'bad row')} left out")
     if loaded.conflicts:
@@ -134,6 +143,16 @@ def _counted(number: int, word: str) -> str:
 def reasons_text(loaded: Loaded) -> str:
     """Bad cells by reason, the most frequent first."""
     return ", ".join(f"{code} {number:,}" for code, number in loaded.reasons.items())
+
+
+def advice(loaded: Loaded) -> str:
+    """What settles many bad cells at once, if there is such a thing."""
+    texts = [cell.text.strip() for cell in loaded.bad if cell.code in _NO_VALUE]
+    unknown = next(filter(_UNKNOWN.fullmatch, texts), None)
+    said = [] if unknown is None else [f'if "{unknown}" stands for unknown, say --missing "{unknown}"']
+    if any("comma" in cell.why and _DECIMAL_COMMA.fullmatch(cell.text.strip()) for cell in loaded.bad):
+        said.append("decimal commas are read with --constant decimal=comma")
+    return "; ".join(said)
 
 
 def _cut(text: str) -> str:
@@ -167,6 +186,7 @@ def loaded_data(loaded: Loaded) -> dict[str, Any]:
         "added": loaded.added,
         "already_known": loaded.already_known,
         "repeated": loaded.repeated,
+        "without_value": loaded.without_value,
         "bad_rows": loaded.bad_rows,
         "reasons": loaded.reasons,
         "bad": [_bad_data(loaded, cell) for cell in loaded.bad],

@@ -317,7 +317,7 @@ KNOWLEDGE_FIELDS: Mapping[LoadKind, tuple[Field, ...]] = {
 
 FIELDS: Mapping[LoadKind, tuple[Field, ...]] = {**OBSERVATION_FIELDS, **KNOWLEDGE_FIELDS}
 # Constants that belong to no column.
-TIME_CONSTANTS = ("scale", "place")
+TABLE_CONSTANTS = ("scale", "place", "decimal")
 
 
 def field_named(kind: LoadKind, name: str) -> Field | None:

@@ -23,7 +23,7 @@ from campaign.model.loading import (
     ValueTarget,
 )
 from campaign.reading import columnrefusals as refusals
-from campaign.reading.columnfields import FIELDS, TIME_CONSTANTS, VELOCITY_NAMES, Field, field_named, key
+from campaign.reading.columnfields import FIELDS, TABLE_CONSTANTS, VELOCITY_NAMES, Field, field_named, key
 from campaign.reading.columnpatterns import (
     Found,
     band_columns,
@@ -49,6 +49,7 @@ _PLACE_WORDS = {
     "heliocentre": "heliocentre", "heliocenter": "heliocentre", "sun": "heliocentre",
     "barycentre": "barycentre", "barycenter": "barycentre",
 }  # fmt: skip
+_DECIMAL_WORDS = {"comma": "comma", ",": "comma", "point": "point", ".": "point"}
 _AS = re.compile(r"(?P<name>.+?)\s+as\s+(?P<meaning>\S.*)")
 
 
@@ -101,7 +102,7 @@ class _Understanding:
         self._uses: dict[str, ColumnUse] = {}
         self._meanings: dict[str, TimeMeaning] = {}
         self._taken: set[int] = set()
-        self._time_words: dict[str, str] = {}
+        self._table_words: dict[str, str] = {}
         self._constants = self._given_constants()
         self._take_given()
         self._take_named()
@@ -127,6 +128,9 @@ class _Understanding:
         self._check_together()
         notes = [why] if why else []
         self._state_times(notes)
+        has_decimal_commas = self._table_word("decimal", _DECIMAL_WORDS) == "comma"
+        if has_decimal_commas:
+            notes.append("a comma in a number is its decimal point")
         used = self._taken | {use.number for target in self._targets for use in target.fields.values()}
         return TableMapping(
             self._kind,
@@ -141,6 +145,7 @@ class _Understanding:
             ),
             self._request.missing,
             tuple(notes),
+            has_decimal_commas,
         )
 
     def _has(self, name: str) -> bool:
@@ -156,8 +161,8 @@ class _Understanding:
     def _given_constants(self) -> dict[str, str]:
         constants: dict[str, str] = {}
         for name, text in self._request.constants.items():
-            if key(name) in TIME_CONSTANTS:
-                self._time_words[key(name)] = text
+            if key(name) in TABLE_CONSTANTS:
+                self._table_words[key(name)] = text
                 continue
             field = self._field(name, "--constant")
             if field is not None:
@@ -335,8 +340,8 @@ class _Understanding:
         )
 
     def _state_times(self, notes: list[str]) -> None:
-        scale = self._time_word("scale", _SCALE_WORDS)
-        place = self._time_word("place", _PLACE_WORDS)
+        scale = self._table_word("scale", _SCALE_WORDS)
+        place = self._table_word("place", _PLACE_WORDS)
         for name, named in self._meanings.items():
             use = self._uses[name]
             meaning = stated(named, scale, place, use.column)  # type: ignore[arg-type]
@@ -345,13 +350,13 @@ class _Understanding:
             self._meanings[name] = meaning
             self._uses[name] = replace(use, meaning=spoken(meaning))
 
-    def _time_word(self, constant: str, words: Mapping[str, str]) -> str | None:
-        text = self._time_words.get(constant)
+    def _table_word(self, constant: str, words: Mapping[str, str]) -> str | None:
+        text = self._table_words.get(constant)
         if text is None:
             return None
         word = words.get(key(text))
         if word is None:
-            raise refusals.time_word_refused(constant, text, words)
+            raise refusals.table_word_refused(constant, text, words)
         return word
 
     def _check_together(self) -> None:

@@ -6,7 +6,7 @@ from collections.abc import Mapping, Sequence
 
 from campaign.errors import InputRefused, UsageRefused
 from campaign.model.loading import LOAD_KINDS, ColumnUse, LoadKind, TableColumn
-from campaign.reading.columnfields import FIELDS, TIME_CONSTANTS, Field
+from campaign.reading.columnfields import FIELDS, TABLE_CONSTANTS, Field
 from campaign.reading.numbers import quoted
 from campaign.reading.timenames import EXAMPLES
 from campaign.reading.units import FAMILIES, accepted_units
@@ -39,7 +39,7 @@ def kind_unclear(columns: Sequence[TableColumn], fitting: Sequence[LoadKind]) ->
 
 def field_unknown(kind: LoadKind, name: str, option: str) -> UsageRefused:
     """A field that tables of this kind do not have."""
-    known = ", ".join([field.name for field in FIELDS[kind]] + list(TIME_CONSTANTS))
+    known = ", ".join([field.name for field in FIELDS[kind]] + list(TABLE_CONSTANTS))
     return UsageRefused(
         f"{option}: a table of {kind} has no field {quoted(name)}.",
         why=f"Its fields are {known}.",
@@ -149,8 +149,8 @@ def time_unclear(column: TableColumn, field: Field, meaning: str) -> UsageRefuse
     )
 
 
-def time_word_refused(constant: str, text: str, words: Mapping[str, str]) -> UsageRefused:
-    """A scale or a place that is none."""
+def table_word_refused(constant: str, text: str, words: Mapping[str, str]) -> UsageRefused:
+    """A scale, a place or a decimal mark that is none."""
     return UsageRefused(
         f"--constant {constant}: {quoted(text)} is not known.",
         why=f"It is one of {', '.join(dict.fromkeys(words.values()))}.",

@@ -179,6 +179,7 @@ def _load_observations(
         understood,
         rows_read=checker.rows_read,
         values_read=rows.size,
+        without_value=checker.without_value,
         bad_rows=checker.bad_rows,
         bad=tuple(sorted(checker.bad, key=lambda cell: cell.line)),
         rehearsed=wanted.rehearse,

@@ -66,6 +66,7 @@ class BlockCheck:
 
     def __init__(self, context: CheckContext, block: TableBlock) -> None:
         self.faults: dict[int, list[BadCell]] = {}
+        self.without_value = 0
         self._context = context
         self._mapping = context.mapping
         self._block = block
@@ -96,6 +97,10 @@ class BlockCheck:
     def _cells(self, use: ColumnUse) -> Sequence[str]:
         return without_missing(self._block.columns[use.number - 1], self._mapping.missing)
 
+    def _number_cells(self, use: ColumnUse) -> Sequence[str]:
+        cells = self._cells(use)
+        return [cell.replace(",", ".") for cell in cells] if self._mapping.has_decimal_commas else cells
+
     def _note(self, use: ColumnUse, faults: Sequence[CellFault]) -> None:
         for fault in faults:
             text = self._block.columns[use.number - 1][fault.place][:SHOWN_TEXT]
@@ -121,11 +126,13 @@ class BlockCheck:
 
     def _times(self) -> TimeCells:
         use = self._mapping.columns["time"]
+        is_text = self._mapping.instants["time"].count == "text"
         longitudes: list[float | None] | None = None
-        if self._mapping.instants["time"].count == "text":
+        if is_text:
             by_place = [*(site.longitude_deg_east for site in self._context.sites), None]
             longitudes = [by_place[place] for place in self._shared["site"].tolist()]
-        times = read_times(self._cells(use), self._mapping.instants["time"], use.column, longitudes)
+        cells = self._cells(use) if is_text else self._number_cells(use)
+        times = read_times(cells, self._mapping.instants["time"], use.column, longitudes)
         self._note(use, times.faults)
         error = self._sizes("time_error", "d")
         if error is not None:
@@ -143,7 +150,7 @@ class BlockCheck:
             constant = self._context.constants.get(name)
             return None if constant is None else np.full(self._size, constant)
         expected = Expected(unit, use.column, low=0.0, with_error=False)
-        sizes, faults = read_sizes(self._cells(use), expected, use.unit or (of.unit if of else None))
+        sizes, faults = read_sizes(self._number_cells(use), expected, use.unit or (of.unit if of else None))
         self._note(use, faults)
         return sizes
 
@@ -164,7 +171,7 @@ class BlockCheck:
         column = NUMBER_COLUMNS[name]
         if use is not None:
             expected = column.expected(use.column)
-            values, faults = read_plain_numbers(self._cells(use), expected, use.unit)
+            values, faults = read_plain_numbers(self._number_cells(use), expected, use.unit)
             if name == "shell_index":
                 broken = ~np.isnan(values) & (values != np.floor(values))
                 faults += _faults(_where(broken), "index-refused", "An index is a whole number from 1.")
@@ -191,7 +198,7 @@ class BlockCheck:
         expected = Expected(
             column.unit, use.column, column.low, column.high, column.low_open, column.high_open
         )
-        cells = read_values(self._cells(use), expected, use.unit)
+        cells = read_values(self._number_cells(use), expected, use.unit)
         self._note(use, cells.faults)
         self._limits(target, cells)
         self._errors(target, cells, column.unit)
@@ -253,7 +260,7 @@ class BlockCheck:
     def _angles(self, target: ValueTarget) -> dict[str, Array]:
         use = target.fields["angle"]
         expected = Expected(ANGLE.unit, use.column, ANGLE.low, ANGLE.high)
-        cells = read_values(self._cells(use), expected, use.unit)
+        cells = read_values(self._number_cells(use), expected, use.unit)
         cells.faults += _faults(_where(cells.side != 0), "value-unreadable", "An angle is no limit.")
         if self._mapping.kind == "position":
             empty = _besides(np.isnan(cells.value), cells.faults)
@@ -273,10 +280,20 @@ class BlockCheck:
         }
 
     def _refuse_empty(self, values: Sequence[Mapping[str, Array]]) -> None:
-        """A row without any value is no observation."""
+        """A row without any value is no observation, and bad unless its text is said to mean unknown."""
         empty = np.logical_and.reduce([np.isnan(found["value"]) for found in values])
-        use = self._mapping.targets[0].fields["value"]
+        uses = [target.fields["value"] for target in self._mapping.targets]
         places = [place for place in _where(empty) if place not in self.faults]
+        if places and self._mapping.missing:
+            columns = [self._block.columns[use.number - 1] for use in uses]
+            bare = [
+                place
+                for place in places
+                if not any(column[place].strip() in self._mapping.missing for column in columns)
+            ]
+            self.without_value = len(places) - len(bare)
+            places = bare
+        use = uses[0]
         self._note(use, _faults(places, "value-missing", "The row has no value."))
 
     def _piece(self, target: ValueTarget, found: Mapping[str, Array], times: TimeCells, kept: Array) -> Piece:

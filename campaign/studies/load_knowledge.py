@@ -183,19 +183,25 @@ class _Rows:
         rows: list[_Row] = []
         for block in table.blocks:
             for misfit in block.misfits:
+                if not any(map(str.strip, misfit.cells)):
+                    continue
                 text = " | ".join(misfit.cells)[:SHOWN_TEXT]
                 bad = [BadCell(misfit.line, None, misfit.code, misfit.why, text)]
                 rows.append(_Row(misfit.line, misfit.cells, {}, bad))
             for place, line in enumerate(block.lines):
                 cells = tuple(column[place] for column in block.columns)
-                rows.append(self._row(line, cells))
+                if any(map(str.strip, cells)):
+                    rows.append(self._row(line, cells))
         return rows
 
     def _row(self, line: int, cells: tuple[str, ...]) -> _Row:
         row = _Row(line, cells, {}, [])
         shown = without_missing(cells, self._mapping.missing)
         for name, use in self._mapping.columns.items():
-            self._take(row, name, shown[use.number - 1], use)
+            text = shown[use.number - 1]
+            if self._mapping.has_decimal_commas and self._is_number(name):
+                text = text.replace(",", ".")
+            self._take(row, name, text, use)
         for name, text in self._mapping.constants.items():
             self._take(row, name, text, None)
         for name, field in self._fields.items():
@@ -206,6 +212,12 @@ class _Rows:
                 why = f"The row has no {field.spoken}."
                 row.bad.append(BadCell(line, column, f"{name}-missing", why, ""))
         return row
+
+    def _is_number(self, name: str) -> bool:
+        meaning = self._mapping.instants.get(name)
+        return self._fields[name].type in ("number", "measured") or (
+            meaning is not None and meaning.count != "text"
+        )
 
     def _take(self, row: _Row, name: str, text: str, use: ColumnUse | None) -> None:
         if not text.strip():

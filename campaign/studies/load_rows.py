@@ -98,6 +98,11 @@ class _Parts:
         return np.concatenate(pieces) if pieces else np.zeros(0, dtype=dtype)
 
 
+def _is_filled(cells: Sequence[str]) -> bool:
+    """Whether a row has anything in it; spreadsheets end in rows of empty cells."""
+    return any(cell and not cell.isspace() for cell in cells)
+
+
 class RowChecker:
     """Takes a table block by block; tells what is wrong, and in the end has what is right as columns."""
 
@@ -113,6 +118,7 @@ class RowChecker:
         self.rejected: list[Rejected] = []
         self.bad_rows = 0
         self.rows_read = 0
+        self.without_value = 0
         self.kind = mapping.kind
         self.systems: NameIndex = system_index(systems)
         self.sites: NameIndex = site_index(sites)
@@ -128,17 +134,25 @@ class RowChecker:
     def take(self, block: TableBlock) -> None:
         """Check and gather some rows."""
         for misfit in block.misfits:
+            if not _is_filled(misfit.cells):
+                continue
+            self.rows_read += 1
             text = " | ".join(misfit.cells)[:SHOWN_TEXT]
             bad = BadCell(misfit.line, None, misfit.code, misfit.why, text)
             self._refuse(misfit.cells, [bad])
         size = len(block.lines)
-        self.rows_read += size + len(block.misfits)
+        self.rows_read += size
         if not size:
             return
         check = BlockCheck(self._context, block)
         pieces = check.pieces()
-        for place, cells in sorted(check.faults.items()):
-            self._refuse([column[place] for column in block.columns], cells)
+        self.without_value += check.without_value
+        for place, faults in sorted(check.faults.items()):
+            cells = [column[place] for column in block.columns]
+            if _is_filled(cells):
+                self._refuse(cells, faults)
+            else:
+                self.rows_read -= 1
         for arrays, texts in pieces:
             self._parts.texts += texts
             for name, array in arrays.items():

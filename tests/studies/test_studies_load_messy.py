@@ -1,0 +1,147 @@
+"""Tables as people send them. Expectations: what the tables say to a reader (invented, written by hand), and
+the words of the issue: nothing wrong goes in unnoticed, nothing is guessed silently."""
+
+from __future__ import annotations
+
+import shutil
+
+import pytest
+from load_examples import begin, codes, kept, load
+
+from campaign.errors import InputRefused, UsageRefused
+from campaign.model.measured import Measured
+
+
+@pytest.fixture(scope="module")
+def begun(tmp_path_factory):
+    return begin(tmp_path_factory.mktemp("messy") / "campaign.db")
+
+
+@pytest.fixture
+def db(begun, tmp_path):
+    return shutil.copy(begun, tmp_path / "campaign.db")
+
+
+SURVEY = (
+    "# Northern sweep, data release 4\n"
+    "HJD-2450000,mag,magerr,filter,camera,flag\n"
+    "9001.51234,12.301,0.021,V,bd,0\n"
+    "9008.50210,12.312,0.019,V,bd,1\n"
+    "9015.12300,99.990,99.990,V,bd,1\n"
+)
+
+
+def test_a_light_curve_of_a_survey_with_its_mark_of_nothing_seen(db):
+    said = {"constants": {"system": "Lamp C"}}
+    refused = load(db, SURVEY, **said)
+    assert (refused.is_refused, codes(refused)) == (True, [(5, "mag", "out-of-range")])
+    loaded = load(db, SURVEY, **said, missing=("99.990",))
+    assert (loaded.added, loaded.without_value, loaded.bad, loaded.is_refused) == (2, 1, (), False)
+    assert loaded.understood.unused == ("flag",)
+    first, second = kept(db)
+    assert (first.moment.text, first.moment.place) == ("HJD_UTC 2459001.51234", "heliocentre")
+    assert (first.value, first.band, first.instrument) == (Measured(12.301, 0.021, 0.021), "V", "bd")
+    assert second.value == Measured(12.312, 0.019, 0.019)
+
+
+def test_a_row_whose_value_is_empty_is_bad_although_another_word_means_unknown(db):
+    text = "system,BJD_TDB,band,mag\nKeel 9,2459001.5,K,\nKeel 9,2459002.5,K,--\nKeel 9,2459003.5,K,7.3\n"
+    loaded = load(db, text, missing=("--",), skip_bad=True)
+    assert codes(loaded) == [(2, "mag", "value-missing")]
+    assert (loaded.added, loaded.without_value) == (1, 1)
+
+
+def test_a_wide_row_is_left_out_only_when_all_its_values_are_unknown(db):
+    text = "system,BJD_TDB,J,K\nKeel 9,2459001.5,-99,7.3\nKeel 9,2459002.5,-99,-99\n"
+    loaded = load(db, text, missing=("-99",))
+    assert (loaded.added, loaded.without_value) == (1, 1)
+    assert [each.band for each in kept(db)] == ["K"]
+
+
+def test_a_spreadsheet_with_merged_words_over_its_names_limits_and_empty_rows(db):
+    text = (
+        '"","K","","J","","",""\r\n'
+        '"Object / Date","mag","err","mag","err","site","remarks"\r\n'
+        '"2021-03-14T08:12Z","7.31","0.02",">12.1","","Cold Mesa","thin cloud"\r\n'
+        '"","","","","","",""\r\n'
+        '"2021-03-15T08:20Z","<6.0","","8.91","0.03","Cold Mesa",""\r\n'
+        ",,,,\r\n"
+    )
+    loaded = load(db, text, columns={"time": "Object / Date"}, constants={"system": "Keel 9"})
+    assert (loaded.rows_read, loaded.added, loaded.bad) == (2, 4, ())
+    found = {(each.band, each.moment.text[8:10]): each for each in kept(db)}
+    assert found["K", "14"].value == Measured(7.31, 0.02, 0.02)
+    assert (found["J", "14"].value.value, found["J", "14"].limit_side) == (12.1, "above")
+    assert (found["K", "15"].value.value, found["K", "15"].limit_side) == (6.0, "below")
+    assert {each.text for each in kept(db)} == {"thin cloud", ""}
+    assert {each.site for each in kept(db)} == {"Cold Mesa"}
+
+
+COMMAS = "Star name;MJD (UTC);K mag;error;site\nKeel 9;61234,5;7,31;0,02;Cold Mesa\n"
+
+
+def test_commas_in_numbers_are_decimal_points_when_that_is_said_and_refused_before(db):
+    refused = load(db, COMMAS)
+    assert {cell.column for cell in refused.bad} == {"MJD (UTC)", "K mag", "error"}
+    loaded = load(db, COMMAS, constants={"decimal": "comma"})
+    assert loaded.added == 1
+    assert "a comma in a number is its decimal point" in loaded.understood.notes
+    (found,) = kept(db)
+    assert (found.moment.text, found.value) == ("MJD_UTC 61234.5", Measured(7.31, 0.02, 0.02))
+    with pytest.raises(UsageRefused):
+        load(db, COMMAS, constants={"decimal": "dash"})
+
+
+def test_a_thousands_mark_is_not_taken_for_a_decimal_comma(db):
+    loaded = load(db, COMMAS.replace("61234,5", "61.234,5"), constants={"decimal": "comma"})
+    assert [column for _, column, _ in codes(loaded)] == ["MJD (UTC)"]
+
+
+def test_decimal_commas_of_solutions_are_kept_with_a_mapping(db):
+    text = 'system;P;e_P;epoch;e;omega;omega_of;source\nKeel 9;{},5;0,3;"2024-05-01±2 d";0,71;143;A;x, y\n'
+    said = {"kind": "solutions", "constants": {"decimal": "comma"}}
+    assert load(db, text.format(3127), **said, keep_mapping="commas").added == 1
+    assert load(db, text.format(3128), mapping="commas").added == 1
+
+
+def test_one_column_of_errors_beside_two_bands_is_asked_about(db):
+    text = "system,BJD_TDB,J,K,err\nKeel 9,2459001.5,8.9,7.3,0.02\n"
+    with pytest.raises(InputRefused) as refused:
+        load(db, text)
+    assert refused.value.code == "column-ambiguous"
+    assert '--column "error=err"' in refused.value.hint
+    assert load(db, text, columns={"error": "err"}).added == 2
+    assert {each.value.minus for each in kept(db)} == {0.02}
+    # Beside one band there is nothing to ask.
+    assert load(db, "system,BJD_TDB,K mag,err\nKeel 9,2459002.5,7.3,0.02\n").added == 1
+    assert kept(db)[-1].value == Measured(7.3, 0.02, 0.02)
+
+
+def test_velocities_of_two_stars_between_tabs_with_gaps_and_the_minus_of_typesetters(db):
+    text = (
+        "BJD_TDB\tRV_A (km/s)\te_RV_A\tRV_B (km/s)\te_RV_B\n"
+        "2459123.55121\t\u221245.2\t3.1\t61.0\t5.0\n"
+        "2459150.51311\t-42.1\t3.0\t\t\n"
+    )
+    assert load(db, text, constants={"system": "Keel 9"}).added == 3
+    assert sorted((each.star, each.value.value) for each in kept(db)) == [
+        ("A", -45.2), ("A", -42.1), ("B", 61.0),
+    ]  # fmt: skip
+
+
+def test_radii_of_shells_at_fixed_places_with_units_below_the_names(db):
+    text = (
+        "object     date        radius   e_radius  PA    feature  measured_at  index  filter\n"
+        "           (UT)        (arcsec) (arcsec)  (deg)\n"
+        "---------- ----------  -------  --------  ----- -------- ------------ -----  ------\n"
+        "Keel 9     2016-08-04  0.62     0.03      120   limb     edge         1      N\n"
+        "Keel 9     2016-08-04  1.83     0.05            limb     edge         2      N\n"
+    )
+    loaded = load(db, text)
+    assert loaded.added == 2
+    # The light time between site and geocentre is nothing beside a whole day.
+    assert not loaded.warnings
+    assert [(each.value.value, each.shell_index, each.band) for each in kept(db)] == [
+        (0.62, 1, "N"), (1.83, 2, "N"),
+    ]  # fmt: skip
+    assert [each.position_angle_deg for each in kept(db)] == [Measured(120.0), None]
