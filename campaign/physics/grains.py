@@ -2,21 +2,19 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from campaign.physics.constants import AU_KM
+from campaign.physics.constants import (
+    AU_KM,
+    BOLTZMANN_J_K,
+    LIGHT_M_S,
+    PLANCK_J_S,
+    SOLAR_LUMINOSITY_W,
+    STEFAN_BOLTZMANN,
+)
 
 FloatArray = NDArray[np.float64]
-
-# IAU 2015 Resolution B3 (nominal), and SI since 2019 (exact).
-SOLAR_LUMINOSITY_W = 3.828e26
-PLANCK_J_S = 6.62607015e-34
-BOLTZMANN_J_K = 1.380649e-23
-LIGHT_M_S = 299_792_458.0
-STEFAN_BOLTZMANN = 2.0 * math.pi**5 * BOLTZMANN_J_K**4 / (15.0 * PLANCK_J_S**3 * LIGHT_M_S**2)
 
 _AU_M = 1000.0 * AU_KM
 _UM_M = 1e-6
@@ -25,8 +23,8 @@ _UM_M = 1e-6
 def grain_temperature_k(
     luminosity_lsun: ArrayLike,
     distance_au: ArrayLike,
-    emissivity_index: float = 1.0,
-    grain_radius_um: float = 0.1,
+    emissivity_index: ArrayLike = 1.0,
+    grain_radius_um: ArrayLike = 0.1,
 ) -> FloatArray:
     """Equilibrium temperature of a grain that absorbs all starlight and emits poorly at long wavelengths.
 
@@ -36,9 +34,9 @@ def grain_temperature_k(
         Luminosity of all stars together, nominal solar luminosities, > 0.
     distance_au : array_like
         Distance from them, au, > 0; much larger than that between the stars.
-    emissivity_index : float
+    emissivity_index : array_like
         s of Q_ir = (2 pi a / lambda)^s (dimensionless), >= 0; 0 is a grey grain, 1 suits amorphous carbon.
-    grain_radius_um : float
+    grain_radius_um : array_like
         Radius a, um, > 0; without effect on a grey grain.
 
     Returns
@@ -63,20 +61,58 @@ def grain_temperature_k(
     >>> round(float(grain_temperature_k(3e5, 65.77, 1.0, 0.628 / (2 * np.pi))), 1)
     1200.0
     """
-    from scipy.special import gamma, zeta
-
     absorbed = (
         np.asarray(luminosity_lsun, dtype=float)
         * SOLAR_LUMINOSITY_W
         / (16.0 * np.pi * (np.asarray(distance_au, dtype=float) * _AU_M) ** 2)
     )
-    s = emissivity_index
-    size = BOLTZMANN_J_K * 2.0 * np.pi * grain_radius_um * _UM_M / (PLANCK_J_S * LIGHT_M_S)
-    mean = size**s * gamma(4.0 + s) * zeta(4.0 + s, 1) / (gamma(4.0) * zeta(4.0, 1))
+    s = np.asarray(emissivity_index, dtype=float)
+    at_one_kelvin = power_law_emission(1.0, s, grain_radius_um)
     grey = (absorbed / STEFAN_BOLTZMANN) ** 0.25
-    selective = (absorbed / (STEFAN_BOLTZMANN * mean)) ** (1.0 / (4.0 + s))
+    selective = (absorbed / (STEFAN_BOLTZMANN * at_one_kelvin)) ** (1.0 / (4.0 + s))
     hottest: FloatArray = np.maximum(grey, selective)
     return hottest
+
+
+def power_law_emission(
+    temperature_k: ArrayLike, emissivity_index: ArrayLike, grain_radius_um: ArrayLike
+) -> FloatArray:
+    """Planck mean of an emissivity that falls as a power of the wavelength, without any ceiling.
+
+    Parameters
+    ----------
+    temperature_k : array_like
+        Temperature, kelvin, > 0.
+    emissivity_index : array_like
+        s of Q = (2 pi a / lambda)^s (dimensionless), >= 0.
+    grain_radius_um : array_like
+        Radius a, um, > 0. Inputs broadcast.
+
+    Returns
+    -------
+    ndarray
+        <Q> (dimensionless); above 1 the law is beyond its domain, for no grain emits better than a black
+        body of its size.
+
+    Notes
+    -----
+    Accuracy: exact for the power law. Cutting Q off at 1 would change <Q> by 2e-6 at 1200 K and by 0.03 %
+    at 1800 K (a = 0.1 um, s = 1).
+
+    Source: integral of x^(3+s)/(e^x - 1) over that of x^3/(e^x - 1) (Draine 2011, ch. 24; memory).
+
+    Examples
+    --------
+    >>> round(float(power_law_emission(1200.0, 1.0, 0.628 / (2 * np.pi))), 9)
+    0.200723837
+    """
+    from scipy.special import gamma, zeta
+
+    s = np.asarray(emissivity_index, dtype=float)
+    radius, temperature = (np.asarray(x, dtype=float) for x in (grain_radius_um, temperature_k))
+    size = BOLTZMANN_J_K * temperature * 2.0 * np.pi * radius * _UM_M / (PLANCK_J_S * LIGHT_M_S)
+    mean: FloatArray = size**s * gamma(4.0 + s) * zeta(4.0 + s, 1) / (gamma(4.0) * zeta(4.0, 1))
+    return mean
 
 
 def peak_wavelength_um(temperature_k: ArrayLike, emissivity_index: float = 1.0) -> FloatArray:

@@ -15,7 +15,7 @@ import campaign.physics
 MODULES = sorted(module.name for module in pkgutil.iter_modules(campaign.physics.__path__))
 UNITS = re.compile(
     r"(?<![\w'])(rad|deg|arcsec|mas|au|pc|km|km/s|days?|yr|s|m|solar masses"
-    r"|jy|mag|um|kelvin|dimensionless|unit|periods)(?![\w'])",
+    r"|jy|mag|um|kelvin|K|Lsun|Msun|cm\^2|dimensionless|unit|periods)(?![\w'])",
     re.I,
 )
 
