@@ -86,6 +86,25 @@ class DatedShell:
     feature: str | None = None
     observation_id: int | None = None
     notes: tuple[str, ...] = ()
+    age_periods: float | None = None
+    age_periods_sigma: float | None = None
+    stated_index: int | None = None
+    position_angle_deg: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class ForeseenShell:
+    """Where the shell of one cycle should stand in one image; ``measured`` says whether a radius is its.
+
+    ``age_yr`` counts from the middle of the production window where an ephemeris gives it, else from the
+    clock of the shells themselves; None of ``cycle`` then.
+    """
+
+    image_bmjd_tdb: float | None
+    cycle: int | None
+    age_yr: float
+    radius_arcsec: float
+    measured: bool
 
 
 @dataclass(frozen=True, slots=True)
@@ -158,6 +177,9 @@ class ShellDatingResult:
     error_scale: float | None = None
     phase_of_youngest: float | None = None
     phase_of_youngest_sigma: float | None = None
+    span_yr: float | None = None
+    span_sigma_yr: float | None = None
+    foreseen: tuple[ForeseenShell, ...] = ()
     not_told: tuple[str, ...] = ()
     assumptions: tuple[str, ...] = ()
     warnings: tuple[str, ...] = ()
