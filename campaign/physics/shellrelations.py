@@ -63,7 +63,8 @@ def solve_shell_relations(
     Returns
     -------
     RelationSolution
-        Quantities in the same units (arcsec, mas/yr, km/s, yr, pc). A derived one is the best linear combination, in logarithms, of all
+        Quantities in the same units (arcsec, mas/yr, km/s, yr, pc). A derived one is the best linear
+        combination, in logarithms, of all
         ways to it. Its ``sigma`` is of first order; its bounds come from draws. With an unknown error on
         every way the shortest way gives the value, without error.
 
