@@ -169,6 +169,26 @@ def _semi_major_axis(row: ForecastRow, solution: Solution) -> tuple[str, ...]:
     return ()
 
 
+def take_size(row: ForecastRow) -> tuple[str, ...]:
+    """Fill in what the semi-major axis of a row's orbit is computed from, whatever its rule.
+
+    Parameters
+    ----------
+    row : ForecastRow
+        A row with a solution; its values gain the inputs, in the units of their names.
+
+    Returns
+    -------
+    tuple of str
+        Names of the quantities that the size rests on; empty when nothing gives it.
+
+    Notes
+    -----
+    Accuracy: nothing is computed here. Source: the order of ``A_SOURCES``.
+    """
+    return () if row.solution is None else _semi_major_axis(row, row.solution)
+
+
 def distance_of(record: SystemRecord) -> Measured | None:
     """Distance of a system in pc: the catalogued one, else from its parallax.
 

@@ -225,7 +225,7 @@ class Sampler:
         return production_half_window_d(
             period,
             self.draw("eccentricity", index),
-            self._a_au(index, period),
+            self.semi_major_axis_au(index, period),
             self.draw("critical_separation_au", index),
         )
 
@@ -248,7 +248,8 @@ class Sampler:
         bounded = np.where(np.isinf(half), np.nan, half)
         return delay - bounded if event == "onset" else delay + bounded
 
-    def _a_au(self, index: IntArray, period: FloatArray) -> FloatArray:
+    def semi_major_axis_au(self, index: IntArray, period: FloatArray) -> FloatArray:
+        """Draws of a in au, from whatever each row has it from; ``period`` in days, (rows, draws)."""
         sources = np.array([self.rows[i].a_source for i in index])
         a = np.empty(period.shape)
         for source in np.unique(sources):
