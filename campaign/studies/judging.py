@@ -43,7 +43,7 @@ def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> Judge
         error[past],
         arrays.limit_side[past],
         [str(b) for b in arrays.band[past]],
-        _series(arrays, past),
+        series_of(arrays, past),
         spans,
     )
 
@@ -77,8 +77,25 @@ def confirmed_spans(record: SystemRecord) -> list[tuple[float, float, int | None
     return spans
 
 
-def _series(arrays: PhotometryArrays, chosen: NDArray[np.bool_]) -> list[str]:
-    """What a level is taken of, beside the band: photometric system, source and site, never mixed."""
+def series_of(arrays: PhotometryArrays, chosen: NDArray[np.bool_]) -> list[str]:
+    """What a level is taken of, beside the band: photometric system, source and site, never mixed.
+
+    Parameters
+    ----------
+    arrays : PhotometryArrays
+        Light curve (mag, ``bmjd_tdb``).
+    chosen : ndarray of bool
+        Which points (dimensionless).
+
+    Returns
+    -------
+    list of str
+        One key a chosen point; equal keys share a level.
+
+    Notes
+    -----
+    Accuracy: exact (no numbers). Source: DEVELOPERS.md (conventions: magnitudes and their systems).
+    """
     return [
         f"{photometric_system_key(own)}\0{source}\0{site}"
         for own, source, site in zip(
