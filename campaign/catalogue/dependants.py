@@ -70,6 +70,7 @@ class _Search:
 
     def reasons(self) -> Mapping[int | None, str]:
         self._same_entries()
+        self._same_entries_with_their_load()
         self._same_state_of_a_system()
         self._same_load()
         self._counted_from_the_anchor()
@@ -114,6 +115,21 @@ class _Search:
                         depends = row.action != "update" or bool(touched & effect.before.keys())
                     if depends:
                         self._add(row.operation_id, "changed the same entry later")
+
+    def _same_entries_with_their_load(self) -> None:
+        """Loads taken back or put back as a whole, which changes each observation that they brought."""
+        own = self._rows("added", "changed").get(observations.name, {})
+        loads: set[int] = set()
+        for some in in_portions(own):
+            brought = select(observations.c.operation_id).where(observations.c.id.in_(some)).distinct()
+            loads.update(self._connection.execute(brought).scalars())
+        if not loads:
+            return
+        whole = and_(changes.c.table_name == observations.name, changes.c.row_id.is_(None))
+        for row in self._later_changes(whole):
+            if row.after.get("brought_by") in loads:
+                did = "took back" if row.action == "withdraw many" else "put back"
+                self._add(row.operation_id, f"{did} the load that the observation came with")
 
     def _same_state_of_a_system(self) -> None:
         for table, reason in _ONE_A_SYSTEM:

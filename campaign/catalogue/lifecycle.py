@@ -9,7 +9,9 @@ from sqlalchemy import Column, ColumnElement, Connection, Table, and_, select, t
 
 from campaign.catalogue.tables import (
     adoptions,
+    campaign_info,
     changes,
+    column_mappings,
     dust_rules,
     episodes,
     lapses,
@@ -17,6 +19,7 @@ from campaign.catalogue.tables import (
     sites,
     solutions,
     sources,
+    stars,
     system_names,
     systems,
 )
@@ -34,6 +37,8 @@ MARKER_OF: Final[Mapping[str, str]] = {
     dust_rules.name: "ended_at",
 }
 MARKERS: Final = frozenset({"withdrawn_at", "ended_at", "superseded_at"})
+# Tables whose rows can be removed: nobody asks for their past, and nothing refers to them.
+LOSING_ROWS: Final = frozenset({system_names.name, stars.name, column_mappings.name, campaign_info.name})
 # Words to refer to, and the past itself: what was entered there stays when its operation is taken back.
 LASTING: Final = frozenset({sources.name, lapses.name})
 # Follow from what was adopted, whenever that changes: no entry stands or falls with them.

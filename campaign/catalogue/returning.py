@@ -97,8 +97,9 @@ def _holders(connection: Connection, table: Table[Any], effect: RowEffect, names
     if wanted is None or None in wanted.values():
         return set()
     held = [table.c[name] == value for name, value in wanted.items()]
-    others = select(table.c.id).where(*held, row_in_use(table), table.c.id != effect.row_id)
-    return set(connection.execute(others).scalars())
+    others = set(connection.execute(select(table.c.id).where(*held, row_in_use(table))).scalars())
+    # A row that is gone holds nothing: its number may belong to another one by now.
+    return others if effect.kind == "removed" else others - {effect.row_id}
 
 
 def _returning_values(

@@ -23,6 +23,7 @@ from campaign.catalogue.address import Address, Database, address_of
 from campaign.catalogue.engine import BUSY_TIMEOUT_S, reading_engine, writing_engine
 from campaign.catalogue.failures import translated
 from campaign.catalogue.guards import guarded_columns, insertion
+from campaign.catalogue.numbering import Numbering
 from campaign.catalogue.opening import refuse_other_revision, roll_back_interrupted_write
 from campaign.catalogue.tables import changes, operations
 from campaign.catalogue.types import ValueRefused
@@ -42,6 +43,7 @@ class Writing:
         self._summary = summary
         self._operation_id: int | None = None
         self._undoes_id: int | None = None
+        self._numbering = Numbering(connection)
         # 96 random bits name the operation; the last 32 number what it makes, so that identifiers
         # of one load follow each other and their index grows at one end.
         self._uid_base = secrets.randbits(96) << 32
@@ -97,7 +99,8 @@ class Writing:
         ValueRefused
             When a column must not hold the value; ``details`` names table and column.
         """
-        row_id = _inserted(self.connection, table, values)
+        number = {} if "id" in values else self._numbering.fresh(table)
+        row_id = _inserted(self.connection, table, {**number, **values})
         kept = {name: value for name, value in values.items() if name != "id"}
         self._record(table, row_id, "insert", None, _stored(table, kept))
         return row_id

@@ -8,16 +8,14 @@ refused when such an entry looks otherwise by now, or when something in use woul
 from __future__ import annotations
 
 import shutil
-import tempfile
 from collections.abc import Callable, Iterator, Mapping
-from contextlib import contextmanager
 from dataclasses import dataclass, replace
 from datetime import datetime, timedelta
 from pathlib import Path
 from typing import Any, ClassVar
 
 import pytest
-from hypothesis import HealthCheck, settings
+from hypothesis import HealthCheck, Phase, settings
 from hypothesis import strategies as st
 from hypothesis.stateful import (
     RuleBasedStateMachine,
@@ -29,6 +27,7 @@ from hypothesis.stateful import (
 )
 from sqlalchemy import text
 from studies_examples import CLOCK
+from undo_examples import begun, keep_engines
 
 from campaign.catalogue import (
     episodes,
@@ -37,7 +36,6 @@ from campaign.catalogue import (
     sites,
     store,
     systems,
-    upgrade,
 )
 from campaign.catalogue.store import Writing
 from campaign.errors import Conflict, NotFound
@@ -164,8 +162,7 @@ class Undoing(RuleBasedStateMachine):
 
     @initialize()
     def begin(self) -> None:
-        self.folder = Path(tempfile.mkdtemp(prefix="campaign-undo-"))
-        self.db = str(self.folder / "campaign.db")
+        self.db = str(BEGUN["path"].with_name("campaign.db"))
         shutil.copy(BEGUN["path"], self.db)
         self.clock = CLOCK
         self.done: dict[int, Done] = {}
@@ -181,9 +178,8 @@ class Undoing(RuleBasedStateMachine):
         self.add_site(PLACES[0])
 
     def teardown(self) -> None:
-        if hasattr(self, "folder"):
+        if hasattr(self, "db"):
             self._everything_is_still_known()
-            shutil.rmtree(self.folder)
 
     # ------------------------------------------------------------------ commands
 
@@ -517,30 +513,36 @@ def difference(found: Look, wanted: Look) -> dict[Any, Any]:
 BEGUN: dict[str, Path] = {}
 
 
-@contextmanager
-def begun(folder: Path) -> Iterator[None]:
-    BEGUN["path"] = folder / "begun.db"
-    upgrade.begin_database(BEGUN["path"], at=CLOCK)
-    yield
+@pytest.fixture
+def _begun(tmp_path: Path) -> Iterator[None]:
+    BEGUN["path"] = begun(tmp_path) / "begun.db"
+    with keep_engines():
+        yield
 
 
-def run(folder: Path, examples: int, steps: int) -> None:
-    with begun(folder):
-        run_state_machine_as_test(
-            Undoing,
-            settings=settings(
-                max_examples=examples,
-                stateful_step_count=steps,
-                deadline=None,
-                suppress_health_check=list(HealthCheck),
-            ),
-        )
+def run(examples: int, steps: int) -> None:
+    run_state_machine_as_test(
+        Undoing,
+        settings=settings(
+            max_examples=examples,
+            stateful_step_count=steps,
+            deadline=None,
+            suppress_health_check=list(HealthCheck),
+            # A failure shows the steps that led to it; to shorten them would take many minutes.
+            phases=[Phase.explicit, Phase.generate],
+            report_multiple_bugs=False,
+            print_blob=True,
+            database=None,
+        ),
+    )
 
 
-def test_commands_and_undos_in_any_order_agree_with_a_simple_model(tmp_path: Path) -> None:
-    run(tmp_path, 12, 30)
+@pytest.mark.usefixtures("_begun")
+def test_commands_and_undos_in_any_order_agree_with_a_simple_model() -> None:
+    run(12, 30)
 
 
 @pytest.mark.slow
-def test_commands_and_undos_in_any_order_agree_with_a_simple_model_for_long(tmp_path: Path) -> None:
-    run(tmp_path, 300, 50)
+@pytest.mark.usefixtures("_begun")
+def test_commands_and_undos_in_any_order_agree_with_a_simple_model_for_long() -> None:
+    run(100, 50)
