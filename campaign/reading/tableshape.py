@@ -174,11 +174,16 @@ def _division(lines: Sequence[str]) -> tuple[str, tuple[int, ...]]:
 
 def _spaces(lines: Sequence[str]) -> tuple[str, tuple[int, ...]] | None:
     rows = [line for line in lines if not _RULER.fullmatch(line)]
+    ruler = next((line for line in lines if _RULER.fullmatch(line) and " " in line.strip()), None)
+    if ruler is not None and rows:
+        edges = _runs([ruler])
+        names = split_at(rows[0], edges)
+        if len(edges) > 1 and all(names) and " ".join(names).split() == rows[0].split():
+            return "", edges
     for delimiter, split in ((" ", split_words), ("  ", split_blanks)):
         expected = len(split(rows[0]))
         if expected > 1 and sum(len(split(row)) == expected for row in rows) >= _MOST * len(rows):
             return delimiter, ()
-    ruler = next((line for line in lines if _RULER.fullmatch(line) and " " in line.strip()), None)
     edges = _runs([ruler]) if ruler is not None else _runs(rows)
     return ("", edges) if len(edges) > 1 else None
 
@@ -189,7 +194,17 @@ def _runs(lines: Sequence[str]) -> tuple[int, ...]:
     if width > 20_000:
         return ()
     blank = [all(place >= len(line) or line[place] == " " for line in lines) for place in range(width)]
-    return tuple(place for place in range(width) if not blank[place] and (place == 0 or blank[place - 1]))
+    begins = [place for place in range(width) if not blank[place] and (place == 0 or blank[place - 1])]
+    if len(lines) < 2:
+        return tuple(begins)
+    # One blank and no name over what follows: a space inside the cells of one column.
+    head = lines[0].ljust(width)
+    ends = [*begins[1:], width]
+    return tuple(
+        begin
+        for begin, end in zip(begins, ends, strict=True)
+        if begin == 0 or head[begin:end].strip() or (begin > 1 and blank[begin - 2])
+    )
 
 
 def looks_like_number(cell: str) -> bool:

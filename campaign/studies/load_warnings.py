@@ -183,7 +183,7 @@ def _implausible(columns: ObservationColumns) -> Mask:
         odd |= error > _LARGEST_ERROR.get(kind, np.inf)
         odd |= error < _SMALLEST_ERROR.get(kind, 0.0)
         if kind in _RELATIVE:
-            odd |= error > 2.0 * np.abs(columns.numbers["value"])
+            odd |= 0.5 * error > np.abs(columns.numbers["value"])
     return odd
 
 

@@ -312,3 +312,17 @@ def test_the_timesys_of_a_votable_says_scale_place_and_origin():
 )  # fmt: skip
 def test_words_that_a_spreadsheet_merged_over_the_names_only_group_them(text, names):
     assert read(text.encode())[0] == names
+
+
+def test_a_space_inside_the_cells_of_one_column_divides_no_column():
+    # Every name has a space at the same place, and nothing stands above what follows it.
+    text = "name       mag   e_mag\nLantern 3  7.31  0.02\nLantern 4  7.4\n"
+    names, _, rows, misfits = read(text.encode())
+    assert (names, misfits) == (["name", "mag", "e_mag"], [])
+    assert rows == [(2, ("Lantern 3", "7.31", "0.02")), (3, ("Lantern 4", "7.4", ""))]
+
+
+def test_a_ruler_below_the_names_says_where_columns_are():
+    # Words alone would fit too: an empty cell in each row, and a name of two words.
+    text = "name       mag   e_mag  band\n---------  ----  -----  ----\nLantern 3  7.31         K\n"
+    assert read(text.encode())[2] == [(3, ("Lantern 3", "7.31", "", "K"))]
