@@ -61,16 +61,13 @@ class DustFit:
     cut: str = ""
 
 
-def fit_dust(bands: BandFluxes, temperature_k: tuple[FloatArray, FloatArray] | None = None) -> DustFit:
+def fit_dust(bands: BandFluxes) -> DustFit:
     """Fit one temperature and one amount of dust to all bands.
 
     Parameters
     ----------
     bands : BandFluxes
         Fluxes of the dust (Jy), one independent error a band; opacities in cm^2 per gram of dust.
-    temperature_k : (ndarray, ndarray), optional
-        Temperatures (K) and their probabilities (dimensionless, in total 1) when the temperature is known
-        from elsewhere; it is then taken as it is and not fitted.
 
     Returns
     -------
@@ -102,12 +99,6 @@ def fit_dust(bands: BandFluxes, temperature_k: tuple[FloatArray, FloatArray] | N
     (900, '1.00e-08')
     """
     _check(bands)
-    if temperature_k is not None:
-        temperatures, probability = (np.asarray(x, dtype=np.float64) for x in temperature_k)
-        logs, amount = _given_temperature(bands, temperatures)
-        height = _row_heights(logs)
-        weight = np.exp(logs - height[:, None]) * probability[:, None]
-        return _finish(bands, temperatures, amount, weight / weight.sum(), "")
     temperatures = np.geomspace(COOLEST_DUST_K, HOTTEST_DUST_K, _COARSE)
     logs, amount = _given_temperature(bands, temperatures)
     height = _row_heights(logs)
@@ -163,6 +154,42 @@ def draw_dust(fit: DustFit, first: FloatArray, second: FloatArray) -> tuple[Floa
     with np.errstate(divide="ignore"):
         logs = np.log(np.maximum(amounts, 1e-300))
     return np.exp(log_t), np.exp((1.0 - share) * logs[0] + share * logs[1])
+
+
+def amount_at(bands: BandFluxes, temperature_k: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """Best amount of dust of given temperatures, and its error from the measured fluxes.
+
+    Parameters
+    ----------
+    bands : BandFluxes
+        Fluxes in Jy; limits are left out.
+    temperature_k : array_like
+        Temperatures, K, > 0.
+
+    Returns
+    -------
+    tuple of ndarray
+        Amount and its one-sigma error, Msun/pc^2, one for each temperature.
+
+    Notes
+    -----
+    Accuracy: exact; with the temperature given the amount is linear in the fluxes.
+
+    Source: weighted least squares.
+
+    Examples
+    --------
+    >>> one = np.ones(1)
+    >>> bands = BandFluxes(2.159 * one, 8615.8 * one, 2.0 * one, 0.1 * one, np.zeros(1, dtype=np.int8))
+    >>> amount, error = amount_at(bands, [900.0])
+    >>> round(float(error[0] / amount[0]), 6)
+    0.05
+    """
+    temperatures = np.atleast_1d(np.asarray(temperature_k, dtype=np.float64))
+    shape = _shapes(bands, temperatures)
+    weight = shape * bands.measured / bands.sigma_jy**2
+    precision = np.maximum((weight * shape).sum(axis=1), 1e-300)
+    return (weight * bands.flux_jy).sum(axis=1) / precision, 1.0 / np.sqrt(precision)
 
 
 def flux_sensitivities(bands: BandFluxes, temperature_k: float, amount: float) -> FloatArray:
@@ -279,10 +306,7 @@ def _given_temperature(bands: BandFluxes, temperatures: FloatArray) -> tuple[Flo
     Amounts are even in the signal-to-noise ratio that they make in the measured bands, which is the prior.
     """
     shape = _shapes(bands, temperatures)
-    weight = shape * bands.measured / bands.sigma_jy**2
-    precision = np.maximum((weight * shape).sum(axis=1), 1e-300)
-    best = (weight * bands.flux_jy).sum(axis=1) / precision
-    noise = 1.0 / np.sqrt(precision)
+    best, noise = amount_at(bands, temperatures)
     middle = best / noise
     low = np.maximum(middle - _HALF_SPAN, 0.0)
     high = np.maximum(middle, 0.0) + _HALF_SPAN

@@ -14,7 +14,14 @@ from scipy.optimize import least_squares
 from scipy.stats import norm
 
 from campaign.errors import InputRefused
-from campaign.physics.dustfit import BandFluxes, draw_dust, fit_dust, flux_sensitivities, upper_amount
+from campaign.physics.dustfit import (
+    BandFluxes,
+    amount_at,
+    draw_dust,
+    fit_dust,
+    flux_sensitivities,
+    upper_amount,
+)
 from campaign.physics.opacity import opacity_cm2_g, opacity_named
 
 CARBON = opacity_named("zubko-0.1")
@@ -193,17 +200,14 @@ def test_two_bands_too_blue_for_dust_are_not_bounded_by_the_data():
     assert not fit_dust(bands(KLM, light_of(1e-8, 900.0, KLM), 0.05 * light_of(1e-8, 900.0, KLM))).cut
 
 
-def test_a_temperature_from_elsewhere_is_not_fitted():
-    flux = light_of(3e-8, 870.0, KLM[:1])
-    t = np.linspace(700.0, 1100.0, 41)
-    share = norm.pdf(t, 900.0, 50.0)
-    share /= share.sum()
-    fit = fit_dust(bands(KLM[:1], flux, 0.03 * flux), (t, share))
-    assert np.allclose(fit.weight.sum(axis=1), share, rtol=1e-9)
-    one = fit_dust(bands(KLM[:1], flux, 0.03 * flux), (np.array([870.0]), np.array([1.0])))
-    amounts = draw_dust(one, *stratified(np.random.default_rng(5), 4000))[1]
-    assert np.median(amounts) * 1e6 == pytest.approx(3e-8, rel=5e-3)
-    assert np.std(np.log(amounts)) == pytest.approx(0.03, rel=0.03)
+def test_with_the_temperature_given_the_amount_is_the_weighted_mean_of_the_bands():
+    flux = light_of(3e-8, 870.0, KLM)
+    sigma = np.array([0.05, 0.1, 0.2]) * flux
+    one, error = (x[0] for x in amount_at(bands(KLM, flux * [1.1, 1.0, 0.9], sigma), 870.0))
+    # By hand: each band gives its own mass, with the weights of its relative errors.
+    weight = np.array([0.05, 0.1, 0.2]) ** -2.0
+    assert one * 1e6 == pytest.approx(3e-8 * (weight @ [1.1, 1.0, 0.9]) / weight.sum(), rel=1e-4)
+    assert error * 1e6 == pytest.approx(3e-8 / np.sqrt(weight.sum()), rel=1e-4)
 
 
 def test_what_was_not_seen_gives_an_upper_limit_of_the_amount():
