@@ -6,8 +6,13 @@ import hashlib
 import sqlite3
 import subprocess
 import sys
+from collections.abc import Iterator
+from contextlib import contextmanager
 from datetime import UTC, datetime
 from pathlib import Path
+from typing import Any
+
+from sqlalchemy import Engine, event
 
 from campaign.catalogue import episodes, observations, rules, sites, solutions, store, systems, upgrade
 from campaign.model.instants import Moment
@@ -83,6 +88,35 @@ def assert_sound(database: Path) -> None:
         assert connection.execute("PRAGMA foreign_key_check").fetchall() == []
     finally:
         connection.close()
+
+
+class FaultError(Exception):
+    pass
+
+
+@contextmanager
+def fault_at(number: int) -> Iterator[list[str]]:
+    """Fail the n-th statement, counting the commit as one; yield the statements that were tried."""
+    tried: list[str] = []
+
+    def step(statement: str) -> None:
+        tried.append(statement)
+        if len(tried) == number:
+            raise FaultError(statement)
+
+    def statement(connection: Any, cursor: Any, text: str, *rest: Any) -> None:
+        step(text)
+
+    def commit(connection: Any) -> None:
+        step("COMMIT")
+
+    event.listen(Engine, "before_cursor_execute", statement)
+    event.listen(Engine, "commit", commit)
+    try:
+        yield tried
+    finally:
+        event.remove(Engine, "before_cursor_execute", statement)
+        event.remove(Engine, "commit", commit)
 
 
 def digest(path: Path) -> str:

@@ -6,15 +6,12 @@ Recipe: engineering notes 4.11.
 from __future__ import annotations
 
 import shutil
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
-from typing import Any
 
 import pytest
-from reliability_examples import NOW, assert_sound, content, fill, point, solution
-from sqlalchemy import Engine, event
+from reliability_examples import NOW, FaultError, assert_sound, content, fault_at, fill, point, solution
 
 from campaign.catalogue import episodes, info, observations, rules, sites, solutions, store, systems, upgrade
 from campaign.catalogue.store import Writing
@@ -22,35 +19,6 @@ from campaign.errors import CampaignError
 from campaign.model.instants import Moment
 from campaign.model.measured import Measured
 from campaign.model.systems import DatedEvent, DustRule, Episode, Site, Star, System
-
-
-class FaultError(Exception):
-    pass
-
-
-@contextmanager
-def fault_at(number: int) -> Iterator[list[str]]:
-    """Fail the n-th statement, counting the commit as one; yield the statements that were tried."""
-    tried: list[str] = []
-
-    def step(statement: str) -> None:
-        tried.append(statement)
-        if len(tried) == number:
-            raise FaultError(statement)
-
-    def statement(connection: Any, cursor: Any, text: str, *rest: Any) -> None:
-        step(text)
-
-    def commit(connection: Any) -> None:
-        step("COMMIT")
-
-    event.listen(Engine, "before_cursor_execute", statement)
-    event.listen(Engine, "commit", commit)
-    try:
-        yield tried
-    finally:
-        event.remove(Engine, "before_cursor_execute", statement)
-        event.remove(Engine, "commit", commit)
 
 
 def new_system(writing: Writing) -> None:
