@@ -12,11 +12,12 @@ from numpy.typing import NDArray
 from sqlalchemy import Connection, and_, select
 
 from campaign.catalogue.converting import columns_of
+from campaign.catalogue.guards import Cells
 from campaign.catalogue.observations import SAMENESS
 from campaign.catalogue.sources import source_id
 from campaign.catalogue.store import Writing
 from campaign.catalogue.tables import observations
-from campaign.model.columns import KnownRows, ObservationColumns
+from campaign.model.columns import KnownRows, ObservationColumns, Words
 
 # How many rows go to the driver at once; Ctrl-C is heard between two blocks.
 _BLOCK_ROWS = 20_000
@@ -227,43 +228,37 @@ def _blocks(
     rows: NDArray[np.int64],
     sources: Sequence[int | None],
     told: Callable[[int], None],
-) -> Iterator[Mapping[str, Sequence[Any]]]:
+) -> Iterator[Mapping[str, Cells]]:
+    # As arrays they can be taken in another order without a look at each.
+    texts = {name: np.array(values, dtype=object) for name, values in columns.texts.items()}
     for start in range(0, len(rows), _BLOCK_ROWS):
         told(start)
         part = rows[start : start + _BLOCK_ROWS]
-        places = part.tolist()
-        block: dict[str, Sequence[Any]] = {}
+        block: dict[str, Cells] = {}
         if "uid" not in columns.texts:
-            block["uid"] = writing.new_uids(len(places))
-        made: dict[int, Sequence[Any]] = {}
+            block["uid"] = writing.new_uids(len(part))
+        made: dict[int, NDArray[np.float64]] = {}
         for name, numbers in columns.numbers.items():
             # Equal errors of both sides are one column, which is bound once.
             if id(numbers) not in made:
-                made[id(numbers)] = _with_none(numbers[part], np.isnan(numbers[part]))
+                made[id(numbers)] = numbers[part]
             block[name] = made[id(numbers)]
         for name, wholes in columns.wholes.items():
-            block[name] = _with_none(wholes[part], wholes[part] < 0)
+            block[name] = wholes[part]
         for name, words in columns.words.items():
+            codes = words.codes[part]
             if name == "source":
-                block["source_id"] = _looked_up([*sources, None], words.codes[part])
+                block["source_id"] = _looked_up([*sources, None], codes)
+            elif name in _DEFAULTS:
+                block[name] = _looked_up([*words.words, _DEFAULTS[name]], codes)
             else:
-                block[name] = _looked_up([*words.words, _DEFAULTS.get(name)], words.codes[part])
-        for name, texts in columns.texts.items():
-            block[name] = [texts[place] for place in places]
+                block[name] = Words(words.words, codes)
+        for name, values in texts.items():
+            block[name] = values[part].tolist()
         hexadecimal = digests[part].tobytes().hex()
         block["sameness"] = [hexadecimal[at : at + 32] for at in range(0, len(hexadecimal), 32)]
         yield block
     told(len(rows))
-
-
-def _with_none(values: NDArray[Any], unknown: NDArray[np.bool_]) -> list[Any]:
-    if not unknown.any():
-        found: list[Any] = values.tolist()
-        return found
-    objects = values.astype(object)
-    objects[unknown] = None
-    result: list[Any] = objects.tolist()
-    return result
 
 
 def _looked_up(words: Sequence[Any], codes: NDArray[np.int32]) -> list[Any]:

@@ -51,6 +51,14 @@ def writing_engine(address: Address, busy_timeout_s: float = BUSY_TIMEOUT_S) -> 
     return _postgresql_writing_engine(address, busy_timeout_s)
 
 
+def loading_engine(address: Address, busy_timeout_s: float) -> Engine:
+    """An engine for writing many rows, of which ``campaign.catalogue.blocks`` looks up the references."""
+    if address.path is not None:
+        refuse_unless_file(address)
+        return migration_engine(address, busy_timeout_s, "rw")
+    return _postgresql_writing_engine(address, busy_timeout_s)
+
+
 def migration_engine(address: Address, busy_timeout_s: float, mode: FileMode) -> Engine:
     """An engine for migrations: as for writing, with foreign keys off from the start.
 

@@ -204,7 +204,7 @@ def _load_observations(
     if wanted.rehearse:
         with store.reading(db) as connection:
             return entry.compared(connection, result)[0]
-    with store.writing(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
+    with store.loading(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
         return entry.written(writing, result, file.name, kept_request(mapping, request))
 
 

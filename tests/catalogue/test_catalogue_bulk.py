@@ -17,6 +17,7 @@ from campaign.catalogue import bulk, observations, sites, store, systems
 from campaign.catalogue.tables import changes, operations
 from campaign.catalogue.tables import observations as table
 from campaign.catalogue.types import ValueRefused
+from campaign.errors import Conflict
 from campaign.model.columns import ObservationColumns, Words
 from campaign.model.instants import Moment
 from campaign.model.measured import Measured
@@ -239,3 +240,50 @@ def test_known_rows_are_those_in_use_within_the_range(write, system_id, database
     assert known.id.tolist() == ids[2:5] + ids[6:9]
     assert known.value.tolist() == pytest.approx([7.2, 7.3, 7.4, 7.6, 7.7, 7.8])
     assert none.id.size == 0
+
+
+@pytest.mark.parametrize("size", [1, 50, 51, 20_049])
+def test_a_load_leaves_no_row_out_whatever_its_number(database, system_id, size):
+    with store.loading(database, at=later(1), who="Ida Vik", command="test") as writing:
+        columns = some(system_id, size)
+        rows = np.arange(size)
+        assert bulk.add_columns(writing, columns, bulk.digests_of(columns), rows, lambda done: None) == size
+    with store.reading(database) as connection:
+        texts = connection.execute(select(table.c.time_text).order_by(table.c.bmjd_tdb)).scalars().all()
+    assert sorted(texts) == sorted(f"row {n}" for n in range(size))
+
+
+@pytest.mark.parametrize("column", ["system_id", "site_id", "superseded_by_id"])
+@pytest.mark.parametrize("alike", [True, False])
+def test_a_load_refers_to_nothing_that_is_not_there(database, system_id, column, alike):
+    # Source: what the foreign keys of the tables say; a load looks them up in their place.
+    wrong = {"same": {column: 77}} if alike else {"wholes": {column: np.array([1, 77, 1])}}
+    columns = some(system_id, 3, **wrong)
+    with (
+        pytest.raises(LookupError, match=f"observations.{column} refers to"),
+        store.loading(database, at=later(1), who="Ida Vik", command="test") as writing,
+    ):
+        bulk.add_columns(writing, columns, bulk.digests_of(columns), np.arange(3), lambda done: None)
+    assert stored(database) == []
+
+
+def test_a_load_enters_the_same_rows_as_any_writing(database, system_id, write, tmp_path):
+    columns = some(system_id, 137, wholes={"shell_index": np.array([-1, *range(1, 137)])})
+    shutil.copy(database, tmp_path / "other.db")
+    add(write, columns)
+    with store.loading(tmp_path / "other.db", at=later(1), who="Ida Vik", command="test") as writing:
+        bulk.add_columns(writing, columns, bulk.digests_of(columns), np.arange(137), lambda done: None)
+    assert stored(tmp_path / "other.db") == stored(database)
+
+
+@pytest.mark.parametrize("size", [3, 300])
+def test_a_load_enters_no_observation_twice(database, system_id, size):
+    columns = some(
+        system_id, size, numbers={"bmjd_tdb": np.full(size, 60_000.0), "value": np.full(size, 7.0)}
+    )
+    with (
+        pytest.raises(Conflict),
+        store.loading(database, at=later(1), who="Ida Vik", command="test") as writing,
+    ):
+        bulk.add_columns(writing, columns, bulk.digests_of(columns), np.arange(size), lambda done: None)
+    assert stored(database) == []
