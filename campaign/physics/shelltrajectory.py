@@ -5,87 +5,9 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from campaign.physics.constants import AU_KM, GM_SUN_KM3_S2, SPEED_OF_LIGHT_KMS
-
 FloatArray = NDArray[np.float64]
 
-# IAU 2015 Resolution B3, nominal solar luminosity, in erg/s.
-SOLAR_LUMINOSITY_ERG_S = 3.828e33
-_KM_CM = 1e5
 _ITERATIONS = 60
-
-
-def radiation_to_gravity(
-    luminosity_lsun: ArrayLike, mass_msun: ArrayLike, opacity_cm2_g: ArrayLike
-) -> FloatArray:
-    """Radiation pressure over gravity for a grain, or for dust and gas that move together.
-
-    Parameters
-    ----------
-    luminosity_lsun, mass_msun : array_like
-        Of the stars, nominal solar units (Lsun, Msun), > 0.
-    opacity_cm2_g : array_like
-        Radiation-pressure opacity, cm^2 for each gram of what moves: of dust alone for free grains.
-
-    Returns
-    -------
-    ndarray
-        beta (dimensionless); above 1 the dust is driven outwards.
-
-    Notes
-    -----
-    Accuracy: exact.
-
-    Source: beta = kappa L/(4 pi c G M) (Burns, Lamy & Soter 1979, Icarus 40, 1; memory).
-
-    Examples
-    --------
-    >>> round(float(radiation_to_gravity(3e5, 15.0, 5000.0)), 2)
-    7656.49
-    """
-    luminosity = np.asarray(luminosity_lsun, dtype=np.float64) * SOLAR_LUMINOSITY_ERG_S
-    pull = np.asarray(mass_msun, dtype=np.float64) * GM_SUN_KM3_S2 * _KM_CM**3
-    push = np.asarray(opacity_cm2_g, dtype=np.float64) * luminosity
-    ratio: FloatArray = push / (4.0 * np.pi * SPEED_OF_LIGHT_KMS * _KM_CM * pull)
-    return ratio
-
-
-def terminal_speed_kms(
-    launch_radius_au: ArrayLike, launch_speed_kms: ArrayLike, beta: ArrayLike, mass_msun: ArrayLike
-) -> FloatArray:
-    """Speed far from the star of dust launched at a radius.
-
-    Parameters
-    ----------
-    launch_radius_au, launch_speed_kms : array_like
-        Where, au, and how fast, km/s, it is launched, > 0.
-    beta : array_like
-        Radiation pressure over gravity (dimensionless).
-    mass_msun : array_like
-        Mass of the stars, nominal solar masses.
-
-    Returns
-    -------
-    ndarray
-        km/s; NaN where the dust does not escape.
-
-    Notes
-    -----
-    Accuracy: exact for one central star and constant beta.
-
-    Source: energy, v^2 = v0^2 + 2 (beta - 1) G M/r0.
-
-    Examples
-    --------
-    >>> round(float(terminal_speed_kms(50.0, 1500.0, 5000.0, 15.0)), 5)
-    2216.04407
-    """
-    depth = GM_SUN_KM3_S2 * np.asarray(mass_msun, dtype=np.float64) / AU_KM
-    gained = 2.0 * (np.asarray(beta, dtype=np.float64) - 1.0) * depth
-    square = np.asarray(launch_speed_kms, dtype=np.float64) ** 2 + gained / np.asarray(launch_radius_au)
-    with np.errstate(invalid="ignore"):
-        speed: FloatArray = np.sqrt(square)
-    return speed
 
 
 def travel_time(
