@@ -1,0 +1,347 @@
+"""Temperature, mass and light of the dust at one date, from what the bands show above the stars."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from itertools import combinations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from campaign.model.dust import BandExcess, MeasuredDust, OtherOpacity, PairColour
+from campaign.model.propagated import Propagated
+from campaign.physics.condensation import condensation_radius_au
+from campaign.physics.constants import SOLAR_MASS_KG
+from campaign.physics.draws import stratified_normals
+from campaign.physics.dustfit import (
+    HOTTEST_DUST_K,
+    BandFluxes,
+    DustFit,
+    amount_at,
+    draw_dust,
+    fit_dust,
+    upper_amount,
+)
+from campaign.physics.dustmass import blackbody_radius_au, colour_temperature_k, dust_flux_jy
+from campaign.physics.opacity import OPACITIES, dust_luminosity_lsun, opacity_cm2_g, reaches
+from campaign.physics.timescales import utc_iso
+from campaign.studies.dust_excess import SEEN_SIGMA, Sky
+from campaign.studies.dust_inputs import DustInputs, with_keys
+from campaign.studies.dust_verdicts import Thickness, chi2_probability, verdicts_of
+from campaign.studies.propagation import DrawnTogether, Draws, Propagator, Uncertain, summarised
+
+FloatArray = NDArray[np.float64]
+
+FLUXES = "the fluxes"
+_SIDES = {"measured": 0, "fainter than": 1, "brighter than": -1}
+_PAIR_DRAWS = 2000
+_GRAMS = 1000.0 * SOLAR_MASS_KG
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Fitted:
+    """What a fit of one date leaves for others: the bands, the best pair, and draws of the amount."""
+
+    bands: BandFluxes
+    names: tuple[tuple[str, str], ...]
+    common_sigma_jy: FloatArray
+    temperature_k: float
+    amount: float
+    amount_draws: FloatArray
+    is_fitted: bool = True
+
+
+def measure(
+    inputs: DustInputs, sky: Sky, excesses: Sequence[BandExcess], at: float, draws: int, seed: int
+) -> tuple[MeasuredDust, Fitted | None]:
+    """The dust at one date.
+
+    Parameters
+    ----------
+    inputs : DustInputs
+        Distance (pc), error of the opacity, luminosity of the stars (Lsun), and, when it is not to be fitted,
+        the temperature of the dust (K).
+    sky : Sky
+        Opacity, cm^2 per gram of dust.
+    excesses : sequence of BandExcess
+        Light of the dust near the date, Jy.
+    at : float
+        The date, ``bmjd_tdb``.
+    draws, seed : int
+        Of the random draws (dimensionless).
+
+    Returns
+    -------
+    (MeasuredDust, Fitted or None)
+        K, Msun, g, Lsun; no mass where a verdict says that it would mean nothing. What was fitted, where a
+        fit was possible.
+
+    Notes
+    -----
+    Accuracy: one temperature, optically thin. Distance and opacity count with their errors; the amount and
+    the temperature with the probability of both together.
+
+    Source: see ``campaign.physics.dustfit`` and ``campaign.physics.dustmass``.
+    """
+    used = [one for one in excesses if one.fitted]
+    bands = band_fluxes(used)
+    seen = [one for one in used if one.excess_sigma is not None and one.excess_sigma >= SEEN_SIGMA]
+    given = inputs.has("temperature_k")
+    fit = None
+    if seen and not given and sum(one.use == "measured" for one in used) > 1:
+        fit = fit_dust(bands)
+    has_amount = bool(seen) and (given or fit is not None)
+    placed = inputs.has("distance_pc")
+    results = _Results(inputs, bands, fit, draws, seed) if has_amount else None
+    thickness = _thickness(inputs, bands, results) if results is not None and placed else None
+    verdicts = verdicts_of(excesses, fit, given, thickness)
+    fatal = any(verdict.meaningless for verdict in verdicts)
+    told = results if results is not None and not fatal else None
+    weighed = told if placed else None
+    if told is not None and not placed:
+        inputs.notes.append("no distance: no mass, no luminosity; give --distance")
+    keeps_temperature = told is not None or (
+        results is not None and fit is not None and not fit.cut and len(seen) > 1
+    )
+    degrees = fit.degrees if fit is not None else None
+    measured = MeasuredDust(
+        bmjd_tdb=at,
+        utc=utc_iso(np.array([at]))[0],
+        bands=tuple(excesses),
+        pairs=_pairs(seen, draws, seed),
+        temperature_origin="given" if given else "fitted" if keeps_temperature else "none",
+        temperature_k=results.temperature() if results is not None and keeps_temperature else None,
+        mass_msun=weighed.mass() if weighed is not None else None,
+        mass_upper_msun=_upper(inputs, bands) if not seen else None,
+        mass_g=weighed.grams() if weighed is not None else None,
+        luminosity_lsun=weighed.luminosity() if weighed is not None else None,
+        chi2=fit.chi2 if fit is not None else None,
+        degrees=degrees,
+        chi2_probability=chi2_probability(fit) if fit is not None else None,
+        blackbody_radius_au=None if thickness is None else thickness.blackbody_radius_au,
+        grain_distance_au=None if thickness is None else thickness.grain_distance_au,
+        optical_depth=None if thickness is None else thickness.optical_depth,
+        other_opacities=_others(inputs, sky, used) if fit is not None and told is not None else (),
+        verdicts=verdicts,
+    )
+    if weighed is None or told is None:
+        return measured, None
+    common = np.array([one.common_sigma_jy or 0.0 for one in used])
+    names = tuple((one.band, one.photometric_system) for one in used)
+    stated = told.nominal()
+    return measured, Fitted(bands, names, common, stated[0], stated[1], told.amounts(), fit is not None)
+
+
+def band_fluxes(used: Sequence[BandExcess]) -> BandFluxes:
+    """The fitted bands as columns.
+
+    Parameters
+    ----------
+    used : sequence of BandExcess
+        Bands with fluxes (Jy), wavelength (um) and opacity (cm^2/g).
+
+    Returns
+    -------
+    BandFluxes
+        Jy, um, cm^2/g.
+
+    Notes
+    -----
+    Accuracy: exact. Source: project convention.
+    """
+    columns = np.array(
+        [(one.wavelength_um, one.kappa_cm2_g, one.dust_jy, one.sigma_jy) for one in used], dtype=np.float64
+    ).reshape(-1, 4)
+    sides = np.array([_SIDES[one.use] for one in used], dtype=np.int8)
+    return BandFluxes(columns[:, 0], columns[:, 1], columns[:, 2], columns[:, 3], sides)
+
+
+class _Results:
+    """Temperature, mass and light with their errors, from a fit or at a given temperature."""
+
+    def __init__(
+        self, inputs: DustInputs, bands: BandFluxes, fit: DustFit | None, draws: int, seed: int
+    ) -> None:
+        self._inputs, self._bands, self._fit = inputs, bands, fit
+        self._light = _LightPerMass(inputs)
+        values: dict[str, Uncertain] = {
+            key: inputs.values[key]
+            for key in ("distance_pc", "opacity_factor", "temperature_k")
+            if key in inputs.values
+        }
+        if fit is None:
+            normals = stratified_normals(["fluxes"], draws, seed)["fluxes"]
+            together = DrawnTogether(FLUXES, {"signal": normals}, {"signal": 0.0})
+        else:
+            generator = np.random.default_rng([seed, 47])
+            first, second = ((generator.permutation(draws) + generator.random(draws)) / draws for _ in "ab")
+            t, amount = draw_dust(fit, first, second)
+            together = DrawnTogether(
+                FLUXES,
+                {"temperature_k": t, "amount": amount},
+                {"temperature_k": fit.best_temperature_k, "amount": fit.best_amount},
+            )
+        self._propagate = Propagator(values, draws, seed, together)
+        self._keys = ("temperature_k", "signal") if fit is None else ("temperature_k", "amount")
+
+    def _amount(self, d: Draws) -> FloatArray:
+        if self._fit is not None:
+            return d["amount"]
+        t = d["temperature_k"]
+        amount, noise = amount_at(self._bands, t)
+        # An amount below nothing is not: the few draws there count as next to nothing.
+        return np.maximum(amount + noise * d["signal"], 1e-3 * noise)
+
+    def _mass(self, d: Draws) -> FloatArray:
+        return np.asarray(self._amount(d) * d["distance_pc"] ** 2 / d["opacity_factor"])
+
+    def nominal(self) -> tuple[float, float]:
+        """Temperature and amount as stated or best."""
+        if self._fit is not None:
+            return self._fit.best_temperature_k, self._fit.best_amount
+        t = self._inputs.values["temperature_k"].nominal
+        return t, float(amount_at(self._bands, t)[0][0])
+
+    def amounts(self) -> FloatArray:
+        """Draws of the amount, by temperature and fluxes."""
+        return self._amount(self._propagate.all)
+
+    def temperature(self) -> Propagated:
+        keys = with_keys(self._inputs, ("temperature_k",))
+        return self._propagate(lambda d: d["temperature_k"], keys)
+
+    def mass(self) -> Propagated:
+        keys = with_keys(self._inputs, (*self._keys, "distance_pc", "opacity_factor"))
+        return self._propagate(self._mass, keys)
+
+    def grams(self) -> Propagated:
+        return self._propagate(
+            lambda d: self._mass(d) * _GRAMS, (*self._keys, "distance_pc", "opacity_factor")
+        )
+
+    def luminosity(self) -> Propagated:
+        # The opacity cancels: what is absorbed less is more mass for the same light.
+        def light(d: Draws) -> FloatArray:
+            return np.asarray(self._amount(d) * d["distance_pc"] ** 2 * self._light(d["temperature_k"]))
+
+        return self._propagate(light, (*self._keys, "distance_pc"))
+
+
+class _LightPerMass:
+    """Lsun of one Msun of dust against temperature, tabulated once."""
+
+    def __init__(self, inputs: DustInputs) -> None:
+        self._log_t = np.linspace(np.log(20.0), np.log(HOTTEST_DUST_K), 400)
+        self._log_l = np.log(dust_luminosity_lsun(1.0, np.exp(self._log_t), inputs.opacity))
+
+    def __call__(self, temperature_k: FloatArray) -> FloatArray:
+        return np.exp(np.interp(np.log(temperature_k), self._log_t, self._log_l))
+
+
+def _thickness(inputs: DustInputs, bands: BandFluxes, results: _Results) -> Thickness:
+    """Least size of the dust against where grains of its temperature are, nominal."""
+    t, amount = results.nominal()
+    distance = inputs.values["distance_pc"].nominal
+    model = dust_flux_jy(amount, bands.wavelength_um, 1.0, t, bands.kappa_cm2_g)
+    radius = float(np.max(blackbody_radius_au(model, bands.wavelength_um, 1.0, t))) * distance
+    light = sum(inputs.values[key].nominal for key in inputs.light_keys())
+    mass = amount * distance**2
+    dust_light = float(np.ravel(dust_luminosity_lsun(mass, np.array([t]), inputs.opacity))[0])
+    if not light > 0.0:
+        return Thickness(radius, None, None, None)
+    inputs.used.update((*inputs.light_keys(), "emissivity_index", "grain_radius_um"))
+    grains = float(
+        condensation_radius_au(
+            light, t, inputs.values["emissivity_index"].nominal, inputs.values["grain_radius_um"].nominal
+        )
+    )
+    return Thickness(radius, grains, (radius / grains) ** 2, dust_light / light)
+
+
+def _pairs(seen: Sequence[BandExcess], draws: int, seed: int) -> tuple[PairColour, ...]:
+    """Colour temperatures of all pairs of bands that show dust, from shorter to longer waves."""
+    count = min(draws, _PAIR_DRAWS)
+    found = []
+    for first, second in combinations(seen, 2):
+        assert first.wavelength_um is not None
+        assert second.wavelength_um is not None
+        if second.wavelength_um < 1.05 * first.wavelength_um:
+            continue
+        stated = np.array([_ratio(first, second)])
+        assert first.kappa_cm2_g is not None
+        assert second.kappa_cm2_g is not None
+        pair = (first.wavelength_um, second.wavelength_um, first.kappa_cm2_g / second.kappa_cm2_g)
+        value = float(colour_temperature_k(stated, *pair)[0])
+        name = f"{band_name(first, seen)}/{band_name(second, seen)}"
+        normals = stratified_normals([f"{name} one", f"{name} two"], count, seed)
+        ratios = _drawn(first, normals[f"{name} one"]) / _drawn(second, normals[f"{name} two"])
+        t = summarised(colour_temperature_k(ratios, *pair), value if np.isfinite(value) else None)
+        reason = "" if np.isfinite(value) else "bluer than any temperature: not dust of this opacity"
+        names = band_name(first, seen), band_name(second, seen)
+        found.append(PairColour(*names, t if np.isfinite(value) else None, reason))
+    return tuple(found)
+
+
+def band_name(one: BandExcess, among: Sequence[BandExcess]) -> str:
+    """The band, with its photometric system where two systems of that band stand side by side.
+
+    Parameters
+    ----------
+    one : BandExcess
+        The band.
+    among : sequence of BandExcess
+        All of them (no unit).
+
+    Returns
+    -------
+    str
+        For people.
+
+    Notes
+    -----
+    Accuracy: not applicable. Source: project convention.
+    """
+    if sum(other.band == one.band for other in among) < 2:
+        return one.band
+    return f"{one.band} ({one.photometric_system or 'no system'})"
+
+
+def _ratio(first: BandExcess, second: BandExcess) -> float:
+    assert first.dust_jy is not None
+    assert second.dust_jy is not None
+    return first.dust_jy / second.dust_jy
+
+
+def _drawn(one: BandExcess, normals: FloatArray) -> FloatArray:
+    assert one.dust_jy is not None
+    assert one.sigma_jy is not None
+    return np.asarray(one.dust_jy + one.sigma_jy * normals)
+
+
+def _upper(inputs: DustInputs, bands: BandFluxes) -> float | None:
+    """Mass below which the dust lies at 3 sigma when none is seen, at the stated temperature and distance."""
+    if not inputs.has("temperature_k", "distance_pc") or not bands.flux_jy.size:
+        return None
+    t = inputs.values["temperature_k"].nominal
+    return float(upper_amount(bands, t)[0]) * inputs.values["distance_pc"].nominal ** 2
+
+
+def _others(inputs: DustInputs, sky: Sky, used: Sequence[BandExcess]) -> tuple[OtherOpacity, ...]:
+    """Best temperature and mass with each published opacity."""
+    if not inputs.has("distance_pc"):
+        return ()
+    square = inputs.values["distance_pc"].nominal ** 2
+    found = []
+    for table in OPACITIES:
+        kept = [one for one in used if reaches(table, one.wavelength_um or 0.0)]
+        if table.name == sky.opacity.name or sum(one.use == "measured" for one in kept) < 2:
+            continue
+        bands = band_fluxes(kept)
+        kappa = opacity_cm2_g(table, bands.wavelength_um)
+        fit = fit_dust(BandFluxes(bands.wavelength_um, kappa, bands.flux_jy, bands.sigma_jy, bands.side))
+        if fit.cut:
+            found.append(OtherOpacity(table.name, None, None, fit.chi2))
+        else:
+            found.append(OtherOpacity(table.name, fit.best_temperature_k, fit.best_amount * square, fit.chi2))
+    return tuple(found)
