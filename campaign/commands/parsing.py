@@ -28,6 +28,15 @@ def period(text: str | None) -> Measured | Limit | Range | None:
     return read_measured_or_bound(text, "d", "--period", low=0.01, high=3.6525e9)
 
 
+def semi_major_axis(text: str | None) -> tuple[Measured | None, Measured | None]:
+    """Size of an orbit as (au, arcsec): whichever the unit says."""
+    if text is None:
+        return None, None
+    if any(word in text.casefold() for word in ("arcsec", "mas", '"', "″")):
+        return None, measured(text, "arcsec", "--a", low=0.0, low_open=True)
+    return measured(text, "au", "--a", low=0.0, low_open=True), None
+
+
 def elements_instant(text: str | None, name: str) -> TypedInstant | None:
     """An instant of orbital elements: BJD_TDB unless said otherwise."""
     if text is None:
@@ -147,6 +156,23 @@ def entry_number(text: str, name: str) -> int:
         hint="For example 12.",
         code="number-refused",
         details={"accepted_form": "12"},
+    )
+
+
+def count(text: str | None, name: str, low: int, high: int) -> int | None:
+    """A whole number of draws, or a seed, within bounds."""
+    if text is None:
+        return None
+    from campaign.reading.numbers import read_number
+
+    value = read_number(text, name)
+    if value == int(value) and low <= value <= high:
+        return int(value)
+    raise InputRefused(
+        f"{name} {text} is out of range.",
+        why=f"It is a whole number from {low} to {high}.",
+        hint=f"For example {name} {max(low, 2000) if name == '--draws' else 1}.",
+        code="out-of-range",
     )
 
 

@@ -8,7 +8,15 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import elements_instant, measured, one_of, period, plain, whole_number
+from campaign.commands.parsing import (
+    elements_instant,
+    measured,
+    one_of,
+    period,
+    plain,
+    semi_major_axis,
+    whole_number,
+)
 from campaign.errors import InputRefused, UsageRefused
 
 System = Annotated[str, typer.Argument(metavar="SYSTEM", help="Name or alias.")]
@@ -75,7 +83,7 @@ def add(
             why="The arguments of the two stars differ by 180 deg; the wrong one swaps the conjunctions.",
             hint="Add --omega-of A or --omega-of B; papers on spectra usually give that of the star seen.",
         )
-    a_au, a_arcsec = _semi_major_axis(a)
+    a_au, a_arcsec = semi_major_axis(a)
     draft = Solution(
         id=0,
         system_id=0,
@@ -169,15 +177,6 @@ def show(
         common.write_json(output.solution_json(record, solution, derived, common.now_iso()))
     else:
         output.render_solution(common.stdout_screen(), record, solution, derived)
-
-
-def _semi_major_axis(text: str | None):  # type: ignore[no-untyped-def]
-    """(au, arcsec): whichever the unit says."""
-    if text is None:
-        return None, None
-    if any(word in text.casefold() for word in ("arcsec", "mas", '"', "″")):
-        return None, measured(text, "arcsec", "--a", low=0.0, low_open=True)
-    return measured(text, "au", "--a", low=0.0, low_open=True), None
 
 
 def _published(cycle: str | None) -> int | None:

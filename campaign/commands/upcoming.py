@@ -8,8 +8,7 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import AsOfOption, DbOption, JsonOption, option
-from campaign.commands.parsing import clock_instant, one_of
-from campaign.errors import InputRefused
+from campaign.commands.parsing import clock_instant, count, one_of
 
 Text = str | None
 DEFAULT_WITHIN = "5yr"
@@ -82,8 +81,8 @@ def upcoming(
         within_d=_span(within),
         events=tuple(_event(e) for e in event),
         min_probability=_fraction(min_probability),
-        draws=_count(draws, "--draws", 100, 1_000_000),
-        seed=_count(seed, "--seed", 0, 2**32 - 1),
+        draws=count(draws, "--draws", 100, 1_000_000),
+        seed=count(seed, "--seed", 0, 2**32 - 1),
         solutions="each" if solutions else "adopted",
     )
     if names is not None and len(names) == 1 and not solutions:
@@ -125,19 +124,3 @@ def _fraction(text: str | None) -> float:
     from campaign.commands.parsing import plain_number
 
     return plain_number(text, "fraction", "--min-probability", low=0.0, high=1.0, shown="0.5") or 0.0
-
-
-def _count(text: str | None, name: str, low: int, high: int) -> int | None:
-    if text is None:
-        return None
-    from campaign.reading.numbers import read_number
-
-    value = read_number(text, name)
-    if value == int(value) and low <= value <= high:
-        return int(value)
-    raise InputRefused(
-        f"{name} {text} is out of range.",
-        why=f"It is a whole number from {low} to {high}.",
-        hint=f"For example {name} {max(low, 2000) if name == '--draws' else 1}.",
-        code="out-of-range",
-    )

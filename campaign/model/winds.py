@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 from typing import Any, Literal
 
 from campaign.model.compositions import Composition
+from campaign.model.instants import TypedInstant
 from campaign.model.measured import Measured
 from campaign.model.propagated import Propagated
 from campaign.model.systems import StarName
@@ -18,12 +19,16 @@ InputOrigin = Literal["catalogue", "option", "spectral type", "assumed"]
 
 @dataclass(frozen=True, slots=True)
 class WindOverrides:
-    """What the user says in place of the catalogue: fields of stars, system and solution by their names."""
+    """What the user says in place of the catalogue: fields of stars, system and solution by their names.
+
+    ``epoch`` is one of periastron.
+    """
 
     star_a: Mapping[str, Any] = field(default_factory=dict)
     star_b: Mapping[str, Any] = field(default_factory=dict)
     system: Mapping[str, Any] = field(default_factory=dict)
     solution: Mapping[str, Any] = field(default_factory=dict)
+    epoch: TypedInstant | None = None
     composition_a: Composition | None = None
     composition_b: Composition | None = None
     momentum_ratio_b_over_a: Measured | None = None

@@ -190,7 +190,7 @@ def winds(record: SystemRecord, question: WindsQuestion) -> WindsResult:
         told_inputs(inputs, used),
         question.draws,
         question.seed,
-        tuple(assumptions(record, inputs, of, dated)),
+        tuple(assumptions(record, inputs, of, dated, skew)),
         tuple(warnings(inputs, of, swap)),
     )
 

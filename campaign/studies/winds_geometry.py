@@ -11,8 +11,8 @@ from campaign.physics import contactsurface, openingforms, postshock
 from campaign.studies.winds_draws import STARS, Propagation
 
 _SURFACE_POINTS = 41
-# The share of the way to the asymptote at which the shape ends; there it is several separations away.
-_SURFACE_END = 0.97
+# Where the shape ends: within the square of what is left here of the way to the asymptote.
+_SURFACE_END = 0.95
 _THIN_SHELL = "Canto, Raga & Wilkin 1996"
 
 
@@ -70,7 +70,9 @@ def surface(eta: Propagated) -> tuple[SurfacePoint, ...]:
     """
     assert eta.value is not None
     opening = float(contactsurface.half_opening_rad(eta.value))
-    angles = np.linspace(0.0, _SURFACE_END * (np.pi - opening), _SURFACE_POINTS)
+    # Closer together towards the asymptote, where the surface runs off.
+    left = 1.0 - np.linspace(0.0, _SURFACE_END, _SURFACE_POINTS)
+    angles = (1.0 - left**2) * (np.pi - opening)
     known = [eta.value, eta.median, eta.lo68, eta.hi68, eta.lo95, eta.hi95]
     ratios = np.array([np.nan if x is None else x for x in known])
     distances = contactsurface.contact_surface(angles[:, None], ratios[None, :])[1]

@@ -10,15 +10,17 @@ from campaign.errors import Conflict
 from campaign.model.compositions import MIXES, Composition, mix_for
 from campaign.model.measured import Covariance, Limit, Measured
 from campaign.model.records import SystemRecord
-from campaign.model.systems import Solution, Star, StarName
+from campaign.model.systems import Solution, Star, StarName, System
 from campaign.model.winds import InputOrigin, WindInput, WindOverrides
+from campaign.studies.instants import moment_of
+from campaign.studies.periastron import periastron_epoch
 from campaign.studies.rows import SPOKEN, ForecastRow, build_row, take_size
 
-# Fields of a star that matter, their units, an accepted form and the values that they can have.
+# Fields of a star that matter: words, unit, option without its star, and the values that they can have.
 STAR_FIELDS: dict[str, tuple[str, str, str, tuple[float, float]]] = {
-    "mass_loss_msun_yr": ("mass loss", "Msun/yr", "(2.0±0.5)e-5 Msun/yr", (1e-13, float("inf"))),
-    "wind_speed_kms": ("wind speed", "km/s", "2500±200 km/s", (1.0, 299_792.458)),
-    "radius_rsun": ("radius", "Rsun", "4.2±0.5 Rsun", (1e-4, float("inf"))),
+    "mass_loss_msun_yr": ("mass loss", "Msun/yr", "mass-loss", (1e-13, float("inf"))),
+    "wind_speed_kms": ("wind speed", "km/s", "wind-speed", (1.0, 299_792.458)),
+    "radius_rsun": ("radius", "Rsun", "radius", (1e-4, float("inf"))),
 }
 RATIO, BETA, FLARE = "momentum_ratio_b_over_a", "beta", "flare_deg"
 OTHER_DOMAINS: dict[str, tuple[float, float]] = {
@@ -229,13 +231,28 @@ def _overridden(
         star_b=replace(record.system.star_b, **overrides.star_b),
         **overrides.system,
     )
-    if overrides.solution:
+    changes = dict(overrides.solution)
+    if overrides.epoch is not None:
+        changes |= _epoch(record.system, solution, overrides)
+    if changes:
         base = solution or Solution(0, system.id, OPTIONS_LABEL, epoch_cycle=0)
-        solution = replace(
-            base, covariance=_left_of(base.covariance, overrides.solution), **overrides.solution
-        )
+        solution = replace(base, covariance=_left_of(base.covariance, changes), **changes)
     # The dust rule plays no part here.
     return replace(record, system=system, rule=None, episodes=()), solution
+
+
+def _epoch(system: System, solution: Solution | None, overrides: WindOverrides) -> dict[str, Any]:
+    """A periastron in place of the epoch, with the cycle that it has by the count of the solution."""
+    assert overrides.epoch is not None
+    moment = moment_of(overrides.epoch, system)
+    cycle = 0
+    if solution is not None and solution.epoch is not None:
+        period = overrides.solution.get("period_d") or solution.period_d
+        earlier = periastron_epoch(solution, period.value) if isinstance(period, Measured) else None
+        if earlier is not None and isinstance(period, Measured):
+            cycle = round((moment.bmjd_tdb - earlier) / period.value)
+        cycle += solution.epoch_cycle or 0
+    return {"epoch": moment, "epoch_marks": "periastron", "epoch_cycle": cycle}
 
 
 def _left_of(covariance: Covariance | None, changed: Mapping[str, Any]) -> Covariance | None:
@@ -301,21 +318,29 @@ def _require_momenta(inputs: WindInputs) -> None:
     if not missing:
         return
     name = inputs.record.system.name
-    lacking = " and ".join(spoken(each) for each in missing)
-    options = " ".join(f'{_option(each)} "{STAR_FIELDS[each[:-2]][2]}"' for each in missing)
+    lacking = ", ".join(spoken(each) for each in missing)
+    options = " ".join(f'{_option(each)} "{_FORMS[each]}"' for each in missing)
     raise Conflict(
         f"The winds of {name} cannot be compared.",
         why=f"The {lacking} {'is' if len(missing) == 1 else 'are'} not known.",
-        hint=f'campaign winds "{name}" {options}; to keep it: campaign system change "{name}" {options}. '
-        "Or give the ratio itself: --momentum-ratio 0.03±0.01",
+        hint=f'Keep it: campaign system change "{name}" {options}; or add the options to this command; or '
+        "give the ratio itself, B over A: --momentum-ratio 0.03±0.01",
         code="wind-unknown",
         details={"missing": missing, "options": [_option(each) for each in missing]},
     )
 
 
+# Accepted forms, of the size that such a star may have.
+_FORMS = {
+    "mass_loss_msun_yr_a": "(2.0±0.5)e-5 Msun/yr",
+    "wind_speed_kms_a": "2300±100 km/s",
+    "mass_loss_msun_yr_b": "(8±3)e-7 Msun/yr",
+    "wind_speed_kms_b": "2600±150 km/s",
+}
+
+
 def _option(name: str) -> str:
-    words = {"mass_loss_msun_yr": "mass-loss", "wind_speed_kms": "wind-speed", "radius_rsun": "radius"}
-    return f"--{words[name[:-2]]}-{name[-1]}"
+    return f"--{STAR_FIELDS[name[:-2]][2]}-{name[-1]}"
 
 
 def _note_unused(inputs: WindInputs, overrides: WindOverrides) -> None:

@@ -20,7 +20,11 @@ INDICATOR = (
 
 
 def assumptions(
-    record: SystemRecord, inputs: WindInputs, of: Propagation, dated: Propagation | None
+    record: SystemRecord,
+    inputs: WindInputs,
+    of: Propagation,
+    dated: Propagation | None,
+    skew_deg: tuple[float | None, float | None],
 ) -> list[str]:
     """What the numbers take for granted, and what cannot be told for want of what.
 
@@ -32,6 +36,8 @@ def assumptions(
         What went in.
     of, dated : Propagation
         Draws of the numbers and of the table.
+    skew_deg : (float, float)
+        Turn of the cone at periastron and apastron, deg; None where it is not known.
 
     Returns
     -------
@@ -48,7 +54,13 @@ def assumptions(
         lines.append(
             f"'{inputs.solution.label}' is one of {adopted} adopted solutions; others with --solution"
         )
-    lines.append("spherical winds at terminal speed set the contact surface; the cone is straight")
+    turn = ""
+    if skew_deg[0] is not None and skew_deg[1] is not None:
+        turn = (
+            f": the orbital motion turns it by {skew_deg[0]:.2g} deg at periastron and {skew_deg[1]:.2g} deg "
+            "at apastron near its apex, and winds it up farther out"
+        )
+    lines.append(f"spherical winds at terminal speed set the contact surface; the cone is straight{turn}")
     lines.extend(_missing(inputs))
     if any("beta" in laws_of(inputs, star) for star in STARS):
         beta = inputs.values[BETA].value if BETA in inputs.values else DEFAULT_BETA
@@ -61,11 +73,12 @@ def assumptions(
             f"the rim is the shocked gas that flares {SHOCK_FLARE_DEG:g} deg beyond the contact surface "
             "(Pittard & Dawson 2018, abstract)"
         )
-    if inputs.row is not None and inputs.row.a_source not in (None, "given"):
+    if inputs.size and inputs.row is not None and inputs.row.a_source not in (None, "given"):
         lines.append(f"semi-major axis from: {inputs.row.a_source}")
     if dated is not None and dated.all.draws < of.all.draws:
         lines.append(f"so long a table is drawn {dated.all.draws} times instead of {of.all.draws}")
-    lines.append(INDICATOR)
+    if inputs.size and any(laws_of(inputs, star) for star in STARS):
+        lines.append(INDICATOR)
     return lines
 
 

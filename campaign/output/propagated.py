@@ -1,0 +1,71 @@
+"""Numbers with propagated errors as short text."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+from campaign.model.measured import Measured
+from campaign.model.propagated import Propagated
+from campaign.output.values import number
+
+
+def brief(value: Propagated | None) -> str:
+    """As ``told``, for a narrow cell: a question mark stands for an error that is not known."""
+    return told(value).replace(" (error unknown)", " ?")
+
+
+def told(value: Propagated | None, unit: str = "") -> str:
+    """Median with its 68 % interval as errors; empty where there is none.
+
+    Errors that differ by less than a sixth are told as one.
+    """
+    if value is None or (value.value is None and value.median is None):
+        return ""
+    tail = unit if unit in {"", "°"} else f" {unit}"
+    if value.median is None or value.lo68 is None or value.hi68 is None:
+        middle = value.value if value.value is not None else value.median
+        return f"{middle:.4g}{tail} (error unknown)".replace("e-", "e−")
+    below, above = value.median - value.lo68, value.hi68 - value.median
+    if below <= 0.0 and above <= 0.0:
+        return f"{value.median:.4g}{tail}"
+    if abs(above - below) * 6.0 <= max(above, below):
+        below = above = 0.5 * (above + below)
+    least = max(above, below) * 1e-2
+    return number(Measured(value.median, max(below, least), max(above, least))) + tail
+
+
+def in_millions(value: Propagated | None) -> Propagated | None:
+    """The same number in a unit a million times as large."""
+    if value is None:
+        return None
+    value_, median, sigma, lo68, hi68, lo95, hi95 = (
+        None if x is None else 1e-6 * x
+        for x in (value.value, value.median, value.sigma, value.lo68, value.hi68, value.lo95, value.hi95)
+    )
+    return replace(
+        value, value=value_, median=median, sigma=sigma, lo68=lo68, hi68=hi68, lo95=lo95, hi95=hi95
+    )
+
+
+def phase(value: Propagated, *, error: bool = True) -> str:
+    """A phase from periastron with its sign, by default with the error."""
+    middle = value.median if value.median is not None else value.value
+    if middle is None:
+        return ""
+    if not error or value.lo68 is None or value.hi68 is None:
+        return f"{middle:+.4f}".replace("-", "−")
+    half = 0.5 * (value.hi68 - value.lo68)
+    places = 4 if half < 0.01 else 3 if half < 0.1 else 2
+    return f"{middle:+.{places}f} ± {half:.{places}f}".replace("-", "−")
+
+
+def mostly(value: Propagated | None) -> str:
+    """The input that makes most of the error, with its share."""
+    if value is None:
+        return ""
+    if value.unknown_errors:
+        return f"error unknown: {', '.join(value.unknown_errors)}"
+    if value.dominant is None or value.dominant_share is None:
+        return ""
+    share = f"{100.0 * value.dominant_share:.0f} %"
+    return f"{value.dominant}, {share}" if value.dominant_share < 0.995 else value.dominant
