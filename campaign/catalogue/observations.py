@@ -225,15 +225,18 @@ def refuse_out_of_use(connection: Connection, observation_id: int) -> None:
         raise no_observation(observation_id)
     if row.superseded_by_id is None and row.withdrawn_at is None:
         return
-    reason = (
-        "It was withdrawn before."
-        if row.superseded_by_id is None
-        else f"Number {row.superseded_by_id} took its place."
-    )
+    if row.superseded_by_id is None:
+        reason = "It was withdrawn before."
+        hint = f"See why: campaign history {observation_id}. What is in use: campaign observations."
+    else:
+        reason = f"Number {row.superseded_by_id} took its place."
+        hint = (
+            f"See what became of it: campaign history {observation_id}. Take {row.superseded_by_id} instead."
+        )
     raise Conflict(
         f"Observation number {observation_id} is out of use already.",
         why=reason,
-        hint="See what is in use with: campaign observations.",
+        hint=hint,
         code="out-of-use",
         details={"superseded_by": row.superseded_by_id},
     )

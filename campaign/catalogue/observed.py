@@ -268,6 +268,7 @@ def no_observation(observation_id: int) -> NotFound:
     """The error for a number that is not there."""
     return NotFound(
         f"There is no observation number {observation_id}.",
+        why="Every observation that was entered has a number; this one has not been given.",
         hint="See their numbers with: campaign observations.",
         code="observation-not-found",
     )

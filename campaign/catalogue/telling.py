@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from typing import Any
 
-from sqlalchemy import Connection, Table, select
+from sqlalchemy import Connection, Table, func, select
 
 from campaign.catalogue.fieldwords import field_changes
 from campaign.catalogue.journal import from_journal
@@ -26,6 +27,8 @@ from campaign.catalogue.tables import (
 )
 from campaign.model.history import BulkEffect, Effect, EntryChange, FieldChange, RowEffect
 
+# So many systems of a load are named.
+_SYSTEMS_NAMED = 4
 _WHOLE_SYSTEM = frozenset({systems.name, system_names.name, stars.name})
 
 
@@ -60,7 +63,24 @@ class Teller:
     def reversed(self, operation_id: int, effects: Sequence[Effect]) -> tuple[EntryChange, ...]:
         """What taking the effects back would do, in the same words."""
         kept = [effect for effect in effects if not is_lasting(effect)]
-        return tuple(_backwards(change) for change in self.tell(operation_id, kept))
+        told = [_backwards(change) for change in self.tell(operation_id, kept)]
+        load = next((effect for effect in effects if isinstance(effect, BulkEffect)), None)
+        if load is not None:
+            of_each = self._systems_of_load(load.brought_by)
+            told = [each if each.rows is None else replace(each, note=of_each) for each in told]
+        return tuple(told)
+
+    def _systems_of_load(self, brought_by: int) -> str:
+        """How many observations of which system a load brought, the most first."""
+        counted = self._connection.execute(
+            select(observations.c.system_id, func.count())
+            .where(observations.c.operation_id == brought_by)
+            .group_by(observations.c.system_id)
+            .order_by(func.count().desc(), observations.c.system_id)
+        ).all()
+        told = [f"{rows:,} of {self._systems[system_id]}" for system_id, rows in counted[:_SYSTEMS_NAMED]]
+        more = len(counted) - len(told)
+        return ", ".join(told) + (f" and {more} more system{'' if more == 1 else 's'}" if more else "")
 
     def brought_by(self, observation_id: int) -> int:
         """The operation that an observation came with."""

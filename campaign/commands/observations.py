@@ -71,8 +71,8 @@ def observations(
         common.tell(f"Warning: {warning}")
     if len(found.rows) < found.found:
         common.tell(
-            f"These are the latest {len(found.rows)} of {found.found}; --limit 0 shows all of them, and a "
-            "filter fewer."
+            f"These are the latest {len(found.rows):,} of {found.found:,}; --limit 0 shows all of them, "
+            "and a filter fewer."
         )
 
 

@@ -42,8 +42,10 @@ def withdraw(
                 details={"missing": "--why"},
             )
         why = common.ask("Why:")
+    # The study has words of its own for a reason that says nothing.
+    reason = (plain(why, "--why", 500) or "") if why.strip() else ""
     result = study.withdraw_observations(
-        common.database(db), common.stamp(observer), wanted, plain(why, "--why", 500) or "", rehearse=dry_run
+        common.database(db), common.stamp(observer), wanted, reason, rehearse=dry_run
     )
     if json:
         common.write_json(output.withdrawn_json(result, common.now_iso()))

@@ -78,13 +78,18 @@ def render_changes(
                 screen.wrapped(f"{field.name}: {before} → {after}", label="      ", hang=8)
     left = len(changes) - len(changes[:most])
     if left:
-        screen.wrapped(f"and {left} more entries; all of them: {see}", label="    ", hang=6, style="dim")
+        screen.wrapped(
+            f"and {left:,} more entr{'y' if left == 1 else 'ies'}; all of them: {see}",
+            label="    ",
+            hang=6,
+            style="dim",
+        )
 
 
 def _subject(change: EntryChange) -> str:
     if change.rows is not None:
         of = f" of {change.system}" if change.system else ""
-        return f"{change.rows} observation{'' if change.rows == 1 else 's'}{of}"
+        return f"{change.rows:,} observation{'' if change.rows == 1 else 's'}{of}"
     if change.subject == "system":
         return f"system {change.system}"
     return f"{change.subject} of {change.system}" if change.system else change.subject

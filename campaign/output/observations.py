@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Any
 
 from campaign.model.history import Amended, ListedObservation, ObservationList, Withdrawn
@@ -10,7 +11,7 @@ from campaign.model.observations import Observation
 from campaign.output.console import Screen
 from campaign.output.documents import document, plain
 from campaign.output.history import UNIT_NAMES, both, field_data, iso
-from campaign.output.tables import Cell, Column, print_table
+from campaign.output.tables import Cell, Column, fits, print_table
 from campaign.output.values import number
 
 _COLUMNS = {
@@ -27,6 +28,9 @@ _COLUMNS = {
     "note": Column("note", shrinks=True, drop=6, min_width=12),
     "fate": Column("out of use", shrinks=True, drop=1, min_width=12),
 }
+
+# Widths at which a column need not be folded.
+_ROOM = {"system": 22, "of": 26, "value": 26, "site": 18, "source": 28, "by": 18, "note": 30, "fate": 30}
 
 
 def render_observations(screen: Screen, found: ObservationList) -> None:
@@ -47,7 +51,14 @@ def render_observations(screen: Screen, found: ObservationList) -> None:
     if heading:
         screen.heading(", ".join(heading))
     names = [name for name in _COLUMNS if name not in unneeded]
-    print_table(screen, [_COLUMNS[name] for name in names], [[row[name] for name in names] for row in rows])
+    cells = [[row[name] for name in names] for row in rows]
+    # One line an observation where the window allows it: rather fewer columns than folded ones.
+    roomy = [replace(_COLUMNS[name], min_width=_ROOM.get(name, _COLUMNS[name].min_width)) for name in names]
+    needed = [i for i, column in enumerate(roomy) if not column.drop]
+    if fits(screen, [roomy[i] for i in needed], [[row[i] for i in needed] for row in cells]):
+        print_table(screen, roomy, cells)
+    else:
+        print_table(screen, [_COLUMNS[name] for name in names], cells)
 
 
 def _cells(row: ListedObservation) -> dict[str, Cell]:

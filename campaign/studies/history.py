@@ -8,7 +8,7 @@ from sqlalchemy import Connection
 
 from campaign.catalogue import involved, journal, observed, store, systems
 from campaign.catalogue.telling import Teller
-from campaign.errors import NotFound
+from campaign.errors import InputRefused, NotFound
 from campaign.model.history import EntryChange, History, Operation, ToldOperation
 from campaign.model.instants import TypedInstant
 
@@ -51,11 +51,21 @@ def tell_history(
     ------
     NotFound
         Unknown system, observation or operation.
+    InputRefused
+        Dates that end before they begin.
 
     Notes
     -----
     Accuracy: entry times are those of the clock of whoever made the entry. Source: the catalogue.
     """
+    first, last = entry_time(since, latest=False), entry_time(until, latest=True)
+    if first is not None and last is not None and last < first:
+        raise InputRefused(
+            "The dates end before they begin.",
+            why="--until lies before --from, so that nothing could have been done in between.",
+            hint="For example --from 2030 --until 2031-06.",
+            code="span-refused",
+        )
     with store.reading(db) as connection:
         subject = _subject(connection, about)
         numbers = subject.operations
@@ -66,8 +76,8 @@ def tell_history(
             connection,
             numbers,
             who=who,
-            since=entry_time(since, latest=False),
-            until=entry_time(until, latest=True),
+            since=first,
+            until=last,
             limit=None if limit is None else limit + 1,
         )
         more = limit is not None and len(found) > limit

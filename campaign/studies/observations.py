@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 from sqlalchemy import Connection
 
 from campaign.catalogue import listing, sites, store, systems
+from campaign.errors import InputRefused
 from campaign.model.bands import BandUse
 from campaign.model.history import ListedObservation, ObservationList
 from campaign.model.instants import TypedInstant
@@ -106,17 +107,27 @@ def filters_of(connection: Connection, wanted: Wanted) -> listing.Filters:
     ------
     NotFound
         Unknown system or site.
+    InputRefused
+        Dates that end before they begin.
 
     Notes
     -----
     Accuracy: dates without light time, up to 8.4 min. Source: project convention.
     """
+    since, until = _edge(wanted.since, -0.5), _edge(wanted.until, 0.5)
+    if since is not None and until is not None and until < since:
+        raise InputRefused(
+            "The dates end before they begin.",
+            why="--until lies before --from, so that no observation could pass.",
+            hint="For example --from 2030 --until 2031-06.",
+            code="span-refused",
+        )
     return listing.Filters(
         system_id=None if wanted.system is None else systems.find_system(connection, wanted.system).id,
         kinds=wanted.kinds,
         bands=wanted.bands,
-        since_bmjd_tdb=_edge(wanted.since, -0.5),
-        until_bmjd_tdb=_edge(wanted.until, 0.5),
+        since_bmjd_tdb=since,
+        until_bmjd_tdb=until,
         site_id=None if wanted.site is None else sites.find_site(connection, wanted.site).id,
         source=wanted.source,
         qualities=wanted.qualities,
@@ -160,7 +171,11 @@ def _mixed(rows: Sequence[ListedObservation]) -> list[str]:
 
 
 def _nothing_found(connection: Connection, filters: listing.Filters) -> list[str]:
-    """Why a filter by band found nothing: names of bands are taken as they are written."""
+    """Why nothing was found, where that is known: names of bands are taken as they are written."""
+    if listing.find_observations(connection, listing.Filters(out_of_use=True), 1)[1] == 0:
+        return [
+            "the catalogue holds no observations yet; enter one with campaign log, a table with campaign load"
+        ]
     if filters.bands is None:
         return []
     there = listing.bands_in_use(connection, replace(filters, bands=None))
