@@ -15,7 +15,7 @@ from campaign.model.loading import LoadWarning
 from campaign.model.systems import DustRule, Episode, Solution, System
 from campaign.reading.exchange_models import episode_from_row, solution_from_row, system_from_row
 from campaign.studies.load_exchanged import Tally, attempted
-from campaign.studies.load_names import NameIndex, system_index
+from campaign.studies.load_names import NameIndex, alias_warnings, place_warning, system_index
 
 # What an entry has in its own catalogue alone.
 _OWN = {"id", "system_id"}
@@ -52,6 +52,9 @@ def enter_systems(writing: Writing, rows: Iterable[ExchangeRow], tally: Tally) -
             _compare_system(writing, tally, row, exchanged, there)
         elif attempted(writing, tally, row, lambda new=exchanged: _enter_system(writing, new)):  # type: ignore[misc]
             tally.added += 1
+            near = place_warning(exchanged.system, list(known.values()), row.line)
+            tally.warnings += [] if near is None else [near]
+            known[name_key(exchanged.system.name)] = exchanged.system
 
 
 def _enter_system(writing: Writing, exchanged: ExchangedSystem) -> None:
@@ -152,6 +155,7 @@ def enter_solutions(writing: Writing, rows: Iterable[ExchangeRow], tally: Tally)
             number = entered[0]
         if exchanged.solution.adopted and (there is None or not there.adopted):
             adopted.setdefault(system.id, []).append((number, exchanged.solution))
+    tally.warnings += alias_warnings(index, known_systems)
     for system_id, wanted in adopted.items():
         _adopt(writing, tally, systems.get_system(writing.connection, system_id), wanted)
 
@@ -232,6 +236,7 @@ def enter_episodes(writing: Writing, rows: Iterable[ExchangeRow], tally: Tally) 
             tally.already_known += 1
         elif attempted(writing, tally, row, lambda new=draft: episodes.add_episode(writing, new)):  # type: ignore[misc, arg-type]
             tally.added += 1
+    tally.warnings += alias_warnings(index, known_systems)
 
 
 def _index(writing: Writing) -> tuple[NameIndex, list[System]]:

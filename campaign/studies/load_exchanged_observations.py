@@ -21,7 +21,7 @@ from campaign.model.systems import Site, System
 from campaign.reading.exchange_models import observation_from_row
 from campaign.studies.load_exchanged import Tally, attempted
 from campaign.studies.load_known import check_known
-from campaign.studies.load_names import NameIndex, site_index, system_index
+from campaign.studies.load_names import NameIndex, alias_warnings, site_index, system_index
 from campaign.studies.load_objects import checked_objects, columns_of_objects
 
 _BATCH_ROWS = 5_000
@@ -60,6 +60,7 @@ def enter_observations(
     source = iter(rows)
     while batch := list(islice(source, _BATCH_ROWS)):
         entry.enter([good for row in batch if (good := entry.read(row)) is not None])
+    tally.warnings += alias_warnings(entry.systems_called, known_systems)
 
 
 class _Entry:
@@ -72,7 +73,7 @@ class _Entry:
         self._tally = tally
         self._systems = known_systems
         self._sites = list(known_sites)
-        self._system_index: NameIndex = system_index(known_systems)
+        self.systems_called: NameIndex = system_index(known_systems)
         self._site_index: NameIndex = site_index(known_sites)
         self._moved: set[int] = set()
 
@@ -86,7 +87,7 @@ class _Entry:
                     why="Only what is in use is loaded.",
                     code="out-of-use",
                 )
-            place = self._system_index.read(exchanged.system)
+            place = self.systems_called.read(exchanged.system)
             site_id = self._site_id(exchanged)
         except InputRefused as refused:
             self._tally.refuse_for(row, refused)

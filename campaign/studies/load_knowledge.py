@@ -21,6 +21,7 @@ from campaign.model.loading import (
     ForeignTable,
     Loaded,
     LoadWanted,
+    LoadWarning,
     MappingRequest,
     Rejected,
     TableMapping,
@@ -38,6 +39,7 @@ from campaign.reading.tablefile import TableFile
 from campaign.reading.values import read_measured, read_measured_or_bound
 from campaign.studies.episodes import enter_episode
 from campaign.studies.instants import moment_of
+from campaign.studies.load_names import alias_warnings, place_warning, system_index
 from campaign.studies.solutions import enter_solution
 
 _LONGEST = {"notes": 2000, "note": 2000, "source": 400, "aliases": 2000}
@@ -68,6 +70,8 @@ _ELEMENTS = {
     "node": "node_deg", "k_a": "k_a_kms", "k_b": "k_b_kms", "gamma": "gamma_kms", "a_au": "a_au",
     "a_arcsec": "a_arcsec",
 }  # fmt: skip
+# Enters one row, appends what an observer should look at, and tells whether the row was new.
+_Enterer = Callable[[Writing, Mapping[str, Any], list[LoadWarning]], bool]
 _STAGES = ("onset", "maximum", "end")
 
 
@@ -132,13 +136,15 @@ def load_knowledge(
     added = known = 0
     operation_id: int | None = None
     is_refused = False
+    warnings: list[LoadWarning] = []
     try:
         with opening(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
             for row in rows:
                 if not row.bad:
-                    is_new = _tried(writing, row, enter)
+                    is_new = _tried(writing, row, enter, warnings)
                     added += is_new is True
                     known += is_new is False
+            warnings += _aliases(writing, rows)
             is_refused = any(row.bad for row in rows) and not wanted.skip_bad
             if is_refused:
                 raise _NothingKept
@@ -158,6 +164,7 @@ def load_knowledge(
         already_known=known,
         bad_rows=len(bad_rows),
         bad=tuple(cell for row in bad_rows for cell in row.bad),
+        warnings=tuple(warnings),
         rehearsed=wanted.rehearse,
         is_refused=is_refused,
         kept_mapping=None if is_refused or wanted.rehearse else wanted.keep_mapping,
@@ -282,13 +289,24 @@ def _chosen(text: str, words: Mapping[str, str]) -> str:
     return word
 
 
-def _tried(writing: Writing, row: _Row, enter: Callable[[Writing, Mapping[str, Any]], bool]) -> bool | None:
+def _aliases(writing: Writing, rows: list[_Row]) -> list[LoadWarning]:
+    """Systems that good rows call by another name than their own."""
+    known = systems.list_systems(writing.connection, include_retired=True)
+    index = system_index(known)
+    for row in rows:
+        if not row.bad and "system" in row.values:
+            index.read(row.values["system"])
+    return alias_warnings(index, known)
+
+
+def _tried(writing: Writing, row: _Row, enter: _Enterer, warnings: list[LoadWarning]) -> bool | None:
     """Whether the row was new; None when it was refused, and then nothing of it is left."""
     assert writing.operation_id
     changed = writing.changed
     savepoint = writing.connection.begin_nested()
+    told: list[LoadWarning] = []
     try:
-        is_new = enter(writing, row.values)
+        is_new = enter(writing, row.values, told)
     except (CampaignError, DBAPIError) as refused:
         savepoint.rollback()
         writing.changed = changed
@@ -301,6 +319,7 @@ def _tried(writing: Writing, row: _Row, enter: Callable[[Writing, Mapping[str, A
             row.bad.append(BadCell(row.line, None, "value-out-of-range", why, text))
         return None
     savepoint.commit()
+    warnings += [replace(each, lines=(row.line,)) for each in told]
     return is_new
 
 
@@ -330,7 +349,7 @@ def _dated(values: Mapping[str, Any], name: str) -> TypedInstant | None:
     return replace(typed, minus_d=size, plus_d=size, width_d=typed.width_d if size <= floor else 0.0)
 
 
-def _enter_system(writing: Writing, values: Mapping[str, Any]) -> bool:
+def _enter_system(writing: Writing, values: Mapping[str, Any], told: list[LoadWarning]) -> bool:
     priority = values.get("priority", 3.0)
     if priority not in range(1, 10):
         raise InputRefused(
@@ -352,7 +371,8 @@ def _enter_system(writing: Writing, values: Mapping[str, Any]) -> bool:
         star_b=Star("B", spectral_type=values.get("spectral_type_b")),
     )
     wanted = name_key(system.name)
-    for there in systems.list_systems(writing.connection, include_retired=True):
+    known = systems.list_systems(writing.connection, include_retired=True)
+    for there in known:
         if name_key(there.name) == wanted:
             if _says_nothing_new(system, there, values):
                 return False
@@ -363,6 +383,8 @@ def _enter_system(writing: Writing, values: Mapping[str, Any]) -> bool:
                 code="known-otherwise",
             )
     systems.add_system(writing, system)
+    near = place_warning(system, known, 0)
+    told += [] if near is None else [near]
     return True
 
 
@@ -387,7 +409,7 @@ def _says_nothing_new(new: System, there: System, values: Mapping[str, Any]) -> 
     )
 
 
-def _enter_solution(writing: Writing, values: Mapping[str, Any]) -> bool:
+def _enter_solution(writing: Writing, values: Mapping[str, Any], told: list[LoadWarning]) -> bool:
     elements: dict[str, Any] = {column: _with_error(values, name) for name, column in _ELEMENTS.items()}
     if elements["omega_deg"] is not None and values.get("omega_of") is None:
         raise InputRefused(
@@ -423,7 +445,7 @@ def _enter_solution(writing: Writing, values: Mapping[str, Any]) -> bool:
     return True
 
 
-def _enter_episode(writing: Writing, values: Mapping[str, Any]) -> bool:
+def _enter_episode(writing: Writing, values: Mapping[str, Any], told: list[LoadWarning]) -> bool:
     dates = {
         stage: (typed, values.get("band"), values.get("method"))
         for stage in _STAGES
@@ -440,10 +462,12 @@ def _enter_episode(writing: Writing, values: Mapping[str, Any]) -> bool:
         source=values.get("source", ""),
         note=values.get("note", ""),
     )
-    return enter_episode(writing, values["system"], draft, dates).changed
+    kept = enter_episode(writing, values["system"], draft, dates)
+    told += [LoadWarning("future", f"{values['system']}: {text}", 1) for text in kept.warnings]
+    return kept.changed
 
 
-_ENTERERS: Mapping[str, Callable[[Writing, Mapping[str, Any]], bool]] = {
+_ENTERERS: Mapping[str, _Enterer] = {
     "systems": _enter_system,
     "solutions": _enter_solution,
     "episodes": _enter_episode,

@@ -2,11 +2,17 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
 from campaign.catalogue.naming import name_key, nearest_names
 from campaign.errors import InputRefused
+from campaign.model.loading import LoadWarning
 from campaign.model.systems import Site, System
+
+_MOST_NAMES = 5
+# Two positions of one system differ by less, whoever measured them (common practice, no source).
+_SAME_PLACE_ARCSEC = 5.0
 
 
 class NameIndex:
@@ -102,3 +108,71 @@ def site_index(sites: Sequence[Site]) -> NameIndex:
         "site",
         "See the sites with: campaign site list. Add one with: campaign site add.",
     )
+
+
+def alias_warnings(names: NameIndex, systems: Sequence[System]) -> list[LoadWarning]:
+    """Which systems a table called by another name than their own.
+
+    Parameters
+    ----------
+    names : NameIndex
+        After the table was read.
+    systems : sequence of System
+        Those that the index counts (dimensionless).
+
+    Returns
+    -------
+    list of LoadWarning
+        The first few by name, and how many more.
+
+    Notes
+    -----
+    Accuracy: exact. Source: project convention.
+    """
+    found: list[str] = []
+    for place, others in names.aliases():
+        called = " and ".join(f"'{name}'" for name in others[:_MOST_NAMES])
+        found.append(f"{called} is known here as '{systems[place].name}'")
+    if len(found) > _MOST_NAMES:
+        found = [*found[:_MOST_NAMES], f"and {len(found) - _MOST_NAMES} more systems are called by an alias"]
+    return [LoadWarning("alias", text) for text in found]
+
+
+def place_warning(new: System, known: Sequence[System], line: int) -> LoadWarning | None:
+    """Whether a new system stands where another one is known: the same under another name, it seems.
+
+    Parameters
+    ----------
+    new : System
+        With its position, deg.
+    known : sequence of System
+        Of the catalogue before it.
+    line : int
+        Where it stood in the table.
+
+    Returns
+    -------
+    LoadWarning or None
+        For the nearest one within 5 arcsec.
+
+    Notes
+    -----
+    Accuracy: proper motion is left out, which is below 1 arcsec in 50 years for such distant stars. Source:
+    project convention.
+    """
+    near = min(((_apart_arcsec(new, each), each.name) for each in known), default=None)
+    if near is None or near[0] > _SAME_PLACE_ARCSEC:
+        return None
+    text = (
+        f"'{new.name}' lies {near[0]:.1f} arcsec from '{near[1]}', which is known here: is it the same? Then "
+        f'take it back and say: campaign system change "{near[1]}" --alias "{new.name}"'
+    )
+    return LoadWarning("same-place", text, 1, (line,))
+
+
+def _apart_arcsec(one: System, other: System) -> float:
+    dec, other_dec = math.radians(one.dec_deg), math.radians(other.dec_deg)
+    half_ra = math.radians(one.ra_deg - other.ra_deg) / 2.0
+    half_dec = (dec - other_dec) / 2.0
+    haversine = math.sin(half_dec) ** 2 + math.cos(dec) * math.cos(other_dec) * math.sin(half_ra) ** 2
+    return math.degrees(2.0 * math.asin(min(1.0, math.sqrt(haversine)))) * 3600.0

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,7 +18,7 @@ from campaign.physics.sun import sun_altitude_deg
 from campaign.reading.columntimes import PLACES
 from campaign.studies.bands import band_warnings, mixed_bands
 from campaign.studies.load_known import LIGHT_TIME_D, KnownCheck
-from campaign.studies.load_names import NameIndex
+from campaign.studies.load_names import NameIndex, alias_warnings
 from campaign.studies.load_outliers import outlying
 from campaign.studies.load_rows import CheckedRows
 
@@ -106,7 +105,7 @@ def load_warnings(
         )
         told.found += _bands(connection, rows, columns, fresh, systems)
     told.found += _shifted(rows, columns, check, systems)
-    told.found += _aliases(names, systems)
+    told.found += alias_warnings(names, systems)
     return tuple(told.found)
 
 
@@ -274,13 +273,3 @@ def _shifted(
             first, more = tuple(lines[:_MOST_LINES]), len(lines) > _MOST_LINES
             return [LoadWarning("light-time-seasonal", said, len(row), first, more)]
     return []
-
-
-def _aliases(names: NameIndex, systems: Sequence[System]) -> list[LoadWarning]:
-    found: list[Any] = []
-    for place, others in names.aliases():
-        called = " and ".join(f"'{name}'" for name in others[:_MOST_NAMES])
-        found.append(f"{called} is known here as '{systems[place].name}'")
-    if len(found) > _MOST_NAMES:
-        found = [*found[:_MOST_NAMES], f"and {len(found) - _MOST_NAMES} more systems are called by an alias"]
-    return [LoadWarning("alias", text) for text in found]
