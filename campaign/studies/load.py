@@ -102,9 +102,8 @@ def load_table(
         if mapping.kind in KNOWLEDGE_KINDS:
             from campaign.studies.load_knowledge import load_knowledge
 
-            return load_knowledge(
-                db, stamp, file, table, mapping, wanted, understood, kept_request(mapping, request)
-            )
+            request = kept_request(mapping, request)
+            return load_knowledge(db, stamp, file, table, mapping, wanted, understood, request, told)
         return _load_observations(db, stamp, file, table, mapping, wanted, understood, request, told)
 
 

@@ -15,7 +15,7 @@ from campaign.model.loading import LoadWarning
 from campaign.model.systems import DustRule, Episode, Solution, System
 from campaign.reading.exchange_models import episode_from_row, solution_from_row, system_from_row
 from campaign.studies.load_exchanged import Tally, attempted
-from campaign.studies.load_names import NameIndex, alias_warnings, place_warning, system_index
+from campaign.studies.load_names import NameIndex, PlaceIndex, alias_warnings, system_index
 
 # What an entry has in its own catalogue alone.
 _OWN = {"id", "system_id"}
@@ -41,6 +41,9 @@ def enter_systems(writing: Writing, rows: Iterable[ExchangeRow], tally: Tally) -
         name_key(system.name): system
         for system in systems.list_systems(writing.connection, include_retired=True)
     }
+    places = PlaceIndex()
+    for system in known.values():
+        places.add(system)
     for row in rows:
         try:
             exchanged = system_from_row(row.cells)
@@ -52,9 +55,9 @@ def enter_systems(writing: Writing, rows: Iterable[ExchangeRow], tally: Tally) -
             _compare_system(writing, tally, row, exchanged, there)
         elif attempted(writing, tally, row, lambda new=exchanged: _enter_system(writing, new)):  # type: ignore[misc]
             tally.added += 1
-            near = place_warning(exchanged.system, list(known.values()), row.line)
-            tally.warnings += [] if near is None else [near]
-            known[name_key(exchanged.system.name)] = exchanged.system
+            near = places.warning(exchanged.system)
+            tally.warnings += [] if near is None else [replace(near, lines=(row.line,))]
+            places.add(exchanged.system)
 
 
 def _enter_system(writing: Writing, exchanged: ExchangedSystem) -> None:

@@ -8,10 +8,9 @@ from typing import Any
 
 from sqlalchemy.exc import DBAPIError
 
-from campaign.catalogue import mappings, solutions, store, systems
-from campaign.catalogue.naming import name_key
+from campaign.catalogue import mappings, store, systems
 from campaign.catalogue.store import Writing
-from campaign.errors import CampaignError, Conflict, InputRefused
+from campaign.errors import CampaignError, InputRefused
 from campaign.model.instants import TypedInstant
 from campaign.model.kept import Stamp
 from campaign.model.loading import (
@@ -27,8 +26,6 @@ from campaign.model.loading import (
     TableMapping,
     Understood,
 )
-from campaign.model.measured import Measured
-from campaign.model.systems import Episode, Solution, Star, System
 from campaign.reading.angles import read_declination, read_right_ascension
 from campaign.reading.columncells import without_missing
 from campaign.reading.columnfields import FIELDS
@@ -37,11 +34,13 @@ from campaign.reading.instants import read_instant
 from campaign.reading.numbers import check_plain_text, quoted, read_number
 from campaign.reading.tablefile import TableFile
 from campaign.reading.values import read_measured, read_measured_or_bound
-from campaign.studies.episodes import enter_episode
-from campaign.studies.instants import moment_of
-from campaign.studies.load_names import alias_warnings, place_warning, system_index
-from campaign.studies.solutions import enter_solution
+from campaign.studies.load_knowledge_entry import ENTERERS, Enterer, KnownSystems
+from campaign.studies.load_names import alias_warnings, system_index
 
+# What is being done, how far it is, and out of how much (None: nobody knows).
+Told = Callable[[str, int, int | None], None]
+
+_TOLD_EVERY = 100
 _LONGEST = {"notes": 2000, "note": 2000, "source": 400, "aliases": 2000}
 _WORDS: Mapping[str, Mapping[str, str]] = {
     "systems.state": {word: word for word in ("episodic", "persistent", "candidate", "retired")},
@@ -65,14 +64,6 @@ _DOMAINS: Mapping[str, tuple[float | None, float | None, bool, bool]] = {
     "a_au": (0.0, None, True, False),
     "a_arcsec": (0.0, None, True, False),
 }
-_ELEMENTS = {
-    "eccentricity": "eccentricity", "omega": "omega_deg", "inclination": "inclination_deg",
-    "node": "node_deg", "k_a": "k_a_kms", "k_b": "k_b_kms", "gamma": "gamma_kms", "a_au": "a_au",
-    "a_arcsec": "a_arcsec",
-}  # fmt: skip
-# Enters one row, appends what an observer should look at, and tells whether the row was new.
-_Enterer = Callable[[Writing, Mapping[str, Any], list[LoadWarning]], bool]
-_STAGES = ("onset", "maximum", "end")
 
 
 @dataclass(slots=True)
@@ -94,6 +85,7 @@ def load_knowledge(
     wanted: LoadWanted,
     understood: Understood,
     request: MappingRequest,
+    told: Told,
 ) -> Loaded:
     """Load systems, solutions or episodes from a table of somebody.
 
@@ -115,6 +107,8 @@ def load_knowledge(
         As shown.
     request : MappingRequest
         To be kept, if that is wanted.
+    told : callable
+        Gets what is being done, how far it is and out of how much.
 
     Returns
     -------
@@ -130,8 +124,8 @@ def load_knowledge(
     -----
     Accuracy: as the readers of single values. Source: project convention.
     """
-    rows = _Rows(mapping).read(table)
-    enter = _ENTERERS[mapping.kind]
+    rows = _Rows(mapping).read(table, lambda: told("reading", file.counter.bytes, file.size_bytes))
+    enter = ENTERERS[mapping.kind]
     opening = store.rehearsing if wanted.rehearse else store.writing
     added = known = 0
     operation_id: int | None = None
@@ -139,12 +133,14 @@ def load_knowledge(
     warnings: list[LoadWarning] = []
     try:
         with opening(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
-            for row in rows:
+            known_systems = KnownSystems(systems.list_systems(writing.connection, include_retired=True))
+            for number, row in enumerate(rows):
+                told("loading", number, len(rows))
                 if not row.bad:
-                    is_new = _tried(writing, row, enter, warnings)
+                    is_new = _tried(writing, row, enter, known_systems)
                     added += is_new is True
                     known += is_new is False
-            warnings += _aliases(writing, rows)
+            warnings += [*known_systems.told, *_aliases(writing, rows)]
             is_refused = any(row.bad for row in rows) and not wanted.skip_bad
             if is_refused:
                 raise _NothingKept
@@ -186,7 +182,7 @@ class _Rows:
         self._mapping = mapping
         self._fields = {field.name: field for field in FIELDS[mapping.kind]}
 
-    def read(self, table: ForeignTable) -> list[_Row]:
+    def read(self, table: ForeignTable, told: Callable[[], None]) -> list[_Row]:
         rows: list[_Row] = []
         for block in table.blocks:
             for misfit in block.misfits:
@@ -196,6 +192,8 @@ class _Rows:
                 bad = [BadCell(misfit.line, None, misfit.code, misfit.why, text)]
                 rows.append(_Row(misfit.line, misfit.cells, {}, bad))
             for place, line in enumerate(block.lines):
+                if place % _TOLD_EVERY == 0:
+                    told()
                 cells = tuple(column[place] for column in block.columns)
                 if any(map(str.strip, cells)):
                     rows.append(self._row(line, cells))
@@ -299,14 +297,14 @@ def _aliases(writing: Writing, rows: list[_Row]) -> list[LoadWarning]:
     return alias_warnings(index, known)
 
 
-def _tried(writing: Writing, row: _Row, enter: _Enterer, warnings: list[LoadWarning]) -> bool | None:
+def _tried(writing: Writing, row: _Row, enter: Enterer, known: KnownSystems) -> bool | None:
     """Whether the row was new; None when it was refused, and then nothing of it is left."""
     assert writing.operation_id
     changed = writing.changed
     savepoint = writing.connection.begin_nested()
-    told: list[LoadWarning] = []
+    before = len(known.told)
     try:
-        is_new = enter(writing, row.values, told)
+        is_new = enter(writing, row.values, known)
     except (CampaignError, DBAPIError) as refused:
         savepoint.rollback()
         writing.changed = changed
@@ -319,156 +317,5 @@ def _tried(writing: Writing, row: _Row, enter: _Enterer, warnings: list[LoadWarn
             row.bad.append(BadCell(row.line, None, "value-out-of-range", why, text))
         return None
     savepoint.commit()
-    warnings += [replace(each, lines=(row.line,)) for each in told]
+    known.told[before:] = [replace(each, lines=(row.line,)) for each in known.told[before:]]
     return is_new
-
-
-def _with_error(values: Mapping[str, Any], name: str) -> Any:
-    """A value with its error from the column beside it, if its cell has none."""
-    value, error = values.get(name), values.get(f"{name}_error")
-    if error is None or not isinstance(value, Measured):
-        return value
-    if value.minus is not None:
-        raise InputRefused(
-            f"The error of {name} is given twice.",
-            why="It stands in the cell of the value and in its own column.",
-            hint="Leave one of them out.",
-            code="error-twice",
-        )
-    return Measured(value.value, error.value, error.value)
-
-
-def _dated(values: Mapping[str, Any], name: str) -> TypedInstant | None:
-    """An instant with its error from the column beside it; no narrower than a day or month that it names."""
-    typed: TypedInstant | None = values.get(name)
-    error: Measured | None = values.get(f"{name}_error")
-    if typed is None or error is None:
-        return typed
-    floor = (typed.minus_d or 0.0) if typed.width_d else 0.0
-    size = max(error.value, floor)
-    return replace(typed, minus_d=size, plus_d=size, width_d=typed.width_d if size <= floor else 0.0)
-
-
-def _enter_system(writing: Writing, values: Mapping[str, Any], told: list[LoadWarning]) -> bool:
-    priority = values.get("priority", 3.0)
-    if priority not in range(1, 10):
-        raise InputRefused(
-            "The priority is refused.", why="It is a whole number from 1 to 9.", code="priority-refused"
-        )
-    aliases = tuple(name for part in values.get("aliases", "").split(";") if (name := part.strip()))
-    system = System(
-        id=0,
-        name=values["name"],
-        ra_deg=values["ra"],
-        dec_deg=values["dec"],
-        distance_pc=_with_error(values, "distance"),
-        parallax_mas=_with_error(values, "parallax"),
-        state=values.get("state", "episodic"),
-        priority=int(priority),
-        notes=values.get("notes", ""),
-        aliases=aliases,
-        star_a=Star("A", spectral_type=values.get("spectral_type_a")),
-        star_b=Star("B", spectral_type=values.get("spectral_type_b")),
-    )
-    wanted = name_key(system.name)
-    known = systems.list_systems(writing.connection, include_retired=True)
-    for there in known:
-        if name_key(there.name) == wanted:
-            if _says_nothing_new(system, there, values):
-                return False
-            raise Conflict(
-                f"The system {there.name!r} is known with other values.",
-                why="What is known is never changed by a load.",
-                hint=f'Change it with: campaign system change "{there.name}".',
-                code="known-otherwise",
-            )
-    systems.add_system(writing, system)
-    near = place_warning(system, known, 0)
-    told += [] if near is None else [near]
-    return True
-
-
-def _says_nothing_new(new: System, there: System, values: Mapping[str, Any]) -> bool:
-    """Whether everything that the row says is known of the system."""
-    pairs = {
-        "ra": ("ra_deg",), "dec": ("dec_deg",), "distance": ("distance_pc",), "parallax": ("parallax_mas",),
-        "state": ("state",), "priority": ("priority",), "notes": ("notes",),
-    }  # fmt: skip
-    alike = all(
-        getattr(new, field) == getattr(there, field)
-        for name, names in pairs.items()
-        if name in values
-        for field in names
-    )
-    names_there = {name_key(name) for name in there.aliases}
-    types = ((new.star_a, there.star_a), (new.star_b, there.star_b))
-    return (
-        alike
-        and all(name_key(name) in names_there for name in new.aliases)
-        and all(one.spectral_type in (None, other.spectral_type) for one, other in types)
-    )
-
-
-def _enter_solution(writing: Writing, values: Mapping[str, Any], told: list[LoadWarning]) -> bool:
-    elements: dict[str, Any] = {column: _with_error(values, name) for name, column in _ELEMENTS.items()}
-    if elements["omega_deg"] is not None and values.get("omega_of") is None:
-        raise InputRefused(
-            "The row does not say which star omega belongs to.",
-            why="omega of star A and omega of star B differ by 180 deg.",
-            hint="Add a column omega_of, or say it for all rows: --constant omega_of=A.",
-            code="omega-of-missing",
-        )
-    draft = Solution(
-        id=0,
-        system_id=0,
-        label=values.get("label", ""),
-        period_d=_with_error(values, "period"),
-        epoch_marks=values.get("epoch_marks", "periastron"),
-        omega_of=values.get("omega_of"),
-        source=values.get("source", ""),
-        note=values.get("note", ""),
-        **elements,
-    )
-    system = systems.find_system(writing.connection, values["system"])
-    epoch = _dated(values, "epoch")
-    moment = None if epoch is None else moment_of(epoch, system)
-    for there in solutions.solutions_of(writing.connection, system.id):
-        same = replace(
-            there, id=0, system_id=0, label=draft.label, adopted=False, weight=None, epoch=None,
-            epoch_cycle=None, published_cycle_offset=None, covariance=None, data_until_bmjd_tdb=None,
-        ) == draft  # fmt: skip
-        label_fits = not draft.label or name_key(draft.label) == name_key(there.label)
-        at, known_at = (None if m is None else m.bmjd_tdb for m in (moment, there.epoch))
-        if same and label_fits and at == known_at:
-            return False
-    enter_solution(writing, values["system"], draft, epoch, None, None, adopt=False)
-    return True
-
-
-def _enter_episode(writing: Writing, values: Mapping[str, Any], told: list[LoadWarning]) -> bool:
-    dates = {
-        stage: (typed, values.get("band"), values.get("method"))
-        for stage in _STAGES
-        if (typed := _dated(values, stage)) is not None
-    }
-    cycle = values.get("cycle")
-    if cycle is not None and cycle != int(cycle):
-        raise InputRefused("The cycle is refused.", why="It is a whole number.", code="cycle-refused")
-    draft = Episode(
-        id=0,
-        system_id=0,
-        cycle=None if cycle is None else int(cycle),
-        state=values.get("state", "confirmed"),
-        source=values.get("source", ""),
-        note=values.get("note", ""),
-    )
-    kept = enter_episode(writing, values["system"], draft, dates)
-    told += [LoadWarning("future", f"{values['system']}: {text}", 1) for text in kept.warnings]
-    return kept.changed
-
-
-_ENTERERS: Mapping[str, _Enterer] = {
-    "systems": _enter_system,
-    "solutions": _enter_solution,
-    "episodes": _enter_episode,
-}

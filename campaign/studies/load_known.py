@@ -85,6 +85,7 @@ def check_known(
     order = np.argsort(rows.system, kind="stable")
     edges = np.flatnonzero(np.diff(rows.system[order])) + 1
     details = _Details(columns)
+    done = 0
     for some in np.split(order, edges):
         place = int(rows.system[some[0]])
         time = columns.numbers["bmjd_tdb"][some]
@@ -99,16 +100,16 @@ def check_known(
             check.nearby[place] = known
             _mark_known(check, some, digests, known)
             _compare(check, some[~check.known[some]], rows, details, known, systems[place], own_operation)
-        told(len(some))
+        done += len(some)
+        told(done)
     return check
 
 
 def _repeated(digests: NDArray[np.uint64]) -> NDArray[np.bool_]:
     """Rows that are the same as an earlier one."""
     repeated = np.zeros(len(digests), dtype=np.bool_)
-    order = np.argsort(digests[:, 0], kind="stable")
-    first, second = digests[order, 0], digests[order, 1]
-    if not (first[1:] == first[:-1]).any():
+    ordered = np.sort(digests[:, 0].astype(np.uint64))
+    if not (ordered[1:] == ordered[:-1]).any():
         return repeated
     order = np.lexsort((digests[:, 1], digests[:, 0]))
     first, second = digests[order, 0], digests[order, 1]

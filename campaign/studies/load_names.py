@@ -138,36 +138,37 @@ def alias_warnings(names: NameIndex, systems: Sequence[System]) -> list[LoadWarn
     return [LoadWarning("alias", text) for text in found]
 
 
-def place_warning(new: System, known: Sequence[System], line: int) -> LoadWarning | None:
-    """Whether a new system stands where another one is known: the same under another name, it seems.
+class PlaceIndex:
+    """Systems by where they stand, to find one that is another under a second name.
 
-    Parameters
-    ----------
-    new : System
-        With its position, deg.
-    known : sequence of System
-        Of the catalogue before it.
-    line : int
-        Where it stood in the table.
-
-    Returns
-    -------
-    LoadWarning or None
-        For the nearest one within 5 arcsec.
-
-    Notes
-    -----
-    Accuracy: proper motion is left out, which is below 1 arcsec in 50 years for such distant stars. Source:
-    project convention.
+    Proper motion is left out, which is below 1 arcsec in 50 years for such distant stars.
     """
-    near = min(((_apart_arcsec(new, each), each.name) for each in known), default=None)
-    if near is None or near[0] > _SAME_PLACE_ARCSEC:
-        return None
-    text = (
-        f"'{new.name}' lies {near[0]:.1f} arcsec from '{near[1]}', which is known here: is it the same? Then "
-        f'take it back and say: campaign system change "{near[1]}" --alias "{new.name}"'
-    )
-    return LoadWarning("same-place", text, 1, (line,))
+
+    def __init__(self) -> None:
+        self._zones: dict[int, list[System]] = {}
+
+    def add(self, system: System) -> None:
+        """Count one more among the known."""
+        self._zones.setdefault(_zone(system), []).append(system)
+
+    def warning(self, new: System) -> LoadWarning | None:
+        """Words on the nearest known system within 5 arcsec of a new one."""
+        zone = _zone(new)
+        around = [each for near in (zone - 1, zone, zone + 1) for each in self._zones.get(near, ())]
+        nearest = min(((_apart_arcsec(new, each), each.name) for each in around), default=None)
+        if nearest is None or nearest[0] > _SAME_PLACE_ARCSEC:
+            return None
+        apart, name = nearest
+        text = (
+            f"'{new.name}' lies {apart:.1f} arcsec from '{name}', which is known here: is it the same? Then "
+            f'take it back and say: campaign system change "{name}" --alias "{new.name}"'
+        )
+        return LoadWarning("same-place", text, 1)
+
+
+def _zone(system: System) -> int:
+    """Number of the strip of declination, which is broader than what counts as one place."""
+    return math.floor(system.dec_deg * 3600.0 / (2.0 * _SAME_PLACE_ARCSEC))
 
 
 def _apart_arcsec(one: System, other: System) -> float:
