@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from typing import Any
 
+import numpy as np
 from sqlalchemy import Connection, Table, select
 
 from campaign.catalogue.guards import Cells, guarded_columns, insertion
@@ -93,3 +94,9 @@ def _looks_up_nothing(connection: Connection) -> bool:
     if connection.dialect.name != "sqlite":
         return False
     return not connection.exec_driver_sql("PRAGMA foreign_keys").scalar_one()
+
+
+def eight_digits(first: int, until: int) -> list[str]:
+    """The whole numbers from ``first`` to before ``until`` in hexadecimal."""
+    together = np.arange(first, until, dtype=np.uint32).astype(">u4").tobytes().hex()
+    return [together[at : at + 8] for at in range(0, len(together), 8)]

@@ -12,12 +12,13 @@ from numpy.typing import NDArray
 from sqlalchemy import Connection, and_, select
 
 from campaign.catalogue.converting import columns_of
-from campaign.catalogue.guards import Cells
+from campaign.catalogue.guards import Cells, Made
 from campaign.catalogue.observations import SAMENESS
 from campaign.catalogue.sources import source_id
 from campaign.catalogue.store import Writing
 from campaign.catalogue.tables import observations
 from campaign.model.columns import KnownRows, ObservationColumns, Words
+from campaign.model.ordering import by_group_and_time
 
 # How many rows go to the driver at once; Ctrl-C is heard between two blocks.
 _BLOCK_ROWS = 20_000
@@ -55,9 +56,10 @@ def digests_of(columns: ObservationColumns) -> NDArray[np.uint64]:
     """
     prefixes, group = _prefixes(columns)
     # What rows of a group have in common goes into the hash once; each row takes it up from there.
-    begun = [
-        blake2b(prefix.encode("utf-8", "backslashreplace"), digest_size=_DIGEST_BYTES) for prefix in prefixes
-    ]
+    begun = {
+        number: blake2b(prefix.encode("utf-8", "backslashreplace"), digest_size=_DIGEST_BYTES)
+        for number, prefix in prefixes.items()
+    }
     found = np.empty((columns.size, 2), dtype=">u8")
     for start in range(0, columns.size, _BLOCK_ROWS):
         part = slice(start, start + _BLOCK_ROWS)
@@ -72,33 +74,48 @@ def digests_of(columns: ObservationColumns) -> NDArray[np.uint64]:
 
 def _ends(columns: ObservationColumns, part: slice) -> Iterator[bytes]:
     """Value, position angle and time of some rows, as the digest has them."""
-    values = columns.numbers["value"][part].tolist()
+    numbers = columns.numbers["value"][part]
+    values = numbers.tolist()
     times = columns.numbers["bmjd_tdb"][part].tolist()
     if "position_angle_deg" not in columns.numbers:
+        different = set(values)
+        # Zero has two forms, which are equal.
+        if 0.0 not in different and len(different) < len(values) // 4:
+            text = {value: b"\x1f%r\x1fNone\x1f" % value for value in different}
+            return (b"%b%.8f" % (text[value], time) for value, time in zip(values, times, strict=True))
         return (b"\x1f%r\x1fNone\x1f%.8f" % pair for pair in zip(values, times, strict=True))
     angles = (None if isnan(each) else each for each in columns.numbers["position_angle_deg"][part].tolist())
     return (b"\x1f%r\x1f%r\x1f%.8f" % triple for triple in zip(values, angles, times, strict=True))
 
 
-def _prefixes(columns: ObservationColumns) -> tuple[list[str], NDArray[np.int64]]:
-    """The texts of the columns before the value, each different set of them once, and which one a row has."""
+def _prefixes(columns: ObservationColumns) -> tuple[dict[int, str], NDArray[np.int64]]:
+    """The texts of the columns before the value, each different set by a number, and which a row has."""
     group = np.zeros(columns.size, dtype=np.int64)
+    most = 0
     parts: list[Any] = []
     for name in _GROUPED:
         words, codes = _distinct(columns, name)
         parts.append((words, codes))
         if codes is not None:
             group = group * (len(words) + 1) + codes + 1
-            if group.size and int(group.max()) > _MOST_GROUPS:
+            most = (most + 1) * (len(words) + 1)
+            if most > _MOST_GROUPS:
                 group = np.unique(group, return_inverse=True)[1]
-    _, first, group = np.unique(group, return_index=True, return_inverse=True)
-    prefixes = []
-    for row in first.tolist():
+                most = columns.size
+    if most > 4 * columns.size:
+        group = np.unique(group, return_inverse=True)[1]
+        most = columns.size
+    # Any row of a group speaks for all of them.
+    speaker = np.full(most + 1, -1)
+    speaker[group] = np.arange(columns.size)
+    prefixes = {}
+    for number in np.flatnonzero(speaker >= 0).tolist():
+        row = int(speaker[number])
         values = [
             words[0] if codes is None else (words[codes[row]] if codes[row] >= 0 else None)
             for words, codes in parts
         ]
-        prefixes.append("\x1f".join(repr(_as_compared(value)) for value in values))
+        prefixes[number] = "\x1f".join(repr(_as_compared(value)) for value in values)
     return prefixes, group
 
 
@@ -212,12 +229,12 @@ def _in_order(
     if len(rows) < _SORTED_FROM:
         return rows
     time = columns.numbers["bmjd_tdb"][rows]
-    system = columns.wholes["system_id"][rows] if "system_id" in columns.wholes else np.zeros(len(rows))
-    ordered = rows[np.lexsort((time, system))]
-    firsts = digests[:, 0]
+    system = columns.wholes["system_id"][rows] if "system_id" in columns.wholes else np.zeros(len(rows), int)
+    ordered = rows[by_group_and_time(system, time)]
+    firsts = digests[:, 0].astype(np.uint64)
     for start in range(0, len(ordered), _ORDERED_ROWS):
         part = ordered[start : start + _ORDERED_ROWS]
-        ordered[start : start + _ORDERED_ROWS] = part[np.argsort(firsts[part], kind="stable")]
+        ordered[start : start + _ORDERED_ROWS] = part[np.argsort(firsts[part])]
     return ordered
 
 
@@ -236,7 +253,7 @@ def _blocks(
         part = rows[start : start + _BLOCK_ROWS]
         block: dict[str, Cells] = {}
         if "uid" not in columns.texts:
-            block["uid"] = writing.new_uids(len(part))
+            block["uid"] = Made(writing.new_uids(len(part)))
         made: dict[int, NDArray[np.float64]] = {}
         for name, numbers in columns.numbers.items():
             # Equal errors of both sides are one column, which is bound once.
@@ -256,7 +273,7 @@ def _blocks(
         for name, values in texts.items():
             block[name] = values[part].tolist()
         hexadecimal = digests[part].tobytes().hex()
-        block["sameness"] = [hexadecimal[at : at + 32] for at in range(0, len(hexadecimal), 32)]
+        block["sameness"] = Made(hexadecimal[at : at + 32] for at in range(0, len(hexadecimal), 32))
         yield block
     told(len(rows))
 

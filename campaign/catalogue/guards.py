@@ -32,6 +32,10 @@ _FLOATS, _WHOLES, _TEXTS = {float}, {int}, {str}
 Cells = Sequence[Any] | NDArray[Any] | Words
 
 
+class Made(list[Any]):
+    """Values that this program made just now, and which need no guard."""
+
+
 def guarded_column(column: Column[Any], values: Cells) -> Sequence[Any]:
     """``values`` as the driver may have them.
 
@@ -40,6 +44,8 @@ def guarded_column(column: Column[Any], values: Cells) -> Sequence[Any]:
     ValueRefused
         ``details["row"]`` is the place of the value that the column must not hold.
     """
+    if isinstance(values, Made):
+        return values
     if isinstance(values, Words):
         return _guarded_words(column, values)
     if isinstance(values, np.ndarray):

@@ -80,7 +80,11 @@ class Writing:
         first, self._uids_made = self._uids_made, self._uids_made + number
         if self._uids_made > 1 << 32:
             raise OverflowError("one operation makes at most 4294967296 rows")
-        return [f"{begin}{each:08x}" for each in range(first, self._uids_made)]
+        if number == 1:
+            return [f"{begin}{first:08x}"]
+        from campaign.catalogue.blocks import eight_digits
+
+        return [begin + digits for digits in eight_digits(first, self._uids_made)]
 
     def summarise(self, summary: str) -> None:
         """Say in one line what the operation did; the last word counts."""

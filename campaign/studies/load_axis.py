@@ -48,7 +48,7 @@ def on_axis(rows: CheckedRows, systems: Sequence[System], sites: Sequence[Site])
         geodetic = _geodetic(sites[site - 1]) if site > 0 and place == "observatory" else None
         counted_at = "geocentre" if place == "observatory" and geodetic is None else place
         # In order of time, so that instants of the same days are together.
-        some = some[np.argsort(rows.day[some], kind="stable")]
+        some = some[np.argsort(rows.day[some])]
         for start in range(0, len(some), _AT_ONCE):
             part = some[start : start + _AT_ONCE]
             system = rows.system[part]

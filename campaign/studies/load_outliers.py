@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from campaign.model.columns import ObservationColumns
+from campaign.model.ordering import by_group_and_time
 from campaign.studies.load_known import KnownCheck
 from campaign.studies.load_rows import CheckedRows
 
@@ -47,7 +48,7 @@ def outlying(rows: CheckedRows, columns: ObservationColumns, check: KnownCheck) 
     value = np.concatenate([columns.numbers["value"], known[1]])
     sigma = np.concatenate([error, known[2]])
     usable = np.flatnonzero(np.isfinite(sigma))
-    order = usable[np.lexsort((time[usable], group[usable]))]
+    order = usable[by_group_and_time(group[usable], time[usable])]
     t, m, s, g = time[order], value[order], sigma[order], group[order]
     # Distance to the neighbour `step` places on, in sigma; NaN where there is none near enough.
     after, after_too = _distances(t, m, s, g, 1), _distances(t, m, s, g, 2)

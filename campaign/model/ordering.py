@@ -1,0 +1,23 @@
+"""Orders of many rows."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+_FEW_GROUPS = 1 << 16
+
+
+def by_group_and_time(group: NDArray[Any], time: NDArray[np.float64]) -> NDArray[np.intp]:
+    """Places of rows group by group, in order of time within each, and as given where times are equal."""
+    order = np.argsort(time)
+    ordered = time[order]
+    if bool((ordered[1:] == ordered[:-1]).any()):
+        order = np.argsort(time, kind="stable")
+    # Small numbers are put in order without comparing them.
+    numbers = group
+    if group.size and int(group.max()) - (least := int(group.min())) < _FEW_GROUPS:
+        numbers = (group - least).astype(np.uint16)
+    return order[np.argsort(numbers[order], kind="stable")]
