@@ -8,9 +8,10 @@ from sqlalchemy import Connection
 
 from campaign.catalogue import involved, journal, observed, store, systems
 from campaign.catalogue.telling import Teller
-from campaign.errors import InputRefused, NotFound
+from campaign.errors import NotFound
 from campaign.model.history import EntryChange, History, Operation, ToldOperation
 from campaign.model.instants import TypedInstant
+from campaign.studies.instants import refuse_reversed
 
 _MJD_ZERO = datetime(1858, 11, 17, tzinfo=UTC)
 
@@ -58,14 +59,7 @@ def tell_history(
     -----
     Accuracy: entry times are those of the clock of whoever made the entry. Source: the catalogue.
     """
-    first, last = entry_time(since, latest=False), entry_time(until, latest=True)
-    if first is not None and last is not None and last < first:
-        raise InputRefused(
-            "The dates end before they begin.",
-            why="--until lies before --from, so that nothing could have been done in between.",
-            hint="For example --from 2030 --until 2031-06.",
-            code="span-refused",
-        )
+    refuse_reversed(since, until)
     with store.reading(db) as connection:
         subject = _subject(connection, about)
         numbers = subject.operations
@@ -76,8 +70,8 @@ def tell_history(
             connection,
             numbers,
             who=who,
-            since=first,
-            until=last,
+            since=entry_time(since, latest=False),
+            until=entry_time(until, latest=True),
             limit=None if limit is None else limit + 1,
         )
         more = limit is not None and len(found) > limit

@@ -6,6 +6,7 @@ from datetime import datetime
 
 import numpy as np
 
+from campaign.errors import InputRefused
 from campaign.model.instants import Moment, TypedInstant
 from campaign.model.systems import Site, System
 from campaign.physics.lighttime import to_barycentre
@@ -50,6 +51,7 @@ def moment_of(typed: TypedInstant, system: System, site: Site | None = None) -> 
 
 
 _MINUTE_D = 1.0 / 1440.0
+_TENTH_OF_A_SECOND_D = 0.1 / 86_400.0
 _MJD_OF_UNIX_EPOCH = 40_587.0
 
 
@@ -94,6 +96,38 @@ def axis_instant(typed: TypedInstant) -> float:
     """
     day, fraction = to_tdb(typed.mjd_day, typed.mjd_fraction, typed.scale)
     return float(day) + float(fraction)
+
+
+def refuse_reversed(since: TypedInstant | None, until: TypedInstant | None) -> None:
+    """Refuse dates between which nothing can lie; a day, month or year counts from its start to its end.
+
+    Parameters
+    ----------
+    since, until : TypedInstant or None
+        As asked; None is open.
+
+    Raises
+    ------
+    InputRefused
+        ``span-refused``.
+
+    Notes
+    -----
+    Accuracy: 0.1 s. Source: project convention.
+    """
+    if since is None or until is None:
+        return
+    first = axis_instant(since) - 0.5 * since.width_d
+    last = axis_instant(until) + 0.5 * until.width_d
+    # A year and the one before it share an instant, though no time.
+    shared_d = _TENTH_OF_A_SECOND_D if since.width_d or until.width_d else 0.0
+    if last < first + shared_d:
+        raise InputRefused(
+            "The dates end before they begin.",
+            why="--until lies before --from, so that nothing can be in between.",
+            hint="For example --from 2030 --until 2031-06.",
+            code="span-refused",
+        )
 
 
 def spoken_moment(moment: Moment) -> str:

@@ -8,13 +8,12 @@ from dataclasses import dataclass, replace
 from sqlalchemy import Connection
 
 from campaign.catalogue import listing, sites, store, systems
-from campaign.errors import InputRefused
 from campaign.model.bands import BandUse
 from campaign.model.history import ListedObservation, ObservationList
 from campaign.model.instants import TypedInstant
 from campaign.physics.timescales import utc_iso
 from campaign.studies.bands import band_warnings, mixed_bands
-from campaign.studies.instants import axis_instant
+from campaign.studies.instants import axis_instant, refuse_reversed
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,20 +113,13 @@ def filters_of(connection: Connection, wanted: Wanted) -> listing.Filters:
     -----
     Accuracy: dates without light time, up to 8.4 min. Source: project convention.
     """
-    since, until = _edge(wanted.since, -0.5), _edge(wanted.until, 0.5)
-    if since is not None and until is not None and until < since:
-        raise InputRefused(
-            "The dates end before they begin.",
-            why="--until lies before --from, so that no observation could pass.",
-            hint="For example --from 2030 --until 2031-06.",
-            code="span-refused",
-        )
+    refuse_reversed(wanted.since, wanted.until)
     return listing.Filters(
         system_id=None if wanted.system is None else systems.find_system(connection, wanted.system).id,
         kinds=wanted.kinds,
         bands=wanted.bands,
-        since_bmjd_tdb=since,
-        until_bmjd_tdb=until,
+        since_bmjd_tdb=_edge(wanted.since, -0.5),
+        until_bmjd_tdb=_edge(wanted.until, 0.5),
         site_id=None if wanted.site is None else sites.find_site(connection, wanted.site).id,
         source=wanted.source,
         qualities=wanted.qualities,

@@ -226,3 +226,30 @@ def test_every_kind_with_a_value_can_be_drawn(watched):
 
 def test_a_program_is_given_the_list_and_no_drawing(watched):
     assert numbers(watched("observations", "--draw", "--band", "J", "--json")) == [3]
+
+
+@pytest.mark.parametrize(
+    "words",
+    [
+        ("--from", "2021-04", "--until", "2021"),
+        ("--from", "2021", "--until", "2021"),
+        ("--from", "2021-04-07T03:12:10Z", "--until", "2021-04-07T03:12:10Z"),
+        ("--from", "2021-12-31", "--until", "2022"),
+    ],
+)
+def test_dates_that_touch_or_hold_each_other_may_be_asked(watched, words):
+    assert watched("observations", *words).status == 0
+
+
+@pytest.mark.parametrize(
+    "words",
+    [
+        ("--from", "2022", "--until", "2021"),
+        ("--from", "2021-05-02", "--until", "2021-05-01"),
+        ("--from", "2022-01-01T00:00:01Z", "--until", "2021"),
+        ("--from", "2021-04-07T03:12:10Z", "--until", "2021-04-07T03:12:09Z"),
+    ],
+)
+def test_dates_with_nothing_between_are_refused(watched, words):
+    assert watched("observations", *words, "--json").error["code"] == "span-refused"
+    assert watched("history", *words, "--json").error["code"] == "span-refused"
