@@ -6,12 +6,8 @@ from __future__ import annotations
 import gzip
 import io
 import json
-import os
-import signal
 import sqlite3
-import subprocess
 import sys
-import time
 import unicodedata
 
 import pytest
@@ -211,38 +207,4 @@ def test_markup_in_a_note_is_kept_as_it_stands(kept, table, own_database):
         assert (
             connection.execute("SELECT text FROM observations").fetchone()[0] == "[red]moon[/red] :warning:"
         )
-    connection.close()
-
-
-def large(path, rows):
-    with open(path, "w") as file:
-        file.write(HEAD)
-        for number in range(rows):
-            file.write(f"Lantern 3,{2450000 + number * 0.01:.4f},K,{7.3 + number % 10 * 0.01:.2f},0.03\n")
-
-
-@pytest.mark.parametrize("sign", [signal.SIGINT, signal.SIGKILL], ids=["ctrl-c", "kill -9"])
-def test_a_load_that_is_stopped_leaves_nothing(kept, own_database, tmp_path, sign):
-    large(tmp_path / "large.csv", 120_000)
-    line = [sys.executable, "-m", "campaign", "load", str(tmp_path / "large.csv")]
-    journal = f"{own_database}-journal"
-    with subprocess.Popen(line, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True) as process:
-        until = time.monotonic() + 60.0
-        # The journal lies there from the first change to the commit: the stop lands within the write.
-        while not os.path.exists(journal) and process.poll() is None and time.monotonic() < until:
-            time.sleep(0.001)
-        process.send_signal(sign)
-        out, err = process.communicate(timeout=60)
-    assert out == ""
-    if sign == signal.SIGINT:
-        assert process.returncode == 130
-        assert "Interrupted: nothing was loaded" in err
-        assert not os.path.exists(journal)
-    else:
-        assert process.returncode == -signal.SIGKILL
-    assert kept("observations").status == 0
-    assert count(own_database) == 0
-    with sqlite3.connect(own_database) as connection:
-        assert connection.execute("PRAGMA integrity_check").fetchone()[0] == "ok"
-        assert connection.execute("SELECT count(*) FROM operations").fetchone()[0] == 2
     connection.close()
