@@ -67,6 +67,7 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
     _command("upcoming", "The episodes to come: when, how sure, and why.", "Look ahead"),
     _command("ephemeris", "Phase, true anomaly, separation, position and velocities, dated.", "Look ahead"),
     _command("winds", "Where two winds collide, how hot, and what you look through.", "Look ahead"),
+    _command("dust", "Where dust condenses, how hot it is, and what its light weighs.", "Look ahead"),
     _group(
         "log", "Log one observation from the terminal.", "Observe",
         ("photometry", "Log magnitudes, in one band or in several."),

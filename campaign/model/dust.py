@@ -122,6 +122,7 @@ class BandExcess:
     """One band near a date: what was seen, what the stars give, and what is left for the dust.
 
     ``dust_jy`` is the bound where ``use`` is no measurement. A band that is not fitted says why.
+    ``zero_point_error_assumed`` is the share that stands in for an error of the zero point that nobody told.
     """
 
     band: str
@@ -142,6 +143,7 @@ class BandExcess:
     kappa_cm2_g: float | None
     fitted: bool
     reason: str = ""
+    zero_point_error_assumed: float | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -125,6 +125,12 @@ FAMILIES: Mapping[str, UnitFamily] = {
     "um": _family("um", (2.2, 0.1), (1.0, "um|μm|micron|microns"), (1e-3, "nm"), (1e-4, "Å|A|AA|angstrom")),
     "ghz": _family("GHz", (8.4, 0.1), (1.0, "GHz"), (1e-3, "MHz"), (1e3, "THz"), (1e-9, "Hz")),
     "kev": _family("keV", (2.0, 0.1), (1.0, "keV"), (1e-3, "eV"), (1e3, "MeV")),
+    "cm2/g": _family(
+        "cm2/g", (1000.0, 300.0), (1.0, "cm2/g|cm^2/g|cm2 g-1|cm²/g"), (10.0, "m2/kg|m^2/kg|m2 kg-1|m²/kg"),
+    ),
+    "g/cm3": _family(
+        "g/cm3", (1.8, 0.2), (1.0, "g/cm3|g/cm^3|g cm-3|g/cm³"), (1e-3, "kg/m3|kg/m^3|kg m-3|kg/m³"),
+    ),
     "m": _family("m", (2400.0, 10.0), (1.0, "m|metre|metres"), (1e3, "km"), (0.3048, "ft")),
 }  # fmt: skip
 

@@ -16,11 +16,12 @@ from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
 from campaign.model.systems import Solution
 from campaign.physics.timescales import utc_iso
+from campaign.studies.bands import photometric_system_key
 from campaign.studies.dust_excess import Sky, excesses
 from campaign.studies.dust_inputs import DustInputs, gather
 from campaign.studies.dust_measured import Fitted, measure
 from campaign.studies.dust_physics import grains_in_light
-from campaign.studies.dust_points import Levels, LightPoints, light_points
+from campaign.studies.dust_points import FLUXES, Levels, LightPoints, light_points
 from campaign.studies.dust_through import MOST_EPOCHS, epochs_of, production_rates
 from campaign.studies.instants import axis_instant
 from campaign.studies.judging import confirmed_spans
@@ -137,9 +138,32 @@ def tell_dust(
     else:
         arrays = campaign.photometry.get(record.system.id)
         result = _measured(result, inputs, overrides, question, arrays, fluxes)
-        assumptions += _MEASURED_NOTES
+        assumptions += [*_zero_point_notes(result), *_MEASURED_NOTES]
     notes = dict.fromkeys([*inputs.notes, *assumptions])
     return replace(result, inputs=inputs.used_inputs(), assumptions=tuple(notes))
+
+
+def _zero_point_notes(result: DustResult) -> list[str]:
+    """Whose zero points stand in for whose, and which errors of them are assumed."""
+    epochs = [result.measured] if result.measured is not None else []
+    epochs += result.through.epochs if result.through is not None else ()
+    bands = [band for epoch in epochs for band in epoch.bands if band.zero_points]
+    notes, stand_ins = [], dict[str, list[str]]()
+    for band in bands:
+        stated, used = band.photometric_system, band.zero_points
+        if stated != FLUXES and photometric_system_key(stated) != photometric_system_key(used):
+            whose = f"'{stated}'" if stated else "magnitudes of no stated photometric system"
+            if whose not in stand_ins.setdefault(used, []):
+                stand_ins[used].append(whose)
+    for used, whom in stand_ins.items():
+        notes.append(
+            f"zero points {'' if used == 'as given' else 'of '}{used} stand in for {', '.join(whom)}"
+        )
+    assumed = {band.zero_point_error_assumed or 0.0 for band in bands} - {0.0}
+    if assumed:
+        shares = " or ".join(f"{100.0 * share:.0f} %" for share in sorted(assumed))
+        notes.append(f"where a zero point has no known error, {shares} are assumed")
+    return notes
 
 
 _PHYSICS_NOTES = (

@@ -159,7 +159,7 @@ def _measured(
         band, system, zero.name, "measured", int(used.size), _sources(points, used),
         float(weight @ points.bmjd_tdb[used]), zero.wavelength_um, float(weight @ flux.flux_jy), stars, mean,
         sigma, common, significance, mean / stars if stars > 0.0 else None,
-        _kappa(sky.opacity, zero), fitted, "; ".join([*why, *reasons]),
+        _kappa(sky.opacity, zero), fitted, "; ".join([*why, *reasons]), _assumed(zero),
     )  # fmt: skip
 
 
@@ -183,6 +183,10 @@ def _common(points: LightPoints, used: Places, weighted: FloatArray) -> float:
     for value, i in zip(weighted.tolist(), used.tolist(), strict=True):
         sums[points.series[i]] = sums.get(points.series[i], 0.0) + value
     return float(np.sqrt(sum(value**2 for value in sums.values())))
+
+
+def _assumed(zero: Zero) -> float | None:
+    return zero.relative_error if zero.assumed_error else None
 
 
 def _kappa(opacity: Opacity, zero: Zero) -> float | None:
@@ -220,5 +224,5 @@ def _limit(
         band, system, zero.name, _use_of(points, one), int(used.size), _sources(points, one),
         float(points.bmjd_tdb[one[0]]), zero.wavelength_um, total, star, left, sigma,
         float(np.hypot(level_error, zero.relative_error * total)), None, None,
-        _kappa(sky.opacity, zero), fitted, reason,
+        _kappa(sky.opacity, zero), fitted, reason, _assumed(zero),
     )  # fmt: skip

@@ -59,7 +59,7 @@ class DustInputs:
     notes: list[str] = field(default_factory=list)
     used: set[str] = field(default_factory=set)
     # Critical separation for a dust rule, if there is one.
-    critical_separation_au: Measured | None = None
+    critical_separation_au: Measured | Range | None = None
 
     def has(self, *keys: str) -> bool:
         return all(key in self.values for key in keys)
@@ -208,7 +208,7 @@ def _put_separation(found: DustInputs, solution: Solution | None) -> None:
     """The separation when dust begins: that of the rule, else the smallest one."""
     rule = found.record.rule
     given = found.told.get("separation_au")
-    if given is not None and isinstance(given.value, Measured):
+    if given is not None:
         found.critical_separation_au = given.value
     elif rule is not None and rule.critical_separation_au is not None:
         found.critical_separation_au = rule.critical_separation_au
@@ -263,7 +263,7 @@ def _put_opacity_error(found: DustInputs, asked: DustOpacity) -> None:
         origin = "option"
     else:
         size, origin = found.opacity.sigma_ln, "assumed"
-    note = "between published carbons" if origin == "assumed" else ""
+    note = "as a factor; between published carbons" if origin == "assumed" else "as a factor"
     found.put("opacity_factor", Measured(1.0, *_factor(size)), origin, note)
 
 

@@ -265,14 +265,14 @@ def rule_line(inputs: DustInputs, travel_au: Propagated) -> str | None:
     -----
     Accuracy: three digits. Source: the form that ``campaign rule set`` reads.
     """
-    critical = inputs.critical_separation_au
-    flow = inputs.told["flow_speed_kms"].value
-    if critical is None or not isinstance(flow, Measured):
+    flow = _as_measured(inputs.told["flow_speed_kms"].value)
+    if inputs.critical_separation_au is None:
         inputs.notes.append(
             "a rule 'separation' needs the separation below which dust is made: give --separation to have "
             "the line that sets it"
         )
         return None
+    critical = _as_measured(inputs.critical_separation_au)
     if travel_au.lo68 is None or travel_au.hi68 is None or travel_au.median is None:
         way = Measured(travel_au.value or 0.0)
     else:
@@ -298,6 +298,14 @@ def _kept_of(rule: DustRule | None) -> list[str]:
         if scatter is not None:
             words += [f"--scatter-{stage}", f"{scatter:g} d"]
     return words
+
+
+def _as_measured(value: Measured | Range) -> Measured:
+    """A range as its middle and standard deviation, for what reads no range."""
+    if isinstance(value, Measured):
+        return value
+    spread = (value.high - value.low) / float(np.sqrt(12.0))
+    return Measured(0.5 * (value.low + value.high), spread, spread)
 
 
 def _typed(value: Measured) -> str:
