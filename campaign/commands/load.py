@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+import signal
 import sys
+import threading
 import time
-from typing import TYPE_CHECKING, Annotated, Any
+from types import FrameType
+from typing import TYPE_CHECKING, Annotated, Any, Self
 
 import typer
 
@@ -86,14 +89,22 @@ def load(
         if not (json or quiet):
             output.render_understood(screen, understood)
 
+    late = _LateInterrupts()
     try:
-        with Progress(screen, time.monotonic, quiet=quiet) as progress:
+        with late, Progress(screen, time.monotonic, quiet=quiet) as progress:
+
+            def told(stage: str, done: int, total: int | None) -> None:
+                progress.told(stage, done, total)
+                late.watch(stage)
+
             standard_input = None if sys.stdin is None else sys.stdin.buffer
             place, stamp = common.database(db), common.stamp(observer)
-            loaded = study.load_table(place, stamp, path, standard_input, wanted, shown, progress.told)
+            loaded = study.load_table(place, stamp, path, standard_input, wanted, shown, told)
     except KeyboardInterrupt:
         common.tell("Interrupted: nothing was loaded, and nothing was left behind.", quiet=quiet)
         raise
+    if late.came and not dry_run:
+        common.tell("The interrupt came too late to keep anything out.", quiet=quiet)
     loaded = _with_rejects(loaded, rejects)
     if loaded.is_refused:
         if not (json or quiet):
@@ -106,6 +117,31 @@ def load(
         _report(loaded, quiet=quiet)
     if loaded.bad_rows:
         raise typer.Exit(_EXIT_BAD_ROWS)
+
+
+class _LateInterrupts:
+    """Keeps Ctrl-C from an end that is under way, so that what is said of the load stays true."""
+
+    def __init__(self) -> None:
+        self.came = False
+        self._before: Any = None
+
+    def __enter__(self) -> Self:
+        return self
+
+    def __exit__(self, *problem: object) -> None:
+        if self._before is not None:
+            signal.signal(signal.SIGINT, self._before)
+
+    def watch(self, stage: str) -> None:
+        """From the last stage on an interrupt is noted and stops nothing."""
+        from campaign.model.loading import FINISHING
+
+        if stage == FINISHING and threading.current_thread() is threading.main_thread():
+            self._before = signal.signal(signal.SIGINT, self._note)
+
+    def _note(self, number: int, frame: FrameType | None) -> None:
+        self.came = True
 
 
 def _path(file: str | None) -> str:

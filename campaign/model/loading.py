@@ -16,6 +16,8 @@ LOAD_KINDS: tuple[LoadKind, ...] = (
     "photometry", "velocity", "position", "shell", "line", "flux", "systems", "solutions", "episodes",
 )  # fmt: skip
 KNOWLEDGE_KINDS: tuple[LoadKind, ...] = ("systems", "solutions", "episodes")
+# The stage of a load from which on it is in the catalogue, or fails; no interrupt takes it back.
+FINISHING = "finishing"
 # How much of a refused cell is kept for the report.
 SHOWN_TEXT = 200
 

@@ -16,6 +16,7 @@ from campaign.errors import Conflict, InputRefused, UsageRefused
 from campaign.model.columns import ObservationColumns
 from campaign.model.kept import Stamp
 from campaign.model.loading import (
+    FINISHING,
     KNOWLEDGE_KINDS,
     ForeignTable,
     Loaded,
@@ -70,7 +71,8 @@ def load_table(
     shown : callable
         Gets what was understood of the table before anything is written.
     told : callable
-        Gets what is being done, how far it is and out of how much.
+        Gets what is being done, how far it is and out of how much; ``FINISHING`` comes last, before what was
+        entered is committed.
 
     Returns
     -------
@@ -275,6 +277,7 @@ class _Entry:
             if added
             else f"kept the mapping {quoted(self._wanted.keep_mapping or '')}"
         )
+        self._told(FINISHING, 0, None)
         return replace(
             result,
             added=added,

@@ -14,6 +14,7 @@ from campaign.errors import CampaignError, UsageRefused
 from campaign.model.exported import ExchangeForm, ExchangeRow, ExchangeTable
 from campaign.model.kept import Stamp
 from campaign.model.loading import (
+    FINISHING,
     SHOWN_TEXT,
     BadCell,
     LoadConflict,
@@ -130,6 +131,7 @@ def load_exchanged(
                 raise _NothingKept
             writing.summarise(f"loaded {tally.added} {table.kind} from {quoted(file.name)}")
             operation_id = writing.operation_id if writing.changed and not wanted.rehearse else None
+            told(FINISHING, 0, None)
     except _NothingKept:
         pass
     return Loaded(

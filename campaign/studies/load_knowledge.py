@@ -14,6 +14,7 @@ from campaign.errors import CampaignError, InputRefused
 from campaign.model.instants import TypedInstant
 from campaign.model.kept import Stamp
 from campaign.model.loading import (
+    FINISHING,
     SHOWN_TEXT,
     BadCell,
     ColumnUse,
@@ -148,6 +149,7 @@ def load_knowledge(
                 mappings.keep_mapping(writing, wanted.keep_mapping, mapping.kind, request)
             writing.summarise(f"loaded {added} {mapping.kind} from {quoted(file.name)}")
             operation_id = writing.operation_id if writing.changed and not wanted.rehearse else None
+            told(FINISHING, 0, None)
     except _NothingKept:
         pass
     bad_rows = [row for row in rows if row.bad]

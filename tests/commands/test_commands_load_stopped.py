@@ -158,6 +158,30 @@ def test_stopped_within_a_table_that_was_exported(kept, unchanged, stopped_at, o
     unchanged("table.csv", "other.db", "out.csv")
 
 
+def test_an_interrupt_during_the_commit_stops_nothing_and_is_told_the_truth(
+    kept, own_database, tmp_path, monkeypatch
+):
+    from sqlalchemy import Connection
+
+    commit = Connection.commit
+
+    def slow_commit(self):
+        os.kill(os.getpid(), signal.SIGINT)
+        commit(self)
+
+    (tmp_path / "table.csv").write_text(HEAD + lines(5))
+    monkeypatch.setattr(Connection, "commit", slow_commit)
+    before = signal.getsignal(signal.SIGINT)
+    ran = kept("load", str(tmp_path / "table.csv"))
+    assert ran.status == 0
+    assert "added 5" in ran.out
+    assert "too late" in ran.err
+    assert "nothing was loaded" not in ran.err
+    assert signal.getsignal(signal.SIGINT) is before
+    with contextlib.closing(sqlite3.connect(own_database)) as connection:
+        assert connection.execute("SELECT count(*) FROM observations").fetchone()[0] == 5
+
+
 def test_a_quiet_load_that_is_stopped_says_nothing(kept, unchanged, stopped_at, tmp_path):
     (tmp_path / "table.csv").write_text(HEAD + lines(5))
     stopped_at("writing")
