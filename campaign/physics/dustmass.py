@@ -7,7 +7,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from campaign.physics.constants import AU_KM, PARSEC_AU, SOLAR_MASS_KG
 from campaign.physics.domain import positive
-from campaign.physics.planck import log_planck_slope, planck_jy_sr
+from campaign.physics.planck import log_planck_slope, planck_exponent, planck_jy_sr
 
 FloatArray = NDArray[np.float64]
 
@@ -15,7 +15,8 @@ _PC_M = PARSEC_AU * AU_KM * 1e3
 # (1 pc)^2 / (1 cm^2/g) in solar masses.
 _MASS_UNIT_MSUN = _PC_M**2 / 0.1 / SOLAR_MASS_KG
 COOLEST_K, HOTTEST_K = 3.0, 1e6
-_STEPS = 60
+# Halvings of the range of ln T, to 3e-3, and Newton steps from there, to the rounding.
+_HALVINGS, _NEWTON_STEPS = 12, 4
 
 
 def dust_mass_msun(
@@ -200,14 +201,19 @@ def colour_temperature_k(
         wanted = np.where(ratio > 0.0, np.log(ratio), np.nan)
     if wavelength_1_um > wavelength_2_um:
         wanted = -wanted
-    # The ratio of a shorter to a longer wavelength rises with T; bisect and polish in ln T.
+    # The ratio of a shorter to a longer wavelength rises with T: halve the range of ln T, then Newton.
+    ends = (float(planck_exponent(short, 1.0)), float(planck_exponent(long, 1.0)))
     low, high = np.full(wanted.shape, np.log(COOLEST_K)), np.full(wanted.shape, np.log(HOTTEST_K))
-    outside = ~((wanted > _log_ratio(low, short, long)) & (wanted < _log_ratio(high, short, long)))
-    for _ in range(_STEPS):
+    outside = ~((wanted > _log_ratio(low, *ends)[0]) & (wanted < _log_ratio(high, *ends)[0]))
+    for _ in range(_HALVINGS):
         middle = 0.5 * (low + high)
-        below = _log_ratio(middle, short, long) < wanted
+        below = _log_ratio(middle, *ends)[0] < wanted
         low, high = np.where(below, middle, low), np.where(below, high, middle)
-    return np.where(outside, np.nan, np.exp(0.5 * (low + high)))
+    log_t = 0.5 * (low + high)
+    for _ in range(_NEWTON_STEPS):
+        found, slope = _log_ratio(log_t, *ends)
+        log_t = np.clip(log_t + (wanted - found) / slope, low, high)
+    return np.where(outside, np.nan, np.exp(log_t))
 
 
 def colour_temperature_slope(
@@ -249,12 +255,11 @@ def colour_temperature_slope(
     return np.asarray(1.0 / difference)
 
 
-def _log_ratio(log_temperature: FloatArray, short_um: float, long_um: float) -> FloatArray:
-    """ln B(short)/B(long) without overflow where both are nothing."""
-    from campaign.physics.planck import planck_exponent
-
-    temperature = np.exp(log_temperature)
-    x_short, x_long = planck_exponent(short_um, temperature), planck_exponent(long_um, temperature)
+def _log_ratio(log_temperature: FloatArray, short: float, long: float) -> tuple[FloatArray, FloatArray]:
+    """ln B(short)/B(long) and its slope with ln T, from h c/(lambda k) of both in K, without overflow."""
+    cold = np.exp(-log_temperature)
+    x, y = short * cold, long * cold
     # ln(e^x - 1) = x + ln(1 - e^-x).
-    logs = (x_long + np.log(-np.expm1(-x_long))) - (x_short + np.log(-np.expm1(-x_short)))
-    return np.asarray(3.0 * np.log(long_um / short_um) + logs)
+    less_x, less_y = -np.expm1(-x), -np.expm1(-y)
+    logs = 3.0 * np.log(short / long) + (y + np.log(less_y)) - (x + np.log(less_x))
+    return logs, x / less_x - y / less_y

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 from itertools import combinations
 
 import numpy as np
@@ -24,7 +25,7 @@ from campaign.physics.dustfit import (
     upper_amount,
 )
 from campaign.physics.dustmass import blackbody_radius_au, colour_temperature_k, dust_flux_jy
-from campaign.physics.opacity import OPACITIES, dust_luminosity_lsun, opacity_cm2_g, reaches
+from campaign.physics.opacity import OPACITIES, Opacity, dust_luminosity_lsun, opacity_cm2_g, reaches
 from campaign.physics.timescales import utc_iso
 from campaign.studies.dust_excess import SEEN_SIGMA, Sky
 from campaign.studies.dust_inputs import DustInputs, with_keys
@@ -228,12 +229,18 @@ class _Results:
         return self._propagate(light, (*self._keys, "distance_pc"))
 
 
+@lru_cache(maxsize=8)
+def _light_of(opacity: Opacity) -> tuple[FloatArray, FloatArray]:
+    """Logarithms of the temperature and of the light of one Msun in Lsun, tabulated once an opacity."""
+    logs = np.linspace(np.log(20.0), np.log(HOTTEST_DUST_K), 400)
+    return logs, np.log(dust_luminosity_lsun(1.0, np.exp(logs), opacity))
+
+
 class _LightPerMass:
-    """Lsun of one Msun of dust against temperature, tabulated once."""
+    """Lsun of one Msun of dust against temperature."""
 
     def __init__(self, inputs: DustInputs) -> None:
-        self._log_t = np.linspace(np.log(20.0), np.log(HOTTEST_DUST_K), 400)
-        self._log_l = np.log(dust_luminosity_lsun(1.0, np.exp(self._log_t), inputs.opacity))
+        self._log_t, self._log_l = _light_of(inputs.opacity)
 
     def __call__(self, temperature_k: FloatArray) -> FloatArray:
         return np.exp(np.interp(np.log(temperature_k), self._log_t, self._log_l))
