@@ -24,9 +24,7 @@ def frame_of(table: OutgoingTable) -> pd.DataFrame:
     columns: list[tuple[Any, ...]] = list(zip(*table.rows, strict=True)) or [() for _ in table.columns]
     frame = pd.DataFrame(
         {
-            column.name: pd.array(_known(cells), dtype=_DTYPES[column.type])
-            if column.type != "number"
-            else pd.Series(cells, dtype="float64")
+            column.name: _array(cells, column.type)
             for column, cells in zip(table.columns, columns, strict=True)
         }
     )
@@ -43,6 +41,14 @@ def frame_of(table: OutgoingTable) -> pd.DataFrame:
     return frame
 
 
-def _known(cells: tuple[Any, ...]) -> list[Any]:
-    """Cells in which an empty text is as unknown as one that was never given."""
-    return [None if cell == "" else cell for cell in cells]
+def _array(cells: tuple[Any, ...], kind: str) -> Any:
+    """One column; an empty text is as unknown as one that was never given."""
+    import numpy as np
+    import pandas as pd
+
+    if kind == "number":
+        return np.array(cells, dtype=np.float64)
+    if cells and not any(cells) and set(cells) <= {None, ""}:
+        # Most columns of a light curve are empty from end to end.
+        return pd.array([None], dtype=_DTYPES[kind]).repeat(len(cells))
+    return pd.array([None if cell == "" else cell for cell in cells], dtype=_DTYPES[kind])
