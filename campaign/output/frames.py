@@ -43,11 +43,10 @@ def frame_of(table: OutgoingTable) -> pd.DataFrame:
 
 def _array(cells: tuple[Any, ...], kind: str) -> Any:
     """One column; an empty text is as unknown as one that was never given."""
-    import numpy as np
     import pandas as pd
 
     if kind == "number":
-        return np.array(cells, dtype=np.float64)
+        return pd.Series(cells, dtype="float64").to_numpy()
     if cells and not any(cells) and set(cells) <= {None, ""}:
         # Most columns of a light curve are empty from end to end.
         return pd.array([None], dtype=_DTYPES[kind]).repeat(len(cells))
