@@ -102,6 +102,23 @@ def add_observations(writing: Writing, entries: Sequence[Observation]) -> tuple[
     return len(fresh), len(rows) - len(fresh)
 
 
+def add_past_observation(
+    writing: Writing, observation: Observation, *, superseded_by_id: int | None, why: str | None
+) -> int:
+    """Enter an observation that went out of use in another catalogue; here it never counts.
+
+    The caller made sure that its ``uid`` is new. Without a successor it counts as withdrawn, for ``why``.
+    """
+    numbers = _Numbers(writing)
+    row = _row(writing, observation, numbers) | {"sameness": None, "withdrawn_why": why or None}
+    row["source_id"] = numbers.source(observation.source)
+    if superseded_by_id is None:
+        row["withdrawn_at"] = writing.at
+    else:
+        row |= {"superseded_by_id": superseded_by_id, "superseded_at": writing.at}
+    return writing.insert(observations, {**row, "operation_id": writing.operation_id})
+
+
 def supersede_observation(writing: Writing, observation_id: int, observation: Observation) -> int:
     """Put a corrected observation in the place of another, which stays in the catalogue.
 

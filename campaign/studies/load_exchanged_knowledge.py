@@ -215,31 +215,41 @@ def enter_episodes(writing: Writing, rows: Iterable[ExchangeRow], tally: Tally) 
     Accuracy: exact. Source: project convention.
     """
     index, known_systems = _index(writing)
-    there: dict[int, list[Episode]] = {}
+    there: dict[tuple[int, bool], list[Episode]] = {}
     for row in rows:
         try:
             exchanged = episode_from_row(row.cells)
             system = known_systems[index.read(exchanged.system)]
-            if exchanged.withdrawn:
-                raise InputRefused(
-                    "The episode is marked as withdrawn.",
-                    why="Only what is in use is loaded.",
-                    code="out-of-use",
-                )
         except InputRefused as refused:
             tally.refuse_for(row, refused)
             continue
         draft = replace(exchanged.episode, system_id=system.id)
-        if system.id not in there:
-            there[system.id] = list(episodes.episodes_of(writing.connection, system.id))
-        same = next((each for each in there[system.id] if replace(draft, id=each.id) == each), None)
+        group = system.id, exchanged.withdrawn
+        if group not in there:
+            there[group] = _episodes_there(writing, *group)
+        same = next((each for each in there[group] if replace(draft, id=each.id) == each), None)
         if same is not None:
             # Each of those there stands for one row: a table may hold two that are alike.
-            there[system.id].remove(same)
+            there[group].remove(same)
             tally.already_known += 1
-        elif attempted(writing, tally, row, lambda new=draft: episodes.add_episode(writing, new)):  # type: ignore[misc, arg-type]
+        elif attempted(
+            writing, tally, row,
+            lambda new=draft, gone=exchanged.withdrawn: _enter_episode(writing, new, gone),  # type: ignore[misc]
+        ):  # fmt: skip
             tally.added += 1
     tally.warnings += alias_warnings(index, known_systems)
+
+
+def _episodes_there(writing: Writing, system_id: int, withdrawn: bool) -> list[Episode]:
+    if withdrawn:
+        return list(episodes.load_withdrawn_episodes(writing.connection, {system_id}).get(system_id, ()))
+    return list(episodes.episodes_of(writing.connection, system_id))
+
+
+def _enter_episode(writing: Writing, episode: Episode, withdrawn: bool) -> None:
+    number = episodes.add_episode(writing, episode)
+    if withdrawn:
+        episodes.withdraw_episode(writing, number)
 
 
 def _index(writing: Writing) -> tuple[NameIndex, list[System]]:

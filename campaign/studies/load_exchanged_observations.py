@@ -20,6 +20,7 @@ from campaign.model.observations import Observation
 from campaign.model.systems import Site, System
 from campaign.reading.exchange_models import observation_from_row
 from campaign.studies.load_exchanged import Tally, attempted
+from campaign.studies.load_exchanged_past import Past, enter_past
 from campaign.studies.load_known import check_known
 from campaign.studies.load_names import NameIndex, alias_warnings, site_index, system_index
 from campaign.studies.load_objects import checked_objects, columns_of_objects
@@ -60,6 +61,7 @@ def enter_observations(
     source = iter(rows)
     while batch := list(islice(source, _BATCH_ROWS)):
         entry.enter([good for row in batch if (good := entry.read(row)) is not None])
+    enter_past(writing, tally, entry.past)
     tally.warnings += alias_warnings(entry.systems_called, known_systems)
 
 
@@ -76,23 +78,23 @@ class _Entry:
         self.systems_called: NameIndex = system_index(known_systems)
         self._site_index: NameIndex = site_index(known_sites)
         self._moved: set[int] = set()
+        self.past: list[Past] = []
 
     def read(self, row: ExchangeRow) -> _Good | None:
-        """The observation of a row, with the numbers of its system and site."""
+        """The observation of a row, with the numbers of its system and site; None when it is put aside."""
         try:
             exchanged = observation_from_row(row.cells)
-            if exchanged.out_of_use is not None:
-                raise InputRefused(
-                    f"The observation is marked as {exchanged.out_of_use}.",
-                    why="Only what is in use is loaded.",
-                    code="out-of-use",
-                )
             place = self.systems_called.read(exchanged.system)
             site_id = self._site_id(exchanged)
         except InputRefused as refused:
             self._tally.refuse_for(row, refused)
             return None
-        return row, replace(exchanged.observation, system_id=self._systems[place].id, site_id=site_id), place
+        observation = replace(exchanged.observation, system_id=self._systems[place].id, site_id=site_id)
+        if exchanged.out_of_use is not None:
+            # What took its place may stand further down.
+            self.past.append((row, exchanged, observation))
+            return None
+        return row, observation, place
 
     def _site_id(self, exchanged: ExchangedObservation) -> int | None:
         name = exchanged.observation.site

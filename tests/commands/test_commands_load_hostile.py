@@ -214,6 +214,11 @@ def begun(template, tmp_path_factory):
             for kind in ("observations", "systems", "solutions")
             for ending in (".csv", ".ecsv", ".vot", ".json")
         ),
+        ["amend", "1", "--mag", "7.4±0.03"], ["withdraw", "2", "--why", "the wrong star"],
+        *(
+            ["export", "observations", "--also-withdrawn", "--to", str(folder / f"past{ending}")]
+            for ending in (".csv", ".json")
+        ),
     ):  # fmt: skip
         assert run([*words, "--quiet", "--db", str(db)]) == 0
     tables = [TABLE.encode(), TABLE.replace(",", "\t").encode(), _foreign("ecsv"), _foreign("votable")]
