@@ -7,8 +7,15 @@ from typing import Annotated
 import typer
 
 from campaign.commands import common
-from campaign.commands.common import DbOption, JsonOption, ObserverOption, QuietOption, option
-from campaign.commands.parsing import plain, whole_number
+from campaign.commands.common import (
+    AsOfOption,
+    DbOption,
+    JsonOption,
+    ObserverOption,
+    QuietOption,
+    option,
+)
+from campaign.commands.parsing import clock_instant, count, entry_number, plain, whole_number
 
 Text = str | None
 
@@ -56,6 +63,84 @@ def add(
         note=plain(note, "--note", 2000) or "",
     )
     kept = study.add_episode(common.database(db), common.stamp(observer), system, draft, dates)
+    common.report(kept, json=json, quiet=quiet)
+
+
+def find(
+    system: Annotated[str, typer.Argument(metavar="SYSTEM", help="Name or alias.")],
+    band: Annotated[
+        list[str] | None, option("--band", "BAND", "Only this band, as it is written; may be repeated.")
+    ] = None,
+    episode: Annotated[
+        Text, option("--episode", "N", "Draw the curve around this one of those found.")
+    ] = None,
+    levels: Annotated[
+        bool, typer.Option("--levels", help="Show the stars' level in each source too.", show_default=False)
+    ] = False,
+    propose: Annotated[
+        bool,
+        typer.Option("--propose", help="Enter those not known yet, to be confirmed.", show_default=False),
+    ] = False,
+    as_of: AsOfOption = None,
+    db: DbOption = None,
+    observer: ObserverOption = None,
+    json: JsonOption = False,
+    quiet: QuietOption = False,
+) -> None:
+    """Find episodes in the light curve: onset, maximum, end.
+
+    \b
+    For example:
+      campaign episodes find "Lantern 3" --band K
+      campaign episodes find "Lantern 3" --propose
+    """
+    from campaign.output import episodes as output
+    from campaign.studies.decide_episodes import propose_episodes
+    from campaign.studies.find_episodes import find_episodes
+
+    place = common.database(db)
+    bands = tuple(name for each in band or () if (name := plain(each, "--band", 50)))
+    found = find_episodes(place, system, bands or None, clock_instant(as_of, "--as-of"))
+    drawn = None if episode is None else count(episode, "--episode", 1, max(len(found.episodes), 1))
+    kept = propose_episodes(place, common.stamp(observer), found) if propose else None
+    if json:
+        proposed = None if kept is None else kept.data["ids"]
+        common.write_json(output.found_json(found, common.now_iso(), proposed))
+        return
+    output.render_found(common.stdout_screen(), found, drawn=drawn, levels=levels)
+    for warning in found.warnings:
+        common.tell(warning, quiet=quiet)
+    if kept is not None:
+        common.report(kept, json=False, quiet=quiet)
+
+
+def confirm(
+    numbers: Annotated[list[str], typer.Argument(metavar="N...", help="Numbers of episodes.")],
+    db: DbOption = None,
+    observer: ObserverOption = None,
+    json: JsonOption = False,
+    quiet: QuietOption = False,
+) -> None:
+    """Confirm proposed episodes: from now on they are knowledge."""
+    _decide(numbers, db, observer, confirm=True, json=json, quiet=quiet)
+
+
+def reject(
+    numbers: Annotated[list[str], typer.Argument(metavar="N...", help="Numbers of episodes.")],
+    db: DbOption = None,
+    observer: ObserverOption = None,
+    json: JsonOption = False,
+    quiet: QuietOption = False,
+) -> None:
+    """Reject episodes: they stay, and count for nothing."""
+    _decide(numbers, db, observer, confirm=False, json=json, quiet=quiet)
+
+
+def _decide(numbers: list[str], db: Text, observer: Text, *, confirm: bool, json: bool, quiet: bool) -> None:
+    from campaign.studies.decide_episodes import decide_episodes
+
+    wanted = [entry_number(number, "N") for number in numbers]
+    kept = decide_episodes(common.database(db), common.stamp(observer), wanted, confirm=confirm)
     common.report(kept, json=json, quiet=quiet)
 
 

@@ -86,6 +86,9 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
     _group(
         "episodes", "Dated bursts of dust production.", "Observe",
         ("add", "Add a confirmed episode with the dates known of it."),
+        ("find", "Find episodes in the light curve: onset, maximum, end."),
+        ("confirm", "Confirm proposed episodes: from now on they are knowledge."),
+        ("reject", "Reject episodes: they stay, and count for nothing."),
         ("list", "The dated episodes, oldest first."),
     ),
     _command("begin", "Make the database, empty or with the sample campaign.", "Keep the catalogue"),

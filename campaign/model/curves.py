@@ -27,7 +27,10 @@ class CurvePoint:
 
 @dataclass(frozen=True, slots=True)
 class Curve:
-    """Values of one kind in one unit; ``downward`` where larger values are drawn lower, as magnitudes."""
+    """Values of one kind in one unit; ``downward`` where larger values are drawn lower, as magnitudes.
+
+    ``levels`` are values to be drawn as lines, as that of the stars.
+    """
 
     system: str
     kind: str
@@ -35,3 +38,16 @@ class Curve:
     unit: str
     downward: bool
     points: tuple[CurvePoint, ...]
+    levels: tuple[float, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class CurveMark:
+    """An interval of time drawn under a curve, all ``bmjd_tdb``; marks of one ``name`` share a line."""
+
+    name: str
+    low95: float
+    low68: float
+    median: float
+    high68: float
+    high95: float

@@ -9,11 +9,12 @@ from __future__ import annotations
 import math
 from collections import Counter
 from collections.abc import Sequence
+from dataclasses import replace
 from itertools import groupby
 
 from rich.cells import cell_len, set_cell_size
 
-from campaign.model.curves import Curve, CurvePoint, PointState
+from campaign.model.curves import Curve, CurveMark, CurvePoint, PointState
 from campaign.output.console import Screen, Span
 from campaign.output.history import UNIT_NAMES
 from campaign.output.timeaxis import TimeAxis
@@ -35,7 +36,8 @@ _MAGNITUDE_LIMITS: dict[PointState, tuple[str, str, str]] = {
     "above": ("▽", "cyan", "too faint to see"),
     "below": ("△", "cyan", "saturated"),
 }
-_BAR, _CORNER = "│", "┤"
+_BAR, _CORNER, _LEVEL = "│", "┤", "╌"
+_INTERVAL_95, _INTERVAL_68, _MEDIAN = "─", "▒", "█"
 _PIPE_WIDTH = 100
 _LABEL_CELLS = 9
 _STEPS = (1.0, 2.0, 5.0)
@@ -52,6 +54,55 @@ def render_curves(screen: Screen, curves: Sequence[Curve]) -> None:
         _render_system(screen, system, list(group))
 
 
+def render_marked_curves(
+    screen: Screen, curves: Sequence[Curve], marks: Sequence[CurveMark], span: tuple[float, float]
+) -> None:
+    """Draw curves of one system between two instants (bmjd_tdb), with intervals of time under them."""
+    first, last = span
+    shown = [
+        replace(curve, points=tuple(point for point in curve.points if first <= point.bmjd_tdb <= last))
+        for curve in curves
+    ]
+    shown = [curve for curve in shown if curve.points]
+    if not shown:
+        return
+    axis = TimeAxis(first, last, (screen.width or _PIPE_WIDTH) - _LABEL_CELLS - 1)
+    for curve in shown:
+        _render_strip(screen, curve, axis, 14 if len(shown) == 1 else 8)
+    names = list(dict.fromkeys(mark.name for mark in marks))
+    for name in names:
+        _render_marks(screen, name, [mark for mark in marks if mark.name == name], axis)
+    _render_axis(screen, axis)
+    legend = _legend(shown, axis)
+    if any(curve.levels for curve in shown):
+        legend = f"{_LEVEL} level of the stars  {legend}"
+    if names:
+        legend += f"; {_INTERVAL_95} 95 %  {_INTERVAL_68} 68 %  {_MEDIAN} median"
+    screen.wrapped(legend, hang=2, style="dim")
+
+
+def _render_marks(screen: Screen, name: str, marks: Sequence[CurveMark], axis: TimeAxis) -> None:
+    """One line of intervals; in one cell of several the nearest to a median stays."""
+    cells = [" "] * axis.cells
+    drawn = [(_INTERVAL_95, mark.low95, mark.high95) for mark in marks]
+    drawn += [(_INTERVAL_68, mark.low68, mark.high68) for mark in marks]
+    drawn += [(_MEDIAN, mark.median, mark.median) for mark in marks]
+    for character, start, end in drawn:
+        for place in range(max(axis.place(start), 0), min(axis.place(end), axis.cells - 1) + 1):
+            cells[place] = character
+    if any(cell != " " for cell in cells):
+        label = set_cell_size(screen.spell(name), max(cell_len(name), _LABEL_CELLS - 1))
+        screen.line(
+            label.rstrip().rjust(_LABEL_CELLS - 1) + " ", Span(_BAR, "dim"), Span("".join(cells), "bold")
+        )
+
+
+def _render_axis(screen: Screen, axis: TimeAxis) -> None:
+    rule, dates = axis.fine_ticks()
+    screen.line(" " * _LABEL_CELLS, Span("└" + rule, "dim"))
+    screen.line(" " * (_LABEL_CELLS + 1), Span(dates, "dim"))
+
+
 def _render_system(screen: Screen, system: str, curves: list[Curve]) -> None:
     whole = screen.width or _PIPE_WIDTH
     times = [point.bmjd_tdb for curve in curves for point in curve.points]
@@ -62,9 +113,7 @@ def _render_system(screen: Screen, system: str, curves: list[Curve]) -> None:
     screen.heading(system)
     for curve in curves:
         _render_strip(screen, curve, axis, rows)
-    rule, dates = axis.fine_ticks()
-    screen.line(" " * _LABEL_CELLS, Span("└" + rule, "dim"))
-    screen.line(" " * (_LABEL_CELLS + 1), Span(dates, "dim"))
+    _render_axis(screen, axis)
     screen.wrapped(_legend(curves, axis), hang=2, style="dim")
 
 
@@ -75,6 +124,8 @@ def _render_strip(screen: Screen, curve: Curve, axis: TimeAxis, rows: int) -> No
     screen.wrapped(f"{named}, {unit}, {count}" + ("" if _bars_fit(curve, axis) else "; errors not drawn"))
     scale = _Scale(curve, rows)
     grid: Grid = [[(" ", "")] * axis.cells for _ in range(rows)]
+    for level in curve.levels:
+        grid[scale.row(level)] = [(_LEVEL, "dim")] * axis.cells
     if _bars_fit(curve, axis):
         for point in curve.points:
             _draw_bar(grid, point, axis, scale)
@@ -120,7 +171,7 @@ class _Scale:
     """Rows of a strip for values, with round numbers beside it."""
 
     def __init__(self, curve: Curve, rows: int) -> None:
-        values = [point.value for point in curve.points]
+        values = [*(point.value for point in curve.points), *curve.levels]
         low, high = min(values), max(values)
         # Errors may widen the strip, but one large error does not flatten all the rest.
         spread = (high - low) or max(abs(high) * 1e-3, _largest_error(curve), 1e-9)
@@ -160,8 +211,9 @@ class _Scale:
 
 def _label(value: float, places: int) -> str:
     text = f"{value + 0.0:.{places}f}"
-    if len(text) > _LABEL_CELLS - 1:
-        text = f"{value:.2e}"
+    for digits in (2, 1, 0):
+        if len(text) > _LABEL_CELLS - 1:
+            text = f"{value:.{digits}e}"
     return "0" if float(text) == 0.0 else text
 
 

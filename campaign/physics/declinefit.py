@@ -11,6 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from campaign.physics.lightcolumns import FloatArray
+from campaign.physics.onsetfit import SUMMARY, posterior_summary
 
 # What is left of the top's excess when production ends, and e-folding times of the decay that follows.
 _LEFT = np.array([1.0, 0.9, 0.8, 0.7, 0.6, 0.5, 0.4])
@@ -18,12 +19,11 @@ _DECAYS_D = np.geomspace(20.0, 1500.0, 14)
 _ENDS = 24
 _WILD_SIGMA = 3.5
 _TOLD_SHARE = 0.6
-QUANTILES = (0.5, 0.16, 0.84, 0.025, 0.975)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class DeclinePosterior:
-    """Quantiles (0.5, 0.16, 0.84, 0.025, 0.975) of three things that differ, days.
+    """Median, 16, 84, 2.5 and 97.5 % and standard deviation of three things that differ, days.
 
     ``end_bmjd_tdb`` of production; ``half_bmjd_tdb`` when the excess was half of the top's; ``decay_d`` the
     e-folding time after production. ``end_is_told`` says that the data, not the allowed range, bound the end;
@@ -80,13 +80,13 @@ def fit_decline(
     last = float(t[low[0]]) if low.size else float(t[-1])
     if last <= 0.0:
         return None
-    ends = np.linspace(0.0, last, _ENDS)
+    ends, decays = np.linspace(0.0, last, _ENDS), _DECAYS_D
     inflation = 1.0
     for turn in range(3):
-        ln, amplitude = _likelihood(t, y, s, ends)
+        ln, amplitude = _likelihood(t, y, s, ends, decays)
         place = np.unravel_index(int(np.argmax(ln)), ln.shape)
         model = amplitude[place] * _decline(
-            t, float(ends[place[0]]), float(_LEFT[place[1]]), float(_DECAYS_D[place[2]])
+            t, float(ends[place[0]]), float(_LEFT[place[1]]), float(decays[place[2]])
         )
         z = np.abs(y - model) / s
         if turn == 0:
@@ -99,16 +99,22 @@ def fit_decline(
             by_end = np.exp((ln - ln.max()) / inflation).max(axis=(1, 2))
             alive = np.flatnonzero(by_end > 1e-5)
             ends = np.linspace(ends[max(alive[0] - 1, 0)], ends[min(alive[-1] + 1, ends.size - 1)], _ENDS)
+            by_decay = np.exp((ln - ln.max()) / inflation).max(axis=(0, 1))
+            alive = np.flatnonzero(by_decay > 1e-5)
+            first, final = decays[max(alive[0] - 1, 0)], decays[min(alive[-1] + 1, decays.size - 1)]
+            decays = np.geomspace(first, final, decays.size)
     weight = np.exp((ln - ln.max()) / inflation)
-    end = _quantiles(np.broadcast_to(ends[:, None, None], weight.shape), weight)
-    halves = _half_time(ends[:, None, None], _LEFT[None, :, None], _DECAYS_D[None, None, :])
+    end = posterior_summary(ends, weight.sum(axis=(1, 2)))
+    halves = _half_time(ends[:, None, None], _LEFT[None, :, None], decays[None, None, :])
     half = _quantiles(halves, weight)
-    decay = _quantiles(np.broadcast_to(_DECAYS_D[None, None, :], weight.shape), weight)
+    decay = np.exp(posterior_summary(np.log(decays), weight.sum(axis=(0, 1))))
+    # The standard deviation of the logarithm is a share of the time itself.
+    decay[5] = decay[0] * np.log(decay[5])
     told = bool(end[4] - end[3] < _TOLD_SHARE * last)
     seen = bool((y[t > 0] < 0.6 * height).any())
     return DeclinePosterior(
-        top_bmjd_tdb + _widened(end, top_sigma_d, floor=0.0),
-        top_bmjd_tdb + _widened(half, top_sigma_d, floor=0.0),
+        _dated(top_bmjd_tdb, _widened(end, top_sigma_d, floor=0.0)),
+        _dated(top_bmjd_tdb, _widened(half, top_sigma_d, floor=0.0)),
         decay,
         told,
         seen,
@@ -123,14 +129,14 @@ def _decline(t: FloatArray, end: float, left: float, decay: float) -> FloatArray
 
 
 def _likelihood(
-    t: FloatArray, y: FloatArray, s: FloatArray, ends: FloatArray
+    t: FloatArray, y: FloatArray, s: FloatArray, ends: FloatArray, decays: FloatArray
 ) -> tuple[FloatArray, FloatArray]:
     """ln likelihood over (end, left, decay) with the amplitude at its best, and that amplitude."""
     share = np.where(ends[:, None] > 0.0, t / np.maximum(ends[:, None], 1e-9), 1.0)
     fallen = (1.0 - _LEFT)[None, :, None] * np.clip(share, 0.0, 1.0)[:, None, :]
     linear = np.where(ends[:, None, None] > 0.0, 1.0 - fallen, 1.0)
     since = np.clip(t[None, :] - ends[:, None], 0.0, None)
-    faded = np.exp(-since[:, None, :] / _DECAYS_D[None, :, None])
+    faded = np.exp(-since[:, None, :] / decays[None, :, None])
     weight = s**-2.0
     square = np.einsum("eln,edn->eld", linear**2 * weight, faded**2)
     score = np.einsum("eln,edn->eld", linear * (weight * y), faded)
@@ -157,13 +163,20 @@ def _quantiles(values: FloatArray, weight: FloatArray) -> FloatArray:
     order = np.argsort(values, axis=None)
     below = np.cumsum(weight.ravel()[order])
     middle = (below - 0.5 * weight.ravel()[order]) / below[-1]
-    found: FloatArray = np.interp(QUANTILES, middle, values.ravel()[order])
-    return found
+    flat = values.ravel()
+    mean = float(weight.ravel() @ flat) / below[-1]
+    spread = float(weight.ravel() @ (flat - mean) ** 2) / below[-1]
+    return np.append(np.interp(SUMMARY, middle, flat[order]), np.sqrt(spread))
+
+
+def _dated(zero: float, summary: FloatArray) -> FloatArray:
+    """A summary moved to another zero; its last entry is a width."""
+    return np.append(zero + summary[:5], summary[5])
 
 
 def _widened(quantiles: FloatArray, sigma: float, *, floor: float) -> FloatArray:
     """Quantiles with an independent error added to each side."""
     middle, deviates = quantiles[0], np.array([0.0, -1.0, 1.0, -1.96, 1.96])
-    wide = middle + np.sign(deviates) * np.hypot(quantiles - middle, deviates * sigma)
-    found: FloatArray = np.maximum(wide, floor - 1.96 * sigma)
+    wide = middle + np.sign(deviates) * np.hypot(quantiles[:5] - middle, deviates * sigma)
+    found: FloatArray = np.append(np.maximum(wide, floor - 1.96 * sigma), np.hypot(quantiles[5], sigma))
     return found

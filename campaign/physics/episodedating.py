@@ -10,10 +10,9 @@ from campaign.physics.brightspans import JudgedCurve
 from campaign.physics.declinefit import DeclinePosterior, fit_decline
 from campaign.physics.episodespans import EpisodeSpan, episode_spans, smoothed
 from campaign.physics.lightcolumns import LN_PER_MAG, BoolArray, FloatArray
-from campaign.physics.onsetfit import BandPoints, RisePosterior, fit_rise, posterior_quantiles
+from campaign.physics.onsetfit import BandPoints, RisePosterior, fit_rise, posterior_summary
 from campaign.physics.risepoints import LeftOver, band_points, left_over, top_range
 
-QUANTILES = (0.5, 0.16, 0.84, 0.025, 0.975)
 # How far before the first bright point an onset is looked for, in lengths of the rise and at least in days.
 _BACK_RISES, _BACK_D = 3.0, 250.0
 _SIGNIFICANT = 2.5
@@ -34,7 +33,7 @@ class Brightening:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class BandTop:
-    """One band's top: quantiles (0.5, 0.16, 0.84, 0.025, 0.975) of its date, and amplitude in stars' flux."""
+    """One band's top: summary of its date (see :class:`DatedSpan`), and amplitude in stars' flux."""
 
     band: int
     top_bmjd_tdb: FloatArray
@@ -45,15 +44,17 @@ class BandTop:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class DatedSpan:
-    """One episode dated. Quantiles are those of ``QUANTILES``, in days.
+    """One episode dated. A summary is median, 16, 84, 2.5 and 97.5 %, and standard deviation, in days.
 
     ``onset_bmjd_tdb`` is None where the curve begins inside the episode. ``rise_nights`` counts the nights on
     the rise: with none or one the onset is a bracket. ``top_is_reached`` says that points after the top show
-    a decline. ``chi2`` and ``dof`` are those of the rise.
+    a decline. ``chi2`` and ``dof`` are those of the rise; ``onset_at_bound`` says that an earlier onset than
+    was allowed is possible.
     """
 
     span: EpisodeSpan
     onset_bmjd_tdb: FloatArray | None
+    onset_at_bound: bool
     last_quiet_bmjd_tdb: float | None
     first_bright_bmjd_tdb: float
     tops: tuple[BandTop, ...]
@@ -129,13 +130,13 @@ def _date(curve: JudgedCurve, span: EpisodeSpan, before: EpisodeSpan | None) -> 
     points = [band_points(curve, span, band, earliest, tail) for band in bands]
     latest = max(min(p.top_until for p in points), first_bright)
     fit = fit_rise(points, earliest, max(latest, earliest + 1.0))
-    onset = posterior_quantiles(fit.onset_bmjd_tdb, fit.onset_density, QUANTILES)
+    onset = posterior_summary(fit.onset_bmjd_tdb, fit.onset_density)
     tops = _tops(fit, bands, points)
     rise = _rise_length(onset, tops[0].top_bmjd_tdb)
     nights = _nights_on_rise(curve, span, onset[0], fit, bands)
     decline = _decline(curve, span, tops[0], tail)
     return DatedSpan(
-        span, onset, last_quiet, first_bright, tops, rise, nights,
+        span, onset, fit.at_bound, last_quiet, first_bright, tops, rise, nights,
         _is_past_top(curve, span), decline, fit.shape_share, fit.chi2, fit.dof,
         _brightenings(curve, span, tops[0]),
     )  # fmt: skip
@@ -161,7 +162,7 @@ def _tops(fit: RisePosterior, bands: list[int], points: list[BandPoints]) -> tup
     return tuple(
         BandTop(
             band,
-            posterior_quantiles(fit.top_bmjd_tdb[n], fit.top_density[n], QUANTILES),
+            posterior_summary(fit.top_bmjd_tdb[n], fit.top_density[n]),
             float(fit.amplitude[n]),
             float(fit.amplitude_sigma[n]),
             int((points[n].limit_side == 0).sum()),
@@ -175,8 +176,8 @@ def _rise_length(onset: FloatArray, top: FloatArray) -> FloatArray:
     middle = top[0] - onset[0]
     low = np.hypot(top[0] - top[[1, 3]], onset[[2, 4]] - onset[0])
     high = np.hypot(top[[2, 4]] - top[0], onset[0] - onset[[1, 3]])
-    found: FloatArray = np.array(
-        [middle, middle - low[0], middle + high[0], middle - low[1], middle + high[1]]
+    found: FloatArray = np.append(
+        middle + np.array([0.0, -low[0], high[0], -low[1], high[1]]), np.hypot(top[5], onset[5])
     )
     return np.clip(found, 0.0, None)
 
@@ -190,7 +191,7 @@ def _nights_on_rise(
     on_rise = np.zeros(t.size, dtype=bool)
     for number, band in enumerate(bands):
         excess = np.expm1(curve.ln_excess)
-        top = posterior_quantiles(fit.top_bmjd_tdb[number], fit.top_density[number], [0.5])[0]
+        top = posterior_summary(fit.top_bmjd_tdb[number], fit.top_density[number])[0]
         on_rise |= (
             (columns.band == band)
             & columns.measured
@@ -275,13 +276,13 @@ def _begun_inside(curve: JudgedCurve, span: EpisodeSpan, first_bright: float) ->
         height = smoothed(np.expm1(curve.ln_excess[span.points])).max()
         top = BandTop(
             span.band,
-            np.array([first_bright, first_bright, until, first_bright, until]),
+            np.array([first_bright, first_bright, until, first_bright, until, 0.5 * (until - first_bright)]),
             float(height),
             float((1.0 + height) * np.median(curve.sigma_ln[span.points])),
             int(span.points.size),
         )
     return DatedSpan(
-        span, None, None, first_bright, (top,), None, 0, _is_past_top(curve, span),
+        span, None, False, None, first_bright, (top,), None, 0, _is_past_top(curve, span),
         _decline(curve, span, top, None), None, 0.0, 0, _brightenings(curve, span, top),
     )  # fmt: skip
 

@@ -15,6 +15,8 @@ import numpy as np
 from campaign.physics.lightcolumns import BoolArray, FloatArray, IntArray
 from campaign.physics.riseshapes import RISE_WEIGHTS, rise_shapes
 
+# Median, 68 % and 95 % equal-tailed: the order of every summary, which ends with the standard deviation.
+SUMMARY = (0.5, 0.16, 0.84, 0.025, 0.975)
 # How fast the flux declines after the top, per day of e-folding; any may be true.
 _DECLINES_PER_D = np.array([0.0, 0.0006, 0.0012, 0.002, 0.003, 0.0045, 0.0065, 0.01])
 _DECLINES_KEPT = 4
@@ -211,6 +213,38 @@ def posterior_quantiles(
     below = np.concatenate([[0.0], np.cumsum(0.5 * (density[1:] + density[:-1]) * np.diff(grid))])
     found: FloatArray = np.interp(np.asarray(shares) * below[-1], below, grid)
     return found
+
+
+def posterior_summary(grid: FloatArray, density: FloatArray) -> FloatArray:
+    """Median, 68 % and 95 % equal-tailed bounds, and standard deviation of a density at equal steps.
+
+    Parameters
+    ----------
+    grid, density : ndarray
+        Places in equal steps (days or any other unit) and the density there, any scale.
+
+    Returns
+    -------
+    ndarray, shape (6,)
+        Quantiles 0.5, 0.16, 0.84, 0.025, 0.975 and the standard deviation, in the unit of ``grid`` (days).
+
+    Notes
+    -----
+    Accuracy: as :func:`posterior_quantiles`.
+
+    Source: definitions.
+
+    Examples
+    --------
+    >>> grid = np.linspace(-5.0, 7.0, 1201)
+    >>> posterior_summary(grid, np.exp(-0.5 * (grid - 1.0) ** 2)).round(2).tolist()
+    [1.0, 0.01, 1.99, -0.96, 2.96, 1.0]
+    """
+    quantiles = posterior_quantiles(grid, density, SUMMARY)
+    total = float(density.sum())
+    mean = float(density @ grid) / total
+    spread = float(density @ (grid - mean) ** 2) / total
+    return np.append(quantiles, np.sqrt(spread))
 
 
 def _top_grid(first: float, last: float) -> FloatArray:
