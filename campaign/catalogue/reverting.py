@@ -7,7 +7,7 @@ which nothing refers, lose a row; the journal keeps it whole.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from datetime import datetime
 from typing import Any
 
@@ -28,11 +28,14 @@ from campaign.catalogue.types import utc_text
 from campaign.errors import Conflict
 from campaign.model.history import BulkEffect, Effect, RowEffect
 
+Told = Callable[[int, int], None]
 
-def revert(writing: Writing, effects: Sequence[Effect]) -> None:
+
+def revert(writing: Writing, effects: Sequence[Effect], told: Told) -> None:
     """Take back what an operation came to. The caller made sure that nothing depends on it.
 
     What goes out of use goes first, so that names, digests and places in force are free for what returns.
+    ``told`` gets how many rows of a load are done, and out of how many.
 
     Raises
     ------
@@ -42,15 +45,15 @@ def revert(writing: Writing, effects: Sequence[Effect]) -> None:
     backwards = [effect for effect in reversed(effects) if not is_lasting(effect)]
     for effect in backwards:
         if goes_out(effect):
-            _take_out(writing, effect)
+            _take_out(writing, effect, told)
     for effect in backwards:
         if comes_back(effect):
-            _bring_back(writing, effect)
+            _bring_back(writing, effect, told)
 
 
-def _take_out(writing: Writing, effect: Effect) -> None:
+def _take_out(writing: Writing, effect: Effect, told: Told) -> None:
     if isinstance(effect, BulkEffect):
-        _withdraw_load(writing, effect)
+        _withdraw_load(writing, effect, told)
         return
     table = metadata.tables[effect.table]
     cleared, marker = cleared_marker(effect), MARKER_OF.get(effect.table)
@@ -64,9 +67,9 @@ def _take_out(writing: Writing, effect: Effect) -> None:
         writing.update(table, effect.row_id, {marker: writing.at, **digest})
 
 
-def _bring_back(writing: Writing, effect: Effect) -> None:
+def _bring_back(writing: Writing, effect: Effect, told: Told) -> None:
     if isinstance(effect, BulkEffect):
-        _restore_load(writing, effect)
+        _restore_load(writing, effect, told)
         return
     table = metadata.tables[effect.table]
     if effect.kind != "changed":
@@ -106,7 +109,7 @@ def _keep_lapse(
     )
 
 
-def _withdraw_load(writing: Writing, effect: BulkEffect) -> None:
+def _withdraw_load(writing: Writing, effect: BulkEffect, told: Told) -> None:
     columns = observations.c
     writing.update_many(
         observations,
@@ -118,10 +121,11 @@ def _withdraw_load(writing: Writing, effect: BulkEffect) -> None:
         {"withdrawn_at": writing.at, "former_sameness": columns.sameness, "sameness": None},
         "withdraw many",
         {"brought_by": effect.brought_by, "withdrawn_at": utc_text(writing.at)},
+        lambda done: told(done, effect.rows),
     )
 
 
-def _restore_load(writing: Writing, effect: BulkEffect) -> None:
+def _restore_load(writing: Writing, effect: BulkEffect, told: Told) -> None:
     columns = observations.c
     assert effect.withdrawn_at is not None
     _keep_lapse(writing, observations, effect.withdrawn_at, brought_by=effect.brought_by)
@@ -131,6 +135,7 @@ def _restore_load(writing: Writing, effect: BulkEffect) -> None:
         {"withdrawn_at": None, "sameness": columns.former_sameness, "former_sameness": None},
         "restore many",
         {"brought_by": effect.brought_by},
+        lambda done: told(done, effect.rows),
     )
     if rows != effect.rows:
         raise _changed_outside(observations, f"{rows} of {effect.rows} rows are as they were left")

@@ -2,12 +2,9 @@
 
 from __future__ import annotations
 
-import signal
 import sys
-import threading
 import time
-from types import FrameType
-from typing import TYPE_CHECKING, Annotated, Any, Self
+from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
@@ -20,6 +17,7 @@ from campaign.commands.common import (
     QuietOption,
     option,
 )
+from campaign.commands.interrupts import LateInterrupts
 from campaign.commands.parsing import one_of, plain
 from campaign.errors import CampaignError, Conflict, InputRefused, UsageRefused
 
@@ -89,7 +87,7 @@ def load(
         if not (json or quiet):
             output.render_understood(screen, understood)
 
-    late = _LateInterrupts()
+    late = LateInterrupts()
     try:
         with late, Progress(screen, time.monotonic, quiet=quiet) as progress:
 
@@ -117,31 +115,6 @@ def load(
         _report(loaded, quiet=quiet)
     if loaded.bad_rows:
         raise typer.Exit(_EXIT_BAD_ROWS)
-
-
-class _LateInterrupts:
-    """Keeps Ctrl-C from an end that is under way, so that what is said of the load stays true."""
-
-    def __init__(self) -> None:
-        self.came = False
-        self._before: Any = None
-
-    def __enter__(self) -> Self:
-        return self
-
-    def __exit__(self, *problem: object) -> None:
-        if self._before is not None:
-            signal.signal(signal.SIGINT, self._before)
-
-    def watch(self, stage: str) -> None:
-        """From the last stage on an interrupt is noted and stops nothing."""
-        from campaign.model.loading import FINISHING
-
-        if stage == FINISHING and threading.current_thread() is threading.main_thread():
-            self._before = signal.signal(signal.SIGINT, self._note)
-
-    def _note(self, number: int, frame: FrameType | None) -> None:
-        self.came = True
 
 
 def _path(file: str | None) -> str:

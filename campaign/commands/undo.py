@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from typing import Annotated
+import time
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
@@ -15,7 +16,12 @@ from campaign.commands.common import (
     QuietOption,
     YesOption,
 )
+from campaign.commands.interrupts import LateInterrupts
 from campaign.commands.parsing import entry_number
+
+if TYPE_CHECKING:
+    from campaign.model.history import Undone
+    from campaign.model.kept import Stamp
 
 
 def undo(
@@ -48,8 +54,30 @@ def undo(
             common.confirm("Do this?", yes=False)
             number = result.operation.id
     if not dry_run:
-        result = study.undo(place, stamp, number)
+        result = _done(place, stamp, number, quiet)
     if json:
         common.write_json(output.undone_json(result, common.now_iso()))
     elif not quiet:
         output.render_undone(common.stdout_screen(), result)
+
+
+def _done(place: str, stamp: Stamp, number: int | None, quiet: bool) -> Undone:
+    """Do it, with progress; an interrupt stops it, unless it comes too late, and either is said."""
+    from campaign.output.progress import Progress
+    from campaign.studies import undo as study
+
+    late = LateInterrupts()
+    try:
+        with late, Progress(common.stderr_screen(), time.monotonic, quiet=quiet) as progress:
+
+            def told(stage: str, done: int, total: int | None) -> None:
+                progress.told(stage, done, total)
+                late.watch(stage)
+
+            result = study.undo(place, stamp, number, told)
+    except KeyboardInterrupt:
+        common.tell("Interrupted: nothing was undone.", quiet=quiet)
+        raise
+    if late.came:
+        common.tell("The interrupt came too late to keep the undo from being done.", quiet=quiet)
+    return result

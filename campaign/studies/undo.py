@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 
 from sqlalchemy import Connection
@@ -14,6 +14,7 @@ from campaign.catalogue.telling import Teller
 from campaign.errors import Conflict, NotFound
 from campaign.model.history import Dependant, Effect, Operation, Undone
 from campaign.model.kept import Stamp
+from campaign.model.loading import FINISHING
 
 _NAMED_AT_MOST = 3
 
@@ -50,7 +51,12 @@ def preview_undo(db: str, who: str, operation_id: int | None) -> Undone:
         return _plan(connection, who, operation_id)[0]
 
 
-def undo(db: str, stamp: Stamp, operation_id: int | None) -> Undone:
+def undo(
+    db: str,
+    stamp: Stamp,
+    operation_id: int | None,
+    told: Callable[[str, int, int | None], None] = lambda stage, done, total: None,
+) -> Undone:
     """Take back one whole operation, as an operation of its own that can be taken back too.
 
     Parameters
@@ -61,6 +67,9 @@ def undo(db: str, stamp: Stamp, operation_id: int | None) -> Undone:
         Who, when, which command; without a number, whose last operation is meant.
     operation_id : int or None
         Number of the operation; the number of an undo puts back what it took back.
+    told : callable, optional
+        Gets what is being done, how many rows of a load are done and out of how many; ``FINISHING`` comes
+        last, before what was done is kept.
 
     Returns
     -------
@@ -83,9 +92,10 @@ def undo(db: str, stamp: Stamp, operation_id: int | None) -> Undone:
         plan, effects = _plan(writing.connection, stamp.who, operation_id)
         writing.undoes(plan.operation.id)
         number = writing.operation_id
-        revert(writing, effects)
+        revert(writing, effects, lambda done, rows: told("undoing", done, rows))
         did = "put back" if plan.puts_back else "took back"
         writing.summarise(f"{did} operation {plan.first.id}: {plan.first.summary}")
+        told(FINISHING, 0, None)
     return replace(plan, by_id=number)
 
 

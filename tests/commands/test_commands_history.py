@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import os
+import signal
+
 import pytest
 
 
@@ -298,6 +301,36 @@ def test_quiet_says_nothing_and_does_it(watched):
     ran = watched("undo", "--yes", "--quiet")
     assert (ran.status, ran.out, ran.err) == (0, "", "")
     assert listed(watched) == set(range(1, 12))
+
+
+def test_an_interrupt_leaves_nothing_behind_and_says_so(loaded, fingerprint, monkeypatch):
+    from campaign.output.progress import Progress
+
+    def interrupted(progress, stage, done, total):
+        raise KeyboardInterrupt
+
+    before = fingerprint()
+    monkeypatch.setattr(Progress, "told", interrupted)
+    ran = loaded("undo", "--yes")
+    assert (ran.status, ran.out, ran.err) == (130, "", "Interrupted: nothing was undone.\n")
+    assert fingerprint() == before
+    assert loaded("undo", "--yes", "--quiet").err == ""
+
+
+def test_an_interrupt_that_comes_too_late_is_said_and_the_undo_is_done(loaded, monkeypatch):
+    from campaign.catalogue.store import Writing
+
+    finish = Writing.finish
+
+    def interrupted(writing):
+        os.kill(os.getpid(), signal.SIGINT)
+        finish(writing)
+
+    monkeypatch.setattr(Writing, "finish", interrupted)
+    ran = loaded("undo", "--yes")
+    assert (ran.status, ran.err) == (0, "The interrupt came too late to keep the undo from being done.\n")
+    assert ran.out.startswith("undone: operation 17")
+    assert listed(loaded) == set(range(1, 13))
 
 
 def test_an_empty_catalogue_has_nothing_to_undo_and_no_history(run_campaign):

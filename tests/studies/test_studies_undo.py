@@ -9,7 +9,7 @@ from __future__ import annotations
 import pytest
 from undo_examples import Keeper, begun, keep_engines
 
-from campaign.catalogue import solutions
+from campaign.catalogue import solutions, store
 from campaign.errors import Conflict, NotFound
 from campaign.studies import undo
 
@@ -420,3 +420,42 @@ def test_a_decision_taken_back_was_a_decision_until_then(keeper):
     keeper.undo(confirmed)
     states = [keeper.record("Dim", at).episodes[0].state for at in (proposed, decided, None)]
     assert states == ["proposed", "confirmed", "proposed"]
+
+
+# ------------------------------------------------------------------ many rows
+
+
+@pytest.mark.parametrize("portion", [1, 3, 10, 11, 50_000])
+def test_a_load_is_taken_back_in_portions_and_each_is_told(keeper, monkeypatch, portion):
+    keeper.log("Faint", 1)
+    loaded = keeper.load("Dim", range(10))
+    keeper.log("Faint", 2)
+    monkeypatch.setattr(store, "_PORTION", portion)
+    for left in (2, 12, 2):
+        heard: list[tuple[str, int, int | None]] = []
+        undone = undo.undo(keeper.db, keeper.stamp(), loaded, lambda *words: heard.append(words))  # noqa: B023
+        loaded = undone.by_id
+        assert len(keeper.values()) == left
+        *portions, last = heard
+        assert [done for _, done, _ in portions] == [
+            min(n, 10) for n in range(portion, 10 + portion, portion)
+        ]
+        assert {(stage, total) for stage, _, total in portions} == {("undoing", 10)}
+        assert last == ("finishing", 0, None)
+
+
+def test_an_interrupt_between_portions_leaves_all_as_it_was(keeper, monkeypatch):
+    loaded = keeper.load("Dim", range(10))
+    monkeypatch.setattr(store, "_PORTION", 3)
+    before = keeper.newest()
+
+    def told(stage, done, total):
+        if done >= 6:
+            raise KeyboardInterrupt
+
+    with pytest.raises(KeyboardInterrupt):
+        undo.undo(keeper.db, keeper.stamp(), loaded, told)
+    assert len(keeper.values()) == 10
+    assert keeper.newest() == before
+    keeper.undo(loaded)
+    assert keeper.values() == {}
