@@ -186,7 +186,7 @@ def _typed(screen: Screen, line: str) -> None:
         else:
             current += f" --{word}"
     for each in (*lines, current):
-        screen.line("  ", each)
+        screen.wrapped(f"  {each}", hang=4)
 
 
 # --------------------------------------------------------------------------------------------- photometry

@@ -14,30 +14,29 @@ _LABEL = 10
 
 def render_zones(screen: Screen, physics: DustPhysics) -> None:
     """A ruler of distances, even in the logarithm: gas, where carbon condenses, and dust beyond."""
-    marks = [(grain.distance_au, grain.temperature_k.value) for grain in physics.grains]
-    if len(marks) < 2 or not physics.condensation:
+    marks = sorted((grain.distance_au, grain.temperature_k.value or 0.0) for grain in physics.grains)
+    cells = min(_MOST_CELLS, (screen.width or 80) - _LABEL - 1)
+    low, high = min(marks, default=(0.0,))[0], max(marks, default=(0.0,))[0]
+    if not high > low or not physics.condensation or cells < _LEAST_CELLS:
         return
-    cells = min(_MOST_CELLS, max(_LEAST_CELLS, (screen.width or 80) - _LABEL - 1))
-    low, high = marks[0][0], marks[-1][0]
     inner = min(row.radius_au.value or low for row in physics.condensation)
     outer = max(row.radius_au.value or high for row in physics.condensation)
 
     def place(distance_au: float) -> int:
         share = math.log(distance_au / low) / math.log(high / low)
-        return round(share * (cells - 1))
+        return round(min(max(share, 0.0), 1.0) * (cells - 1))
 
     first, last = place(inner), place(outer)
-    zones = []
-    for cell in range(cells):
-        zones.append("·" if cell < first else "▓" if cell <= last else "░")
+    inside = inner <= high and outer >= low
+    zones = ["·" if cell < first else "▓" if cell <= last and inside else "░" for cell in range(cells)]
     screen.line(f"{'au':<{_LABEL}}", _labels([(place(r), f"{r:.4g}") for r, _ in marks], cells))
     screen.line(
         f"{'':<{_LABEL}}",
-        Span("".join(zones[: max(first, 0)]), "dim"),
-        Span("".join(zones[max(first, 0) : last + 1]), "bold yellow"),
+        Span("".join(zones[:first]), "dim"),
+        Span("".join(zones[first : last + 1]), "bold yellow"),
         "".join(zones[last + 1 :]),
     )
-    warm = [(place(r), f"{t:.0f}") for r, t in marks if t is not None]
+    warm = [(place(r), f"{t:.0f}") for r, t in marks]
     screen.line(f"{'grains, K':<{_LABEL}}", _labels(warm, cells))
     span = f"{inner:.3g} to {outer:.3g} au" if outer > inner else f"{inner:.3g} au"
     screen.wrapped(f"· too hot for grains  ▓ carbon condenses ({span})  ░ dust", style="dim")
