@@ -23,6 +23,10 @@ _UNKNOWN = re.compile(
     r"[+-]?9+(?:\.9+0*|\.0+)?|[+-]?99+\.[0-9]|n\.?/?a\.?n?|null|none|nd|-+|\.\.+|[*?x]", re.IGNORECASE
 )
 _DECIMAL_COMMA = re.compile(r"[+\-\u2212<>]?[0-9]+,[0-9]+(?:\s*(?:±|\+-)\s*[0-9]+,[0-9]+)?")
+_JULIAN = re.compile(r"[BH]?JD(?:_(?:UTC|TT|TDB))?", re.IGNORECASE)
+_FEW_DAYS = re.compile(r"[0-9]{4,5}(?:\.[0-9]*)?")
+# Counted from JD 2450000 dates of our time are below this, counted from JD 2400000 above.
+_MOST_LATE_DAYS = 25_000.0
 _UNITS = {"kms": "km/s", "jy": "Jy", "angstrom": "Å"}
 
 
@@ -152,7 +156,23 @@ def advice(loaded: Loaded) -> str:
     said = [] if unknown is None else [f'if "{unknown}" stands for unknown, say --missing "{unknown}"']
     if any("comma" in cell.why and _DECIMAL_COMMA.fullmatch(cell.text.strip()) for cell in loaded.bad):
         said.append("decimal commas are read with --constant decimal=comma")
+    short = next((cell for cell in loaded.bad if _is_short_count(cell)), None)
+    if short is not None:
+        offset = 2_400_000 if float(short.text) >= _MOST_LATE_DAYS else 2_450_000
+        said.append(
+            f"if {offset} is to be added to the times, say "
+            f'--column "time={short.column} as {short.column}-{offset}"'
+        )
     return "; ".join(said)
+
+
+def _is_short_count(cell: BadCell) -> bool:
+    """Whether a cell is a Julian Date without its first digits, which the name of its column does not say."""
+    return (
+        cell.code == "instant-impossible"
+        and _JULIAN.fullmatch(cell.column or "") is not None
+        and _FEW_DAYS.fullmatch(cell.text.strip()) is not None
+    )
 
 
 def _cut(text: str) -> str:

@@ -101,12 +101,12 @@ def read_votable(file: TableFile) -> ForeignTable:
 def _ecsv_column(name: str, column: Any) -> TableColumn:
     if _is_time(column):
         return TableColumn(name, None, _SCALES.get(column.scale), None, str(_MJD_ZERO))
-    unit = None if getattr(column, "unit", None) is None else str(column.unit)
+    unit = _unit_text(getattr(column, "unit", None))
     return TableColumn(name, unit, described=str(getattr(column, "description", None) or ""))
 
 
 def _votable_column(field: Any, system: Any) -> TableColumn:
-    unit = None if field.unit is None else str(field.unit)
+    unit = _unit_text(field.unit)
     described = str(field.description or "")
     if system is None:
         return TableColumn(field.name, unit, described=described)
@@ -118,6 +118,16 @@ def _votable_column(field: Any, system: Any) -> TableColumn:
         _origin(system.timeorigin),
         described,
     )
+
+
+def _unit_text(unit: Any) -> str | None:
+    """A unit as people write it: ``erg/s/cm2`` where astropy has ``erg / (s cm2)``."""
+    if unit is None:
+        return None
+    above, _, below = str(unit).partition(" / ")
+    divisors = below.strip("()").split()
+    # The frequency comes last, as in the names of fluxes.
+    return "/".join([above, *sorted(divisors, key=lambda each: each == "Hz")])
 
 
 def _origin(origin: Any) -> str | None:

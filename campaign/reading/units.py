@@ -47,9 +47,9 @@ def _family(
 
 
 def _spelling_key(unit_text: str) -> str:
-    """One key for the ways to set a compound unit: ``km s^-1``, ``km.s**-1``, ``km s⁻¹``."""
+    """One key for the ways to set a compound unit: ``km s^-1``, ``km.s**-1``, ``km s⁻¹``; ``km / s``."""
     plain = unit_text.translate(_TO_PLAIN).replace("**-", "-").replace("^", "")
-    return " ".join(plain.replace(".", " ").split())
+    return "/".join(" ".join(part.replace(".", " ").split()) for part in plain.split("/"))
 
 
 _ARC = {"deg": 1.0, "arcmin": 1.0 / 60.0, "arcsec": 1.0 / 3600.0, "rad": 180.0 / math.pi}

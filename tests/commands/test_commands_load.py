@@ -172,6 +172,31 @@ def test_what_cannot_be_meant_has_a_status_and_a_way_out(kept, table, words, sta
     assert "next:" in ran.err
 
 
+@pytest.mark.parametrize(
+    ("text", "said"),
+    [
+        (GOOD.replace("7.31", "99.99"), '--missing "99.99"'),
+        (GOOD.replace("7.31", "n/a"), '--missing "n/a"'),
+        (GOOD.replace(",", ";").replace("7.31", "7,31"), "--constant decimal=comma"),
+        (GOOD.replace("24612", "612"), '--column "time=HJD_UTC as HJD_UTC-2400000"'),
+        (GOOD.replace("24612", "12"), '--column "time=HJD_UTC as HJD_UTC-2450000"'),
+    ],
+)
+def test_what_settles_many_bad_cells_at_once_is_said_and_works(kept, table, own_database, text, said):
+    ran = kept("load", table(text))
+    assert ran.status == 3
+    assert said in ran.err.splitlines()[-1]
+    flag, _, value = said.partition(" ")
+    assert kept("load", table(text), flag, value.strip('"')).status == 0
+    assert count(own_database) == (1 if flag == "--missing" else 2)
+
+
+@pytest.mark.parametrize("word", ["bright", "", "7.3.1", "1e400"])
+def test_nothing_is_said_where_nothing_settles_them(kept, table, word):
+    ran = kept("load", table(GOOD.replace("7.31", word)))
+    assert ran.err.splitlines()[-1] == "  next: Mend the rows; the good ones go in with --skip-bad."
+
+
 STEERING = "\x1b[31m\x1b]52;c;eA==\x07\x9b\u202e\x00[bold]x[/bold]:warning:"
 
 

@@ -3,6 +3,7 @@ the words of the issue: nothing wrong goes in unnoticed, nothing is guessed sile
 
 from __future__ import annotations
 
+import io
 import shutil
 
 import pytest
@@ -127,6 +128,41 @@ def test_velocities_of_two_stars_between_tabs_with_gaps_and_the_minus_of_typeset
     assert sorted((each.star, each.value.value) for each in kept(db)) == [
         ("A", -45.2), ("A", -42.1), ("B", 61.0),
     ]  # fmt: skip
+
+
+@pytest.mark.parametrize("unit", ["km / s", "km/s", "km s^-1", "km.s**-1", "km s-1"])
+def test_units_are_known_as_people_and_libraries_write_them(db, unit):
+    text = f"name,BJD_TDB,RV ({unit}),e_RV,star\nKeel 9,2459001.5,-45.2,3,A\n"
+    assert load(db, text).added == 1
+    assert kept(db)[0].value == Measured(-45.2, 3.0, 3.0)
+
+
+@pytest.mark.parametrize("form", ["ecsv", "votable"])
+def test_units_of_a_table_of_astropy_are_known(db, form):
+    from astropy import units
+    from astropy.io.votable import from_table, writeto
+    from astropy.table import QTable
+
+    table = QTable({"name": ["Keel 9", "Keel 9"], "BJD": [2459001.5, 2459002.5] * units.day})
+    table["RV"] = [-45_200.0, 12_000.0] * units.m / units.s
+    table["star"] = ["A", "B"]
+    data = io.BytesIO()
+    if form == "ecsv":
+        text = io.StringIO()
+        table.write(text, format="ascii.ecsv")
+        data.write(text.getvalue().encode())
+    else:
+        writeto(from_table(table), data)
+    assert load(db, data.getvalue()).added == 2
+    assert {(each.star, each.value.value) for each in kept(db)} == {("A", -45.2), ("B", 12.0)}
+    fluxes = QTable({"name": ["Keel 9"], "BJD": [2459001.5]})
+    fluxes["flux"] = [4e-12] * units.erg / units.s / units.cm**2
+    fluxes["energy_low"], fluxes["energy_high"] = [500.0] * units.eV, [10.0] * units.keV
+    text = io.StringIO()
+    fluxes.write(text, format="ascii.ecsv")
+    assert load(db, text.getvalue()).added == 1
+    (found,) = [each for each in kept(db) if each.kind == "flux"]
+    assert (found.value.value, found.energy_low_kev, found.energy_high_kev) == (4e-12, 0.5, 10.0)
 
 
 def test_radii_of_shells_at_fixed_places_with_units_below_the_names(db):
