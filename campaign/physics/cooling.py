@@ -60,7 +60,8 @@ def cooling_parameter(
     """
     rate = positive(mass_loss_msun_yr, "mass loss", "3.1e-5 Msun/yr") / UNIT_MASS_LOSS
     speed = np.asarray(speed_kms, dtype=np.float64) / UNIT_SPEED_KMS
-    return speed**4 * (np.asarray(distance_au, dtype=np.float64) / UNIT_DISTANCE_AU) / rate
+    square = speed * speed
+    return square * square * (np.asarray(distance_au, dtype=np.float64) / UNIT_DISTANCE_AU) / rate
 
 
 def beta_law_speed(

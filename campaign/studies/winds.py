@@ -155,14 +155,13 @@ def winds(record: SystemRecord, question: WindsQuestion) -> WindsResult:
     )
     eta = found["eta"][0]
     span = _span(inputs, question)
-    dated = None if span is None else _table_draws(inputs, question, span.size)
+    dated = None if span is None else of.thinned(max(_LEAST_DRAWS, _TABLE_DRAWS // span.size))
     skew = _skew_deg(inputs, of)
     swap = None if eta.unknown_errors else float(np.mean(of.all.eta > 1.0))
     told_winds, told_forms = winds_of_stars(of), forms(of)
     told_cooling, told_sight = coolings(of), line_of_sight(of)
     told_events = () if span is None else events(of, float(span[0]), float(span[-1]))
     rows = () if span is None or dated is None else table(dated, span)
-    used = of.used | (dated.used if dated is not None else set())
     name = None if inputs.solution is None else inputs.solution.label
     return WindsResult(
         record.system.name,
@@ -187,7 +186,7 @@ def winds(record: SystemRecord, question: WindsQuestion) -> WindsResult:
         profile(of),
         told_events,
         rows,
-        told_inputs(inputs, used),
+        told_inputs(inputs, of.used),
         question.draws,
         question.seed,
         tuple(assumptions(record, inputs, of, dated, skew)),
@@ -233,11 +232,6 @@ def _span(inputs: WindInputs, question: WindsQuestion) -> FloatArray | None:
         )
     times: FloatArray = start + step * np.arange(int(np.floor((end - start) / step + 1e-9)) + 1.0)
     return times
-
-
-def _table_draws(inputs: WindInputs, question: WindsQuestion, rows: int) -> Propagation:
-    draws = min(question.draws, max(_LEAST_DRAWS, _TABLE_DRAWS // rows))
-    return Propagation(inputs, draws, question.seed)
 
 
 def _skew_deg(inputs: WindInputs, of: Propagation) -> tuple[float | None, float | None]:

@@ -28,7 +28,7 @@ Quantities = Callable[["WindDraws"], Mapping[str, FloatArray]]
 
 STARS: tuple[StarName, StarName] = ("A", "B")
 # Draws with one error alone, from which the dominant one is told.
-_ALONE_DRAWS = 1_000
+_ALONE_DRAWS = 600
 DEFAULT_BETA = 1.0
 # A spread smaller than this share of the value is the rounding of the arithmetic.
 _ROUNDING = 1e-12
@@ -170,11 +170,21 @@ class Propagation:
 
     def __init__(self, inputs: WindInputs, draws: int, seed: int) -> None:
         self.inputs = inputs
+        self.draws = draws
         self.seed = seed
         self.all = WindDraws(inputs, draws, seed)
         self.nominal = WindDraws(inputs, 1, seed, frozenset())
         self._alone: dict[str, WindDraws] = {}
         self.used: set[str] = set()
+
+    def thinned(self, draws: int) -> Propagation:
+        """The same with fewer draws of everything together."""
+        if draws >= self.draws:
+            return self
+        fewer = Propagation(self.inputs, draws, self.seed)
+        fewer._alone = self._alone
+        fewer.used = self.used
+        return fewer
 
     def alone(self, name: str) -> WindDraws:
         """Draws with one error alone."""

@@ -75,8 +75,8 @@ def assumptions(
         )
     if inputs.size and inputs.row is not None and inputs.row.a_source not in (None, "given"):
         lines.append(f"semi-major axis from: {inputs.row.a_source}")
-    if dated is not None and dated.all.draws < of.all.draws:
-        lines.append(f"so long a table is drawn {dated.all.draws} times instead of {of.all.draws}")
+    if dated is not None and dated.draws < of.draws:
+        lines.append(f"so long a table is drawn {dated.draws} times instead of {of.draws}")
     if inputs.size and any(laws_of(inputs, star) for star in STARS):
         lines.append(INDICATOR)
     return lines

@@ -43,7 +43,7 @@ def table(of: Propagation, times: FloatArray) -> tuple[WindRow, ...]:
     Source: Kepler's equation, and the modules of ``campaign.physics`` on winds.
     """
     rows: list[WindRow] = []
-    size = max(1, _BLOCK // of.all.draws)
+    size = max(1, _BLOCK // of.draws)
     for first in range(0, times.size, size):
         rows.extend(_block(of, times[first : first + size]))
     return tuple(rows)
