@@ -128,8 +128,7 @@ class _Search:
         whole = and_(changes.c.table_name == observations.name, changes.c.row_id.is_(None))
         for row in self._later_changes(whole):
             if row.after.get("brought_by") in loads:
-                did = "took back" if row.action == "withdraw many" else "put back"
-                self._add(row.operation_id, f"{did} the load that the observation came with")
+                self._add(row.operation_id, "took back the load that the observation came with")
 
     def _same_state_of_a_system(self) -> None:
         for table, reason in _ONE_A_SYSTEM:
@@ -159,14 +158,15 @@ class _Search:
             if any(effect.after.get(name) is not None for name in _ANCHOR)
         ]
         for table, column in ((solutions, "epoch_cycle"), (episodes, "cycle")):
-            own = self._rows("added", "changed").get(table.name, {})
             for some in in_portions(anchored):
                 counted = select(table.c.id).where(
                     table.c.system_id.in_(some), table.c[column].is_not(None), row_in_use(table)
                 )
-                for number in set(self._connection.execute(counted).scalars()) - own.keys():
+                for number in set(self._connection.execute(counted).scalars()):
                     operation_id = entered_by(self._connection, table, number)
-                    if operation_id is not None and operation_id > self._operation_id:
+                    # What was there before, and only taken back and put back since, was not counted from it.
+                    is_later = operation_id is not None and operation_id > self._operation_id
+                    if is_later and operation_id not in self._idle:
                         self._add(operation_id, "counts cycles from the epoch adopted here")
 
     def _children(self, child: Table[Any], refers: ColumnElement[bool], parent: Table[Any]) -> None:

@@ -9,8 +9,9 @@ from __future__ import annotations
 import pytest
 from undo_examples import Keeper, begun, keep_engines
 
-from campaign.catalogue import solutions, store
+from campaign.catalogue import observations, sites, solutions, store
 from campaign.errors import Conflict, NotFound
+from campaign.model.systems import Site
 from campaign.studies import undo
 
 
@@ -176,7 +177,10 @@ def test_a_load_stays_while_one_of_it_was_corrected_or_withdrawn(keeper):
     loaded = keeper.load("Dim", range(5))
     amended, withdrawn = keeper.amend(2, 7.5), keeper.withdraw(4)
     changed = "changed observation {}, which this load brought"
-    assert keeper.refused(loaded) == {amended: changed.format(2), withdrawn: changed.format(4)}
+    refused = keeper.refused(loaded)
+    assert refused == {amended: changed.format(2), withdrawn: changed.format(4)}
+    # The newest first: that is the one to begin with.
+    assert list(refused) == [withdrawn, amended]
     keeper.undo(amended)
     keeper.undo(withdrawn)
     keeper.undo(loaded)
@@ -285,6 +289,16 @@ def test_a_cycle_counted_from_an_epoch_holds_its_adoption_back(keeper):
     assert keeper.record("Dim").system.cycle_anchor_bmjd_tdb is None
 
 
+def test_what_was_there_before_and_came_back_is_not_counted_from_a_later_epoch(keeper):
+    keeper.solution("Dim", "first")
+    earlier = keeper.episode("Dim", 0)
+    adopted = keeper.adopt("Dim", "first")
+    keeper.undo(keeper.undo(earlier))
+    keeper.undo(adopted)
+    assert keeper.record("Dim").system.cycle_anchor_bmjd_tdb is None
+    assert [episode.cycle for episode in keeper.record("Dim").episodes] == [0]
+
+
 def test_an_adoption_that_found_the_count_begun_is_not_held_back_by_it(keeper):
     keeper.solution("Dim", "first", adopt=True)
     keeper.solution("Dim", "second", epoch="2009-03-20")
@@ -323,6 +337,21 @@ def test_the_cycle_of_an_epoch_follows_the_adoption_and_holds_nothing_back(keepe
     keeper.undo(without)
     keeper.undo(gone)
     assert [s.epoch_cycle for s in keeper.record("Dim").solutions] == [0, 1]
+
+
+def test_a_published_count_follows_the_adoption_too(keeper):
+    keeper.solution("Dim", "first")
+    # The publication calls its epoch cycle 11; in the system's count it is cycle 1.
+    second = keeper.solution("Dim", "second", epoch="2009-03-20", published_cycle=11)
+    adopted = keeper.adopt("Dim", "first")
+    counts = [(s.epoch_cycle, s.published_cycle_offset) for s in keeper.record("Dim").solutions]
+    assert counts == [(0, None), (1, 10)]
+    back = keeper.undo(keeper.undo(second))
+    keeper.undo(adopted)
+    counts = [(s.epoch_cycle, s.published_cycle_offset) for s in keeper.record("Dim").solutions]
+    assert counts == [(None, None), (None, 11)]
+    keeper.undo(back)
+    assert [s.label for s in keeper.record("Dim").solutions] == ["first"]
 
 
 # ------------------------------------------------------------------ in which order
@@ -442,6 +471,19 @@ def test_a_load_is_taken_back_in_portions_and_each_is_told(keeper, monkeypatch, 
         ]
         assert {(stage, total) for stage, _, total in portions} == {("undoing", 10)}
         assert last == ("finishing", 0, None)
+
+
+def test_a_load_with_its_own_site_goes_and_comes_with_it_again_and_again(keeper):
+    def work(writing):
+        sites.add_site(writing, Site(0, "Cold Mesa", latitude_deg=-31.0, longitude_deg_east=-70.0))
+        points = [keeper.point(writing, "Dim", day, site="Cold Mesa") for day in range(5)]
+        observations.add_observations(writing, points)
+
+    number = keeper.catalogue(work, "loaded a site and what was seen there")
+    for left in (0, 5, 0, 5, 0):
+        number = keeper.undo(number)
+        assert len(keeper.values()) == left
+    keeper.site("Cold Mesa")
 
 
 def test_an_interrupt_between_portions_leaves_all_as_it_was(keeper, monkeypatch):

@@ -96,9 +96,18 @@ class Keeper:
         place = Site(0, name, latitude_deg=-31.0, longitude_deg_east=-70.0)
         return self.catalogue(lambda writing: sites.add_site(writing, place), f"added site {name}")
 
-    def solution(self, name: str, label: str, *, adopt: bool = False, epoch: str = "2001-01-01") -> int:
+    def solution(
+        self,
+        name: str,
+        label: str,
+        *,
+        adopt: bool = False,
+        epoch: str = "2001-01-01",
+        published_cycle: int | None = None,
+    ) -> int:
         draft = Solution(0, 0, label, period_d=Measured(3000.0, 1.0, 1.0))
-        return self.command(solutions.add_solution, name, draft, read_instant(epoch), None, None, adopt)
+        at = read_instant(epoch)
+        return self.command(solutions.add_solution, name, draft, at, None, published_cycle, adopt)
 
     def adopt(self, name: str, weights: Mapping[str, float | None] | str) -> int:
         given = {weights: None} if isinstance(weights, str) else weights
