@@ -173,6 +173,7 @@ class Campaign:
         min_probability: float = 0.0,
         draws: int | None = None,
         seed: int | None = None,
+        resolution_arcsec: float | None = None,
     ) -> UpcomingResult:
         """The events to come, as ``campaign upcoming`` shows them.
 
@@ -188,6 +189,8 @@ class Campaign:
             Only events with at least this probability (dimensionless) inside the period.
         draws, seed : int or None
             Of the random draws; None for 20,000 draws and seed 1.
+        resolution_arcsec : float or None
+            What an image resolves, arcsec: then also when shells become resolvable.
 
         Returns
         -------
@@ -204,7 +207,9 @@ class Campaign:
         from campaign.studies import watch
 
         asked = _instant(as_of, "as_of")
-        loaded = watch.load_campaign(self._db, _several(system) or None, None, asked)
+        loaded = watch.load_campaign(
+            self._db, _several(system) or None, None, asked, with_shells=resolution_arcsec is not None
+        )
         question = watch.ask(
             loaded,
             now=datetime.now(UTC),
@@ -217,6 +222,7 @@ class Campaign:
             draws=draws,
             seed=seed,
             solutions="adopted",
+            resolution_arcsec=resolution_arcsec,
         )
         return watch.upcoming(loaded, question)
 

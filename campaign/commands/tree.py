@@ -69,6 +69,11 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
     _command("winds", "Where two winds collide, how hot, and what you look through.", "Look ahead"),
     _command("dust", "Where dust condenses, how hot it is, and what its light weighs.", "Look ahead"),
     _group(
+        "shells", "When dust shells were launched, and where they will be.", "Look ahead",
+        ("date", "Ages and launch dates of shells from their radii or spacing."),
+        ("expect", "Where shells will be, which are seen, and how warm they are."),
+    ),
+    _group(
         "log", "Log one observation from the terminal.", "Observe",
         ("photometry", "Log magnitudes, in one band or in several."),
         ("flux", "Log a flux: infrared, radio or X-ray."),

@@ -8,7 +8,7 @@ import typer
 
 from campaign.commands import common
 from campaign.commands.common import AsOfOption, DbOption, JsonOption, option
-from campaign.commands.parsing import clock_instant, count, one_of
+from campaign.commands.parsing import clock_instant, count, one_of, plain_number
 
 Text = str | None
 DEFAULT_WITHIN = "5yr"
@@ -31,10 +31,14 @@ def upcoming(
         typer.Option(
             "--event",
             metavar="EVENT",
-            help="periastron, onset, maximum, end, 'A in front' or 'B in front'; may be repeated.",
+            help="periastron, onset, maximum, end, 'A in front', 'B in front', resolvable; may be repeated.",
             show_default=False,
         ),
     ] = [],  # noqa: B006 - typer copies it
+    resolution: Annotated[
+        Text,
+        option("--resolution", "ANGLE", "Also when shells become resolvable at it, as 0.1arcsec."),
+    ] = None,
     min_probability: Annotated[
         Text, option("--min-probability", "P", "Only events with at least this probability in the period.")
     ] = None,
@@ -59,6 +63,7 @@ def upcoming(
       campaign upcoming --within 5yr
       campaign upcoming --system "Lantern 3"   # its forecast step by step
       campaign upcoming --event onset --from 2030-01-01 --until 2032-01-01
+      campaign upcoming --resolution 0.1arcsec # and when shells can be told apart
       campaign upcoming --sample               # on an invented campaign
     """
     from campaign.output import upcoming_document as documents
@@ -66,12 +71,17 @@ def upcoming(
 
     names = system or None
     asked = clock_instant(as_of, "--as-of")
+    resolved = plain_number(
+        resolution, "arcsec", "--resolution", low=0.0, low_open=True, high=3600.0, shown="0.1 arcsec"
+    )
     if sample:
         common.refuse_with_sample(db, known_at=known_at)
-        campaign = watch.load_sample_campaign(names)
+        campaign = watch.load_sample_campaign(names, with_shells=resolved is not None)
     else:
         entered = clock_instant(known_at, "--known-at")
-        campaign = watch.load_campaign(common.database(db), names, entered, asked)
+        campaign = watch.load_campaign(
+            common.database(db), names, entered, asked, with_shells=resolved is not None
+        )
     question = watch.ask(
         campaign,
         now=common.now_utc(),
@@ -84,6 +94,7 @@ def upcoming(
         draws=count(draws, "--draws", 100, 1_000_000),
         seed=count(seed, "--seed", 0, 2**32 - 1),
         solutions="each" if solutions else "adopted",
+        resolution_arcsec=resolved,
     )
     if names is not None and len(names) == 1 and not solutions:
         explained = watch.explain(campaign, question)
@@ -121,6 +132,4 @@ def _event(text: str):  # type: ignore[no-untyped-def]
 def _fraction(text: str | None) -> float:
     if text is None:
         return 0.0
-    from campaign.commands.parsing import plain_number
-
     return plain_number(text, "fraction", "--min-probability", low=0.0, high=1.0, shown="0.5") or 0.0

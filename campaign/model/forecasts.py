@@ -5,9 +5,9 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import Literal
 
-EventName = Literal["periastron", "onset", "maximum", "end", "A in front", "B in front"]
+EventName = Literal["periastron", "onset", "maximum", "end", "A in front", "B in front", "resolvable"]
 EVENT_NAMES: tuple[EventName, ...] = (
-    "periastron", "onset", "maximum", "end", "A in front", "B in front",
+    "periastron", "onset", "maximum", "end", "A in front", "B in front", "resolvable",
 )  # fmt: skip
 
 Status = Literal["expected", "open", "late", "unseen", "suspected", "under way", "over", "phase lost", "past"]

@@ -21,6 +21,7 @@ class ShellRadius:
     radius_arcsec: Measured
     index: int | None = None
     bmjd_tdb: float | None = None
+    bmjd_sigma_d: float | None = None
     image: str = ""
     measured_at: Literal["edge", "peak"] | None = None
     plate_scale_error: float | None = None
@@ -49,7 +50,6 @@ class ShellQuestion:
     missing_prior: float | None = None
     draws: int | None = None
     seed: int | None = None
-    as_of_bmjd_tdb: float = 0.0
 
 
 @dataclass(frozen=True, slots=True)

@@ -118,6 +118,7 @@ class ShellAssignment:
     meaning: str
     spacing_arcsec: float
     phase_of_youngest: float
+    image_bmjd_tdb: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -220,6 +221,16 @@ class ResolvableDate:
 
 
 @dataclass(frozen=True, slots=True)
+class ComingShell:
+    """An episode that is still to come: when its shell is launched, in the middle of its window."""
+
+    cycle: int | None
+    launched_bmjd_tdb: float
+    launched_sigma_d: float | None
+    launched_utc: str | None
+
+
+@dataclass(frozen=True, slots=True)
 class ExpectedView:
     """All shells at one date."""
 
@@ -245,3 +256,4 @@ class ShellExpectation:
     outer_radius_arcsec: float | None = None
     assumptions: tuple[str, ...] = ()
     warnings: tuple[str, ...] = ()
+    coming: tuple[ComingShell, ...] = ()

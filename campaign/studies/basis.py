@@ -69,7 +69,8 @@ def event_forecasts(
         state = states.get((one.unit, one.cycle))
         status, extra = _status(one, state, as_of)
         bmjd, utc = _dates(one, iso[5 * i : 5 * i + 5])
-        learned = one.event in SCATTERS and row.rule is not None and row.rule.kind == "learned"
+        ruled = one.event in SCATTERS or one.event == "resolvable"
+        learned = ruled and row.rule is not None and row.rule.kind == "learned"
         result.append(
             EventForecast(
                 system=row.record.system.name,
@@ -77,7 +78,7 @@ def event_forecasts(
                 cycle=one.cycle,
                 basis="episodes" if learned else "orbit",
                 solution=unit.label,
-                rule=row.rule.kind if row.rule is not None and one.event in SCATTERS else None,
+                rule=row.rule.kind if row.rule is not None and ruled else None,
                 bmjd_tdb=bmjd,
                 utc=utc,
                 status=status,
@@ -124,7 +125,7 @@ def _error_notes(one: DatedEvent) -> list[str]:
 
 
 def _mixture_notes(rows: Sequence[ForecastRow], unit: ForecastUnit, one: DatedEvent) -> list[str]:
-    if len(unit.rows) == 1 or one.observed:
+    if len(unit.rows) == 1 or one.observed or one.event == "resolvable":
         return []
     dating = [(i, w) for i, w in zip(unit.rows, unit.weights, strict=True) if one.event in rows[i].events]
     if len(dating) == 1:

@@ -19,6 +19,7 @@ from campaign.model.forecasts import (
 )
 from campaign.model.instants import Moment
 from campaign.model.measured import Measured
+from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
 from campaign.physics.recurrence import RecurrencePrediction
 from campaign.studies.elements import cycle_count, elements
@@ -26,6 +27,7 @@ from campaign.studies.following import days_since_onset, needed_since_onset
 from campaign.studies.forecast import COUNTED_FROM_ONSET
 from campaign.studies.learned import LearnedDates
 from campaign.studies.preparing import Prepared, Question, prepare
+from campaign.studies.resolvable import explain_resolvable
 from campaign.studies.rows import SCATTERS, ForecastRow
 from campaign.studies.sampling import Sampler
 from campaign.studies.upcoming import forecast_campaign
@@ -35,7 +37,10 @@ FloatArray = NDArray[np.float64]
 
 
 def explain_system(
-    record: SystemRecord, photometry: Mapping[int, PhotometryArrays], question: Question
+    record: SystemRecord,
+    photometry: Mapping[int, PhotometryArrays],
+    question: Question,
+    shells: Mapping[int, Sequence[Observation]] | None = None,
 ) -> ExplainedSystem:
     """Forecast one system and say how each date and its error came about.
 
@@ -47,6 +52,8 @@ def explain_system(
         Its light curve by system id; may be empty.
     question : Question
         Window (``bmjd_tdb``), draws and seed.
+    shells : mapping of int to sequence of Observation, optional
+        Its logged shells by system id.
 
     Returns
     -------
@@ -65,13 +72,16 @@ def explain_system(
 
     Source: propagation of errors, first order, with the remainder stated.
     """
-    upcoming = forecast_campaign([record], photometry, question)
+    upcoming = forecast_campaign([record], photometry, question, shells)
     prepared = prepare([record], photometry, question)
     events = []
     for forecast in upcoming.events:
         if forecast.bmjd_tdb is None or forecast.cycle is None:
             continue
-        events.append(_explain_event(forecast, prepared, question.seed))
+        if forecast.event == "resolvable":
+            events.append(explain_resolvable(forecast, prepared, question, shells or {}))
+        else:
+            events.append(_explain_event(forecast, prepared, question.seed))
     rows = [prepared.rows[i] for unit in prepared.units for i in unit.rows]
     return ExplainedSystem(
         system=record.system.name,

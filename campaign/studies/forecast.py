@@ -177,7 +177,7 @@ class Forecaster:
         return list(found)
 
     def _cycle_span(self, event: EventName, index: IntArray, window: Window) -> tuple[IntArray, IntArray]:
-        reference = np.array([self._reference_cycle(int(i), window) for i in index], dtype=np.int64)
+        reference = np.array([self.cycle_near(int(i), window.start) for i in index], dtype=np.int64)
         low, high = self._reach(event, index, reference)
         has = ~np.isnan(low)
         period = np.array([self.period_d(int(i)) for i in index])
@@ -223,14 +223,15 @@ class Forecaster:
         unit = self.units[self.unit_of_row[row]]
         return unit.watched or bool(unit.episodes)
 
-    def _reference_cycle(self, row: int, window: Window) -> int:
+    def cycle_near(self, row: int, instant: float) -> int:
+        """The cycle whose date is nearest to an instant, ``bmjd_tdb``."""
         learned = self.learned.get(row)
         epoch, period = self.sampler.columns["epoch"][row, 0], self.period_d(row)
         if learned is not None and (np.isnan(epoch) or self.rows[row].solution is None):
             event = learned.events()[0]
             last_cycle, last_date = learned.cycles[event][-1], learned.dates_d[event][-1]
-            return int(last_cycle + round((window.start - last_date) / period))
-        return self.rows[row].epoch_cycle + round(float((window.start - epoch) / period))
+            return int(last_cycle + round((instant - last_date) / period))
+        return self.rows[row].epoch_cycle + round(float((instant - epoch) / period))
 
     # ---------------------------------------------------------------- dates
 
@@ -241,7 +242,7 @@ class Forecaster:
         seen: list[tuple[int, EventName, int]] = []
         tasks = self.tasks(window, events)
         lost: dict[tuple[int, EventName], None] = {}
-        for (unit, event, cycle), is_lost in zip(tasks, self._phase_lost(tasks), strict=True):
+        for (unit, event, cycle), is_lost in zip(tasks, self.phase_lost(tasks), strict=True):
             one = self.units[unit]
             if is_lost:
                 lost[unit, event] = None
@@ -273,7 +274,7 @@ class Forecaster:
             dated.extend(self._dated_in_blocks(event, drawn, window, keep_grid))
         return dated
 
-    def _phase_lost(self, tasks: Sequence[tuple[int, EventName, int]]) -> NDArray[np.bool_]:
+    def phase_lost(self, tasks: Sequence[tuple[int, EventName, int]]) -> NDArray[np.bool_]:
         """Of each task, whether 3 sigma of its date in any of its rows reach half a period."""
         lost = np.zeros(len(tasks), dtype=bool)
         where, rows, cycles = [], [], []
@@ -346,7 +347,7 @@ class Forecaster:
         at = np.array([cycle])
         return self._mixed(unit, event, lambda i: self.sampler.event_times(event, np.array([i]), at)[0])
 
-    def _since_onset(self, unit: int, event: EventName, cycle: int) -> FloatArray:
+    def since_onset(self, unit: int, event: EventName, cycle: int) -> FloatArray:
         return self._mixed(
             unit, event, lambda i: days_since_onset(self.sampler, self.learned.get(i), i, event, cycle)
         )
@@ -411,7 +412,7 @@ class Forecaster:
         else:
             times = self.unit_times(unit, event, cycle)
             if episode.onset is not None and event in ("maximum", "end"):
-                since = self._since_onset(unit, event, cycle)
+                since = self.since_onset(unit, event, cycle)
                 if not np.all(np.isnan(since)):
                     moment = episode.onset.moment
                     times = since + self._observed_draws(moment.bmjd_tdb, moment.minus_d, moment.plus_d)

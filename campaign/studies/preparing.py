@@ -25,7 +25,8 @@ class Question:
     """What is asked of the forecaster; instants are ``bmjd_tdb``.
 
     ``solutions`` is 'adopted' for one forecast a system (a mixture where solutions carry weights) or
-    'each' for every solution side by side.
+    'each' for every solution side by side. ``resolution_arcsec`` is what an image resolves, for the event
+    'resolvable', which has no date without it.
     """
 
     as_of: float
@@ -36,6 +37,7 @@ class Question:
     draws: int = DEFAULT_DRAWS
     seed: int = DEFAULT_SEED
     solutions: str = "adopted"
+    resolution_arcsec: float | None = None
 
     @property
     def window(self) -> Window:

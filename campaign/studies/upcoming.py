@@ -9,6 +9,7 @@ import numpy as np
 
 from campaign.model.arrays import PhotometryArrays
 from campaign.model.forecasts import EVENT_NAMES, EventForecast, EventName, UpcomingResult
+from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
 from campaign.physics.timescales import utc_iso
 from campaign.studies.basis import describe_basis, dust_windows, event_forecasts
@@ -16,6 +17,7 @@ from campaign.studies.dateless import dateless_events
 from campaign.studies.forecast import KEEP_LISTED_D, MOST_CYCLES, DatedEvent, Forecaster
 from campaign.studies.lightcurves import CataloguedCurves
 from campaign.studies.preparing import Prepared, Question, prepare
+from campaign.studies.resolvable import resolvable_events
 from campaign.studies.status import OnsetState, needs_photometry, onset_state
 
 # More than this and nobody reads a timeline.
@@ -28,6 +30,7 @@ def forecast_campaign(
     records: Sequence[SystemRecord],
     photometry: Mapping[int, PhotometryArrays],
     question: Question,
+    shells: Mapping[int, Sequence[Observation]] | None = None,
 ) -> UpcomingResult:
     """Forecast every event of every active system.
 
@@ -39,6 +42,8 @@ def forecast_campaign(
         Light curves by system id, for the status; may be empty.
     question : Question
         Window, instant of the question, events, draws and seed.
+    shells : mapping of int to sequence of Observation, optional
+        Logged shells by system id, for the event 'resolvable'.
 
     Returns
     -------
@@ -62,6 +67,7 @@ def forecast_campaign(
     # The status of an onset needs the end, whatever is listed.
     wanted = tuple(e for e in EVENT_NAMES if e in question.events or e in ("onset", "end"))
     dated = forecaster.run(question.window, wanted)
+    dated += resolvable_events(prepared, forecaster, question, shells or {})
     states = onset_states(prepared, forecaster, dated, photometry, question)
     listed = [d for d in dated if d.event in question.events and _is_listed(d, states, question)]
     listed.extend(dateless_events(prepared, question))

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime, timedelta
 from difflib import get_close_matches
 
@@ -19,6 +19,7 @@ from campaign.model.forecasts import (
     UpcomingResult,
 )
 from campaign.model.instants import TypedInstant
+from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
 from campaign.reading.numbers import name_key
 from campaign.studies.collecting import collector_at_rest
@@ -28,7 +29,7 @@ from campaign.studies.lightcurves import CataloguedCurves
 from campaign.studies.sampling import DEFAULT_DRAWS, DEFAULT_SEED
 from campaign.studies.upcoming import Question, forecast_campaign
 
-_MJD_ZERO = datetime(1858, 11, 17, tzinfo=UTC)
+MJD_ZERO = datetime(1858, 11, 17, tzinfo=UTC)
 DEFAULT_WITHIN_D = 5.0 * 365.25
 DEFAULT_ROWS = 40
 # How far ahead to look for the first event when the period asked for holds none.
@@ -45,10 +46,16 @@ class Campaign:
     photometry: Mapping[int, PhotometryArrays]
     own_as_of: float | None = None
     is_sample: bool = False
+    shells: Mapping[int, tuple[Observation, ...]] = field(default_factory=dict)
 
 
 def load_campaign(
-    db: str, names: Sequence[str] | None, known_at: TypedInstant | None, as_of: TypedInstant | None
+    db: str,
+    names: Sequence[str] | None,
+    known_at: TypedInstant | None,
+    as_of: TypedInstant | None,
+    *,
+    with_shells: bool = False,
 ) -> Campaign:
     """Load active systems, or the named ones, with their light curves.
 
@@ -60,6 +67,8 @@ def load_campaign(
         Names or aliases; None for every system that is not retired.
     known_at, as_of : TypedInstant or None
         Hide entries, or observations, made after it.
+    with_shells : bool
+        Whether logged shells are needed too.
 
     Returns
     -------
@@ -77,26 +86,35 @@ def load_campaign(
     """
     from campaign.catalogue import info, observations, records, store, systems
 
-    entered = None if known_at is None else _MJD_ZERO + timedelta(days=known_at.mjd)
+    entered = None if known_at is None else MJD_ZERO + timedelta(days=known_at.mjd)
     observed = None if as_of is None else axis_instant(as_of)
     with collector_at_rest(), store.reading(db) as connection:
         ids = None if names is None else [systems.find_system(connection, name).id for name in names]
         found = records.load_records(connection, ids, known_at=entered, include_retired=ids is not None)
         counts = observations.count_observations(connection, ids)
+        seen = (
+            observations.observations_of(
+                connection, ids, ["shell"], as_of_bmjd_tdb=observed, known_at=entered
+            )
+            if with_shells
+            else ()
+        )
         own = info.read_info(connection).get("sample_as_of")
     own_as_of = None if own is None else mjd_of(datetime.fromisoformat(own.replace("Z", "+00:00")))
     watched = [number for number, kinds in counts.items() if kinds.get("photometry")]
     curves = CataloguedCurves(db, watched, observed, entered)
-    return Campaign(tuple(found), curves, own_as_of, own is not None)
+    return Campaign(tuple(found), curves, own_as_of, own is not None, _by_system(seen))
 
 
-def load_sample_campaign(names: Sequence[str] | None) -> Campaign:
+def load_sample_campaign(names: Sequence[str] | None, *, with_shells: bool = False) -> Campaign:
     """The invented sample campaign, without any database.
 
     Parameters
     ----------
     names : sequence of str or None
         Names or aliases; None for every system that is not retired.
+    with_shells : bool
+        Whether logged shells are needed too.
 
     Returns
     -------
@@ -120,7 +138,15 @@ def load_sample_campaign(names: Sequence[str] | None) -> Campaign:
         chosen = tuple(r for r in records if r.system.state != "retired")
     else:
         chosen = tuple(_named(records, name) for name in names)
-    return Campaign(chosen, dict(sample.photometry), sample.as_of_bmjd_tdb, True)
+    seen = [each for each in sample.observations() if each.kind == "shell"] if with_shells else ()
+    return Campaign(chosen, dict(sample.photometry), sample.as_of_bmjd_tdb, True, _by_system(seen))
+
+
+def _by_system(observations: Iterable[Observation]) -> dict[int, tuple[Observation, ...]]:
+    found: dict[int, list[Observation]] = {}
+    for each in observations:
+        found.setdefault(each.system_id, []).append(each)
+    return {number: tuple(several) for number, several in found.items()}
 
 
 def _named(records: Sequence[SystemRecord], name: str) -> SystemRecord:
@@ -158,7 +184,7 @@ def mjd_of(at: datetime) -> float:
 
     Source: time scales of IAU, through erfa.
     """
-    passed = at - _MJD_ZERO
+    passed = at - MJD_ZERO
     fraction = (passed.seconds + 1e-6 * passed.microseconds) / 86_400.0
     return axis_instant(
         TypedInstant(float(passed.days), fraction, "utc", "geocentre", 0.0, 0.0, "second", at.isoformat())
@@ -178,6 +204,7 @@ def ask(
     draws: int | None,
     seed: int | None,
     solutions: str,
+    resolution_arcsec: float | None = None,
 ) -> Question:
     """Put the question: from when, until when, as of when.
 
@@ -199,6 +226,8 @@ def ask(
         Of the random draws.
     solutions : str
         'adopted' or 'each'.
+    resolution_arcsec : float or None
+        What an image resolves, arcsec; without it no shell has a date at which it is resolvable.
 
     Returns
     -------
@@ -208,12 +237,20 @@ def ask(
     Raises
     ------
     InputRefused
-        If the period ends before it begins, or is given twice.
+        If the period ends before it begins, or is given twice; if the event 'resolvable' is asked for without
+        a resolution.
 
     Notes
     -----
     Accuracy: see ``campaign.studies.instants.axis_instant``. Source: project convention.
     """
+    if "resolvable" in events and resolution_arcsec is None:
+        raise InputRefused(
+            "Nothing says what is resolvable.",
+            why="That depends on the image: its resolution, or the inner working angle of a coronagraph.",
+            hint="For example --event resolvable --resolution 0.1arcsec.",
+            code="resolution-unstated",
+        )
     today = _today(campaign, now, as_of)
     first = today if start is None else axis_instant(start)
     if end is not None and within_d is not None:
@@ -247,6 +284,7 @@ def ask(
         draws=draws or DEFAULT_DRAWS,
         seed=DEFAULT_SEED if seed is None else seed,
         solutions=solutions,
+        resolution_arcsec=resolution_arcsec,
     )
 
 
@@ -276,7 +314,7 @@ def upcoming(campaign: Campaign, question: Question) -> UpcomingResult:
     Accuracy: see ``forecast_campaign``. Source: DEVELOPERS.md.
     """
     with collector_at_rest():
-        result = forecast_campaign(campaign.records, campaign.photometry, question)
+        result = forecast_campaign(campaign.records, campaign.photometry, question, campaign.shells)
     return _with_date_note(_with_next(result, campaign, question), campaign, question)
 
 
@@ -285,7 +323,7 @@ def _with_next(result: UpcomingResult, campaign: Campaign, question: Question) -
     if result.events or not any(basis.has_forecast for basis in result.bases):
         return result
     longer = replace(question, start=question.end, end=question.end + NEXT_SEARCH_D, min_probability=0.0)
-    later = forecast_campaign(campaign.records, campaign.photometry, longer).events
+    later = forecast_campaign(campaign.records, campaign.photometry, longer, campaign.shells).events
     dated = [event for event in later if event.utc is not None and event.utc.median is not None]
     if not dated:
         return result
@@ -326,7 +364,7 @@ def explain(campaign: Campaign, question: Question) -> ExplainedSystem:
     """
     from campaign.studies.explain import explain_system
 
-    told = explain_system(campaign.records[0], campaign.photometry, question)
+    told = explain_system(campaign.records[0], campaign.photometry, question, campaign.shells)
     found = _with_next(told.upcoming, campaign, question)
     return replace(told, upcoming=_with_date_note(found, campaign, question))
 

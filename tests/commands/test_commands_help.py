@@ -57,7 +57,7 @@ SETTING = (
     ),
 )
 OURS = [("upcoming",), ("ephemeris",), ("log", "photometry"), ("log", "flux"), ("rule", "set"),
-        ("solution", "adopt"), ("episodes", "add")]  # fmt: skip
+        ("solution", "adopt"), ("episodes", "add"), ("shells", "date"), ("shells", "expect")]  # fmt: skip
 FROM_NOTHING = [("system", "add"), ("site", "add")]
 
 

@@ -1,0 +1,290 @@
+"""Which shell is which: indices inside each image, and one count of launches through all images."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from campaign.model.measured import Measured
+from campaign.model.shells import ShellAssignment
+from campaign.physics.shellassignment import MISSING_PRIOR, Assignment, assign_indices
+from campaign.physics.shellvalues import Sided
+from campaign.physics.timescales import utc_iso
+from campaign.studies.shell_ephemeris import ShellEphemeris
+from campaign.studies.shell_images import RadiusGroup, bmjd_of
+
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+# A stated index stands unless the radii give it less than this probability.
+_STATED_STANDS = 0.01
+# New shells between two images that are tried where no period says how many there were.
+_MOST_TURNS = 12
+# A count of turns is told from its neighbours while the period is known better than this, in turns.
+_CLEAR_TURNS = 0.25
+# A count of turns this much worse in chi-square than the best is not worth naming.
+_WORTH_NAMING = 9.0
+# How the note on finer spacings begins, which says nothing where a motion and a period are known.
+_FINER = "A finer spacing"
+# How well one image says how far apart the shells of another are: it may itself have missed one.
+_WIDE_SPACING = 0.1
+
+
+@dataclass(frozen=True, slots=True)
+class _CountedImage:
+    """The shells of one image, the youngest visible being 1; ``youngest_phase`` is its age in periods."""
+
+    index: FloatArray
+    youngest_phase: float
+    spacing_arcsec: float
+    assignments: tuple[ShellAssignment, ...] = ()
+    not_told: tuple[str, ...] = ()
+    warnings: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Counted:
+    """Index of each radius of a group, 1 for the youngest visible of its image, and the launch it is of.
+
+    ``cycle`` grows with the launch and is counted from the youngest shell of all images, which has 0.
+    """
+
+    index: FloatArray
+    cycle: IntArray
+    assignments: tuple[ShellAssignment, ...] = ()
+    not_told: tuple[str, ...] = ()
+    warnings: tuple[str, ...] = ()
+
+
+def count_shells(
+    group: RadiusGroup,
+    missing_prior: float | None,
+    spacing: Sided | None,
+    period: Measured | None,
+    ephemeris: ShellEphemeris | None,
+) -> Counted:
+    """Number the shells of every image, and tell which of different images are the same.
+
+    Parameters
+    ----------
+    group : RadiusGroup
+        Radii, arcsec, in one image or several.
+    missing_prior : float or None
+        Prior probability that a shell went unseen (dimensionless).
+    spacing : Sided or None
+        What else says how far apart shells are, arcsec.
+    period : Measured or None
+        Julian years.
+    ephemeris : ShellEphemeris or None
+        Says how far the youngest shell should have come.
+
+    Returns
+    -------
+    Counted
+        Indices and cycles (dimensionless).
+
+    Notes
+    -----
+    Accuracy: see ``campaign.physics.shellassignment``.
+
+    Source: Bayes' rule over the ways to count, with a stated prior cost of each missing shell.
+    """
+    index = np.zeros(group.radius_arcsec.size)
+    phases, spacings = np.zeros(group.images), np.zeros(group.images)
+    assignments: list[ShellAssignment] = []
+    not_told: dict[str, None] = {}
+    warnings: list[str] = []
+    order = sorted(range(group.images), key=lambda e: (-group.of_image(e).size, e))
+    for number in order:
+        places = group.of_image(number)
+        instant = bmjd_of(float(group.time_yr[places[0]])) if group.dated else None
+        phase = None if ephemeris is None or instant is None else ephemeris.phase_of_youngest(instant)
+        counted = _count_image(group, places, missing_prior, spacing, phase)
+        index[places] = counted.index
+        phases[number], spacings[number] = counted.youngest_phase, counted.spacing_arcsec
+        assignments += counted.assignments
+        not_told.update(dict.fromkeys(counted.not_told))
+        warnings += counted.warnings
+        if spacing is None and places.size > 2:
+            # The image with most shells says how far apart they are in the others.
+            size = _WIDE_SPACING * counted.spacing_arcsec
+            spacing = Sided(counted.spacing_arcsec, size, size)
+    if group.images > 1 and period is not None:
+        # A motion through several images times a known period is a spacing of its own.
+        not_told = {note: None for note in not_told if not note.startswith(_FINER)}
+    single = bool((np.bincount(group.image) == 1).all()) and spacing is None
+    if single:
+        # No image shows how far apart shells are: one radius in each is taken as one shell growing.
+        not_told["the one radius of each image is taken as that of the same shell"] = None
+    width = 0.0 if single else float(np.median(spacings[spacings > 0.0]))
+    turns, doubts = _turns(group, phases, width, period)
+    warnings += doubts
+    youngest = np.concatenate([[0], np.cumsum(turns)])[group.image]
+    cycle = (youngest - np.floor(index) + 1).astype(np.int64)
+    return Counted(
+        index, cycle - int(cycle.max()), tuple(assignments), tuple(not_told), tuple(dict.fromkeys(warnings))
+    )
+
+
+def _count_image(
+    group: RadiusGroup,
+    places: IntArray,
+    missing_prior: float | None,
+    spacing: Sided | None,
+    phase: Sided | None,
+) -> _CountedImage:
+    stated = [group.radii[i].index for i in places]
+    radius = group.errors.peaks(group.radius_arcsec)[places]
+    in_order = np.array([place + 1.0 if j is None else float(j) for place, j in enumerate(stated)])
+    if places.size == 1 or not group.errors.known:
+        said = (
+            ()
+            if places.size == 1
+            else ("an error of a radius is not known: shells are counted as they stand",)
+        )
+        width = _rough_spacing(radius, in_order, spacing)
+        return _CountedImage(in_order, float(radius[0] / width - in_order[0] + 1.0), width, not_told=said)
+    chosen = np.zeros(group.radius_arcsec.size, dtype=bool)
+    chosen[places] = True
+    found = assign_indices(
+        radius,
+        group.errors.only(chosen),
+        MISSING_PRIOR if missing_prior is None else missing_prior,
+        spacing_arcsec=spacing,
+        youngest_phase=phase,
+    )
+    ways = (found.best, *found.alternatives)
+    best, warnings = _that_stands(ways, stated, _where(group, places))
+    shift = float(_shift(best.indices, stated))
+    index = np.array(best.indices) - shift
+    return _CountedImage(
+        index,
+        best.youngest_phase + shift,  # of index 1, whether it was seen or not
+        best.spacing_arcsec,
+        tuple(_assignment(way, group.radii[places[0]].bmjd_tdb) for way in ways),
+        found.not_told,
+        warnings,
+    )
+
+
+def _shift(indices: Sequence[float], stated: Sequence[int | None]) -> int:
+    """What to take from counted indices to get the stated ones, where somebody began elsewhere than at 1."""
+    for found, given in zip(indices, stated, strict=True):
+        if given is not None and _agrees(indices, stated):
+            return round(found - given)
+    return 0
+
+
+def _rough_spacing(radius: FloatArray, index: FloatArray, spacing: Sided | None) -> float:
+    if np.ptp(index) > 0.0:
+        return float(np.ptp(radius) / np.ptp(index))
+    return float(radius[0]) if spacing is None else spacing.value
+
+
+def _that_stands(
+    ways: Sequence[Assignment], stated: Sequence[int | None], where: str
+) -> tuple[Assignment, tuple[str, ...]]:
+    """The likeliest way that agrees with stated indices, unless the radii all but rule that out."""
+    if all(index is None for index in stated):
+        return ways[0], ()
+    agreeing = [way for way in ways if _agrees(way.indices, stated)]
+    chance = sum(way.probability for way in agreeing)
+    if agreeing and chance >= _STATED_STANDS:
+        if agreeing[0] is not ways[0]:
+            said = (
+                f"{where}: the stated indices have a probability of {chance:.0%}; likelier: {ways[0].meaning}"
+            )
+            return agreeing[0], (said,)
+        return agreeing[0], ()
+    said = f"{where}: the stated indices do not fit the radii (probability below {max(chance, 0.01):.0%}); "
+    return ways[0], (f"{said}counted instead: {ways[0].meaning}",)
+
+
+def _agrees(indices: Sequence[float], stated: Sequence[int | None]) -> bool:
+    """Whether the steps from shell to shell are those of the stated indices, where they are stated."""
+    steps = {found - given for found, given in zip(indices, stated, strict=True) if given is not None}
+    return len(steps) == 1
+
+
+def _where(group: RadiusGroup, places: IntArray) -> str:
+    if not group.dated:
+        return "the image"
+    return f"image of {(utc_iso([bmjd_of(float(group.time_yr[places[0]]))])[0] or '')[:10]}"
+
+
+def _assignment(way: Assignment, image_bmjd_tdb: float | None) -> ShellAssignment:
+    return ShellAssignment(
+        indices=tuple(float(index) for index in way.indices),
+        probability=way.probability,
+        missing=way.missing,
+        blended=way.blended,
+        meaning=way.meaning,
+        spacing_arcsec=way.spacing_arcsec,
+        phase_of_youngest=way.youngest_phase,
+        image_bmjd_tdb=image_bmjd_tdb,
+    )
+
+
+# ---------------------------------------------------------------------------------- through several images
+
+
+def _turns(
+    group: RadiusGroup, phases: FloatArray, spacing_arcsec: float, period: Measured | None
+) -> tuple[list[int], list[str]]:
+    """How many new shells the visible youngest of each image is after that of the image before."""
+    if group.images == 1:
+        return [], []
+    if not group.dated:
+        return [0] * (group.images - 1), []
+    if all(group.of_image(number).size == 1 for number in range(group.images)) and spacing_arcsec <= 0.0:
+        return [0] * (group.images - 1), []
+    instants = np.array([group.time_yr[group.of_image(number)[0]] for number in range(group.images)])
+    gaps, steps = np.diff(instants), -np.diff(phases)
+    if period is not None:
+        return _turns_by_period(gaps, steps, period)
+    return _turns_by_motion(group, gaps, steps, spacing_arcsec)
+
+
+def _turns_by_period(gaps: FloatArray, steps: FloatArray, period: Measured) -> tuple[list[int], list[str]]:
+    turns = [round(float(value)) for value in gaps / period.value + steps]
+    blur = gaps * (period.sigma or 0.0) / period.value**2
+    if bool((blur > _CLEAR_TURNS).any()):
+        return turns, ["the period is too uncertain to count the shells launched between the images"]
+    return turns, []
+
+
+def _turns_by_motion(
+    group: RadiusGroup, gaps: FloatArray, steps: FloatArray, spacing_arcsec: float
+) -> tuple[list[int], list[str]]:
+    """No period: each number of new shells in the first gap is a period, which counts the other gaps."""
+    tried: list[tuple[float, float, list[int]]] = []
+    for first in range(_MOST_TURNS + 1):
+        way = first - float(steps[0])
+        if way <= 0.0:
+            continue
+        period_yr = float(gaps[0]) / way
+        turns = [first, *(round(float(v)) for v in gaps[1:] / period_yr + steps[1:])]
+        misfit = float(np.sum((np.array(turns) - gaps / period_yr - steps) ** 2)) if len(turns) > 1 else 0.0
+        own = _phase_error(group, spacing_arcsec)
+        tried.append((misfit / own**2, period_yr, turns))
+    best = min(tried, key=lambda each: (each[0], each[2][0]))
+    others = [
+        f"{each[1]:.3g} yr" for each in tried if each is not best and each[0] - best[0] < _WORTH_NAMING
+    ][:3]
+    if not others:
+        return best[2], []
+    return best[2], [
+        f"nothing says how many shells were launched between the images: with the fewest the period is "
+        f"{best[1]:.3g} yr, but it may also be {' or '.join(others)}; a period, a motion or a third image "
+        "would tell"
+    ]
+
+
+def _phase_error(group: RadiusGroup, spacing_arcsec: float) -> float:
+    """About how well the age of the youngest shell is known in one image, in periods."""
+    sigma = group.errors.sigma_arcsec
+    typical = float(np.median(sigma)) if group.errors.known else 0.05 * spacing_arcsec
+    return max(typical / spacing_arcsec, 1e-3)
