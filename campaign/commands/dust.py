@@ -41,6 +41,9 @@ def dust(
     level: Annotated[
         Texts, option("--level", "BAND=MAG", "The stars' own magnitude: K=7.31±0.02, or N=none.")
     ] = None,
+    extinction: Annotated[
+        Text, option("--extinction", "MAG", "Interstellar, in K: 0.35±0.05; else none.")
+    ] = None,
     distance: Annotated[Text, option("--distance", "VALUE", 'Distance: "2.1±0.2 kpc".')] = None,
     luminosity: Annotated[
         Text, option("--luminosity", "VALUE", 'Of both stars together: "(3.0±0.5)e5 Lsun".')
@@ -174,6 +177,7 @@ def _overrides(given: dict[str, Any]) -> Any:
         zero_points=tuple(read.read_zero_point(text) for text in given["zero_point"] or ()),
         zero_points_of=dict(read.read_zero_points_of(text) for text in given["zero_points"] or ()),
         levels=tuple(read.read_level(text) for text in given["level"] or ()),
+        extinction_k_mag=read.read_extinction(given["extinction"]) if given["extinction"] else None,
         distances_au=() if given["at_distance"] is None else read.read_distances(given["at_distance"]),
     )
 

@@ -48,6 +48,7 @@ class DustOverrides:
     """What the user says in place of the catalogue: inputs by key, opacity, zero points and levels.
 
     ``zero_points_of`` says which known photometric system stands in for one that is not known.
+    ``extinction_k_mag`` is the interstellar extinction in K.
     """
 
     inputs: Mapping[str, Measured | Range] = field(default_factory=dict)
@@ -55,6 +56,7 @@ class DustOverrides:
     zero_points: tuple[ZeroPointGiven, ...] = ()
     zero_points_of: Mapping[str, str] = field(default_factory=dict)
     levels: tuple[LevelGiven, ...] = ()
+    extinction_k_mag: Measured | None = None
     distances_au: tuple[float, ...] = ()
 
 
@@ -177,7 +179,10 @@ class OtherOpacity:
 
 @dataclass(frozen=True, slots=True)
 class MeasuredDust:
-    """Dust at one date. ``temperature_origin`` says whether it was fitted, given, or is not known."""
+    """Dust at one date, from photometry at most ``within_d`` away.
+
+    ``temperature_origin`` says whether it was fitted, given, or is not known.
+    """
 
     bmjd_tdb: float
     utc: str | None
@@ -197,6 +202,7 @@ class MeasuredDust:
     optical_depth: float | None
     other_opacities: tuple[OtherOpacity, ...]
     verdicts: tuple[DustVerdict, ...]
+    within_d: float | None = None
 
     @property
     def is_meaningless(self) -> bool:

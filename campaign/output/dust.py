@@ -46,6 +46,8 @@ def render_dust(screen: Screen, result: DustResult) -> None:
     when = ""
     if result.measured is not None:
         when = f" near {day(result.measured.utc, result.measured.bmjd_tdb)}"
+        if result.measured.within_d is not None:
+            when += f" (± {result.measured.within_d:.4g} d)"
     elif result.through is not None:
         when = " through an episode" if result.through.cycle is None else f" in cycle {result.through.cycle}"
     screen.heading(f"Dust of {result.system}{when}")

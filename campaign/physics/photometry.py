@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from campaign.errors import InputRefused
+from campaign.physics.domain import positive
 
 FloatArray = NDArray[np.float64]
 
@@ -296,6 +297,40 @@ def faint_limit_mag(flux_upper_jy: ArrayLike, zero_point_jy: float) -> FloatArra
             code="limit-refused",
         )
     return np.asarray(-2.5 * np.log10(limit / zero_point_jy))
+
+
+def extinction_over_k(wavelength_um: ArrayLike) -> FloatArray:
+    """Interstellar extinction at a wavelength over that in K.
+
+    Parameters
+    ----------
+    wavelength_um : array_like
+        Wavelength, um, > 0.
+
+    Returns
+    -------
+    ndarray
+        A(lambda)/A(2.2 um) (dimensionless).
+
+    Raises
+    ------
+    InputRefused
+        If a wavelength is not positive.
+
+    Notes
+    -----
+    Accuracy: 10 % from 1 to 5 um. Longer waves are held at the value of 5 um: the bands of silicates near 10
+    and 18 um reach twice that and more.
+
+    Source: power law of index 1.8 (Martin & Whittet 1990, ApJ 357, 113; memory).
+
+    Examples
+    --------
+    >>> extinction_over_k([2.2, 1.1, 20.0]).round(3).tolist()
+    [1.0, 3.482, 0.228]
+    """
+    wavelength = positive(wavelength_um, "wavelength", "2.2 um")
+    return np.asarray((2.2 / np.minimum(wavelength, 5.0)) ** 1.8)
 
 
 def _check_zero_point(zero_point_jy: float, sigma_jy: float) -> None:

@@ -98,6 +98,21 @@ def read_level(text: str, name: str = "--level") -> LevelGiven:
     return LevelGiven(band, mag)
 
 
+def read_extinction(text: str, name: str = "--extinction") -> Measured:
+    """Read the extinction in K, mag; without its error it would be taken for exact.
+
+    Raises
+    ------
+    InputRefused
+        Another form; a value without an error.
+    """
+    mag = read_measured(text, "mag", name, low=0.0, high=10.0)
+    if not mag.error_known:
+        why = "The extinction makes every band brighter, so that its error counts."
+        raise refusal(name, text, why, "0.35±0.05", "error-missing")
+    return mag
+
+
 def read_value_or_range(text: str, unit: str, name: str, **domain: float) -> Measured | Range:
     """Read a value with errors, or a range such as ``1000..1800 K``; a limit is refused.
 

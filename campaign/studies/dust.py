@@ -138,7 +138,7 @@ def tell_dust(
     else:
         arrays = campaign.photometry.get(record.system.id)
         result = _measured(result, inputs, overrides, question, arrays, fluxes)
-        assumptions += [*_zero_point_notes(result), *_MEASURED_NOTES]
+        assumptions += [*_zero_point_notes(result), *_MEASURED_NOTES, _veil_note(overrides)]
     notes = dict.fromkeys([*inputs.notes, *assumptions])
     return replace(result, inputs=inputs.used_inputs(), assumptions=tuple(notes))
 
@@ -172,8 +172,18 @@ _PHYSICS_NOTES = (
 )
 _MEASURED_NOTES = (
     "one temperature, optically thin, with the stars' level of each series taken away",
-    "no interstellar extinction is taken out and no colour correction of the bands is made",
+    "no colour correction of the bands is made",
 )
+
+
+def _veil_note(overrides: DustOverrides) -> str:
+    veil = overrides.extinction_k_mag
+    if veil is None:
+        return "no interstellar extinction is taken out: give --extinction, in K"
+    return (
+        f"interstellar extinction of {veil.value:g} ± {veil.sigma or 0.0:.2g} mag in K is taken out, as "
+        "lambda^-1.8 to 5 um and level beyond (memory)"
+    )
 
 
 def _solution(record: SystemRecord, label: str | None) -> Solution | None:
@@ -216,7 +226,7 @@ def _measured(
         found = excesses(sky, *span)
         _require_zero_points(found, result.system)
         measured, _ = measure(inputs, sky, found, at, question.draws, question.seed)
-        return replace(result, measured=measured)
+        return replace(result, measured=replace(measured, within_d=question.within_d))
     first, last = _span(inputs.record, question)
     sky = _sky(inputs, overrides, points, [*episodes, (first, last)])
     inside = points.bmjd_tdb[(points.bmjd_tdb >= first) & (points.bmjd_tdb <= last)]

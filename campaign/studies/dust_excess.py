@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from campaign.model.dust import BandExcess, BandUse, DustOverrides
+from campaign.model.measured import Measured
 from campaign.physics.opacity import Opacity, opacity_cm2_g, reaches
-from campaign.physics.photometry import FLUX_ERROR_PER_MAG, mag_to_flux
+from campaign.physics.photometry import FLUX_ERROR_PER_MAG, extinction_over_k, mag_to_flux
 from campaign.studies.dust_points import SATURATION_SHARPNESS, Level, Levels, LightPoints, Zero, zero_of
 
 FloatArray = NDArray[np.float64]
@@ -58,7 +59,30 @@ def excesses(sky: Sky, start: float, end: float) -> tuple[BandExcess, ...]:
     for i in near.tolist():
         groups.setdefault((sky.points.band[i], sky.points.photometric_system[i]), []).append(i)
     found = [_excess(sky, band, system, np.array(places)) for (band, system), places in groups.items()]
+    extinction = sky.overrides.extinction_k_mag
+    if extinction is not None:
+        found = [_unveiled(one, extinction) for one in found]
     return tuple(sorted(found, key=lambda one: (one.wavelength_um or np.inf, one.band)))
+
+
+def _unveiled(one: BandExcess, extinction_k_mag: Measured) -> BandExcess:
+    """The band as it would be without the interstellar dust; its error counts as one common to all points."""
+    if one.wavelength_um is None or one.dust_jy is None:
+        return one
+    share = float(extinction_over_k(one.wavelength_um))
+    factor = 10.0 ** (0.4 * share * extinction_k_mag.value)
+    assert one.sigma_jy is not None
+    assert one.common_sigma_jy is not None
+    dust = one.dust_jy * factor
+    veil = abs(dust) * FLUX_ERROR_PER_MAG * share * (extinction_k_mag.sigma or 0.0)
+    return replace(
+        one,
+        dust_jy=dust,
+        sigma_jy=float(np.hypot(one.sigma_jy * factor, veil)),
+        common_sigma_jy=float(np.hypot(one.common_sigma_jy * factor, veil)),
+        star_jy=None if one.star_jy is None else one.star_jy * factor,
+        observed_jy=None if one.observed_jy is None else one.observed_jy * factor,
+    )
 
 
 def _excess(sky: Sky, band: str, system: str, places: Places) -> BandExcess:

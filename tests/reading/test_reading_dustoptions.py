@@ -9,6 +9,7 @@ from campaign.model.dust import DustOpacity, LevelGiven, ZeroPointGiven
 from campaign.model.measured import Measured, Range
 from campaign.reading.dustoptions import (
     read_distances,
+    read_extinction,
     read_level,
     read_opacity,
     read_value_or_range,
@@ -46,6 +47,10 @@ def test_a_stand_in_is_for_all_or_for_one():
     assert read_zero_points_of("Cold Mesa JHKLM = MKO") == ("Cold Mesa JHKLM", "MKO")
 
 
+def test_an_extinction_has_an_error():
+    assert read_extinction("0.35±0.05") == Measured(0.35, 0.05, 0.05)
+
+
 def test_a_level_has_an_error_or_is_none():
     assert read_level("K=7.31±0.02") == LevelGiven("K", Measured(7.31, 0.02, 0.02))
     assert read_level("N=none") == LevelGiven("N", None)
@@ -73,6 +78,8 @@ def test_distances_share_their_unit():
         (read_zero_point, "K=0 Jy at 2.2 um"),
         (read_zero_points_of, "Cold Mesa="),
         (read_zero_points_of, ""),
+        (read_extinction, "0.35"),
+        (read_extinction, "-0.1±0.1"),
         (read_level, "7.31±0.02"),
         (read_level, "K=7.31"),
         (read_level, "K=nan±0.1"),

@@ -231,6 +231,19 @@ def test_without_a_luminosity_thickness_is_not_known_and_that_is_said():
     assert result.measured.mass_msun is not None
 
 
+def test_interstellar_extinction_is_taken_out_with_its_error():
+    # By hand: 0.4 mag in K are 0.4 (2.2/lambda)^1.8 mag elsewhere, and a magnitude is a factor of 10^0.4.
+    light = photometry(None, {AT_MJD: (2e-8, 900.0)})
+    plain, clear = (
+        told(light, DustOverrides(extinction_k_mag=veil)).measured for veil in (None, Measured(0.4, 0.1, 0.1))
+    )
+    for before, after in zip(plain.bands, clear.bands, strict=True):
+        a = 0.4 * (2.2 / before.wavelength_um) ** 1.8
+        assert after.dust_jy / before.dust_jy == pytest.approx(10.0 ** (0.4 * a), rel=1e-9)
+        assert after.excess_sigma == before.excess_sigma
+    assert clear.mass_msun.sigma / clear.mass_msun.value > plain.mass_msun.sigma / plain.mass_msun.value
+
+
 def test_two_temperatures_are_not_one():
     points = Points([])
     for band, photometric, star_mag in BANDS:
