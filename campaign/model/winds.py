@@ -60,7 +60,8 @@ class SurfacePoint:
     """A point of the contact surface: ``angle_deg`` at the weaker star from the direction to the stronger.
 
     ``along_over_d`` counts from the stronger star through the weaker, ``across_over_d`` at right angles, in
-    separations, for the nominal momentum ratio.
+    separations, for the nominal momentum ratio. A bound of the distance is None where the surface does not
+    reach that direction any more.
     """
 
     angle_deg: float

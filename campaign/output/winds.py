@@ -77,7 +77,8 @@ _QUANTITY_COLUMNS = (
 _FORM_COLUMNS = (Column("form"), Column("angle, 68 %"), Column("source", shrinks=True, drop=1))
 _SHAPE_COLUMNS = (
     Column("angle°", align="right", name="angle at the weaker star from the stronger"),
-    Column("R/D, 68 %", align="right"),
+    Column("R/D", align="right"),
+    Column("68 %", align="right"),
     Column("along/D", align="right", drop=2),
     Column("across/D", align="right", drop=1),
 )
@@ -117,12 +118,21 @@ def _shape(result: WindsResult) -> list[tuple[str, ...]]:
     return [
         (
             f"{point.angle_deg:.1f}",
-            told(point.from_weaker_over_d),
+            f"{point.from_weaker_over_d.value:.3f}",
+            _reach(point.from_weaker_over_d),
             f"{point.along_over_d:.3f}".replace("-", "−"),
             f"{point.across_over_d:.3f}",
         )
         for point in result.surface
     ]
+
+
+def _reach(distance: Propagated) -> str:
+    """An interval of distances, whose far end may be out of reach."""
+    if distance.unknown_errors or distance.lo68 is None:
+        return "error unknown" if distance.unknown_errors else "out of reach"
+    far = "out of reach" if distance.hi68 is None else f"{distance.hi68:.3f}"
+    return f"{distance.lo68:.3f} … {far}"
 
 
 # ------------------------------------------------------------------------------------ cooling, line of sight
