@@ -118,7 +118,11 @@ def fold(text: str, width: int | None, hang: int = 0) -> list[str]:
         return [text]
     lines: list[str] = []
     line = ""
-    for word in text.split(" "):
+    # Blanks in front are an indent and stay; those between words are where a line may end.
+    indent = len(text) - len(text.lstrip(" ")) if text.strip() else 0
+    words = text[indent:].split(" ")
+    words[0] = text[:indent] + words[0]
+    for word in words:
         trial = f"{line} {word}" if line else word
         if cell_len(trial) <= width - (hang if lines else 0):
             line = trial

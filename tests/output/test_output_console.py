@@ -76,6 +76,15 @@ def test_folding_keeps_every_word_and_every_width():
     assert "".join("".join(lines).split()) == "".join(text.split())
 
 
+def test_an_indent_stays_whether_the_text_is_folded_or_not():
+    assert fold("    short", 12) == ["    short"]
+    assert fold("    one two three", 12, hang=6) == ["    one two", "three"]
+    assert fold("    ", 2) == [""]
+    heard = io.StringIO()
+    Screen(heard, True, 12).wrapped("one two three", label="    ", hang=6)
+    assert heard.getvalue() == "    one two\n      three\n"
+
+
 def test_data_in_a_line_cannot_colour_it():
     heard = io.StringIO()
     Screen(heard, True, 80, True).line(Span("\x1b[31mred", ""))
