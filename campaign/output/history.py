@@ -113,9 +113,11 @@ def both(field: FieldChange) -> tuple[str, str]:
 
 def told_value(name: str, value: Any, unit: str) -> str:
     """One value for people."""
-    unit = UNIT_NAMES.get(unit, unit)
     if value is None:
         return _NOTHING
+    if unit == "BMJD_TDB" and isinstance(value, float):
+        return f"BMJD_TDB {value:.10g}"
+    unit = UNIT_NAMES.get(unit, unit)
     if isinstance(value, (Measured, Limit, Range)):
         return number(value, unit)
     if isinstance(value, Moment):

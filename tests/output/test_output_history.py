@@ -133,6 +133,7 @@ def test_nothing_done_is_one_sentence():
         ("epoch", Moment(61_234.2, 0.5, 0.5, "BJD 2461234.7±0.5"), "",
          "BJD 2461234.7±0.5 (BMJD_TDB 61234.20 ± 0.50)"),
         ("instant", Moment(61_234.123456789, 0.0, 0.0, ""), "", "BMJD_TDB 61234.123457"),
+        ("epoch of cycle 0", 49_018.25, "BMJD_TDB", "BMJD_TDB 49018.25"),
         ("state", "episodic", "", "episodic"),
         ("priority", 3, "", "3"),
     ],

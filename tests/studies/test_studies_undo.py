@@ -11,7 +11,7 @@ from undo_examples import Keeper, begun, keep_engines
 
 from campaign.catalogue import observations, sites, solutions, store
 from campaign.errors import Conflict, NotFound
-from campaign.model.systems import Site
+from campaign.model.systems import Site, Star
 from campaign.studies import undo
 
 
@@ -132,6 +132,18 @@ def test_a_correction_does_not_return_without_the_load_that_it_corrected(keeper)
     keeper.undo(gone)
     keeper.undo(taken_back)
     assert keeper.values() == {1: 7.0, 3: 7.0, 4: 7.5}
+
+
+def test_what_came_together_returns_together(keeper):
+    system = keeper.system("Glow", aliases=("Ember",), star_a=Star("A", "WC7"))
+    without = keeper.undo(system)
+    assert ("Glow", "Ember") not in keeper.names()
+    keeper.undo(without)
+    assert ("Glow", "Ember") in keeper.names()
+    assert keeper.record("Glow").system.star_a.spectral_type == "WC7"
+    both = keeper.solution("Glow", "first", adopt=True)
+    keeper.undo(keeper.undo(both))
+    assert [s.label for s in keeper.record("Glow").solutions if s.adopted] == ["first"]
 
 
 # ------------------------------------------------------------------ what was built on it
