@@ -82,14 +82,14 @@ def load(
     wanted = _wanted(as_, column, constant, system, missing, mapping, keep_mapping, encoding)
     wanted = _with_flags(wanted, skip_bad, also, dry_run, _rejects_place(rejects))
     screen = common.stderr_screen()
-
-    def shown(understood: Understood) -> None:
-        if not (json or quiet):
-            output.render_understood(screen, understood)
-
     late = LateInterrupts()
     try:
         with late, Progress(screen, time.monotonic, quiet=quiet) as progress:
+
+            def shown(understood: Understood) -> None:
+                progress.clear()
+                if not (json or quiet):
+                    output.render_understood(screen, understood)
 
             def told(stage: str, done: int, total: int | None) -> None:
                 progress.told(stage, done, total)

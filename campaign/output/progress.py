@@ -38,6 +38,10 @@ class Progress:
     def __exit__(
         self, kind: type[BaseException] | None, error: BaseException | None, where: TracebackType | None
     ) -> None:
+        self.clear()
+
+    def clear(self) -> None:
+        """Take the bar away, so that something else can be shown; it comes back with the next word."""
         if self._bar is not None:
             self._bar.stop()
             self._bar = None

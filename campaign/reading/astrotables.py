@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-import io
 import warnings
 from collections.abc import Iterator, Sequence
 from decimal import Decimal
 from typing import Any
 
-from campaign.errors import InputRefused
+from campaign.errors import CampaignError, InputRefused
 from campaign.model.instants import Place, Scale
 from campaign.model.loading import ForeignTable, TableBlock, TableColumn
 from campaign.reading.tablefile import TableFile
@@ -68,16 +67,16 @@ def read_votable(file: TableFile) -> ForeignTable:
     InputRefused
         ``table-unreadable``, ``table-empty``.
     """
-    data = file.stream.read()
     try:
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")
             from astropy.io.votable import parse
 
-            document = parse(io.BytesIO(data), verify="ignore", filename=file.name)
+            # Piece by piece, so that whoever waits hears how far it is.
+            document = parse(file.stream.read, verify="ignore", filename=file.name)
             tables = [table for table in document.iter_tables() if len(table.array)]
             systems = {each.ID: each for each in document.iter_timesys()}
-    except MemoryError:
+    except (MemoryError, CampaignError):
         raise
     except Exception as error:  # astropy raises whatever its parsers do
         raise _unreadable(file, "a VOTable", _first_line(error)) from error

@@ -7,7 +7,7 @@ import io
 import os
 import stat
 import zlib
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Any, BinaryIO, cast
@@ -47,10 +47,17 @@ class TableFile:
 
 
 class ByteCounter:
-    """How many bytes of the file itself have been read."""
+    """How many bytes of the file itself have been read; ``heard`` is called whenever there are more."""
 
     def __init__(self) -> None:
         self.bytes = 0
+        self.heard: Callable[[], None] | None = None
+
+    def add(self, number: int) -> None:
+        """Count some more."""
+        self.bytes += number
+        if self.heard is not None:
+            self.heard()
 
 
 class _Source(io.RawIOBase):
@@ -79,7 +86,7 @@ class _Source(io.RawIOBase):
         except OSError as error:
             raise _cannot_open(self._name, error) from error
         buffer[: len(data)] = data
-        self._counter.bytes += len(data)
+        self._counter.add(len(data))
         return len(data)
 
 

@@ -97,6 +97,7 @@ def load_table(
 
             return load_exchanged(db, stamp, file, form, wanted, shown, told)
         request = _request(db, wanted)
+        file.counter.heard = lambda: told("reading", file.counter.bytes, file.size_bytes)
         table = read_foreign_table(file, wanted.encoding)
         mapping = understand(table.columns, request)
         understood = understood_mapping(file.name, table, mapping)
@@ -174,7 +175,6 @@ def _load_observations(
     checker = RowChecker(mapping, known_systems, known_sites, keeps_rejected=wanted.keeps_rejected)
     for block in table.blocks:
         checker.take(block)
-        told("reading", file.counter.bytes, file.size_bytes)
     rows = checker.finish()
     result = Loaded(
         understood,

@@ -61,6 +61,22 @@ def test_on_a_terminal_there_is_a_bar_that_goes_away():
     assert said.rstrip().endswith(("\x1b[2K", "\x1b[?25h", "\x1b[1A\x1b[2K"))
 
 
+def test_the_bar_goes_out_of_the_way_of_other_words_and_comes_back():
+    screen, clock = Screen(io.StringIO(), is_terminal=True, width=80, colour=True), Clock()
+    with Progress(screen, clock) as progress:
+        clock.now += 2.0
+        progress.told("reading", 10, 100)
+        progress.clear()
+        before = screen.stream.getvalue()
+        # Nothing of the bar is left on its line (ECMA-48: EL erases in line), and the cursor is there.
+        assert before.rstrip().endswith(("\x1b[2K", "\x1b[?25h", "\x1b[1A\x1b[2K"))
+        assert "\x1b[?25h" in before
+        screen.line("a table")
+        clock.now += 0.2
+        progress.told("reading", 20, 100)
+        assert "20%" in screen.stream.getvalue()[len(before) :]
+
+
 @pytest.mark.parametrize("terminal", [False, True])
 def test_quiet_means_quiet(terminal):
     assert work(Screen(io.StringIO(), is_terminal=terminal, width=80), seconds=35.0, quiet=True) == ""
