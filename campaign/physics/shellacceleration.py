@@ -19,8 +19,8 @@ CRITERION = "AIC with the errors as stated; a claim needs a difference of 2 or m
 # One model is preferred when its AIC is lower by this (Burnham & Anderson 2002, section 2.6): with the one
 # parameter more, chi2 must fall by 4. Without acceleration that happens by chance in 2.3 % of cases.
 CLAIM = 2.0
-# The chi2 that a launch at half the terminal speed must have cost before constant speed is claimed: it would
-# then have been missed in 5 % only.
+# The chi2 that a launch at three quarters of the terminal speed must have cost before constant speed is
+# claimed: it would then have been missed in 5 % only.
 _WOULD_SHOW = (2.0 + 1.645) ** 2
 _STARTS = (0.8, 0.3)
 
@@ -30,7 +30,7 @@ class AccelerationFit:
     """Both models, which of them the radii prefer, and whether they could have told.
 
     ``criterion_difference`` is the AIC of constant speed minus that of acceleration. ``would_show`` is
-    the chi2 that a launch at half the terminal speed would have cost the constant speed, None where no
+    the chi2 that a launch at three quarters of the terminal speed would have cost it, None where no
     launch radius is known. ``prior_used``: the launch speed is not told by the radii, and the accelerated
     model takes it anywhere between rest and the terminal speed.
     """
@@ -91,7 +91,7 @@ def fit_acceleration(
     -----
     Maximum likelihood by damped Gauss-Newton steps from several launch speeds, with analytic derivatives;
     plate scales enter by their covariance at constant speed. "Constant" needs a launch radius and radii that
-    would have shown a launch at half the terminal speed; what lies between is "undecided".
+    would have shown a launch at three quarters of the terminal speed; all between is "undecided".
     Accuracy: minima to 1e-8 in chi2; errors are of first order.
 
     Source: v^2 = v_inf^2 (1 - r_m/r) under an inverse-square push; Akaike 1974, IEEE Trans. Autom. Control
@@ -156,7 +156,7 @@ def _statement(verdict: Verdict, difference: float, would_show: float | None, ha
         return f"The shells are slowed down, which starlight cannot do ({told})."
     if verdict == "constant":
         return (
-            "Constant speed: a launch at half the terminal speed would have shown "
+            "Constant speed: a launch at three quarters of the terminal speed would have shown "
             f"({np.sqrt(would_show or 0.0):.1f} sigma), and did not ({told})."
         )
     if not has_radius:
@@ -165,7 +165,7 @@ def _statement(verdict: Verdict, difference: float, would_show: float | None, ha
             "innermost radius is open without a launch radius."
         )
     return (
-        f"The radii do not tell acceleration from constant speed ({told}): a launch at half the terminal "
-        f"speed would show by {np.sqrt(would_show or 0.0):.1f} sigma in all, the rest being taken up by "
-        "speed and launch date."
+        f"The radii do not tell acceleration from constant speed ({told}): a launch at three quarters of the "
+        f"terminal speed would show by {np.sqrt(would_show or 0.0):.1f} sigma in all, the rest being taken "
+        "up by speed and launch date."
     )

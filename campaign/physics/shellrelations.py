@@ -162,6 +162,8 @@ def _correlation_matrix(
     inputs: Sequence[ShellInput], correlations: Mapping[tuple[str, str], float]
 ) -> FloatArray:
     matrix = np.eye(len(inputs))
+    if not correlations:
+        return matrix
     for pair, coefficient in correlations.items():
         places = []
         for name in pair:

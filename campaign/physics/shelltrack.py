@@ -15,8 +15,9 @@ from campaign.physics.shellvalues import Sided
 
 FloatArray = NDArray[np.float64]
 
-# A launch at half the terminal speed is the acceleration that a verdict of constant speed must exclude.
-REFERENCE_SHARE = 0.5
+# Launch over terminal speed of the acceleration that a verdict of constant speed must exclude: with one half,
+# weaker ones that spoil the age would still pass as constant.
+REFERENCE_SHARE = 0.75
 # Launch speeds between rest and the terminal speed, all alike: standard deviation of that prior in shares.
 _SHARE_MEAN, _SHARE_SIGMA = 0.5, 12.0**-0.5
 _LEAST_SHARE, _LARGEST_SHARE = 0.02, 3.0
@@ -224,7 +225,7 @@ class ShellTrack:
         return bounded
 
     def would_show(self, constant: FloatArray) -> float:
-        """The chi2 that constant speed would have, had the dust been launched at half its terminal speed."""
+        """The chi2 that constant speed would have, had the dust been launched at the reference share."""
         reference = self.with_share(constant, REFERENCE_SHARE)
         radius, _ = self._model(reference)
         return self.minimum(constant, accelerated=False, measured=radius).chi2

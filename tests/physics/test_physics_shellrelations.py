@@ -377,6 +377,7 @@ def test_an_insufficient_set_says_what_else_would_do():
         ("period_yr",),
         ("distance_pc",),
     )
+    assert min(len(extra) for extra in solve_shell_relations([]).would_do) == 3
     solution = solve_shell_relations([stated("spacing_arcsec", 1.2, 0.05)])
     assert set(solution.unknown) == {"proper_motion_mas_yr", "speed_kms", "period_yr", "distance_pc"}
     assert all(len(extra) == 2 for extra in solution.would_do)
