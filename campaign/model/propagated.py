@@ -12,8 +12,8 @@ class Propagated:
     ``value`` follows from the inputs as stated, the rest from draws within their errors: median, standard
     deviation and equal-tailed intervals of the draws in which the quantity exists, whose share is
     ``probability``. Where an error that is needed is unknown, ``unknown_errors`` names it and only ``value``
-    is given. ``dominant`` is the input whose error alone widens the central 68 % most, ``dominant_share`` its
-    part of the sum of such widths squared. ``sigma`` can be ruled by a long tail, as where a divisor may be
+    is given. ``dominant`` is the input whose error alone spreads the result most, ``dominant_share`` its
+    part of the sum of such spreads squared. ``sigma`` can be ruled by a long tail, as where a divisor may be
     near zero; the intervals are not. None is what is not known or does not exist.
     """
 

@@ -18,6 +18,7 @@ from campaign.physics.draws import stratified_normals, two_piece_within
 from campaign.physics.intervals import PROBABILITIES, row_quantiles
 from campaign.physics.openingforms import SHOCK_FLARE_DEG
 from campaign.physics.postshock import mean_molecular_weight
+from campaign.studies.propagation import summarised
 from campaign.studies.rows import ForecastRow
 from campaign.studies.sampling import Sampler
 from campaign.studies.variance import only
@@ -30,8 +31,6 @@ STARS: tuple[StarName, StarName] = ("A", "B")
 # Draws with one error alone, from which the dominant one is told.
 _ALONE_DRAWS = 600
 DEFAULT_BETA = 1.0
-# A spread smaller than this share of the value is the rounding of the arithmetic.
-_ROUNDING = 1e-12
 
 
 class WindDraws:
@@ -229,50 +228,20 @@ def _ordered(rows: FloatArray) -> tuple[FloatArray, NDArray[np.int64]]:
     return np.sort(np.where(finite, rows, np.nan), axis=1), finite.sum(axis=1)
 
 
-def _deviations(ordered: FloatArray) -> FloatArray:
-    """Standard deviation of the finite draws of each row."""
-    finite = np.isfinite(ordered)
-    count = np.maximum(finite.sum(axis=1), 1)
-    mean = np.where(finite, ordered, 0.0).sum(axis=1) / count
-    square = np.where(finite, ordered - mean[:, None], 0.0) ** 2
-    deviations: FloatArray = np.sqrt(square.sum(axis=1) / count)
-    return deviations
-
-
 def _summarised(
     rows: FloatArray, values: FloatArray, spreads: Mapping[str, FloatArray], unknown: tuple[str, ...]
 ) -> list[Propagated]:
     if unknown:
         return [Propagated(_number(value), unknown_errors=unknown) for value in values]
-    ordered, count = _ordered(rows)
-    quantiles = row_quantiles(ordered, count, PROBABILITIES)
-    sigma = _deviations(ordered)
     found = []
     for i, value in enumerate(values):
-        if not count[i]:
-            found.append(Propagated(_number(value), probability=0.0))
-            continue
-        if sigma[i] <= _ROUNDING * abs(quantiles[i, 0]):
-            sigma[i] = 0.0
+        one = summarised(rows[i], _number(value))
         parts = {name: float(each[i]) for name, each in spreads.items()}
         whole = sum(parts.values())
-        first = max(parts, key=lambda name: parts[name], default=None)
-        matters = first is not None and whole > 0.0 and sigma[i] > 0.0
-        median, lo68, hi68, lo95, hi95 = (float(x) for x in quantiles[i])
-        found.append(
-            Propagated(
-                _number(value),
-                median,
-                float(sigma[i]),
-                lo68,
-                hi68,
-                lo95,
-                hi95,
-                probability=float(count[i] / rows.shape[1]),
-                dominant=spoken(first) if matters and first is not None else None,
-                dominant_share=parts[first] / whole if matters and first is not None else None,
-            )
-        )
+        if one.sigma and whole > 0.0:
+            first = max(parts, key=lambda name: parts[name])
+            one = replace(one, dominant=spoken(first), dominant_share=parts[first] / whole)
+        found.append(one)
     return found
 
 

@@ -66,7 +66,6 @@ def test_a_published_dust_maker_with_hot_shocks_at_every_phase_keeps_its_dust_wi
     assert max(max(window.probability) for window in forecast.dust_windows) > 0.99
 
 
-@pytest.mark.parametrize("mass_loss", [1e-6, 1e-4], ids=["hot", "cooler"])
 @pytest.mark.parametrize(
     ("name", "period_d", "e"),
     [
@@ -78,18 +77,18 @@ def test_a_published_dust_maker_with_hot_shocks_at_every_phase_keeps_its_dust_wi
         for e in [(numbers_in(str(expected.get("e", "0.0"))) or [0.0])[0]]
     ],
 )
-def test_every_published_dust_maker_is_forecast_whatever_its_shocks_do(name, period_d, e, mass_loss):
+def test_every_published_dust_maker_is_forecast_whatever_its_shocks_do(name, period_d, e):
     orbit = solution(
         pm(period_d, 0.004 * period_d),
         60_000.0,
         eccentricity=exact(e),
         a_au=exact((period_d / YEAR_D) ** (2 / 3) * 3.4),
     )
-    a = Star("A", "WC8", mass_loss_msun_yr=exact(mass_loss), wind_speed_kms=exact(2_000.0))
+    a = Star("A", "WC8", mass_loss_msun_yr=exact(1e-6), wind_speed_kms=exact(2_000.0))
     b = Star("B", "O8 V", mass_loss_msun_yr=exact(1e-7), wind_speed_kms=exact(2_300.0))
     rule = DustRule(1, 1, "phase", onset=exact(-0.05), maximum=exact(0.01), end=exact(0.15))
     one = binary(orbit, a=a, b=b, name=name, rule=rule)
-    assert collide(one, draws=100).cooling
+    assert all(each.periastron.value > 1.0 for each in collide(one, draws=100).cooling)
     forecast = upcoming(one, now=NOW, years=40, draws=2_000)
     assert any(event.event == "onset" and event.probability == 1.0 for event in forecast.events)
     assert forecast.dust_windows

@@ -73,10 +73,10 @@ def exact_star(star: Star, **values: float) -> Star:
     return replace(star, **fields)
 
 
-def collide(one: SystemRecord, *, draws: int = 400, **asked: Any) -> WindsResult:
+def collide(one: SystemRecord, *, draws: int = 300, **asked: Any) -> WindsResult:
     """The result with fewer draws than usual; overrides by their names, ``elements`` being the solution's."""
     names = set(WindOverrides.__dataclass_fields__) - {"solution"}
-    asked.setdefault("step_d", 450.0)
+    asked.setdefault("step_d", 900.0)
     changes = {name: asked.pop(name) for name in list(asked) if name in names}
     overrides = WindOverrides(**changes, solution=asked.pop("elements", {}))
     return winds(one, WindsQuestion(asked.pop("as_of", NOW), draws=draws, overrides=overrides, **asked))
