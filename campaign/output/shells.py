@@ -129,11 +129,23 @@ def render_tensions(screen: Screen, tensions: Sequence[ShellTension]) -> None:
         Column("against", shrinks=True, min_width=14),
     )
     print_table(screen, columns, [_tension_row(each) for each in _strongest(tensions)])
+    _render_reasons(screen, tensions)
+
+
+def _render_reasons(screen: Screen, tensions: Sequence[ShellTension]) -> None:
+    """What would explain the high tensions, each reason once."""
+    about: dict[str, list[str]] = {}
     for each in tensions:
-        if each.reasons:
-            screen.wrapped(
-                "; ".join(each.reasons), label=f"{each.quantity} {_signed(each.sigma)} sigma: likely ", hang=2
-            )
+        for reason in each.reasons:
+            words = about.setdefault(reason, [])
+            word = _UNITS.get(each.quantity, (each.quantity, ""))[0]
+            if word not in words:
+                words.append(word)
+    if not about:
+        return
+    screen.wrapped("What would explain the tensions above 2 sigma:")
+    for reason, words in about.items():
+        screen.wrapped(f"{reason} ({', '.join(words)})", label="- ", hang=2)
 
 
 def render_motions(screen: Screen, motions: Sequence[ShellMotion]) -> None:

@@ -14,10 +14,12 @@ from campaign.model.measured import Measured
 from campaign.model.shellquestion import ShellQuestion, ShellRadius
 from campaign.model.shells import DatedShell, ShellAcceleration, ShellDatingResult
 from campaign.physics.shellrelations import RelationSolution, what_would_do
+from campaign.physics.shelltension import likely_reasons
 from campaign.physics.timescales import utc_iso
 from campaign.studies.shell_ephemeris import ShellEphemeris
 from campaign.studies.shell_fitting import Ages, ages_of, motions_of
 from campaign.studies.shell_launches import against_ephemeris, anchor, foreseen_in, launch_tension, rows_of
+from campaign.studies.shell_projection import true_quantities, true_tensions, with_light_time
 from campaign.studies.shell_relations import (
     Stated,
     insufficient,
@@ -119,7 +121,7 @@ def _without_radii(
         as_of_utc=told.as_of_utc,
         quantities=shell_quantities(solution),
         shells=(),
-        tensions=tuple(shell_tensions(solution.tensions, {})),
+        tensions=tuple(shell_tensions(solution.tensions, likely_reasons(solution.tensions))),
         not_told=_still_open(solution),
         assumptions=(*stated.assumptions, *_assumptions(solution)),
     )
@@ -134,7 +136,11 @@ def _with_radii(
     told: _Told,
 ) -> ShellDatingResult:
     seed = seed_of(question.seed)
-    solved = solve_shells(radii, stated, ephemeris, question)
+    record = None if subject is None else subject.record
+    solved = solve_shells(radii, stated, ephemeris, question, record)
+    distance = solved.best.get("distance_pc")
+    distance_pc = None if distance is None else distance.spread.value
+    said: list[str] = []
     main, solution, agrees = solved.main, solved.solution, solved.agrees
     motion = solved.best.get("proper_motion_mas_yr")
     shells: list[DatedShell] = []
@@ -142,6 +148,8 @@ def _with_radii(
     for one in solved.groups:
         ages = ages_of(one.fit, solved.best if one is not main else solution, solved.period, agrees, seed)
         rows = rows_of(one.fit.group, one.counted.index.tolist(), ages)
+        rows, light = with_light_time(rows, one.seen, distance_pc)
+        said += [one.seen.statement, *light]
         cycles = one.counted.cycle.tolist()
         anchored = anchor(rows, cycles, ephemeris)
         shells += against_ephemeris(rows, cycles, anchored, ephemeris)
@@ -151,20 +159,29 @@ def _with_radii(
     if main_ages.yr is None and main.fit.fit is None:
         raise insufficient(solved.stated, ONE_RADIUS)
     launch = launch_tension(shells, ephemeris)
+    typed = stated.get("speed_kms")
+    stated_speed = None if typed is None else Measured(typed.value, typed.minus, typed.plus)
     told_of = (*solution.tensions, *expansion_parallax(solved.stated))
-    tensions = shell_tensions(told_of, {})
+    acceleration = _acceleration(solved, subject, ephemeris, main_shift)
+    reasons = likely_reasons(
+        told_of,
+        _steps(main),
+        None if acceleration is None else acceleration.verdict,
+        main.seen.feature,
+    )
+    tensions = true_tensions(shell_tensions(told_of, reasons), main.seen)
     span, span_sigma = _span(main, main_rows, solved.best)
     fit = main.fit.fit
     youngest = main_ages.periods
     return ShellDatingResult(
         system=told.system,
         as_of_utc=told.as_of_utc,
-        quantities=shell_quantities(solved.best),
+        quantities=true_quantities(shell_quantities(solved.best), main.seen, stated_speed),
         shells=tuple(shells),
         tensions=(*tensions, launch) if launch is not None else tuple(tensions),
         assignments=main.counted.assignments,
         motions=tuple(motions_of(main.fit, main_shift)),
-        acceleration=_acceleration(solved, subject, ephemeris, main_shift),
+        acceleration=acceleration,
         chi2=None if fit is None else none_if_nan(fit.chi2),
         degrees_of_freedom=None if fit is None else fit.degrees_of_freedom,
         error_scale=None if fit is None else fit.error_scale,
@@ -177,7 +194,12 @@ def _with_radii(
             *dict.fromkeys(note for one in solved.groups for note in one.counted.not_told),
             *_still_open(solution),
         ),
-        assumptions=(*solved.stated.assumptions, *_ways(main_ages, agrees), *_assumptions(solution)),
+        assumptions=(
+            *solved.stated.assumptions,
+            *dict.fromkeys(said),
+            *_ways(main_ages, agrees),
+            *_assumptions(solution),
+        ),
         warnings=tuple(dict.fromkeys(warnings)),
     )
 
@@ -198,6 +220,12 @@ def _acceleration(
         None if subject is None else launch_radius_of(subject.record, distance),
         launched,
     )
+
+
+def _steps(main: SolvedGroup) -> int | None:
+    """Steps from shell to shell that the spacing rests on."""
+    steps = int(main.counted.cycle.max() - main.counted.cycle.min())
+    return steps if steps > 0 else None
 
 
 def _span(

@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from campaign.model.shells import DatedShell, ForeseenShell, ShellTension
+from campaign.physics.shelltension import HIGH_SIGMA
 from campaign.physics.timescales import utc_iso
 from campaign.studies.shell_ephemeris import ShellEphemeris
 from campaign.studies.shell_fitting import Ages
@@ -261,6 +262,22 @@ def launch_tension(shells: Sequence[DatedShell], ephemeris: ShellEphemeris | Non
         sigma=shell.window_sigma,
         value=shell.launched_bmjd_tdb,
         against_value=launch.median_d,
+        reasons=_launch_reasons(shell.window_sigma),
+    )
+
+
+def _launch_reasons(sigma: float | None) -> tuple[str, ...]:
+    """What would explain launches that lie far from the window."""
+    if sigma is None or abs(sigma) < HIGH_SIGMA:
+        return ()
+    if sigma > 0.0:
+        return (
+            "acceleration: dust that started slowly is older than its radius over its motion",
+            "the dust rule or the ephemeris puts the window too early",
+        )
+    return (
+        "radii at the outer edge of shells, or a scale that is too large, make them seem older",
+        "the dust rule or the ephemeris puts the window too late",
     )
 
 

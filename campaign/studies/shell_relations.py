@@ -198,15 +198,15 @@ def _quantity(solved: SolvedQuantity) -> ShellQuantity:
     )  # fmt: skip
 
 
-def shell_tensions(tensions: Sequence[Tension], reasons: Mapping[int, tuple[str, ...]]) -> list[ShellTension]:
+def shell_tensions(tensions: Sequence[Tension], reasons: Sequence[tuple[str, ...]]) -> list[ShellTension]:
     """Tensions in words.
 
     Parameters
     ----------
     tensions : sequence of Tension
         Values in the units of the names.
-    reasons : mapping of int to tuple of str
-        Likely reasons by position.
+    reasons : sequence of tuple of str
+        Likely reasons of each.
 
     Returns
     -------
@@ -225,9 +225,9 @@ def shell_tensions(tensions: Sequence[Tension], reasons: Mapping[int, tuple[str,
             sigma=each.sigma,
             value=each.value,
             against_value=each.against_value,
-            reasons=reasons.get(place, ()),
+            reasons=why,
         )
-        for place, each in enumerate(tensions)
+        for each, why in zip(tensions, reasons, strict=True)
     ]
 
 

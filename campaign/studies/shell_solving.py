@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from campaign.model.measured import Measured
+from campaign.model.records import SystemRecord
 from campaign.model.shellquestion import ShellQuestion, ShellRadius
 from campaign.physics.shellnetwork import Tension
 from campaign.physics.shellrelations import RelationSolution, solve_shell_relations
@@ -21,6 +22,7 @@ from campaign.studies.shell_fitting import (
     fitted_inputs,
 )
 from campaign.studies.shell_images import RadiusGroup, grouped
+from campaign.studies.shell_projection import Seen, as_seen, seen_as
 from campaign.studies.shell_relations import (
     WIND,
     Stated,
@@ -38,10 +40,11 @@ ONE_RADIUS = "The age of a single radius cannot be told from what is given."
 
 @dataclass(frozen=True, slots=True)
 class SolvedGroup:
-    """One group of radii, counted and fitted."""
+    """One group of radii, counted and fitted, and how it is seen."""
 
     counted: Counted
     fit: GroupFit
+    seen: Seen
 
 
 @dataclass(frozen=True, slots=True)
@@ -49,7 +52,8 @@ class SolvedShells:
     """All groups, the largest first, and the five quantities as they follow from it and from what is stated.
 
     ``agrees`` says whether what would be used together does agree, ``period`` is the stated one, yr.
-    ``solution`` compares; ``best`` also uses the stated period for the motion, where it agrees.
+    ``solution`` compares; ``best`` also uses the stated period for the motion, where it agrees. Speeds in
+    ``stated`` and in both solutions are those seen on the sky, as ``seen`` of the main group says.
     """
 
     groups: tuple[SolvedGroup, ...]
@@ -66,7 +70,11 @@ class SolvedShells:
 
 
 def solve_shells(
-    radii: Sequence[ShellRadius], stated: Stated, ephemeris: ShellEphemeris | None, question: ShellQuestion
+    radii: Sequence[ShellRadius],
+    stated: Stated,
+    ephemeris: ShellEphemeris | None,
+    question: ShellQuestion,
+    record: SystemRecord | None = None,
 ) -> SolvedShells:
     """Count and fit measured radii, and solve the relations with what is stated.
 
@@ -80,6 +88,8 @@ def solve_shells(
         Launches of the system's cycles.
     question : ShellQuestion
         How radii are to be taken, and the random draws.
+    record : SystemRecord or None
+        For the orientation of the orbit, deg.
 
     Returns
     -------
@@ -97,8 +107,12 @@ def solve_shells(
     """
     given = stated.get("period_yr")
     period = None if given is None else Measured(given.value, given.minus, given.plus)
+    ordered = grouped(radii, question)
+    views = [seen_as(group, question, record) for group in ordered]
+    stated = as_seen(stated, views[0])
     groups = tuple(
-        _solve_group(group, question, stated, period, ephemeris) for group in grouped(radii, question)
+        _solve_group(group, seen, question, stated, period, ephemeris)
+        for group, seen in zip(ordered, views, strict=True)
     )
     inputs, correlations = fitted_inputs(groups[0].fit)
     if not inputs and not stated.inputs:
@@ -181,6 +195,7 @@ def expansion_parallax(stated: Stated) -> tuple[Tension, ...]:
 
 def _solve_group(
     group: RadiusGroup,
+    seen: Seen,
     question: ShellQuestion,
     stated: Stated,
     period: Measured | None,
@@ -194,7 +209,7 @@ def _solve_group(
         counting = None if derived is None else Measured(derived.value, derived.minus, derived.plus)
     counted = count_shells(group, question.missing_prior, usable, counting, ephemeris)
     fit = fit_group(group, counted.index, counted.cycle, period, scale_errors=question.scale_errors)
-    return SolvedGroup(counted, fit)
+    return SolvedGroup(counted, fit, seen)
 
 
 def _known(quantity: str, stated: Stated) -> Sided | None:

@@ -104,16 +104,11 @@ def sample_subject(name: str, as_of: TypedInstant | None, solution: str | None) 
     -----
     Accuracy: not applicable. Source: the project's own invented data.
     """
-    from campaign.studies.sample import load_sample
-
-    campaign = load_sample_campaign([name])
+    campaign = load_sample_campaign([name], with_shells=True)
     record = campaign.records[0]
     until = np.inf if as_of is None else axis_instant(as_of)
-    found = tuple(
-        each
-        for each in load_sample().observations()
-        if each.system_id == record.system.id and each.kind == "shell" and each.moment.bmjd_tdb <= until
-    )
+    logged = campaign.shells.get(record.system.id, ())
+    found = tuple(each for each in logged if each.moment.bmjd_tdb <= until)
     return ShellSubject(_with_solution(record, solution), found, campaign.own_as_of, True)
 
 

@@ -21,6 +21,7 @@ from campaign.studies.shell_ephemeris import ShellEphemeris
 from campaign.studies.shell_fitting import ages_of, best_motion
 from campaign.studies.shell_images import YEAR_D, bmjd_of, years_of
 from campaign.studies.shell_launches import anchor, rows_of
+from campaign.studies.shell_projection import true_quantities
 from campaign.studies.shell_relations import (
     Stated,
     shell_quantities,
@@ -125,7 +126,7 @@ def tracks_of(subject: ShellSubject, question: ExpectQuestion) -> ShellTracks:
     radii = radii_of(o for o in subject.observations if o.moment.bmjd_tdb <= question.as_of_bmjd_tdb)
     moves = {"proper_motion_mas_yr", "speed_kms"} & question.stated.keys()
     asked = ShellQuestion(stated=question.stated, draws=draws, seed=question.seed)
-    solved = solve_shells(radii, stated, ephemeris, asked) if radii and not moves else None
+    solved = solve_shells(radii, stated, ephemeris, asked, subject.record) if radii and not moves else None
     base = None if solved is None else _measured_base(solved, ephemeris, seed, draws)
     if solved is not None and base is not None:
         return _measured_tracks(solved, base, ephemeris)
@@ -208,6 +209,7 @@ def _said(ephemeris: ShellEphemeris) -> tuple[str, ...]:
     return (
         f"launches at the middle of each production window, half its width counted as error; {period}",
         "the shells keep their speed",
+        "radii are those of the limb",
     )
 
 
@@ -279,7 +281,7 @@ def _measured_tracks(solved: SolvedShells, base: _Base, ephemeris: ShellEphemeri
     said = ["shells that were measured, and older ones, go on from the fit to their radii"]
     counted = base.shift is not None
     if counted:
-        said += ["younger ones are launched at the middle of their production window", *_said(ephemeris)[1:]]
+        said += ["younger ones are launched at the middle of their production window", *_said(ephemeris)[1:2]]
     else:
         said += ["younger ones follow the clock of the shells themselves: nothing else dates them"]
     motion = Uncertain(base.motion_mas_yr, float(np.std(base.motion_draws)), base.motion_draws)
@@ -302,8 +304,8 @@ def _measured_tracks(solved: SolvedShells, base: _Base, ephemeris: ShellEphemeri
     return ShellTracks(
         track,
         newest,
-        shell_quantities(solved.best),
-        (*solved.stated.assumptions, *said),
+        true_quantities(shell_quantities(solved.best), solved.main.seen, None),
+        (*solved.stated.assumptions, *said, solved.main.seen.statement),
         base.warnings,
     )
 
@@ -347,7 +349,7 @@ def motion_of_shells(subject: ShellSubject, as_of: float) -> tuple[Measured, str
     ephemeris = ShellEphemeris(forecaster_of(subject.record, as_of, 1000), 1)
     period = None if ephemeris.period_yr is None else (ephemeris.period_yr, ephemeris.period_from)
     stated = stated_inputs({}, {}, subject, period)
-    solved = solve_shells(radii, stated, ephemeris, ShellQuestion(draws=1000))
+    solved = solve_shells(radii, stated, ephemeris, ShellQuestion(draws=1000), subject.record)
     found = solved.solution.get("proper_motion_mas_yr")
     if found is None or np.isnan(found.spread.sigma) or any("wind" in key for key in found.basis):
         return None

@@ -6,6 +6,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime, timedelta
 from difflib import get_close_matches
+from functools import lru_cache
 
 import numpy as np
 
@@ -138,8 +139,16 @@ def load_sample_campaign(names: Sequence[str] | None, *, with_shells: bool = Fal
         chosen = tuple(r for r in records if r.system.state != "retired")
     else:
         chosen = tuple(_named(records, name) for name in names)
-    seen = [each for each in sample.observations() if each.kind == "shell"] if with_shells else ()
-    return Campaign(chosen, dict(sample.photometry), sample.as_of_bmjd_tdb, True, _by_system(seen))
+    seen = _sample_shells() if with_shells else {}
+    return Campaign(chosen, dict(sample.photometry), sample.as_of_bmjd_tdb, True, seen)
+
+
+@lru_cache(maxsize=1)
+def _sample_shells() -> dict[int, tuple[Observation, ...]]:
+    """The shells of the sample; all its observations are made to get at them."""
+    from campaign.studies.sample import load_sample
+
+    return _by_system(each for each in load_sample().observations() if each.kind == "shell")
 
 
 def _by_system(observations: Iterable[Observation]) -> dict[int, tuple[Observation, ...]]:
