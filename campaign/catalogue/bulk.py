@@ -164,13 +164,19 @@ def known_rows(
         value_plus=plus,
         position_angle_deg=angle,
         limit_side=cells[6],
-        band=cells[7],
-        photometric_system=cells[8],
+        band=_as_one(cells[7]),
+        photometric_system=_as_one(cells[8]),
         site_id=cells[9],
         sameness=cells[10],
         operation_id=cells[11],
         other=list(zip(*cells[12:], strict=True)),
     )
+
+
+def _as_one(words: Sequence[str | None]) -> list[str | None]:
+    """The same few words, each kept in memory once."""
+    kept: dict[str | None, str | None] = {}
+    return [kept.setdefault(word, word) for word in words]
 
 
 def holds_observations(connection: Connection) -> bool:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
@@ -23,6 +23,7 @@ SAME_TIME_D = 1e-6
 LIGHT_TIME_D = 0.006
 # Neighbours of the first and last row count too.
 _AROUND_D = 60.0
+_NONE: NDArray[Any] = np.zeros(0)
 
 
 @dataclass(slots=True, eq=False)
@@ -30,8 +31,9 @@ class KnownCheck:
     """What the catalogue says to checked rows.
 
     ``known`` and ``repeated`` mark rows that are there already, or stood earlier in the table. ``nearby``
-    holds the observations around them, system by system, and ``shifted`` pairs of a new row and how much
-    later it is (days) than a known one that is like it in all but the time.
+    holds the observations around them, system by system: time, value, error, band and limit, the rest is
+    empty. ``shifted`` holds pairs of a new row and how much later it is (days) than a known one that is like
+    it in all but the time.
     """
 
     known: NDArray[np.bool_]
@@ -97,9 +99,19 @@ def check_known(
             float(time.max()) + _AROUND_D,
         )
         if known.id.size:
-            check.nearby[place] = known
             _mark_known(check, some, digests, known)
             _compare(check, some[~check.known[some]], rows, details, known, systems[place], own_operation)
+            # What tells rows apart is no longer needed, and a million of them fill the memory.
+            check.nearby[place] = replace(
+                known,
+                id=_NONE,
+                position_angle_deg=_NONE,
+                photometric_system=(),
+                site_id=(),
+                operation_id=(),
+                other=(),
+                sameness=(),
+            )
         done += len(some)
         told(done)
     return check

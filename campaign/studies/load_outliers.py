@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -16,6 +18,7 @@ OUTLIER_SIGMA = 5.0
 _NEAR_D = 30.0
 # Magnitudes scatter by as much for reasons that no error bar knows (common practice, no source).
 _FLOOR_MAG = 0.005
+_ROWS_AT_ONCE = 100_000
 
 
 def outlying(rows: CheckedRows, columns: ObservationColumns, check: KnownCheck) -> NDArray[np.bool_]:
@@ -41,12 +44,32 @@ def outlying(rows: CheckedRows, columns: ObservationColumns, check: KnownCheck) 
 
     Source: project convention.
     """
-    size = rows.size
+    far = np.zeros(rows.size, dtype=np.bool_)
     error = _sigma(columns)
-    group, known = _groups(rows, columns, check)
-    time = np.concatenate([columns.numbers["bmjd_tdb"], known[0]])
-    value = np.concatenate([columns.numbers["value"], known[1]])
-    sigma = np.concatenate([error, known[2]])
+    judged = np.flatnonzero(np.isfinite(error) & ~check.known & ~check.repeated)
+    groups = _Groups(rows, columns, check)
+    for some in _portions(rows.system, judged):
+        group, known = groups.of(some)
+        time = np.concatenate([columns.numbers["bmjd_tdb"][some], known[0]])
+        value = np.concatenate([columns.numbers["value"][some], known[1]])
+        sigma = np.concatenate([error[some], known[2]])
+        far[some] = _far(time, value, sigma, group)[: some.size]
+    return far
+
+
+def _portions(system: NDArray[np.int32], rows: NDArray[np.intp]) -> Iterator[NDArray[np.intp]]:
+    """The rows of some systems after the other, so that a large table does not fill the memory."""
+    order = rows[np.argsort(system[rows], kind="stable")]
+    edges = np.flatnonzero(np.diff(system[order])) + 1
+    _, first = np.unique(edges // _ROWS_AT_ONCE, return_index=True)
+    for some in np.split(order, edges[first]):
+        if some.size:
+            yield some
+
+
+def _far(
+    time: FloatArray, value: FloatArray, sigma: FloatArray, group: NDArray[np.int64]
+) -> NDArray[np.bool_]:
     usable = np.flatnonzero(np.isfinite(sigma))
     order = usable[by_group_and_time(group[usable], time[usable])]
     t, m, s, g = time[order], value[order], sigma[order], group[order]
@@ -58,9 +81,9 @@ def outlying(rows: CheckedRows, columns: ObservationColumns, check: KnownCheck) 
         inside = _both_far(before, after)
         at_begin = np.isnan(before) & _both_far(after, after_too) & (np.abs(step_after) < OUTLIER_SIGMA)
         at_end = np.isnan(after) & _both_far(before, before_too) & (np.abs(step_before) < OUTLIER_SIGMA)
-    far = np.zeros(size + len(known[0]), dtype=np.bool_)
+    far = np.zeros(time.size, dtype=np.bool_)
     far[order[inside | at_begin | at_end]] = True
-    return far[:size]
+    return far
 
 
 def _sigma(columns: ObservationColumns) -> FloatArray:
@@ -73,27 +96,39 @@ def _sigma(columns: ObservationColumns) -> FloatArray:
     return sigma
 
 
-def _groups(
-    rows: CheckedRows, columns: ObservationColumns, check: KnownCheck
-) -> tuple[NDArray[np.int64], tuple[FloatArray, FloatArray, FloatArray]]:
-    """A number for each system and band, of rows, then of what is known; and time, value, error of that."""
-    bands, codes = [str(columns.same.get("band"))], np.zeros(columns.size, dtype=np.int32)
-    if "band" in columns.words:
-        bands, codes = list(columns.words["band"].words), columns.words["band"].codes
-    number_of = {band: number for number, band in enumerate(bands)}
-    groups = [rows.system.astype(np.int64) * (len(bands) + 1) + codes]
-    pieces: list[tuple[FloatArray, FloatArray, FloatArray]] = []
-    for place, known in check.nearby.items():
-        number = np.array([number_of.get(str(band), -1) for band in known.band])
-        measured = np.array([side is None for side in known.limit_side], dtype=np.bool_)
-        taken = (number >= 0) & measured
-        sigma = np.hypot(np.maximum(known.value_minus, known.value_plus), _FLOOR_MAG)
-        pieces.append((known.bmjd_tdb[taken], known.value[taken], sigma[taken]))
-        groups.append(place * (len(bands) + 1) + number[taken])
-    if not pieces:
-        return groups[0], (np.zeros(0), np.zeros(0), np.zeros(0))
-    time, value, error = (np.concatenate(piece) for piece in zip(*pieces, strict=True))
-    return np.concatenate(groups), (time, value, error)
+class _Groups:
+    """A number for each system and band, of rows and of what is known around them."""
+
+    def __init__(self, rows: CheckedRows, columns: ObservationColumns, check: KnownCheck) -> None:
+        self._system = rows.system
+        self._nearby = check.nearby
+        bands, self._codes = [str(columns.same.get("band"))], np.zeros(columns.size, dtype=np.int32)
+        if "band" in columns.words:
+            bands, self._codes = list(columns.words["band"].words), columns.words["band"].codes
+        self._number_of = {band: number for number, band in enumerate(bands)}
+        self._width = len(bands) + 1
+
+    def of(
+        self, some: NDArray[np.intp]
+    ) -> tuple[NDArray[np.int64], tuple[FloatArray, FloatArray, FloatArray]]:
+        """Numbers of some rows, then of what is known of their systems; and time, value, error of that."""
+        system = self._system[some].astype(np.int64)
+        groups = [system * self._width + self._codes[some]]
+        pieces: list[tuple[FloatArray, FloatArray, FloatArray]] = []
+        for place in np.unique(system).tolist():
+            known = self._nearby.get(place)
+            if known is None:
+                continue
+            number = np.array([self._number_of.get(str(band), -1) for band in known.band])
+            measured = np.array([side is None for side in known.limit_side], dtype=np.bool_)
+            taken = (number >= 0) & measured
+            sigma = np.hypot(np.maximum(known.value_minus, known.value_plus), _FLOOR_MAG)
+            pieces.append((known.bmjd_tdb[taken], known.value[taken], sigma[taken]))
+            groups.append(place * self._width + number[taken])
+        if not pieces:
+            return groups[0], (np.zeros(0), np.zeros(0), np.zeros(0))
+        time, value, error = (np.concatenate(piece) for piece in zip(*pieces, strict=True))
+        return np.concatenate(groups), (time, value, error)
 
 
 def _distances(
