@@ -17,7 +17,8 @@ def brief(value: Propagated | None) -> str:
 def told(value: Propagated | None, unit: str = "") -> str:
     """Median with its 68 % interval as errors; empty where there is none.
 
-    Errors that differ by less than a sixth are told as one.
+    Errors that differ by less than a sixth are told as one; where one side all but vanishes, the interval itself
+    is told.
     """
     if value is None or (value.value is None and value.median is None):
         return ""
@@ -30,8 +31,10 @@ def told(value: Propagated | None, unit: str = "") -> str:
         return f"{value.median:.4g}{tail}"
     if abs(above - below) * 6.0 <= max(above, below):
         below = above = 0.5 * (above + below)
-    least = max(above, below) * 1e-2
-    return number(Measured(value.median, max(below, least), max(above, least))) + tail
+    if min(above, below) < 0.05 * max(above, below):
+        # The median stands at an end of what can be: an interval says it better than errors.
+        return f"{value.lo68:.2g} … {value.hi68:.2g}{tail}"
+    return number(Measured(value.median, below, above)) + tail
 
 
 def in_millions(value: Propagated | None) -> Propagated | None:

@@ -142,6 +142,7 @@ def test_the_document_has_the_fields_of_the_model_with_their_units(result):
         (Propagated(0.0452, unknown_errors=("wind speed of star A",)), "0.0452 (error unknown)"),
         (Propagated(9.0, 9.0, 1.0, 8.0, 10.0, 7.0, 11.0), "9.0 ± 1.0"),
         (Propagated(9.0, 9.0, 1.0, 8.5, 11.0, 7.0, 12.0), "9.00 +2.00 −0.50"),
+        (Propagated(0.0, 0.0, 0.05, 0.0, 0.091, 0.0, 0.15), "0 … 0.091"),
         (Propagated(1.5047, 1.5047, 0.0, 1.5047, 1.5047, 1.5047, 1.5047), "1.505"),
         (Propagated(2e8, 2e8, 1e7, 1.9e8, 2.1e8, 1.8e8, 2.2e8), "(2.00 ± 0.10)e+8"),
     ],
