@@ -10,6 +10,7 @@ import pytest
 from undo_examples import Keeper, begun, keep_engines
 
 from campaign.catalogue import observations, sites, solutions, store
+from campaign.catalogue.numbering import Numbering
 from campaign.errors import Conflict, NotFound
 from campaign.model.systems import Site, Star
 from campaign.studies import undo
@@ -41,6 +42,21 @@ def test_a_star_that_was_described_again_holds_back_what_described_it_first(keep
     keeper.undo(again)
     keeper.undo(taken_back)
     assert keeper.record("Dim").system.star_b.spectral_type == "O5"
+
+
+def test_so_it_is_where_an_older_program_gave_the_number_of_the_star_again(keeper, monkeypatch):
+    monkeypatch.setattr(Numbering, "fresh", lambda numbering, table: {})
+    taken_back = keeper.undo(keeper.star("Dim", "O5"))
+    again = keeper.star("Dim", "O7")
+    assert keeper.refused(taken_back) == {again: "entered the star again"}
+    keeper.undo(again)
+    other = keeper.star("Faint", "B0")
+    back = keeper.undo(taken_back)
+    assert keeper.record("Dim").system.star_b.spectral_type == "O5"
+    assert keeper.record("Faint").system.star_b.spectral_type == "B0"
+    keeper.undo(other)
+    keeper.undo(back)
+    assert keeper.record("Dim").system.star_b.spectral_type is None
 
 
 def test_a_star_of_another_system_does_not(keeper):
@@ -107,7 +123,15 @@ def test_an_observation_does_not_return_without_its_system(keeper):
     assert keeper.refused(taken_back) == {gone: "took back the system it needs"}
 
 
+def test_a_star_does_not_return_without_its_system(keeper):
+    system = keeper.system("Glow")
+    taken_back = keeper.undo(keeper.star("Glow", "O5"))
+    gone = keeper.undo(system)
+    assert keeper.refused(taken_back) == {gone: "took back the system it needs"}
+
+
 def test_a_load_does_not_return_without_its_site(keeper):
+    keeper.site("Harrow Pass")
     site = keeper.site("Cold Mesa")
     taken_back = keeper.undo(keeper.load("Dim", range(3), site="Cold Mesa"))
     gone = keeper.undo(site)
@@ -364,6 +388,17 @@ def test_a_published_count_follows_the_adoption_too(keeper):
     assert counts == [(None, None), (None, 11)]
     keeper.undo(back)
     assert [s.label for s in keeper.record("Dim").solutions] == ["first"]
+
+
+def test_a_published_count_follows_also_while_its_solution_is_out_of_use(keeper):
+    keeper.solution("Dim", "first")
+    second = keeper.solution("Dim", "second", epoch="2009-03-20", published_cycle=11)
+    adopted = keeper.adopt("Dim", "first")
+    gone = keeper.undo(second)
+    keeper.undo(adopted)
+    keeper.undo(gone)
+    counts = [(s.epoch_cycle, s.published_cycle_offset) for s in keeper.record("Dim").solutions]
+    assert counts == [(None, None), (None, 11)]
 
 
 # ------------------------------------------------------------------ in which order
