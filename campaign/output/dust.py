@@ -165,11 +165,24 @@ def _short(value: float) -> str:
     return _plain(rounded, ".3g")
 
 
+# From this ratio of its ends on, an interval is told by them; below this size a power of ten stands apart.
+_SKEWED, _TINY = 6.0, 1e-3
+
+
 def _told(value: Propagated | None) -> str:
     """As ``told``, with no more digits before the point than the error deserves."""
     if value is None or value.median is None or value.lo68 is None or value.hi68 is None:
         return told(value)
-    least = min(value.median - value.lo68, value.hi68 - value.median)
+    if 0.0 < _SKEWED * value.lo68 < value.hi68:
+        # Known to within a factor only: errors below and above would mislead.
+        return f"{_short(value.median)}, {_short(value.lo68)} … {_short(value.hi68)}"
+    below, above = value.median - value.lo68, value.hi68 - value.median
+    if 0.0 < max(abs(value.median), below, above) < _TINY:
+        power = math.floor(math.log10(max(abs(value.median), below, above)))
+        scaled = [10.0**-power * x for x in (value.median, value.lo68, value.hi68)]
+        inner = told(replace(value, median=scaled[0], lo68=scaled[1], hi68=scaled[2]))
+        return f"({inner})e{power}".replace("(-", "(−")
+    least = min(below, above)
     step = 10.0 ** (math.floor(math.log10(least)) - 1) if least > 0.0 else 0.0
     if step <= 1.0:
         return told(value)
@@ -333,6 +346,8 @@ _SHORT_VERDICTS = {
     "band-star-dominated": "a band is star-dominated",
     "band-negative": "a band is left out",
 }
+# True of every date or of none: told once.
+_EVERYWHERE = "thickness-unknown"
 _RATES = (
     Column("from"),
     Column("until"),
@@ -346,6 +361,9 @@ def _render_through(screen: Screen, through: DustThrough) -> None:
     masses = [e.mass_msun.median for e in through.epochs if e.mass_msun is not None and e.mass_msun.median]
     largest = max(masses, default=0.0)
     print_table(screen, _EPOCHS, [_epoch(each, largest) for each in through.epochs])
+    everywhere = [v.text for each in through.epochs for v in each.verdicts if v.code == _EVERYWHERE]
+    for text in dict.fromkeys(everywhere):
+        screen.wrapped(text, label="Mind: ", hang=2, style="bold yellow")
     if any(each.verdicts for each in through.epochs):
         screen.wrapped("What is wrong with a date is told in full by --on DATE.", style="dim")
     screen.line("")
@@ -356,7 +374,7 @@ def _render_through(screen: Screen, through: DustThrough) -> None:
         (
             day(each.start_utc, each.start_bmjd_tdb),
             day(each.end_utc, each.end_bmjd_tdb),
-            _told(each.rate_msun_yr).replace("(-", "(−"),
+            _told(each.rate_msun_yr),
             _wide(each.rate_msun_yr),
             mostly(each.rate_msun_yr),
         )
@@ -372,7 +390,7 @@ def _render_through(screen: Screen, through: DustThrough) -> None:
 def _epoch(each: MeasuredDust, largest: float) -> tuple[str | Cell, ...]:
     mass = each.mass_msun.median if each.mass_msun is not None else None
     bands = " ".join(dict.fromkeys(one.band for one in each.bands))
-    known = [_SHORT_VERDICTS.get(verdict.code, verdict.text) for verdict in each.verdicts]
+    known = [_SHORT_VERDICTS[v.code] for v in each.verdicts if v.code != _EVERYWHERE]
     remark = ", ".join(dict.fromkeys(known))
     return (
         day(each.utc, each.bmjd_tdb),

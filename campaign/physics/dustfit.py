@@ -19,8 +19,9 @@ COOLEST_DUST_K, HOTTEST_DUST_K = 100.0, 2500.0
 _COARSE, _FINE = 240, 161
 # Natural logarithms below the peak at which the probability is dropped, and half the span of amplitudes.
 _WORTH_COUNTING, _HALF_SPAN, _AMPLITUDES = 18.0, 6.0, 49
-# A density at an end of the range above this share of the peak means that the range, not the data, ends it.
-_CUT_SHARE = 0.05
+# The range of temperatures, not the data, ends the answer where the density at an end is above this share of
+# the peak, or where this much probability lies in the outermost twentieth of the range.
+_CUT_SHARE, _CUT_PROBABILITY, _OUTERMOST = 0.05, 0.005, 0.05
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -343,8 +344,13 @@ def _narrowed(temperatures: FloatArray, height: FloatArray) -> FloatArray:
 
 def _cut(height: FloatArray) -> str:
     share = np.exp(height - height.max())
-    ends = [word for word, at in (("cool", share[0]), ("hot", share[-1])) if at > _CUT_SHARE]
-    return " and ".join(ends)
+    probability = np.cumsum(share) / share.sum()
+    outermost = round(_OUTERMOST * height.size)
+    ends = (
+        ("cool", share[0], probability[outermost - 1]),
+        ("hot", share[-1], 1.0 - probability[-outermost - 1]),
+    )
+    return " and ".join(word for word, at, beyond in ends if at > _CUT_SHARE or beyond > _CUT_PROBABILITY)
 
 
 def _finish(

@@ -222,17 +222,20 @@ def _measured(
         at = axis_instant(question.on)
         span = (at - question.within_d, at + question.within_d)
         _require_near(result.system, points, at, question.within_d)
-        sky = _sky(inputs, overrides, points, [*episodes, span])
+        sky = _sky(
+            inputs, overrides, points, Levels(points, episodes, span, is_long=False, given=overrides.levels)
+        )
         found = excesses(sky, *span)
         _require_zero_points(found, result.system)
         measured, _ = measure(inputs, sky, found, at, question.draws, question.seed)
         return replace(result, measured=replace(measured, within_d=question.within_d))
     first, last = _span(inputs.record, question)
-    sky = _sky(inputs, overrides, points, [*episodes, (first, last)])
+    levels = Levels(points, episodes, (first, last), is_long=True, given=overrides.levels)
+    sky = _sky(inputs, overrides, points, levels)
     inside = points.bmjd_tdb[(points.bmjd_tdb >= first) & (points.bmjd_tdb <= last)]
     dates = epochs_of(inside, question.within_d)
     if not dates:
-        _require_near(result.system, points, 0.5 * (first + last), 0.5 * (last - first))
+        raise _nothing_between(result.system, points, first, last)
     if len(dates) > MOST_EPOCHS:
         raise InputRefused(
             f"There are {len(dates)} dates in that span.",
@@ -240,13 +243,31 @@ def _measured(
             hint="Choose a shorter span, or a longer --within.",
             code="span-refused",
         )
-    return replace(result, through=_through(inputs, sky, dates, question, result.system))
+    through = _through(inputs, sky, dates, question, result.system)
+    if levels.inside:
+        whose = ", ".join(f"{band} ({source or 'no source'})" for band, source in levels.inside)
+        inputs.notes.append(
+            f"levels from points inside the span asked about: {whose}; dust that was there most of the time "
+            "hides itself in them, give --level"
+        )
+    return replace(result, through=through)
 
 
-def _sky(
-    inputs: DustInputs, overrides: DustOverrides, points: LightPoints, dusty: Sequence[tuple[float, float]]
-) -> Sky:
-    return Sky(points, Levels(points, dusty, overrides.levels), overrides, inputs.opacity)
+def _sky(inputs: DustInputs, overrides: DustOverrides, points: LightPoints, levels: Levels) -> Sky:
+    return Sky(points, levels, overrides, inputs.opacity)
+
+
+def _nothing_between(system: str, points: LightPoints, first: float, last: float) -> NotFound:
+    nearest = int(np.argmin(np.abs(points.bmjd_tdb - 0.5 * (first + last))))
+    when = (utc_iso(points.bmjd_tdb[nearest : nearest + 1])[0] or "")[:10]
+    start, end = ((text or "")[:10] for text in utc_iso(np.array([first, last])))
+    return NotFound(
+        f"{system} was not measured from {start} until {end}.",
+        why=f"The nearest photometry is of {when}.",
+        hint=f"Choose another span, or that date: --on {when}.",
+        code="no-photometry-near",
+        details={"nearest_utc": when},
+    )
 
 
 def _through(

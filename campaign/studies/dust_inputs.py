@@ -234,10 +234,6 @@ def _put_flow(found: DustInputs) -> None:
     if "flow_speed_kms" not in found.values and winds[0] is not None:
         assert isinstance(winds[0].value, Measured)
         found.put("flow_speed_kms", winds[0].value, "assumed", "the wind of star A")
-        found.notes.append(
-            "the flow is taken as fast as the wind of star A; the shocked gas can be slower, between the two "
-            "winds: give --flow-speed"
-        )
 
 
 def _put_assumed(found: DustInputs, asked: DustOpacity) -> None:

@@ -74,6 +74,11 @@ def grains_in_light(
     radius_keys = (*light_keys, *_GRAINS, "condensation_k")
     way = _Way(inputs, light)
     flow = inputs.has("flow_speed_kms")
+    if flow and inputs.told["flow_speed_kms"].origin == "assumed":
+        inputs.notes.append(
+            "the flow is taken as fast as the wind of star A; the shocked gas can be slower, between the two "
+            "winds: give --flow-speed"
+        )
     if not flow:
         inputs.notes.append("no flow speed: no delay; give --flow-speed, or the wind speed of star A")
     return DustPhysics(
@@ -273,6 +278,9 @@ def rule_line(inputs: DustInputs, travel_au: Propagated) -> str | None:
         )
         return None
     critical = _as_measured(inputs.critical_separation_au)
+    rule = inputs.record.rule
+    if rule is not None and rule.kind != "separation":
+        inputs.notes.append(f"the line for the dust rule would take the place of the rule '{rule.kind}'")
     if travel_au.lo68 is None or travel_au.hi68 is None or travel_au.median is None:
         way = Measured(travel_au.value or 0.0)
     else:

@@ -217,7 +217,12 @@ class Levels:
     points : LightPoints
         All of them, mag.
     dusty : sequence of (float, float)
-        Spans that hold, or may hold, dust (``bmjd_tdb``); left out of the levels.
+        Spans known to hold dust (``bmjd_tdb``); left out of the levels.
+    asked : (float, float)
+        The span that is asked about (``bmjd_tdb``), left out as well.
+    is_long : bool
+        Whether a series that lies all inside the span asked about may make its level there; it is told in
+        ``inside``.
     given : sequence of LevelGiven
         Levels of bands given by the user, mag; they come first.
 
@@ -230,17 +235,23 @@ class Levels:
     """
 
     def __init__(
-        self, points: LightPoints, dusty: Sequence[tuple[float, float]], given: Sequence[LevelGiven]
+        self,
+        points: LightPoints,
+        dusty: Sequence[tuple[float, float]],
+        asked: tuple[float, float],
+        *,
+        is_long: bool,
+        given: Sequence[LevelGiven],
     ) -> None:
-        inside = np.zeros(points.mag.size, dtype=bool)
-        for start, end in dusty:
-            inside |= (points.bmjd_tdb >= start) & (points.bmjd_tdb <= end)
+        known = points.side == 0
+        for span in dusty:
+            known &= ~_within(points, span)
         self._given = {one.band: one.mag for one in given}
-        self._quiet: dict[str, list[int]] = {}
-        for i in np.flatnonzero(~inside & (points.side == 0)):
-            self._quiet.setdefault(points.series[i], []).append(int(i))
+        self._quiet = _by_series(points, known & ~_within(points, asked))
+        self._also = _by_series(points, known) if is_long else {}
         self._points = points
         self._found: dict[str, Level | str] = {}
+        self.inside: list[tuple[str, str]] = []
 
     def of(self, series: str, band: str) -> Level | str | None:
         """The level; why there is none; or None where the stars were said not to matter."""
@@ -253,6 +264,9 @@ class Levels:
 
     def _level(self, series: str) -> Level | str:
         places = self._quiet.get(series, [])
+        if len(places) < MINIMUM_LEVEL_POINTS <= len(self._also.get(series, [])):
+            places = self._also[series]
+            self.inside.append((self._points.band[places[0]], self._points.source[places[0]]))
         level: StellarLevel | None = stellar_level(self._points.mag[places]) if places else None
         if level is None:
             return (
@@ -265,3 +279,14 @@ class Levels:
         flicker = float(np.sqrt(max(level.scatter_mag**2 - typical**2, 0.0)))
         sigma = 1.2533 * level.scatter_mag / float(np.sqrt(level.points))
         return Level(level.mag, sigma, flicker, level.scatter_mag)
+
+
+def _within(points: LightPoints, span: tuple[float, float]) -> NDArray[np.bool_]:
+    return np.asarray((points.bmjd_tdb >= span[0]) & (points.bmjd_tdb <= span[1]))
+
+
+def _by_series(points: LightPoints, chosen: NDArray[np.bool_]) -> dict[str, list[int]]:
+    found: dict[str, list[int]] = {}
+    for i in np.flatnonzero(chosen).tolist():
+        found.setdefault(points.series[i], []).append(i)
+    return found

@@ -15,6 +15,7 @@ from campaign.physics.dustfit import amount_at, flux_sensitivities
 from campaign.physics.dustmass import dust_flux_jy
 from campaign.studies.dust_inputs import DustInputs
 from campaign.studies.dust_measured import FLUXES, Fitted
+from campaign.studies.dust_verdicts import NO_DUST
 from campaign.studies.propagation import DrawnTogether, Draws, Propagator, Uncertain
 
 FloatArray = NDArray[np.float64]
@@ -58,7 +59,7 @@ def production_rates(
     draws: int,
     seed: int,
 ) -> tuple[ProductionRate, ...]:
-    """Change of the mass from each date with a mass to the next.
+    """Change of the mass from each date with a mass to the next, but not past a date that shows no dust.
 
     Parameters
     ----------
@@ -85,6 +86,7 @@ def production_rates(
     usable = [(measured, fitted) for measured, fitted in epochs if fitted is not None and measured.mass_msun]
     if len(usable) < 2:
         return ()
+    without = [m.bmjd_tdb for m, _ in epochs if any(v.code == NO_DUST for v in m.verdicts)]
     fits = [fitted for _, fitted in usable]
     given = not all(fit.is_fitted for fit in fits)
     drawn = _normals_together(fits, draws, seed)
@@ -92,6 +94,8 @@ def production_rates(
     values: dict[str, Uncertain] = {key: inputs.values[key] for key in shared}
     found = []
     for i, ((one, _), (other, _)) in enumerate(pairwise(usable)):
+        if any(one.bmjd_tdb < clear < other.bmjd_tdb for clear in without):
+            continue
         span_yr = (other.bmjd_tdb - one.bmjd_tdb) / JULIAN_YEAR_D
         pair = (fits[i], fits[i + 1])
         if given:

@@ -15,6 +15,8 @@ THICK, OPAQUE = 0.3, 1.0
 _IMPROBABLE = 0.0027
 # Of the stars' light, taken up and given off again.
 _MUCH_LIGHT = 0.5
+# Bands were measured and none shows an excess.
+NO_DUST = "star-dominated"
 
 
 @dataclass(frozen=True, slots=True)
@@ -113,7 +115,7 @@ def _too_little(excesses: Sequence[BandExcess], fit: DustFit | None, given: bool
     elif not seen and measured:
         found.append(
             DustVerdict(
-                "star-dominated",
+                NO_DUST,
                 f"star-dominated: no excess of {SEEN_SIGMA:.0f} sigma in {_list([m.band for m in measured])}",
                 True,
             )

@@ -368,6 +368,38 @@ def test_an_episode_gives_masses_and_the_rates_between_them():
     assert rates == pytest.approx([2e-8 / (100.0 / 365.25), -1e-8 / (200.0 / 365.25)], rel=0.03)
 
 
+def test_no_rate_goes_past_a_date_without_dust():
+    dates = {AT_MJD: (1e-8, 900.0), AT_MJD + 100.0: (1e-13, 900.0), AT_MJD + 200.0: (3e-8, 900.0)}
+    through = told(
+        photometry(None, dates), start=instant(AT_MJD - 10.0), end=instant(AT_MJD + 250.0)
+    ).through  # fmt: skip
+    assert [epoch.mass_msun is None for epoch in through.epochs] == [False, True, False]
+    assert through.rates == ()
+
+
+def test_a_source_that_saw_the_span_alone_makes_its_level_there_and_it_is_told():
+    # Quiet years, half a year of dust and quiet years again, all inside the span that is asked about.
+    dates = {AT_MJD + 40.0 * i: (2e-8, 900.0) for i in range(5)}
+    light = photometry(None, dates, bands=only("Ks", "W1"))
+    span = {"start": instant(AT_MJD - 4000.0), "end": instant(AT_MJD + 4000.0)}
+    result = told(light, **span)
+    masses = [epoch.mass_msun.value for epoch in result.through.epochs if epoch.mass_msun is not None]
+    assert masses == pytest.approx([2e-8] * 5, rel=0.02)
+    assert any("levels from points inside the span" in note for note in result.assumptions)
+    narrow = told(light, start=instant(AT_MJD - 10.0), end=instant(AT_MJD + 200.0))
+    assert not any("levels from points inside" in note for note in narrow.assumptions)
+
+
+def test_a_temperature_that_only_the_range_bounds_is_none():
+    # H and Ks alone with a tenth of a magnitude: dust of 100 K fits nearly as well, with any mass.
+    light = photometry(
+        np.random.default_rng(8), {AT_MJD: (3e-9, 800.0)}, bands=only("H", "Ks"), error_mag=0.1
+    )
+    result = told(light)
+    assert result.measured.mass_msun is None
+    assert set(verdicts(result)) <= {"one-band", "temperature-unbounded", "star-dominated"}
+
+
 def test_rates_share_distance_and_opacity_and_their_common_errors_cancel():
     # The same dust at two dates: distance and opacity scale nothing, so that only the fluxes are left.
     dates = {AT_MJD: (2e-8, 900.0), AT_MJD + 100.0: (2e-8, 900.0)}
