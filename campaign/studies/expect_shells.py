@@ -208,18 +208,21 @@ def _coming(tracks: ShellTracks, at: float, until: float, past: Mapping[int, She
 
 
 def _view(tracks: Iterable[ShellTrack], at: float, limits: Limits, heat: _Heat) -> ExpectedView:
-    shells = [_shell(track, at, limits, heat) for track in tracks if track.launched_share(at) > _LAUNCHED]
+    launched = [track for track in tracks if track.launched_share(at) > _LAUNCHED]
+    shown = limits.show([track.median_radius(at) for track in launched])
+    seen = shown.in_view.tolist() if limits.any else [None] * len(launched)
+    shells = [_shell(track, at, limits, heat, in_view) for track, in_view in zip(launched, seen, strict=True)]
     return ExpectedView(
         bmjd_tdb=at,
         utc=utc_iso([at])[0],
         shells=tuple(shells),
-        in_view=sum(1 for shell in shells if shell.in_view),
-        beyond_field=sum(1 for shell in shells if limits.is_beyond(shell.radius_arcsec)),
-        within_limit=sum(1 for shell in shells if limits.is_within(shell.radius_arcsec)),
+        in_view=int(shown.in_view.sum()),
+        beyond_field=shown.beyond_outer,
+        within_limit=shown.within_inner,
     )
 
 
-def _shell(track: ShellTrack, at: float, limits: Limits, heat: _Heat) -> ExpectedShell:
+def _shell(track: ShellTrack, at: float, limits: Limits, heat: _Heat, in_view: bool | None) -> ExpectedShell:
     drawn = track.radius_draws(at)
     launched = drawn[np.isfinite(drawn)]
     known = not track.missing
@@ -241,7 +244,7 @@ def _shell(track: ShellTrack, at: float, limits: Limits, heat: _Heat) -> Expecte
         proper_motion_sigma_mas_yr=float(np.std(motion)) if known else None,
         probability=track.launched_share(at) if known else None,
         radius_au=heat.radius_au(radius),
-        in_view=limits.holds(radius),
+        in_view=in_view,
         view_probability=float(np.mean(limits.holds_each(drawn))) if known and limits.any else None,
         grain_temperature_k=temperature,
         peak_wavelength_um=peak,

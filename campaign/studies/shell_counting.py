@@ -11,6 +11,8 @@ from numpy.typing import NDArray
 from campaign.model.measured import Measured
 from campaign.model.shells import ShellAssignment
 from campaign.physics.shellassignment import MISSING_PRIOR, Assignment, assign_indices
+from campaign.physics.shellcycles import AllowedPeriod, periods_between_images
+from campaign.physics.shellspacing import age_in_periods, fit_spacing
 from campaign.physics.shellvalues import Sided
 from campaign.physics.timescales import utc_iso
 from campaign.studies.shell_ephemeris import ShellEphemeris
@@ -23,8 +25,10 @@ IntArray = NDArray[np.int64]
 _STATED_STANDS = 0.01
 # New shells between two images that are tried where no period says how many there were.
 _MOST_TURNS = 12
-# A count of turns is told from its neighbours while the period is known better than this, in turns.
-_CLEAR_TURNS = 0.25
+# A count of turns less likely than this is warned of, and so many of the others are named, above a share.
+_SURE, _NAMED, _LEAST_NAMED = 0.95, 3, 0.005
+# Of a period or a phase whose error nobody knows, as far as counting turns goes.
+_ROUGH = 0.1
 # A count of turns this much worse in chi-square than the best is not worth naming.
 _WORTH_NAMING = 9.0
 # How the note on finer spacings begins, which says nothing where a motion and a period are known.
@@ -35,10 +39,14 @@ _WIDE_SPACING = 0.1
 
 @dataclass(frozen=True, slots=True)
 class _CountedImage:
-    """The shells of one image, the youngest visible being 1; ``youngest_phase`` is its age in periods."""
+    """The shells of one image, the youngest visible being 1.
+
+    ``youngest_phase`` and ``youngest_sigma`` are its age in periods and the error of that, NaN where unknown.
+    """
 
     index: FloatArray
     youngest_phase: float
+    youngest_sigma: float
     spacing_arcsec: float
     assignments: tuple[ShellAssignment, ...] = ()
     not_told: tuple[str, ...] = ()
@@ -93,7 +101,7 @@ def count_shells(
     Source: Bayes' rule over the ways to count, with a stated prior cost of each missing shell.
     """
     index = np.zeros(group.radius_arcsec.size)
-    phases, spacings = np.zeros(group.images), np.zeros(group.images)
+    phases, spacings = [Sided(0.0)] * group.images, np.zeros(group.images)
     assignments: list[ShellAssignment] = []
     not_told: dict[str, None] = {}
     warnings: list[str] = []
@@ -104,7 +112,8 @@ def count_shells(
         phase = None if ephemeris is None or instant is None else ephemeris.phase_of_youngest(instant)
         counted = _count_image(group, places, missing_prior, spacing, phase)
         index[places] = counted.index
-        phases[number], spacings[number] = counted.youngest_phase, counted.spacing_arcsec
+        phases[number] = _phase(counted)
+        spacings[number] = counted.spacing_arcsec
         assignments += counted.assignments
         not_told.update(dict.fromkeys(counted.not_told))
         warnings += counted.warnings
@@ -146,7 +155,10 @@ def _count_image(
             else ("an error of a radius is not known: shells are counted as they stand",)
         )
         width = _rough_spacing(radius, in_order, spacing)
-        return _CountedImage(in_order, float(radius[0] / width - in_order[0] + 1.0), width, not_told=said)
+        blur = float(group.errors.sigma_arcsec[places[0]]) / width
+        return _CountedImage(
+            in_order, float(radius[0] / width - in_order[0] + 1.0), blur, width, not_told=said
+        )
     chosen = np.zeros(group.radius_arcsec.size, dtype=bool)
     chosen[places] = True
     found = assign_indices(
@@ -160,9 +172,13 @@ def _count_image(
     best, warnings = _that_stands(ways, stated, _where(group, places))
     shift = float(_shift(best.indices, stated))
     index = np.array(best.indices) - shift
+    youngest = age_in_periods(
+        fit_spacing(index, group.radius_arcsec[places], group.errors.only(chosen)), [1.0]
+    )
     return _CountedImage(
         index,
-        best.youngest_phase + shift,  # of index 1, whether it was seen or not
+        float(youngest.value[0]),  # of index 1, whether it was seen or not
+        float(youngest.sigma[0]),
         best.spacing_arcsec,
         tuple(_assignment(way, group.radii[places[0]].bmjd_tdb) for way in ways),
         found.not_told,
@@ -231,60 +247,80 @@ def _assignment(way: Assignment, image_bmjd_tdb: float | None) -> ShellAssignmen
 # ---------------------------------------------------------------------------------- through several images
 
 
+def _phase(counted: _CountedImage) -> Sided:
+    size = None if np.isnan(counted.youngest_sigma) else counted.youngest_sigma
+    return Sided(counted.youngest_phase, size, size)
+
+
 def _turns(
-    group: RadiusGroup, phases: FloatArray, spacing_arcsec: float, period: Measured | None
+    group: RadiusGroup, phases: Sequence[Sided], spacing_arcsec: float, period: Measured | None
 ) -> tuple[list[int], list[str]]:
     """How many new shells the visible youngest of each image is after that of the image before."""
-    if group.images == 1:
-        return [], []
-    if not group.dated:
-        return [0] * (group.images - 1), []
-    if all(group.of_image(number).size == 1 for number in range(group.images)) and spacing_arcsec <= 0.0:
+    one_each = bool((np.bincount(group.image) == 1).all()) and spacing_arcsec <= 0.0
+    if group.images == 1 or not group.dated or one_each:
         return [0] * (group.images - 1), []
     instants = np.array([group.time_yr[group.of_image(number)[0]] for number in range(group.images)])
-    gaps, steps = np.diff(instants), -np.diff(phases)
-    if period is not None:
-        return _turns_by_period(gaps, steps, period)
-    return _turns_by_motion(group, gaps, steps, spacing_arcsec)
+    gaps = np.diff(instants)
+    if period is None and group.images > 2:
+        return _turns_by_motion(gaps, phases)
+    turns, doubts = [], []
+    for number, gap in enumerate(gaps):
+        first, second = phases[number], phases[number + 1]
+        if not (first.known and second.known):
+            turns.append(_nearest_turns(gap, first, second, period))
+            continue
+        ways = periods_between_images(first, second, float(gap), _usable(period))
+        turns.append(ways[0].launches if ways else 0)
+        if ways and ways[0].probability < _SURE:
+            doubts.append(_doubt(ways, period))
+    return turns, doubts
 
 
-def _turns_by_period(gaps: FloatArray, steps: FloatArray, period: Measured) -> tuple[list[int], list[str]]:
-    turns = [round(float(value)) for value in gaps / period.value + steps]
-    blur = gaps * (period.sigma or 0.0) / period.value**2
-    if bool((blur > _CLEAR_TURNS).any()):
-        return turns, ["the period is too uncertain to count the shells launched between the images"]
-    return turns, []
+def _usable(period: Measured | None) -> Sided | None:
+    """A period as the counting of turns takes it; one without an error is taken at its word, to a tenth."""
+    if period is None:
+        return None
+    if not period.error_known:
+        return Sided(period.value, _ROUGH * period.value, _ROUGH * period.value)
+    return Sided(period.value, period.minus, period.plus)
 
 
-def _turns_by_motion(
-    group: RadiusGroup, gaps: FloatArray, steps: FloatArray, spacing_arcsec: float
-) -> tuple[list[int], list[str]]:
+def _nearest_turns(gap_yr: float, first: Sided, second: Sided, period: Measured | None) -> int:
+    return 0 if period is None else round(gap_yr / period.value + first.value - second.value)
+
+
+def _doubt(ways: Sequence[AllowedPeriod], period: Measured | None) -> str:
+    """What else the images allow, the likeliest first."""
+    others = [
+        f"{way.period_yr:.3g} yr ({way.probability:.0%})"
+        for way in ways[1 : 1 + _NAMED]
+        if way.probability >= _LEAST_NAMED
+    ]
+    best, asked = ways[0], "a better period" if period is not None else "a period"
+    return (
+        "how many shells were launched between the images is not certain: with "
+        f"{best.launches} the period is {best.period_yr:.3g} yr ({best.probability:.0%}), but it may be "
+        f"{' or '.join(others) or 'another'}; {asked}, a motion or another image would tell"
+    )
+
+
+def _turns_by_motion(gaps: FloatArray, phases: Sequence[Sided]) -> tuple[list[int], list[str]]:
     """No period: each number of new shells in the first gap is a period, which counts the other gaps."""
+    steps = -np.diff([phase.value for phase in phases])
+    own = max(max(phase.sigma for phase in phases) if all(p.known for p in phases) else _ROUGH, 1e-3)
     tried: list[tuple[float, float, list[int]]] = []
     for first in range(_MOST_TURNS + 1):
         way = first - float(steps[0])
-        if way <= 0.0:
-            continue
-        period_yr = float(gaps[0]) / way
-        turns = [first, *(round(float(v)) for v in gaps[1:] / period_yr + steps[1:])]
-        misfit = float(np.sum((np.array(turns) - gaps / period_yr - steps) ** 2)) if len(turns) > 1 else 0.0
-        own = _phase_error(group, spacing_arcsec)
-        tried.append((misfit / own**2, period_yr, turns))
+        if way > 0.0:
+            period_yr = float(gaps[0]) / way
+            turns = [first, *(round(float(v)) for v in gaps[1:] / period_yr + steps[1:])]
+            misfit = float(np.sum((np.array(turns) - gaps / period_yr - steps) ** 2)) / own**2
+            tried.append((misfit, period_yr, turns))
     best = min(tried, key=lambda each: (each[0], each[2][0]))
-    others = [
-        f"{each[1]:.3g} yr" for each in tried if each is not best and each[0] - best[0] < _WORTH_NAMING
-    ][:3]
+    others = [f"{p:.3g} yr" for misfit, p, _ in tried if p != best[1] and misfit - best[0] < _WORTH_NAMING]
     if not others:
         return best[2], []
     return best[2], [
-        f"nothing says how many shells were launched between the images: with the fewest the period is "
-        f"{best[1]:.3g} yr, but it may also be {' or '.join(others)}; a period, a motion or a third image "
-        "would tell"
+        "how many shells were launched between the images is not certain: the period may be "
+        f"{best[1]:.3g} yr, or {' or '.join(others[:_NAMED])}; a period, a motion or another image would tell"
     ]
-
-
-def _phase_error(group: RadiusGroup, spacing_arcsec: float) -> float:
-    """About how well the age of the youngest shell is known in one image, in periods."""
-    sigma = group.errors.sigma_arcsec
-    typical = float(np.median(sigma)) if group.errors.known else 0.05 * spacing_arcsec
-    return max(typical / spacing_arcsec, 1e-3)

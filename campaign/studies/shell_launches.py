@@ -8,11 +8,12 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from campaign.model.shells import DatedShell, ForeseenShell, ShellTension
+from campaign.physics.shellcycles import phase_of_launch
 from campaign.physics.shelltension import HIGH_SIGMA
 from campaign.physics.timescales import utc_iso
 from campaign.studies.shell_ephemeris import ShellEphemeris
 from campaign.studies.shell_fitting import Ages
-from campaign.studies.shell_images import YEAR_D, RadiusGroup
+from campaign.studies.shell_images import YEAR_D, RadiusGroup, years_of
 from campaign.studies.shell_relations import none_if_nan
 
 # Cycles on either side of the nearest that are weighed against each other.
@@ -204,8 +205,9 @@ def _phase(shell: DatedShell, cycle: int, ephemeris: ShellEphemeris) -> tuple[fl
     if shell.launched_bmjd_tdb is None or periastron is None or period is None:
         return None, None
     period_d = period.value * YEAR_D
-    turns = (shell.launched_bmjd_tdb - periastron.bmjd_tdb) / period_d
-    phase = (turns + 0.5) % 1.0 - 0.5
+    phase = float(
+        phase_of_launch(years_of(shell.launched_bmjd_tdb), years_of(periastron.bmjd_tdb), period.value)
+    )
     if shell.launched_sigma_d is None or periastron.sigma_d is None:
         return phase, None
     return phase, float(np.hypot(shell.launched_sigma_d, periastron.sigma_d)) / period_d

@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+
+from campaign.physics.shellexpectation import ShellsInView, shells_in_view
 
 FloatArray = NDArray[np.float64]
 BoolArray = NDArray[np.bool_]
@@ -37,23 +40,18 @@ class Limits:
         ]
         return min(ends) if ends else None
 
-    def is_within(self, radius_arcsec: float) -> bool:
-        """Whether a radius is too small to be told from the stars."""
-        return self.resolution_arcsec is not None and radius_arcsec < self.resolution_arcsec
-
-    def is_beyond(self, radius_arcsec: float) -> bool:
-        """Whether a radius lies outside the view."""
-        outermost = self.outermost_arcsec
-        return outermost is not None and radius_arcsec > outermost
-
-    def holds(self, radius_arcsec: float) -> bool | None:
-        """Whether a shell of that radius is seen; None where nothing limits the view."""
-        if not self.any:
-            return None
-        return not self.is_within(radius_arcsec) and not self.is_beyond(radius_arcsec)
+    def show(self, radius_arcsec: Sequence[float]) -> ShellsInView:
+        """Which of the shells of these radii are seen, and how many are not."""
+        return shells_in_view(
+            radius_arcsec,
+            np.zeros(len(radius_arcsec)),
+            field_arcsec=self.field_arcsec,
+            resolution_arcsec=self.resolution_arcsec,
+            outer_radius_arcsec=self.outer_radius_arcsec,
+        )
 
     def holds_each(self, radius_arcsec: FloatArray) -> BoolArray:
-        """The same of many radii; NaN, a shell not launched, is never seen."""
+        """Whether shells of drawn radii are seen; NaN, a shell not launched, is never seen."""
         low = 0.0 if self.resolution_arcsec is None else self.resolution_arcsec
         high = np.inf if self.outermost_arcsec is None else self.outermost_arcsec
         with np.errstate(invalid="ignore"):
