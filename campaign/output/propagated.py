@@ -17,8 +17,8 @@ def brief(value: Propagated | None) -> str:
 def told(value: Propagated | None, unit: str = "") -> str:
     """Median with its 68 % interval as errors; empty where there is none.
 
-    Errors that differ by less than a sixth are told as one; where one side all but vanishes, the interval itself
-    is told.
+    Errors that differ by less than a sixth are told as one; where one side all but vanishes, the interval
+    itself is told.
     """
     if value is None or (value.value is None and value.median is None):
         return ""

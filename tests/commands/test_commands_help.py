@@ -57,7 +57,8 @@ SETTING = (
     ),
 )
 OURS = [("upcoming",), ("ephemeris",), ("log", "photometry"), ("log", "flux"), ("rule", "set"),
-        ("solution", "adopt"), ("episodes", "add"), ("shells", "date"), ("shells", "expect")]  # fmt: skip
+        ("solution", "adopt"), ("episodes", "add"), ("shells", "date"), ("shells", "expect"),
+        ("winds",)]  # fmt: skip
 FROM_NOTHING = [("system", "add"), ("site", "add")]
 
 
