@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Literal
 
@@ -73,11 +73,15 @@ class ExchangeRow:
 
 @dataclass(frozen=True, slots=True)
 class ExchangeTable:
-    """A table that ``export`` wrote, on its way back; rows come one at a time."""
+    """A table that ``export`` wrote, on its way back; rows come one at a time.
+
+    ``as_csv`` turns the cells of a row, as they stood, into what they would be in CSV.
+    """
 
     kind: ExchangeKind
     columns: tuple[str, ...]
     rows: Iterator[ExchangeRow]
+    as_csv: Callable[[Sequence[str]], tuple[str, ...]] = tuple
 
 
 @dataclass(frozen=True, slots=True)

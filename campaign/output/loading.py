@@ -230,23 +230,33 @@ def _bad_data(loaded: Loaded, cell: BadCell) -> dict[str, Any]:
     }
 
 
+def _mendable(text: str) -> str:
+    return "\n".join("\t".join(map(visible, line.split("\t"))) for line in text.split("\n"))
+
+
 def rejects_pieces(loaded: Loaded) -> Iterator[str]:
     """The bad rows as a CSV that can be mended and loaded again: the same columns, and the reason.
 
-    Cells are as they stood, but for characters that cannot be seen. A row that has more cells than there are
-    columns keeps them behind the reason.
+    Cells are as they stood, but for characters that cannot be seen; lines of a text stay lines. A row
+    that has more cells than there are columns keeps them behind the reason, and one that has fewer stays
+    as short as it is, so that neither is taken for a good one before it is mended.
     """
     buffer = io.StringIO()
-    writer = csv.writer(buffer, lineterminator="\n")
+    writer, quoting = (
+        csv.writer(buffer, lineterminator="\n", quoting=how) for how in (csv.QUOTE_MINIMAL, csv.QUOTE_ALL)
+    )
     # The reasons of an earlier load make way for those of this one.
     own = [place for place, name in enumerate(loaded.columns) if name.strip().casefold() != REASON]
     width = len(own)
     writer.writerow([*(visible(loaded.columns[place]) for place in own), REASON])
     for row in loaded.rejected:
-        padded = [*row.cells, *[""] * (len(loaded.columns) - len(row.cells))]
-        cells = [*(padded[place] for place in own), *padded[len(loaded.columns) :]]
+        cells = list(row.cells)
+        if len(cells) >= len(loaded.columns):
+            cells = [*(cells[place] for place in own), *cells[len(loaded.columns) :]]
         reason = "; ".join(f"{cell.column or 'row'}: {cell.code}: {cell.why}" for cell in row.bad)
-        writer.writerow([visible(text) for text in (*cells[:width], reason, *cells[width:])])
+        texts = [_mendable(text) for text in (*cells[:width], reason, *cells[width:])]
+        # A line that begins with # would be a comment.
+        (quoting if texts[0].startswith("#") else writer).writerow(texts)
         if buffer.tell() > 1 << 16:
             yield buffer.getvalue()
             buffer.seek(0)

@@ -197,8 +197,9 @@ class _Understanding:
     def _place_of(self, text: str) -> int | None:
         wanted = " ".join(text.split())
         names = [" ".join(column.name.split()) for column in self._columns]
-        for same in (str, str.casefold):
-            places = [place for place, name in enumerate(names, start=1) if same(name) == same(wanted)]
+        bare = [split_brackets(name)[0] for name in names]
+        for known, same in ((names, str), (names, str.casefold), (bare, str), (bare, str.casefold)):
+            places = [place for place, name in enumerate(known, start=1) if same(name) == same(wanted)]
             if len(places) == 1:
                 return places[0]
         if re.fullmatch("[1-9][0-9]{0,5}", wanted) and int(wanted) <= len(names):
@@ -238,16 +239,18 @@ class _Understanding:
         field = field_named(self._kind, split[0]) if split else None
         return (field.name, split[1]) if field is not None and split else ("", "")
 
-    def _time_of(self, column: TableColumn) -> TimeMeaning | None:
+    def _time_of(self, column: TableColumn, *, is_said: bool = False) -> TimeMeaning | None:
         """What a column means as a time: by its name, the unit beside it, and the head of the table."""
         bare, in_brackets = split_brackets(column.name)
         by_name = read_time_name(column.name) or read_time_name(bare)
-        if by_name is None:
+        if by_name is None and not is_said:
             return None
         if column.offset_jd is not None:
             from_head = from_origin(column.offset_jd, column.scale, column.place)
             if from_head is not None:
                 return from_head
+        if by_name is None:
+            return None
         if by_name.count == "text":
             for unit in (in_brackets, column.unit):
                 by_unit = read_time_name(unit) if unit else None
@@ -271,7 +274,7 @@ class _Understanding:
 
     def _instant_meaning(self, field: Field, column: TableColumn, meaning: str) -> TimeMeaning:
         if not meaning:
-            return self._time_of(column) or TimeMeaning("text")
+            return self._time_of(column, is_said=True) or TimeMeaning("text")
         said = read_time_name(meaning)
         if said is None:
             raise refusals.time_unclear(column, field, meaning)

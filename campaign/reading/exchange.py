@@ -30,6 +30,7 @@ HEAD_BYTES = 1 << 16
 _KIND_OF_ECSV = re.compile(r'# +campaign: \{"kind": "(\w+)"')
 _SCHEMA = re.compile(rb'\s*\{\s*"schema"\s*:\s*"campaign/export-\w+/')
 _ESCAPES = {"n": "\n", "t": "\t", "\\": "\\"}
+_REASON = "reason"
 
 
 def recognise(head: bytes) -> ExchangeForm | None:
@@ -108,11 +109,22 @@ def _row_reader(
 def _read_csv(stream: BinaryIO) -> ExchangeTable:
     records = _records(stream)
     _, names = next(records, (1, []))
+    # Bad rows that an earlier load wrote out, mended: their reasons are of no more use.
+    reason = names.index(_REASON) if _REASON in names else None
+    names = [name for name in names if name != _REASON]
     kind = _kind_of(names)
     if kind is None:
         raise _unreadable("Its first line does not name the columns of an export.", 1)
     reader = _row_reader(kind, names, lambda column: unguarded)
-    return ExchangeTable(kind, tuple(names), (reader.of_texts(line, cells) for line, cells in records))
+    rows = records if reason is None else _without_cell(records, reason, len(names))
+    return ExchangeTable(kind, tuple(names), (reader.of_texts(line, cells) for line, cells in rows))
+
+
+def _without_cell(
+    records: Iterator[tuple[int, list[str]]], place: int, width: int
+) -> Iterator[tuple[int, list[str]]]:
+    for line, cells in records:
+        yield line, cells[:place] + cells[place + 1 :] if len(cells) == width + 1 else cells
 
 
 def _read_ecsv(stream: BinaryIO) -> ExchangeTable:
@@ -128,14 +140,15 @@ def _read_ecsv(stream: BinaryIO) -> ExchangeTable:
     names = text.split(",")
     reader = _row_reader(kind, names, lambda column: _unescaped if column.is_prose else str, line)
     rows = (reader.of_texts(number, cells) for number, cells in _records(stream, line))
-    return ExchangeTable(kind, tuple(names), rows)
+    return ExchangeTable(kind, tuple(names), rows, reader.as_csv)
 
 
 def _read_votable(stream: BinaryIO) -> ExchangeTable:
     name, names, records = votable_rows(stream)
     kind = _kind_named(name, "The name of its table")
     reader = _row_reader(kind, names, lambda column: str)
-    return ExchangeTable(kind, tuple(names), (reader.of_texts(line, cells) for line, cells in records))
+    rows = (reader.of_texts(line, cells) for line, cells in records)
+    return ExchangeTable(kind, tuple(names), rows, reader.as_csv)
 
 
 def _read_json(stream: BinaryIO) -> ExchangeTable:
@@ -158,7 +171,7 @@ def _read_json(stream: BinaryIO) -> ExchangeTable:
         raise _unreadable("The names of its columns are not texts.", 1)
     kind = _kind_named(kind_name, "Its head")
     reader = _row_reader(kind, names, lambda column: str)
-    return ExchangeTable(kind, tuple(names), _json_rows(reader, names, rows))
+    return ExchangeTable(kind, tuple(names), _json_rows(reader, names, rows), reader.as_csv)
 
 
 def _json_rows(reader: RowReader, names: list[str], rows: list[Any]) -> Iterator[ExchangeRow]:

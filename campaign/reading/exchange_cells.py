@@ -10,6 +10,7 @@ from typing import Any
 from campaign.errors import InputRefused
 from campaign.model.exchange_columns import Cell, ExchangeColumn
 from campaign.model.exported import CellFault, ExchangeRow
+from campaign.model.guarding import guarded
 from campaign.reading.numbers import forbidden_character, read_number
 
 _WHOLE = re.compile(r"[+-]?[0-9]{1,10}")
@@ -43,6 +44,7 @@ class RowReader:
         self._names = [column.name for column in columns]
         self._from_text = [_text_reader(column, free(column)) for column in columns]
         self._from_value = [_value_reader(column) for column in columns]
+        self._to_text = [_csv_writer(column, free(column)) for column in columns]
 
     def of_texts(self, line: int, texts: Sequence[str]) -> ExchangeRow:
         """A row of texts; an empty one is unknown."""
@@ -55,6 +57,12 @@ class RowReader:
         """A row of values; None is unknown."""
         raw = tuple("" if value is None else str(value) for value in values)
         return self._row(line, raw, self._from_value, values)
+
+    def as_csv(self, raw: Sequence[str]) -> tuple[str, ...]:
+        """Cells of a row as they stood, as cells of CSV; a row of another length stays as it is."""
+        if len(raw) != len(self._to_text):
+            return tuple(raw)
+        return tuple(write(text) for write, text in zip(self._to_text, raw, strict=True))
 
     def _row(
         self,
@@ -81,6 +89,10 @@ def misfit(line: int, raw: Sequence[str], why: str) -> ExchangeRow:
     """A row that does not fit the table at all."""
     fault = CellFault(None, ",".join(raw)[:_SHOWN], "row-misfit", why)
     return ExchangeRow(line, tuple(raw), {}, (fault,))
+
+
+def _csv_writer(column: ExchangeColumn, free: Free) -> Free:
+    return (lambda text: guarded(free(text))) if column.is_text else str
 
 
 def _text_reader(column: ExchangeColumn, free: Free) -> Callable[[str], Cell]:

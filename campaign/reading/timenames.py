@@ -94,6 +94,20 @@ def _normal(meaning: TimeMeaning) -> TimeMeaning:
     return meaning
 
 
+def time_name(meaning: TimeMeaning) -> str | None:
+    """A name of a column that says by itself what its counts of days mean; None for dates, or without one."""
+    if meaning.count == "text" or meaning.scale is None or meaning.offset_d < 0:
+        return None
+    letter = {place: letter for letter, place in _PLACE_OF_LETTER.items()}.get(
+        meaning.place or "observatory", ""
+    )
+    name = f"{letter}{meaning.count}".upper() + f"_{meaning.scale.upper()}"
+    number = f"{float(meaning.offset_d):.15g}"
+    if meaning.offset_d and (Fraction(number) != meaning.offset_d or "e" in number):
+        return None
+    return f"{name}-{number}" if meaning.offset_d else name
+
+
 def from_origin(origin_jd: str, scale: Scale | None, place: Place | None) -> TimeMeaning | None:
     """What a column holds whose header states the origin of its days as a JD."""
     if not re.fullmatch(_NUMBER, origin_jd):

@@ -36,7 +36,7 @@ from campaign.studies.collecting import collector_at_rest
 from campaign.studies.load_axis import on_axis
 from campaign.studies.load_known import KnownCheck, check_known
 from campaign.studies.load_rows import CheckedRows, RowChecker
-from campaign.studies.load_understood import understood_mapping
+from campaign.studies.load_understood import names_for_rejects, understood_mapping
 from campaign.studies.load_warnings import load_warnings
 
 # What is being done, how far it is, and out of how much (None: nobody knows).
@@ -185,7 +185,7 @@ def _load_observations(
         bad=tuple(sorted(checker.bad, key=lambda cell: cell.line)),
         rehearsed=wanted.rehearse,
         line_word=table.line_word,
-        columns=tuple(column.name for column in table.columns),
+        columns=names_for_rejects(table, mapping),
         rejected=tuple(sorted(checker.rejected, key=lambda row: row.bad[0].line)),
     )
     if not checker.rows_read:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -37,6 +37,7 @@ class Tally:
     """What has come of an exchanged table so far."""
 
     keeps_rejected: bool
+    as_csv: Callable[[Sequence[str]], tuple[str, ...]] = tuple
     rows: int = 0
     added: int = 0
     already_known: int = 0
@@ -53,7 +54,7 @@ class Tally:
         self.bad_rows += 1
         self.bad += bad
         if self.keeps_rejected:
-            self.rejected.append(Rejected(row.raw, bad))
+            self.rejected.append(Rejected(self.as_csv(row.raw), bad))
 
     def refuse_for(self, row: ExchangeRow, error: CampaignError) -> None:
         """Keep that an error of ours stands against a row."""
@@ -115,7 +116,7 @@ def load_exchanged(
         file.name, f"a table that campaign exported ({form})", table.kind, (), (), ("its columns are known",)
     )
     shown(understood)
-    tally = Tally(wanted.keeps_rejected)
+    tally = Tally(wanted.keeps_rejected, table.as_csv)
     opening = store.rehearsing if wanted.rehearse else store.writing
     is_refused = False
     operation_id: int | None = None

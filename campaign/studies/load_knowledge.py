@@ -37,6 +37,7 @@ from campaign.reading.tablefile import TableFile
 from campaign.reading.values import read_measured, read_measured_or_bound
 from campaign.studies.load_knowledge_entry import ENTERERS, Enterer, KnownSystems
 from campaign.studies.load_names import alias_warnings, system_index
+from campaign.studies.load_understood import names_for_rejects
 
 # What is being done, how far it is, and out of how much (None: nobody knows).
 Told = Callable[[str, int, int | None], None]
@@ -168,7 +169,7 @@ def load_knowledge(
         kept_mapping=None if is_refused or wanted.rehearse else wanted.keep_mapping,
         operation_id=operation_id,
         line_word=table.line_word,
-        columns=tuple(column.name for column in table.columns),
+        columns=names_for_rejects(table, mapping),
         rejected=tuple(Rejected(row.cells, tuple(row.bad)) for row in kept_rows),
     )
 

@@ -11,6 +11,8 @@ from campaign.model.loading import (
     ValueTarget,
 )
 from campaign.reading.columnfields import FIELDS
+from campaign.reading.columnpatterns import split_brackets
+from campaign.reading.timenames import time_name
 from campaign.reading.units import FAMILIES
 from campaign.studies.load_fields import value_column
 
@@ -56,6 +58,41 @@ def understood_mapping(file: str, table: ForeignTable, mapping: TableMapping) ->
     if mapping.missing:
         notes.append(f"cells taken for unknown: empty ones, {', '.join(mapping.missing)}")
     return Understood(file, table.form, mapping.kind, tuple(lines), mapping.unused, tuple(notes))
+
+
+def names_for_rejects(table: ForeignTable, mapping: TableMapping) -> tuple[str, ...]:
+    """Names under which columns mean in a CSV what they mean in a table that says more than names.
+
+    Parameters
+    ----------
+    table : ForeignTable
+        Whose head may say units, and how times are counted.
+    mapping : TableMapping
+        As understood.
+
+    Returns
+    -------
+    tuple of str
+        One for each column; units in brackets.
+
+    Notes
+    -----
+    Accuracy: exact. Source: project convention.
+    """
+    if all(column.name == str(number) for number, column in enumerate(table.columns, start=1)):
+        # Numbers would not be taken for names; a column is called by its number all the same.
+        return tuple(f"column {column.name}" for column in table.columns)
+    names = []
+    times = {mapping.columns[name].number: meaning for name, meaning in mapping.instants.items()}
+    for number, column in enumerate(table.columns, start=1):
+        name = column.name
+        if column.scale is not None or column.offset_jd is not None:
+            meaning = times.get(number)
+            name = (time_name(meaning) if meaning is not None else None) or name
+        elif column.unit and split_brackets(name)[1] is None:
+            name = f"{name} [{column.unit}]"
+        names.append(name)
+    return tuple(names)
 
 
 def _target_lines(mapping: TableMapping, target: ValueTarget) -> list[MappingLine]:
