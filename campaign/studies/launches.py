@@ -49,12 +49,15 @@ class Launch:
     @property
     def median_d(self) -> float:
         """Median launch, ``bmjd_tdb``; NaN when there is no episode in any draw."""
-        return float(np.nanmedian(self.spread_d)) if np.isfinite(self.spread_d).any() else float("nan")
+        # Of the middle: the width lies evenly about it, and its draws would only add noise.
+        return float(np.nanmedian(self.middle_d)) if np.isfinite(self.middle_d).any() else float("nan")
 
     @property
     def sigma_d(self) -> float | None:
         """Standard deviation with half the window as error; None where an error is unknown."""
-        return None if self.missing else float(np.nanstd(self.spread_d))
+        if self.missing:
+            return None
+        return float(np.hypot(np.nanstd(self.middle_d), np.sqrt(np.nanmean(self.half_width_d**2))))
 
     @property
     def probability(self) -> float:

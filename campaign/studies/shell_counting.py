@@ -12,6 +12,7 @@ from campaign.model.measured import Measured
 from campaign.model.shells import ShellAssignment
 from campaign.physics.shellassignment import MISSING_PRIOR, Assignment, assign_indices
 from campaign.physics.shellcycles import AllowedPeriod, periods_between_images
+from campaign.physics.shellradii import mixed_edges_and_peaks
 from campaign.physics.shellspacing import age_in_periods, fit_spacing
 from campaign.physics.shellvalues import Sided
 from campaign.physics.timescales import utc_iso
@@ -129,6 +130,8 @@ def count_shells(
         # No image shows how far apart shells are: one radius in each is taken as one shell growing.
         not_told["the one radius of each image is taken as that of the same shell"] = None
     width = 0.0 if single else float(np.median(spacings[spacings > 0.0]))
+    if mixed_edges_and_peaks(group.errors):
+        warnings.append("edges stand beside peaks, and no offset between them is stated: --edge-offset")
     turns, doubts = _turns(group, phases, width, period)
     warnings += doubts
     youngest = np.concatenate([[0], np.cumsum(turns)])[group.image]

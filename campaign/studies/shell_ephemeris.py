@@ -15,6 +15,8 @@ from campaign.studies.shell_subject import period_of
 YEAR_D = 365.25
 # Beyond so many cycles from an image nobody counts shells.
 _SEARCHED = 3
+# Periods by which the ephemeris may be off when shells are counted.
+_SLACK = 0.2
 
 
 class Dated(NamedTuple):
@@ -73,11 +75,15 @@ class ShellEphemeris:
         return None
 
     def phase_of_youngest(self, instant: float) -> Sided | None:
-        """Age of the youngest shell in periods at an instant, ``bmjd_tdb``; None where it is not known."""
+        """Age of the youngest shell in periods at an instant, ``bmjd_tdb``; None where it is not known.
+
+        Its error is at least a fifth of a period: a rule that puts the window too early or too late must not
+        decide which shells are there.
+        """
         found = self.youngest(instant)
         if found is None or self.period_yr is None:
             return None
         period_d = self.period_yr.value * YEAR_D
         sigma = found[1].sigma_d
-        size = None if sigma is None else sigma / period_d
+        size = None if sigma is None else float(np.hypot(sigma / period_d, _SLACK))
         return Sided((instant - found[1].median_d) / period_d, size, size)

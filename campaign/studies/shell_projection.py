@@ -196,7 +196,7 @@ def _true_speed(
     sigma = quantity.sigma / factor
     if quantity.origin == "given" and stated is not None and stated.sigma is not None:
         wide = stated.sigma / sigma if sigma > 0.0 else 1.0
-        sigma = stated.sigma
+        value, sigma = stated.value, stated.sigma
     else:
         known, sigma = sigma, float(np.hypot(sigma, value * blur))
         wide = sigma / known if known > 0.0 else 1.0
