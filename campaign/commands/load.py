@@ -73,7 +73,21 @@ def load(
     json: JsonOption = False,
     quiet: QuietOption = False,
 ) -> None:
-    """Load a table: all of it in one step, or nothing."""
+    """Load a table: all of it in one step, or nothing.
+
+    Columns are known by their usual names and units (mag, e_mag, band, filter, HJD-2450000, BJD_TDB,
+    date, RV, rho, theta, radius, EW, flux, a column for each band, ...). What they do not say is said
+    with --column and --constant, also scale=utc, place=observatory, photometric_system=2MASS and
+    decimal=comma; what is needed and not there is told with what to type.
+
+    \b
+    For example:
+      campaign load lightcurve.csv --system "Lantern 3" --constant band=K
+      campaign load survey.txt.gz --system "Lantern 3" --constant band=V \\
+        --column "time=t as HJD_UTC-2450000" --column mag=m --dry-run
+      campaign load velocities.tsv --constant scale=utc --rejects bad.csv
+      campaign load orbits.csv --as solutions --skip-bad
+    """
     from campaign.output import loading as output
     from campaign.output.progress import Progress
     from campaign.studies import load as study

@@ -6,6 +6,7 @@ from __future__ import annotations
 import gzip
 import io
 import json
+import shlex
 import sqlite3
 import sys
 import unicodedata
@@ -195,6 +196,36 @@ def test_what_settles_many_bad_cells_at_once_is_said_and_works(kept, table, own_
 def test_nothing_is_said_where_nothing_settles_them(kept, table, word):
     ran = kept("load", table(GOOD.replace("7.31", word)))
     assert ran.err.splitlines()[-1] == "  next: Mend the rows; the good ones go in with --skip-bad."
+
+
+def test_the_examples_of_the_help_work(kept, tmp_path, monkeypatch):
+    monkeypatch.chdir(tmp_path)
+    (tmp_path / "lightcurve.csv").write_text("HJD,mag\n2461234.5,7.3\n")
+    (tmp_path / "survey.txt.gz").write_bytes(gzip.compress(b"t m s\n11234.5 7.3 0.1\n"))
+    (tmp_path / "velocities.tsv").write_text("name\tMJD\tRV\tstar\nLN3\t61234.1\t-45\tA\n")
+    (tmp_path / "orbits.csv").write_text("system,label,P,T0\nLN3,new,3130±4,BJD 2461230±3\n")
+    _, _, text = kept("load", "--help").out.partition("For example:\n")
+    lines = text.split("\n\n")[0].replace("\\\n", " ").splitlines()
+    examples = [words[1:] for line in lines if (words := shlex.split(line))[:1] == ["campaign"]]
+    assert len(examples) == 4
+    for words in examples:
+        ran = kept(*words)
+        assert ran.status == 0, (words, ran.err)
+        assert "added 1 " in ran.out or "would add 1 " in ran.out
+
+
+def test_nothing_is_written_before_the_mapping_is_shown(kept, table, own_database, fingerprint, monkeypatch):
+    from campaign.output import loading
+
+    before, seen = fingerprint(), []
+
+    def shown(screen, understood):
+        seen.append(fingerprint())
+
+    monkeypatch.setattr(loading, "render_understood", shown)
+    assert kept("load", table(GOOD)).status == 0
+    assert seen == [before]
+    assert fingerprint() != before
 
 
 STEERING = "\x1b[31m\x1b]52;c;eA==\x07\x9b\u202e\x00[bold]x[/bold]:warning:"
