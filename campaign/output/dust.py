@@ -343,6 +343,7 @@ _SHORT_VERDICTS = {
     "more-light-than-the-stars": "more light than the stars",
     "much-light": "shades itself",
     "one-temperature-does-not-fit": "one temperature does not fit",
+    "limit-crossed": "a limit is crossed",
     "band-star-dominated": "a band is star-dominated",
     "band-negative": "a band is left out",
 }
@@ -390,7 +391,7 @@ def _render_through(screen: Screen, through: DustThrough) -> None:
 def _epoch(each: MeasuredDust, largest: float) -> tuple[str | Cell, ...]:
     mass = each.mass_msun.median if each.mass_msun is not None else None
     bands = " ".join(dict.fromkeys(one.band for one in each.bands))
-    known = [_SHORT_VERDICTS[v.code] for v in each.verdicts if v.code != _EVERYWHERE]
+    known = [_SHORT_VERDICTS.get(v.code, v.code) for v in each.verdicts if v.code != _EVERYWHERE]
     remark = ", ".join(dict.fromkeys(known))
     return (
         day(each.utc, each.bmjd_tdb),

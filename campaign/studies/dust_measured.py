@@ -96,7 +96,8 @@ def measure(
     placed = inputs.has("distance_pc")
     results = _Results(inputs, bands, fit, draws, seed) if has_amount else None
     thickness = _thickness(inputs, bands, results) if results is not None and placed else None
-    verdicts = verdicts_of(excesses, fit, given, thickness)
+    crossed = _crossed_limits(used, bands, results) if results is not None else ()
+    verdicts = verdicts_of(excesses, fit, given, thickness, crossed)
     fatal = any(verdict.meaningless for verdict in verdicts)
     told = results if results is not None and not fatal else None
     weighed = told if placed else None
@@ -264,6 +265,14 @@ def _thickness(inputs: DustInputs, bands: BandFluxes, results: _Results) -> Thic
         )
     )
     return Thickness(radius, grains, (radius / grains) ** 2, dust_light / light)
+
+
+def _crossed_limits(used: Sequence[BandExcess], bands: BandFluxes, results: _Results) -> tuple[str, ...]:
+    """Bands whose limit the best dust breaks by more than 3 sigma."""
+    t, amount = results.nominal()
+    model = dust_flux_jy(amount, bands.wavelength_um, 1.0, t, bands.kappa_cm2_g)
+    within = bands.side * (bands.flux_jy - model) / bands.sigma_jy
+    return tuple(one.band for one, margin in zip(used, within, strict=True) if margin < -SEEN_SIGMA)
 
 
 def _pairs(seen: Sequence[BandExcess], draws: int, seed: int) -> tuple[PairColour, ...]:

@@ -34,7 +34,11 @@ class Thickness:
 
 
 def verdicts_of(
-    excesses: Sequence[BandExcess], fit: DustFit | None, given: bool, thickness: Thickness | None
+    excesses: Sequence[BandExcess],
+    fit: DustFit | None,
+    given: bool,
+    thickness: Thickness | None,
+    crossed: Sequence[str] = (),
 ) -> tuple[DustVerdict, ...]:
     """What is wrong with the numbers of one date, the worst first.
 
@@ -48,6 +52,8 @@ def verdicts_of(
         Whether the temperature comes from elsewhere.
     thickness : Thickness or None
         Sizes, au, if a mass was found.
+    crossed : sequence of str
+        Bands whose limit the dust breaks by more than 3 sigma.
 
     Returns
     -------
@@ -66,6 +72,15 @@ def verdicts_of(
         # Of a temperature that nothing bounds, sizes say nothing.
         found = _one_sided(excesses, fit, given) or _too_thick(thickness)
     found += [*_misfit(fit), *_weak(excesses)]
+    if crossed:
+        found.append(
+            DustVerdict(
+                "limit-crossed",
+                f"the limit in {_list(crossed)} is crossed by more than 3 sigma: this dust is too bright or "
+                "too faint there, and the temperature or the limit is wrong",
+                False,
+            )
+        )
     return tuple(sorted(found, key=lambda verdict: not verdict.meaningless))
 
 

@@ -87,12 +87,12 @@ class Propagator:
     ) -> None:
         self.inputs = dict(inputs)
         self._together = together
-        normals = stratified_normals(list(inputs), draws, seed)
-        self._all = {key: _drawn(one, normals[key]) for key, one in inputs.items()}
-        self._stated = {key: np.full(draws, one.nominal) for key, one in inputs.items()}
+        self._all = _DrawnWhenAsked(self.inputs, draws, seed)
+        # One value stands for all draws: it broadcasts against those of the input that is varied.
+        self._stated = {key: np.array([one.nominal]) for key, one in inputs.items()}
         if together is not None:
-            self._all |= together.draws
-            self._stated |= {key: np.full(draws, value) for key, value in together.nominal.items()}
+            self._all.update(together.draws)
+            self._stated |= {key: np.array([value]) for key, value in together.nominal.items()}
 
     @property
     def all(self) -> Draws:
@@ -101,8 +101,7 @@ class Propagator:
 
     def __call__(self, quantity: Callable[[Draws], FloatArray], needs: Sequence[str]) -> Propagated:
         """A result; ``needs`` are the keys that it rests on, those of a fit included."""
-        stated = {key: values[:1] for key, values in self._stated.items()}
-        value = _finite(float(np.ravel(quantity(stated))[0]))
+        value = _finite(float(np.ravel(quantity(self._stated))[0]))
         unknown = tuple(
             self.inputs[key].name for key in needs if key in self.inputs and not self.inputs[key].error_known
         )
@@ -129,6 +128,19 @@ class Propagator:
         if together is not None and any(key in together.draws for key in needs):
             parts[together.name] = _variance(quantity(self._stated | dict(together.draws)))
         return parts
+
+
+class _DrawnWhenAsked(dict[str, FloatArray]):
+    """Draws of each input, made when a result first needs them."""
+
+    def __init__(self, inputs: Mapping[str, Uncertain], draws: int, seed: int) -> None:
+        super().__init__()
+        self._inputs, self._draws, self._seed = inputs, draws, seed
+
+    def __missing__(self, key: str) -> FloatArray:
+        normals = stratified_normals([key], self._draws, self._seed)[key]
+        self[key] = _drawn(self._inputs[key], normals)
+        return self[key]
 
 
 def summarised(draws: FloatArray, value: float | None) -> Propagated:

@@ -119,7 +119,7 @@ def check_coverage(case, count, seed):
 
 @pytest.mark.parametrize("name", CASES)
 def test_dust_is_found_again_as_surely_as_is_said(name):
-    check_coverage(CASES[name], 150, 20_611)
+    check_coverage(CASES[name], 100, 20_611)
 
 
 @pytest.mark.slow

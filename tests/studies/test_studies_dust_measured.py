@@ -195,6 +195,20 @@ def test_a_saturated_band_pushes_the_temperature_up():
     assert bounded.median > free.median + 0.5 * free.sigma
 
 
+def test_a_limit_that_the_dust_breaks_is_told():
+    # Dust of 900 K saturates Ks; said to be of 500 K, what W1 shows of it would not.
+    light = photometry(None, {AT_MJD: (2e-8, 900.0)}, bands=only("Ks", "W1"))
+    rows = zip(light.bmjd_tdb, light.mag, light.mag_plus, light.limit_side, light.band,
+               light.photometric_system, strict=True)  # fmt: skip
+    points = Points([row for row in rows if row[4] == "W1" or row[0] < AT_MJD])
+    star = 666.7 * 10.0 ** (-0.4 * 6.2)
+    bound = star + 0.9 * dust_jy(2e-8, 900.0, 2100.0, 2.159)
+    points.add(AT_MJD, float(-2.5 * np.log10(bound / 666.7)), 0.0, "Ks", "2MASS", -1)
+    for t, crossed in ((500.0, True), (900.0, False)):
+        result = told(points.arrays(), DustOverrides(inputs={"temperature_k": Measured(t, 0.0, 0.0)}))
+        assert ("limit-crossed" in verdicts(result)) is crossed
+
+
 def test_a_band_below_the_stars_is_no_dust_and_is_left_out():
     points = Points([])
     for band, star, dusty in (("J", 7.0, 7.5), ("Ks", 6.2, 5.0)):

@@ -57,7 +57,7 @@ def test_condensation_radii_are_those_of_the_reference_rows(inputs, expected, t)
 
 
 def test_the_light_of_both_stars_counts_with_its_error():
-    light = physics(draws=20_000).physics.luminosity_lsun
+    light = physics(draws=8000).physics.luminosity_lsun
     assert light.value == 5e5
     assert light.sigma == pytest.approx(np.hypot(2e4, 3e4), rel=0.02)
     assert light.dominant == "luminosity of star B"
