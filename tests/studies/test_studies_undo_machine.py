@@ -545,4 +545,4 @@ def test_commands_and_undos_in_any_order_agree_with_a_simple_model() -> None:
 @pytest.mark.slow
 @pytest.mark.usefixtures("_begun")
 def test_commands_and_undos_in_any_order_agree_with_a_simple_model_for_long() -> None:
-    run(80, 50)
+    run(60, 50)
