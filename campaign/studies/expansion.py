@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -115,7 +116,12 @@ def _drawn(name: str, value: Measured, draws: int, seed: int) -> FloatArray:
         np.array([[value.value]]),
         np.array([[value.minus or 0.0]]),
         np.array([[value.plus or 0.0]]),
-        stratified_normals([name], draws, seed)[name][None, :],
+        _normals(name, draws, seed)[None, :],
         low=float(np.finfo(np.float64).tiny),
     )[0]
     return drawn
+
+
+@lru_cache(maxsize=16)
+def _normals(name: str, draws: int, seed: int) -> FloatArray:
+    return stratified_normals([name], draws, seed)[name]

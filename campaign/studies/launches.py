@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from copy import copy
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import Literal
 
 import numpy as np
@@ -99,7 +100,7 @@ def launch_of(forecaster: Forecaster, unit: int, cycle: int, seed: int) -> Launc
     if not seen and _is_lost(forecaster, unit, cycle, datable):
         return None
     onset, end = (_date(forecaster, unit, cycle, e, episode, datable) for e in ("onset", "end"))
-    z = stratified_normals(["launch within the window"], draws, seed)["launch within the window"]
+    z = _normals("launch within the window", draws, seed)
     if onset is not None and end is not None:
         middle, half = 0.5 * (onset[0] + end[0]), 0.5 * np.abs(end[0] - onset[0])
         missing = tuple(dict.fromkeys((*onset[1], *end[1])))
@@ -143,6 +144,42 @@ def cycles_between(forecaster: Forecaster, unit: int, start: float, end: float) 
     return range(first - 1, last + 2)
 
 
+@lru_cache(maxsize=16)
+def _normals(name: str, draws: int, seed: int) -> FloatArray:
+    return stratified_normals([name], draws, seed)[name]
+
+
+def rough_span(forecaster: Forecaster, unit: int, cycle: int, seed: int) -> tuple[float, float] | None:
+    """About when the shell of a cycle may be launched, from few draws: to find the cycles worth dating.
+
+    Parameters
+    ----------
+    forecaster : Forecaster
+        Rows and units.
+    unit, cycle : int
+        Which unit and cycle (dimensionless).
+    seed : int
+        Of the draws within the window.
+
+    Returns
+    -------
+    (float, float) or None
+        ``bmjd_tdb``, days, with a quarter of slack on either side; None where it has no launch.
+
+    Notes
+    -----
+    Accuracy: good enough to leave out what is far away. Source: project convention.
+    """
+    few = copy(forecaster)
+    few.sampler = forecaster.pilot
+    launch = launch_of(few, unit, cycle, seed)
+    if launch is None or not np.isfinite(launch.spread_d).any():
+        return None
+    low, high = float(np.nanmin(launch.spread_d)), float(np.nanmax(launch.spread_d))
+    slack = 0.25 * (high - low)
+    return low - slack, high + slack
+
+
 def _seen(episode: Episode) -> set[str]:
     return {event for event in ("onset", "maximum", "end") if getattr(episode, event) is not None}
 
@@ -184,8 +221,7 @@ def _date(
 
 def _observed(forecaster: Forecaster, event: EventName, moment: Moment) -> FloatArray:
     """Draws of an observed date; onset and end of a burst were dated apart, each with its own error."""
-    name = f"observed {event}"
-    z = stratified_normals([name], forecaster.sampler.draws, 1)[name]
+    z = _normals(f"observed {event}", forecaster.sampler.draws, 1)
     drawn: FloatArray = moment.bmjd_tdb + np.where(z < 0.0, moment.minus_d or 0.0, moment.plus_d or 0.0) * z
     return drawn
 

@@ -13,7 +13,7 @@ from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
 from campaign.studies.expansion import Expansion, expansion_of
 from campaign.studies.forecast import DatedEvent, Forecaster
-from campaign.studies.launches import Launch, cycles_between, launch_of
+from campaign.studies.launches import Launch, cycles_between, launch_of, rough_span
 from campaign.studies.preparing import Prepared, Question
 from campaign.studies.summaries import summarise
 
@@ -22,6 +22,8 @@ Motion = tuple[Measured, str]
 
 YEAR_D = 365.25
 RESOLVABLE = "resolvable"
+# Of the drawn motions; the slowest few would keep every cycle.
+_ALL_BUT = 0.995
 
 
 def resolvable_events(
@@ -104,8 +106,12 @@ def _events_of(
 ) -> list[DatedEvent]:
     way_d = 1000.0 * limit_arcsec / moving.draws_mas_yr * YEAR_D
     typical = 1000.0 * limit_arcsec / moving.value_mas_yr * YEAR_D
+    quickest, slowest = float(way_d.min()), float(np.quantile(way_d, _ALL_BUT))
     found = []
     for cycle in cycles_between(forecaster, unit, question.start - typical, question.end - typical):
+        span = rough_span(forecaster, unit, cycle, question.seed)
+        if span is None or span[0] + quickest > question.end or span[1] + slowest < question.start:
+            continue
         launch = launch_of(forecaster, unit, cycle, question.seed)
         if launch is not None and np.isfinite(launch.median_d):
             found.append(_event(unit, launch, way_d, moving, question))
