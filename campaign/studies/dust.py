@@ -19,7 +19,7 @@ from campaign.physics.timescales import utc_iso
 from campaign.studies.bands import photometric_system_key
 from campaign.studies.dust_excess import Sky, excesses
 from campaign.studies.dust_inputs import DustInputs, gather
-from campaign.studies.dust_measured import Fitted, measure
+from campaign.studies.dust_measured import Fitted, measure, with_other_opacities
 from campaign.studies.dust_physics import grains_in_light
 from campaign.studies.dust_points import FLUXES, Levels, LightPoints, light_points
 from campaign.studies.dust_through import MOST_EPOCHS, epochs_of, production_rates
@@ -227,7 +227,8 @@ def _measured(
         )
         found = excesses(sky, *span)
         _require_zero_points(found, result.system)
-        measured, _ = measure(inputs, sky, found, at, question.draws, question.seed)
+        measured, _ = measure(inputs, found, at, question.draws, question.seed)
+        measured = with_other_opacities(inputs, measured, inputs.opacity)
         return replace(result, measured=replace(measured, within_d=question.within_d))
     first, last = _span(inputs.record, question)
     levels = Levels(points, episodes, (first, last), is_long=True, given=overrides.levels)
@@ -284,7 +285,7 @@ def _through(
         found = excesses(sky, start, end)
         seen += found
         at = float(np.mean([one.bmjd_tdb for one in found]))
-        epochs.append(measure(inputs, sky, found, at, draws, question.seed))
+        epochs.append(measure(inputs, found, at, draws, question.seed))
     _require_zero_points(seen, system)
     rates = production_rates(inputs, epochs, draws, question.seed)
     return DustThrough(tuple(measured for measured, _ in epochs), rates, question.cycle)

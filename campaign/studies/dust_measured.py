@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 from itertools import combinations
 
@@ -27,7 +27,7 @@ from campaign.physics.dustfit import (
 from campaign.physics.dustmass import blackbody_radius_au, colour_temperature_k, dust_flux_jy
 from campaign.physics.opacity import OPACITIES, Opacity, dust_luminosity_lsun, opacity_cm2_g, reaches
 from campaign.physics.timescales import utc_iso
-from campaign.studies.dust_excess import SEEN_SIGMA, Sky
+from campaign.studies.dust_excess import SEEN_SIGMA
 from campaign.studies.dust_inputs import DustInputs, with_keys
 from campaign.studies.dust_verdicts import Thickness, chi2_probability, verdicts_of
 from campaign.studies.propagation import DrawnTogether, Draws, Propagator, Uncertain, summarised
@@ -54,7 +54,7 @@ class Fitted:
 
 
 def measure(
-    inputs: DustInputs, sky: Sky, excesses: Sequence[BandExcess], at: float, draws: int, seed: int
+    inputs: DustInputs, excesses: Sequence[BandExcess], at: float, draws: int, seed: int
 ) -> tuple[MeasuredDust, Fitted | None]:
     """The dust at one date.
 
@@ -63,8 +63,6 @@ def measure(
     inputs : DustInputs
         Distance (pc), error of the opacity, luminosity of the stars (Lsun), and, when it is not to be fitted,
         the temperature of the dust (K).
-    sky : Sky
-        Opacity, cm^2 per gram of dust.
     excesses : sequence of BandExcess
         Light of the dust near the date, Jy.
     at : float
@@ -124,7 +122,7 @@ def measure(
         blackbody_radius_au=None if thickness is None else thickness.blackbody_radius_au,
         grain_distance_au=None if thickness is None else thickness.grain_distance_au,
         optical_depth=None if thickness is None else thickness.optical_depth,
-        other_opacities=_others(inputs, sky, used) if fit is not None and told is not None else (),
+        other_opacities=(),
         verdicts=verdicts,
     )
     if weighed is None or told is None:
@@ -343,15 +341,36 @@ def _upper(inputs: DustInputs, bands: BandFluxes) -> float | None:
     return float(upper_amount(bands, t)[0]) * inputs.values["distance_pc"].nominal ** 2
 
 
-def _others(inputs: DustInputs, sky: Sky, used: Sequence[BandExcess]) -> tuple[OtherOpacity, ...]:
-    """Best temperature and mass with each published opacity."""
-    if not inputs.has("distance_pc"):
-        return ()
+def with_other_opacities(inputs: DustInputs, dust: MeasuredDust, opacity: Opacity) -> MeasuredDust:
+    """The dust of one date with the best temperature and mass by each other published opacity beside it.
+
+    Parameters
+    ----------
+    inputs : DustInputs
+        Distance, pc.
+    dust : MeasuredDust
+        Fitted, Msun and K; anything else comes back as it is.
+    opacity : Opacity
+        The one that was used, cm^2 per gram of dust.
+
+    Returns
+    -------
+    MeasuredDust
+        With ``other_opacities``, Msun and K.
+
+    Notes
+    -----
+    Accuracy: best values without errors, to show how much the choice matters. Source: see
+    ``campaign.physics.opacity``.
+    """
+    if dust.mass_msun is None or dust.temperature_origin != "fitted":
+        return dust
+    used = [one for one in dust.bands if one.fitted]
     square = inputs.values["distance_pc"].nominal ** 2
     found = []
     for table in OPACITIES:
         kept = [one for one in used if reaches(table, one.wavelength_um or 0.0)]
-        if table.name == sky.opacity.name or sum(one.use == "measured" for one in kept) < 2:
+        if table.name == opacity.name or sum(one.use == "measured" for one in kept) < 2:
             continue
         bands = band_fluxes(kept)
         kappa = opacity_cm2_g(table, bands.wavelength_um)
@@ -360,4 +379,4 @@ def _others(inputs: DustInputs, sky: Sky, used: Sequence[BandExcess]) -> tuple[O
             found.append(OtherOpacity(table.name, None, None, fit.chi2))
         else:
             found.append(OtherOpacity(table.name, fit.best_temperature_k, fit.best_amount * square, fit.chi2))
-    return tuple(found)
+    return replace(dust, other_opacities=tuple(found))

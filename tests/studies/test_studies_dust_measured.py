@@ -74,6 +74,38 @@ def test_known_dust_comes_back_from_magnitudes_in_six_hundred_cases(name):
     check(coverage(600, 11, **CLASSES[name]))
 
 
+@pytest.mark.slow
+def test_one_band_with_a_given_temperature_holds_the_mass_as_often_as_it_says():
+    # 600 cases: the temperature is wrong by its stated error, too.
+    rng = np.random.default_rng(41)
+    held = []
+    for case in range(600):
+        t, mass, distance = (
+            rng.uniform(600.0, 1300.0),
+            10.0 ** rng.uniform(-8.5, -7.0),
+            rng.uniform(1500, 3000),
+        )
+        factor = float(np.exp(LOG_OPACITY_ERROR * rng.normal()))
+        light = photometry(
+            rng, {AT_MJD: (mass, t)}, distance_pc=distance, opacity_factor=factor, bands=only("W1")
+        )
+        far = Measured(distance * (1.0 + 0.08 * rng.normal()), 0.08 * distance, 0.08 * distance)
+        given = {"temperature_k": Measured(t + 50.0 * rng.normal(), 50.0, 50.0)}
+        dust = told(
+            light,
+            DustOverrides(inputs=given),
+            record=SystemRecord(system(distance_pc=far)),
+            draws=400,
+            seed=case,
+        ).measured.mass_msun
+        if dust is not None:
+            held.append([dust.lo68 <= mass <= dust.hi68, dust.lo95 <= mass <= dust.hi95, dust.median > mass])
+    assert len(held) > 570
+    shares = np.array([0.68, 0.95, 0.5])
+    z = (np.mean(held, axis=0) - shares) / np.sqrt(shares * (1.0 - shares) / len(held))
+    assert np.all(np.abs(z) < 3.0), np.mean(held, axis=0)
+
+
 def test_without_noise_every_number_is_that_of_the_dust():
     dust = told(photometry(None, {AT_MJD: (2e-8, 900.0)})).measured
     assert dust.temperature_k.value == pytest.approx(900.0, rel=2e-3)
