@@ -7,7 +7,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from campaign.physics.constants import AU_KM, PARSEC_AU, SOLAR_MASS_KG
 from campaign.physics.domain import positive
-from campaign.physics.planck import log_planck_slope, planck_exponent, planck_jy_sr
+from campaign.physics.planck import planck_exponent, planck_jy_sr
 
 FloatArray = NDArray[np.float64]
 
@@ -214,45 +214,6 @@ def colour_temperature_k(
         found, slope = _log_ratio(log_t, *ends)
         log_t = np.clip(log_t + (wanted - found) / slope, low, high)
     return np.where(outside, np.nan, np.exp(log_t))
-
-
-def colour_temperature_slope(
-    temperature_k: ArrayLike, wavelength_1_um: float, wavelength_2_um: float
-) -> FloatArray:
-    """How much the temperature moves with the ratio of fluxes.
-
-    Parameters
-    ----------
-    temperature_k : array_like
-        K, > 0.
-    wavelength_1_um, wavelength_2_um : float
-        um, > 0, not equal.
-
-    Returns
-    -------
-    ndarray
-        d ln T/d ln(F_1/F_2) (dimensionless).
-
-    Raises
-    ------
-    InputRefused
-        If temperature or wavelengths are not positive.
-
-    Notes
-    -----
-    Accuracy: exact.
-
-    Source: derivative of the ratio of two Planck functions.
-
-    Examples
-    --------
-    >>> round(float(colour_temperature_slope(1000.0, 3.3526, 4.6028)), 4)
-    0.9245
-    """
-    difference = log_planck_slope(wavelength_1_um, temperature_k) - log_planck_slope(
-        wavelength_2_um, temperature_k
-    )
-    return np.asarray(1.0 / difference)
 
 
 def _log_ratio(log_temperature: FloatArray, short: float, long: float) -> tuple[FloatArray, FloatArray]:

@@ -70,10 +70,6 @@ class LightPoints:
     source: tuple[str, ...]
     series: tuple[str, ...]
 
-    def chosen(self, wanted: NDArray[np.bool_]) -> NDArray[np.int64]:
-        """Places of the wanted points."""
-        return np.flatnonzero(wanted).astype(np.int64)
-
 
 def light_points(arrays: PhotometryArrays | None, fluxes: Iterable[Observation]) -> LightPoints:
     """Good photometry and infrared fluxes of a system as one list.

@@ -22,7 +22,6 @@ from campaign.physics.constants import AU_KM, PARSEC_AU, SOLAR_MASS_KG
 from campaign.physics.dustmass import (
     blackbody_radius_au,
     colour_temperature_k,
-    colour_temperature_slope,
     dust_flux_jy,
     dust_mass_msun,
 )
@@ -186,14 +185,6 @@ def test_a_colour_bluer_than_any_black_body_has_no_temperature():
     steepest = (4.6028 / 3.3526) ** 2
     assert np.isnan(colour_temperature_k([steepest * 1.01, -0.2, 0.0], 3.3526, 4.6028, 1.0)).all()
     assert not np.isnan(colour_temperature_k(steepest * 0.99, 3.3526, 4.6028, 1.0))
-
-
-def test_the_slope_of_a_colour_temperature_is_its_derivative():
-    # Finite difference of the function itself inverted, 1e-6 apart.
-    ratio = np.array([0.7, 0.7 * (1.0 + 1e-6)])
-    t = colour_temperature_k(ratio, 2.159, 3.3526, 1.5)
-    slope = float(np.diff(np.log(t))[0] / np.log1p(1e-6))
-    assert float(colour_temperature_slope(t[0], 2.159, 3.3526)) == pytest.approx(slope, rel=1e-4)
 
 
 @pytest.mark.parametrize(("inputs", "expected"), rows("dust.beta_rp"))
