@@ -9,7 +9,7 @@ from __future__ import annotations
 import pytest
 from undo_examples import Keeper, begun, keep_engines
 
-from campaign.catalogue import observations, sites, solutions, store
+from campaign.catalogue import journal, observations, sites, solutions, store
 from campaign.catalogue.numbering import Numbering
 from campaign.errors import Conflict, NotFound
 from campaign.model.systems import Site, Star
@@ -402,6 +402,17 @@ def test_a_published_count_follows_also_while_its_solution_is_out_of_use(keeper)
 
 
 # ------------------------------------------------------------------ in which order
+
+
+def test_what_was_done_last_is_taken_back_first(keeper):
+    def work(writing):
+        for name in ("Cold Mesa", "Harrow Pass", "Far Ridge"):
+            sites.add_site(writing, Site(0, name, latitude_deg=-31.0, longitude_deg_east=-70.0))
+
+    taken_back = keeper.undo(keeper.catalogue(work, "three sites"))
+    with store.reading(keeper.db) as connection:
+        effects = journal.effects_of(connection, taken_back)
+    assert [effect.row_id for effect in effects] == [3, 2, 1]
 
 
 def test_names_that_changed_places_change_them_back(keeper):
