@@ -173,10 +173,56 @@ def to_barycentre(
     >>> round(float(bmjd), 6)
     60389.209071
     """
+    n = unit_vector(ra_deg, dec_deg)
+    return to_barycentre_along(mjd_day, mjd_fraction, scale, place, n, site_geodetic)
+
+
+def to_barycentre_along(
+    mjd_day: ArrayLike,
+    mjd_fraction: ArrayLike,
+    scale: str,
+    place: str,
+    n: FloatArray,
+    site_geodetic: tuple[float, float, float] | None = None,
+) -> FloatArray:
+    """The same as :func:`to_barycentre` for directions that are known already.
+
+    Parameters
+    ----------
+    mjd_day, mjd_fraction : array_like
+        MJD in two parts whose sum is meant, days.
+    scale, place : str
+        As in :func:`to_barycentre`.
+    n : ndarray, shape (..., 3)
+        Unit vectors of the targets in ICRS axes (dimensionless); broadcast with the instants.
+    site_geodetic : tuple of float, optional
+        East longitude (deg), latitude (deg), height (m) on WGS84, for the place 'observatory'.
+
+    Returns
+    -------
+    ndarray
+        MJD in TDB at the barycentre, days.
+
+    Raises
+    ------
+    InputRefused
+        If the scale or the place is another, or an observatory has no position.
+
+    Notes
+    -----
+    Accuracy: as :func:`to_barycentre`.
+
+    Source: Eastman, Siverd & Gaudi 2010, PASP 122, 935.
+
+    Examples
+    --------
+    >>> n = unit_vector(270.625, -23.5)
+    >>> round(float(to_barycentre_along(60389.0, 5 / 24, "utc", "geocentre", n)), 6)
+    60389.209071
+    """
     day, rest = to_tdb(mjd_day, mjd_fraction, scale)
     if place == "barycentre":
         return day + rest
-    n = unit_vector(ra_deg, dec_deg)
     if place in ("observatory", "geocentre"):
         if place == "observatory" and site_geodetic is None:
             raise InputRefused(

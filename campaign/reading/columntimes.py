@@ -150,10 +150,18 @@ def _counts(cells: Sequence[str], meaning: TimeMeaning, times: TimeCells) -> NDA
         times.texts[:] = [prefix + cell for cell in cells]
     else:
         wholes = counted.astype(np.int64).tolist()
-        tails = [
-            cell[point:] if point >= 0 else "" for cell, point in zip(cells, points.tolist(), strict=True)
-        ]
-        times.texts[:] = [f"{prefix}{number}{tail}" for number, tail in zip(wholes, tails, strict=True)]
+        # Few different days; each is written out once.
+        heads = {number: f"{prefix}{number}" for number in set(wholes)}
+        if size and (points == points[0]).all() and points[0] >= 0:
+            point = int(points[0])
+            times.texts[:] = [
+                heads[number] + cell[point:] for number, cell in zip(wholes, cells, strict=True)
+            ]
+        else:
+            times.texts[:] = [
+                heads[number] + (cell[point:] if point >= 0 else "")
+                for number, cell, point in zip(wholes, cells, points.tolist(), strict=True)
+            ]
     return done
 
 

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from campaign.model.systems import Site, System
-from campaign.physics.lighttime import to_barycentre
+from campaign.physics.lighttime import to_barycentre_along, unit_vector
 from campaign.reading.columntimes import PLACES, SCALES
 from campaign.studies.load_rows import CheckedRows
 
@@ -37,8 +37,7 @@ def on_axis(rows: CheckedRows, systems: Sequence[System], sites: Sequence[Site])
     Source: Eastman, Siverd & Gaudi 2010, PASP 122, 935.
     """
     found = np.empty(rows.size)
-    ra = np.array([system.ra_deg for system in systems])
-    dec = np.array([system.dec_deg for system in systems])
+    n = unit_vector([system.ra_deg for system in systems], [system.dec_deg for system in systems])
     # One group for each scale, place and observatory: those need functions of their own.
     group = (rows.scale.astype(np.int64) * len(PLACES) + rows.place) * (len(sites) + 1) + rows.site + 1
     for number in _different(group):
@@ -51,9 +50,8 @@ def on_axis(rows: CheckedRows, systems: Sequence[System], sites: Sequence[Site])
         some = some[np.argsort(rows.day[some])]
         for start in range(0, len(some), _AT_ONCE):
             part = some[start : start + _AT_ONCE]
-            system = rows.system[part]
-            found[part] = to_barycentre(
-                rows.day[part], rows.fraction[part], scale, counted_at, ra[system], dec[system], geodetic
+            found[part] = to_barycentre_along(
+                rows.day[part], rows.fraction[part], scale, counted_at, n[rows.system[part]], geodetic
             )
     return found
 
