@@ -6,15 +6,17 @@ Recipe: engineering notes 4.11.
 
 from __future__ import annotations
 
+import random
 import shutil
 import sqlite3
+import time
 from collections.abc import Callable
 from datetime import timedelta
 from pathlib import Path
 from typing import Any
 
 import pytest
-from reliability_examples import NOW, FaultError, assert_sound, content, fault_at, fill, point
+from reliability_examples import NOW, FaultError, assert_sound, content, fault_at, fill, point, start
 
 from campaign.catalogue import observations, store
 from campaign.errors import CampaignError, Conflict
@@ -22,7 +24,6 @@ from campaign.model.kept import Stamp
 from campaign.model.measured import Measured
 from campaign.studies import amend, solutions, systems, undo
 
-ROWS = 700
 BOOK = "Quill on the first night"
 
 
@@ -34,10 +35,10 @@ def newest(database: Path) -> int:
     return max(int(str(row[0])) for row in content(database)["operations"])
 
 
-def load_many(database: Path) -> None:
+def load_many(database: Path, rows: int = 700) -> None:
     at = NOW + timedelta(hours=1)
     with store.writing(database, at=at, who="Ida Vik", command="campaign load", summary="load") as writing:
-        entries = [point(1, 1_000 + number) for number in range(ROWS)]
+        entries = [point(1, 1_000 + number) for number in range(rows)]
         observations.add_observations(writing, entries)
 
 
@@ -166,3 +167,64 @@ def test_a_refused_undo_leaves_no_trace(good: Path, tmp_path: Path) -> None:
     with pytest.raises(Conflict):
         undo.undo(str(database), stamp(3), loaded)
     assert content(database) == before
+
+
+# Takes a load back and puts it back, over and over, and says each step once it is kept.
+UNDOER = """
+import sys
+from datetime import UTC, datetime
+from campaign.model.kept import Stamp
+from campaign.studies import undo
+database, number = sys.argv[1], int(sys.argv[2])
+print(number, flush=True)
+while True:
+    number = undo.undo(database, Stamp(datetime.now(UTC), "Ida Vik", "campaign undo"), number).by_id
+    print(number, flush=True)
+"""
+
+
+@pytest.mark.slow
+def test_an_undo_that_is_killed_happened_wholly_or_not_at_all(good: Path, tmp_path: Path) -> None:
+    """A kill that left a journal behind landed inside the write. Recipe: engineering notes 4.13."""
+    database = tmp_path / "campaign.db"
+    shutil.copy(good, database)
+    load_many(database, 4_000)
+    number, landed, rounds = newest(database), 0, 0
+    chance = random.Random(20_310_407)
+    while landed < 6:
+        rounds += 1
+        assert rounds < 60
+        child = start(UNDOER, database, number)
+        assert child.stdout is not None
+        child.stdout.readline()
+        time.sleep(chance.uniform(0.05, 0.6))
+        child.kill()
+        told, problem = child.communicate()
+        assert problem == ""
+        landed += Path(f"{database}-journal").exists()
+        with store.reading(database):
+            pass
+        assert_sound(database)
+        number = newest(database)
+        # What was acknowledged is there; one more may have been kept without a word of it.
+        acknowledged = [int(line) for line in told.split()]
+        assert not acknowledged or number - acknowledged[-1] in (0, 1)
+        assert loaded_in_use(database) == (4_000 if undo_depth(database, number) % 2 == 0 else 0)
+
+
+def loaded_in_use(database: Path) -> int:
+    connection = sqlite3.connect(f"file:{database}?mode=ro", uri=True)
+    (found,) = connection.execute(
+        "SELECT count(*) FROM observations WHERE withdrawn_at IS NULL AND bmjd_tdb >= 61000"
+    ).fetchone()
+    connection.close()
+    return int(found)
+
+
+def undo_depth(database: Path, number: int) -> int:
+    """How many undos lie between an operation and the load at its beginning."""
+    undoes = {int(str(row[0])): row[-1] for row in content(database)["operations"]}
+    depth = 0
+    while undoes[number] is not None:
+        number, depth = int(str(undoes[number])), depth + 1
+    return depth

@@ -6,6 +6,8 @@ was built on it, and the refusal names what was.
 
 from __future__ import annotations
 
+import sqlite3
+
 import pytest
 from undo_examples import Keeper, begun, keep_engines
 
@@ -441,6 +443,40 @@ def test_a_mixture_is_put_back_as_it_was(keeper):
     keeper.undo(alone)
     adopted = {s.label: s.weight for s in keeper.record("Dim").solutions if s.adopted}
     assert adopted == {"first": 1.0, "second": 3.0}
+
+
+# ------------------------------------------------------------------ past the journal
+
+
+@pytest.mark.parametrize(
+    ("prepare", "statement"),
+    [
+        (lambda keeper: keeper.change("Dim", priority=1), "UPDATE systems SET priority = 7 WHERE id = 1"),
+        (
+            lambda keeper: keeper.undo(keeper.undo(keeper.site("Cold Mesa"))),
+            "UPDATE sites SET withdrawn_at = '2031-05-01T00:00:00.000000Z'",
+        ),
+        (
+            lambda keeper: keeper.undo(keeper.load("Dim", range(3))),
+            "UPDATE observations SET withdrawn_at = '2031-05-01T00:00:00.000000Z' WHERE id = 2",
+        ),
+        (
+            lambda keeper: keeper.undo(keeper.load("Dim", range(3))),
+            "DELETE FROM observations WHERE id = 2",
+        ),
+    ],
+)
+def test_what_was_changed_past_the_journal_is_not_guessed_at(keeper, prepare, statement):
+    number = prepare(keeper)
+    connection = sqlite3.connect(keeper.db)
+    connection.execute(statement)
+    connection.commit()
+    connection.close()
+    with pytest.raises(Conflict) as refused:
+        undo.undo(keeper.db, keeper.stamp(), number)
+    assert refused.value.code == "changed-outside"
+    assert "without a line in the journal" in refused.value.why
+    assert keeper.newest() == number
 
 
 # ------------------------------------------------------------------ which operation
