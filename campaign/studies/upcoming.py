@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -62,17 +62,9 @@ def forecast_campaign(
 
     Source: DEVELOPERS.md (Forecast, Status, Phase lost).
     """
-    prepared = prepare(records, photometry, question)
-    forecaster = Forecaster(prepared.rows, prepared.units, prepared.learned, question.draws, question.seed)
-    # The status of an onset needs the end, whatever is listed.
-    wanted = tuple(e for e in EVENT_NAMES if e in question.events or e in ("onset", "end"))
-    dated = forecaster.run(question.window, wanted)
-    dated += resolvable_events(prepared, forecaster, question, shells or {})
-    states = onset_states(prepared, forecaster, dated, photometry, question)
-    listed = [d for d in dated if d.event in question.events and _is_listed(d, states, question)]
-    listed.extend(dateless_events(prepared, question))
-    listed = [d for d in listed if d.in_window is None or d.in_window >= question.min_probability]
-    events = event_forecasts(prepared.rows, prepared.units, listed, states, question.as_of)
+    found = date_campaign(records, photometry, question, shells)
+    prepared, forecaster, dated, listed = found.prepared, found.forecaster, found.dated, found.listed
+    events = list(found.events)
     if question.solutions == "each":
         events = with_disagreement(events)
     shown = {d.unit for d in listed}
@@ -96,6 +88,61 @@ def forecast_campaign(
         assumptions=_assumptions(prepared),
         warnings=tuple(_cut_short(prepared, forecaster, listed)),
     )
+
+
+@dataclass(frozen=True, slots=True)
+class DatedCampaign:
+    """Everything that was dated, with its distribution, and what of it is listed.
+
+    ``events`` belong to ``listed`` one by one; what is listed has the quantiles that ``events`` leave out.
+    """
+
+    prepared: Prepared
+    forecaster: Forecaster
+    dated: tuple[DatedEvent, ...]
+    listed: tuple[DatedEvent, ...]
+    events: tuple[EventForecast, ...]
+
+
+def date_campaign(
+    records: Sequence[SystemRecord],
+    photometry: Mapping[int, PhotometryArrays],
+    question: Question,
+    shells: Mapping[int, Sequence[Observation]] | None = None,
+) -> DatedCampaign:
+    """Date every event of every active system, with the whole distribution of each.
+
+    Parameters
+    ----------
+    records, photometry, question, shells : as for ``forecast_campaign``
+        Instants ``bmjd_tdb``.
+
+    Returns
+    -------
+    DatedCampaign
+        Events as they are forecast, in no order.
+
+    Raises
+    ------
+    InputRefused
+        If a rule or an element cannot be used.
+
+    Notes
+    -----
+    Accuracy: as ``forecast_campaign``. Source: DEVELOPERS.md (Forecast, Status, Phase lost).
+    """
+    prepared = prepare(records, photometry, question)
+    forecaster = Forecaster(prepared.rows, prepared.units, prepared.learned, question.draws, question.seed)
+    # The status of an onset needs the end, whatever is listed.
+    wanted = tuple(e for e in EVENT_NAMES if e in question.events or e in ("onset", "end"))
+    dated = forecaster.run(question.window, wanted)
+    dated += resolvable_events(prepared, forecaster, question, shells or {})
+    states = onset_states(prepared, forecaster, dated, photometry, question)
+    listed = [d for d in dated if d.event in question.events and _is_listed(d, states, question)]
+    listed.extend(dateless_events(prepared, question))
+    listed = [d for d in listed if d.in_window is None or d.in_window >= question.min_probability]
+    events = event_forecasts(prepared.rows, prepared.units, listed, states, question.as_of)
+    return DatedCampaign(prepared, forecaster, tuple(dated), tuple(listed), tuple(events))
 
 
 def onset_states(
