@@ -6,7 +6,7 @@ import contextlib
 import hashlib
 import io
 import shutil
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from pathlib import Path
 from typing import Any
 
@@ -17,19 +17,42 @@ POSITION = ("--ra", "18:02:31.5", "--dec", "-45:12:30")
 EPOCH = "BJD 2461234.2±0.5"
 
 
-@pytest.fixture
-def kept(run_campaign: RunCampaign) -> RunCampaign:
-    """The program on a database with the system Lantern 3 (alias LN3) and an adopted orbit."""
-    for words in (
+ORBIT = (
+    "--label", "orbit", "--period", "3127.5±0.3 d", "--epoch", EPOCH, "--eccentricity", "0.71±0.02",
+    "--omega", "143±2 deg", "--omega-of", "A", "--adopt",
+)  # fmt: skip
+
+
+def _made(path: Path, lines: Iterable[tuple[str, ...]]) -> Path:
+    """A database that the command line made, to be copied for each test."""
+    from campaign.__main__ import run
+
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setenv("CAMPAIGN_DB", str(path))
+        patch.setenv("CAMPAIGN_OBSERVER", "Ida Vik")
+        for words in lines:
+            patch.setattr("sys.argv", ["campaign", *words])
+            said = io.StringIO()
+            with contextlib.redirect_stdout(said), contextlib.redirect_stderr(said):
+                status = run(words)
+            assert status == 0, said.getvalue()
+    return path
+
+
+@pytest.fixture(scope="session")
+def _kept_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    lines = [
         ("begin",),
         ("system", "add", "Lantern 3", *POSITION, "--alias", "LN3"),
-        (
-            "solution", "add", "Lantern 3", "--label", "orbit", "--period", "3127.5±0.3 d", "--epoch", EPOCH,
-            "--eccentricity", "0.71±0.02", "--omega", "143±2 deg", "--omega-of", "A", "--adopt",
-        ),
-    ):  # fmt: skip
-        ran = run_campaign(*words)
-        assert ran.status == 0, ran.err
+        ("solution", "add", "Lantern 3", *ORBIT),
+    ]
+    return _made(tmp_path_factory.mktemp("kept") / "campaign.db", lines)
+
+
+@pytest.fixture
+def kept(run_campaign: RunCampaign, own_database: Path, _kept_file: Path) -> RunCampaign:
+    """The program on a database with the system Lantern 3 (alias LN3) and an adopted orbit."""
+    shutil.copy(_kept_file, own_database)
     return run_campaign
 
 
@@ -61,9 +84,6 @@ LOGGED = (
 
 @pytest.fixture(scope="session")
 def _watched_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
-    from campaign.__main__ import run
-
-    path = tmp_path_factory.mktemp("watched") / "campaign.db"
     lines = [
         ("begin",),
         ("system", "add", "Lantern 3", *POSITION, "--alias", "LN3"),
@@ -72,16 +92,7 @@ def _watched_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
         ("site", "add", "Harrow Pass", "--latitude", "41.9", "--longitude", "74.9", "--height", "2900 m"),
         *(("log", *words) for words in LOGGED),
     ]
-    with pytest.MonkeyPatch.context() as patch:
-        patch.setenv("CAMPAIGN_DB", str(path))
-        patch.setenv("CAMPAIGN_OBSERVER", "Ida Vik")
-        for words in lines:
-            patch.setattr("sys.argv", ["campaign", *words])
-            said = io.StringIO()
-            with contextlib.redirect_stdout(said), contextlib.redirect_stderr(said):
-                status = run(words)
-            assert status == 0, said.getvalue()
-    return path
+    return _made(tmp_path_factory.mktemp("watched") / "campaign.db", lines)
 
 
 @pytest.fixture

@@ -301,7 +301,7 @@ def _typed(monkeypatch):
     monkeypatch.setattr(sys, "argv", ["campaign", "load"])
 
 
-@settings(max_examples=40, deadline=None, suppress_health_check=list(HealthCheck), phases=QUICK)
+@settings(max_examples=25, deadline=None, suppress_health_check=list(HealthCheck), phases=QUICK)
 @given(data=st.data())
 def test_any_change_of_bytes_is_refused_or_loaded_whole(data, begun, tmp_path):
     attack(begun, tmp_path, data.draw)

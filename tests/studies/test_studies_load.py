@@ -67,7 +67,7 @@ one_row = st.fixed_dictionaries(
 )
 
 
-@settings(max_examples=25, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=12, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(drawn=st.lists(one_row, min_size=1, max_size=5))
 def test_a_loaded_row_is_the_row_that_log_makes_of_it(drawn, begun, tmp_path):
     # One file for each way of counting time, as a table has one.
@@ -492,7 +492,7 @@ HOSTILE = [
 ]  # fmt: skip
 
 
-@settings(max_examples=80, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=30, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(data=st.data())
 def test_any_change_of_bytes_loads_all_or_nothing_and_says_where(data, begun, tmp_path):
     path = shutil.copy(begun, tmp_path / "hostile.db")
@@ -529,7 +529,7 @@ def test_a_table_without_rows_is_refused(db):
     assert refused.value.code == "table-empty"
 
 
-@settings(max_examples=60, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=30, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(data=st.binary(max_size=400), skip=st.booleans())
 def test_random_bytes_are_refused_or_loaded_without_surprise(data, skip, begun, tmp_path):
     path = shutil.copy(begun, tmp_path / "random.db")

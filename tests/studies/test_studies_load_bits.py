@@ -163,7 +163,7 @@ def by_time(row):
 
 
 @pytest.mark.parametrize("form", FORMS)
-@settings(max_examples=6, deadline=None, suppress_health_check=list(HealthCheck), phases=QUICK)
+@settings(max_examples=4, deadline=None, suppress_health_check=list(HealthCheck), phases=QUICK)
 @given(drawn=tables(), packed=st.booleans())
 def test_numbers_leave_the_catalogue_as_they_stood_in_the_table(form, drawn, packed, begun, tmp_path):
     check(drawn, form, packed, begun, tmp_path)
@@ -177,7 +177,7 @@ def test_many_more_numbers_do_so_too(form, drawn, packed, begun, tmp_path):
     check(drawn, form, packed, begun, tmp_path)
 
 
-@settings(max_examples=10, deadline=None, suppress_health_check=list(HealthCheck), phases=QUICK)
+@settings(max_examples=3, deadline=None, suppress_health_check=list(HealthCheck), phases=QUICK)
 @given(drawn=tables())
 def test_what_was_loaded_and_exported_is_loaded_and_exported_as_the_same_bytes(drawn, begun, tmp_path):
     kind, _, rows = drawn

@@ -75,7 +75,7 @@ def test_the_whole_sample_comes_back(form, sample, new, tmp_path):
 
 
 @forms
-@settings(max_examples=6, deadline=None, suppress_health_check=list(HealthCheck))
+@settings(max_examples=3, deadline=None, suppress_health_check=list(HealthCheck))
 @given(data=st.data())
 def test_anything_that_a_catalogue_holds_comes_back(form, new, tmp_path, data):
     system = data.draw(examples.systems_at_random)
