@@ -19,6 +19,8 @@ _DECAYS_D = np.geomspace(20.0, 1500.0, 14)
 _ENDS = 24
 _WILD_SIGMA = 3.5
 _TOLD_SHARE = 0.6
+# How much of the top's own error passes on: all of it in free decay, little of it while production goes on.
+_END_SHARE, _HALF_SHARE = 0.25, 0.25
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -59,7 +61,8 @@ def fit_decline(
     Notes
     -----
     Accuracy: priors flat in the end between the top and the point where a tenth is left, in what is left at
-    the end (0.4 to 1), and in the logarithm of the decay time (20 to 1500 d). The error of the top is added.
+    the end (0.4 to 1), and in the logarithm of the decay time (20 to 1500 d). A quarter of the
+    top's error is added to both dates.
 
     Source: segmented regression by profile (Hudson 1966, JASA 61, 1097), a line and then an exponential.
 
@@ -113,8 +116,8 @@ def fit_decline(
     told = bool(end[4] - end[3] < _TOLD_SHARE * last)
     seen = bool((y[t > 0] < 0.6 * height).any())
     return DeclinePosterior(
-        _dated(top_bmjd_tdb, _widened(end, top_sigma_d, floor=0.0)),
-        _dated(top_bmjd_tdb, _widened(half, top_sigma_d, floor=0.0)),
+        _dated(top_bmjd_tdb, _widened(end, _END_SHARE * top_sigma_d)),
+        _dated(top_bmjd_tdb, _widened(half, _HALF_SHARE * top_sigma_d)),
         decay,
         told,
         seen,
@@ -174,9 +177,8 @@ def _dated(zero: float, summary: FloatArray) -> FloatArray:
     return np.append(zero + summary[:5], summary[5])
 
 
-def _widened(quantiles: FloatArray, sigma: float, *, floor: float) -> FloatArray:
-    """Quantiles with an independent error added to each side."""
-    middle, deviates = quantiles[0], np.array([0.0, -1.0, 1.0, -1.96, 1.96])
-    wide = middle + np.sign(deviates) * np.hypot(quantiles[:5] - middle, deviates * sigma)
-    found: FloatArray = np.append(np.maximum(wide, floor - 1.96 * sigma), np.hypot(quantiles[5], sigma))
-    return found
+def _widened(summary: FloatArray, sigma: float) -> FloatArray:
+    """A summary with an independent error added to each side."""
+    middle, deviates = summary[0], np.array([0.0, -1.0, 1.0, -1.96, 1.96])
+    wide = middle + np.sign(deviates) * np.hypot(summary[:5] - middle, deviates * sigma)
+    return np.append(wide, np.hypot(summary[5], sigma))

@@ -17,8 +17,11 @@ from campaign.physics.risepoints import LeftOver, band_points, left_over, top_ra
 _BACK_RISES, _BACK_D = 3.0, 250.0
 _SIGNIFICANT = 2.5
 _NIGHT_D = 0.7
-_BUMP_SIGMA, _BUMP_D = 3.5, 40.0
-_BUMP_WINDOW = 7
+# A brightening on the way down: so significant (a single point more so), so large a share of the decline's
+# course, and no longer than this.
+_BUMP_SIGMA, _LONE_SIGMA, _BUMP_SHARE, _BUMP_D = 3.5, 6.0, 0.12, 40.0
+# Its course is taken from so many points at least on either side, these many days away.
+_BUMP_SIDE, _BUMP_WEEKS_D, _BUMP_FLOOR = 2, (20.0, 60.0), 0.02
 
 
 @dataclass(frozen=True, slots=True)
@@ -143,9 +146,10 @@ def _date(curve: JudgedCurve, span: EpisodeSpan, before: EpisodeSpan | None) -> 
 
 
 def _tells(curve: JudgedCurve) -> BoolArray:
-    """Points that could have shown an excess of half the stars' flux."""
+    """Points that could have shown an excess of six tenths of the unit of flux (the stars', where seen)."""
     measured = curve.columns.measured & (curve.sigma_ln < 0.15)
-    limits = (curve.columns.limit_side > 0) & (curve.ln_excess < 0.4)
+    base = curve.levels.base[curve.columns.group]
+    limits = (curve.columns.limit_side > 0) & (base * np.expm1(curve.ln_excess) < 0.6)
     return measured | limits
 
 
@@ -240,27 +244,44 @@ def _decline(
 
 
 def _brightenings(curve: JudgedCurve, span: EpisodeSpan, top: BandTop) -> tuple[Brightening, ...]:
-    """Short brightenings on the way down, above the running median of the band's points around them."""
+    """Short brightenings on the way down, above the course of the band's points around them."""
     columns = curve.columns
     t = columns.bmjd_tdb
     own = span.points[(t[span.points] > top.top_bmjd_tdb[2]) & (columns.limit_side[span.points] == 0)]
-    if own.size < _BUMP_WINDOW:
+    if own.size < 2 * _BUMP_SIDE:
         return ()
     excess = np.expm1(curve.ln_excess[own])
-    half = _BUMP_WINDOW // 2
-    padded = np.concatenate([np.full(half, np.nan), excess, np.full(half, np.nan)])
-    course = np.nanmedian(np.lib.stride_tricks.sliding_window_view(padded, _BUMP_WINDOW), axis=1)
+    course = _course(t[own], excess)
     sigma = (1.0 + np.clip(course, 0.0, None)) * curve.sigma_ln[own]
-    high = np.flatnonzero(excess - course > _BUMP_SIGMA * sigma)
+    above = excess - course
+    high = np.flatnonzero((above > _BUMP_SIGMA * sigma) & (above > _BUMP_SHARE * course))
     found = []
     for group in np.split(high, np.flatnonzero(np.diff(high) > 1) + 1):
-        if group.size < 2 or t[own[group[-1]]] - t[own[group[0]]] > _BUMP_D:
+        best = int(group[np.argmax(above[group])]) if group.size else 0
+        alone = group.size == 1 and above[best] < _LONE_SIGMA * sigma[best]
+        if not group.size or alone or t[own[group[-1]]] - t[own[group[0]]] > _BUMP_D:
             continue
-        best = int(group[np.argmax((excess - course)[group])])
         before, after = t[own[max(group[0] - 1, 0)]], t[own[min(group[-1] + 1, own.size - 1)]]
         lasts = 0.5 * float(after - before + t[own[group[-1]]] - t[own[group[0]]])
-        found.append(Brightening(float(t[own[best]]), lasts, float((excess - course)[best]), int(group.size)))
+        found.append(Brightening(float(t[own[best]]), lasts, float(above[best]), int(group.size)))
     return tuple(found)
+
+
+def _course(t: FloatArray, excess: FloatArray) -> FloatArray:
+    """The decline without what is short: between the points some weeks before and some weeks after each.
+
+    Interpolated in the logarithm, where free decay is a straight line; NaN where a side has too few points.
+    """
+    ln = np.log(np.maximum(excess, _BUMP_FLOOR))
+    near, far = _BUMP_WEEKS_D
+    course = np.full(t.size, np.nan)
+    for i, at in enumerate(t.tolist()):
+        before = (t >= at - far) & (t <= at - near)
+        after = (t >= at + near) & (t <= at + far)
+        if before.sum() >= _BUMP_SIDE and after.sum() >= _BUMP_SIDE:
+            x, y = ([float(part[side].mean()) for side in (before, after)] for part in (t, ln))
+            course[i] = np.exp(y[0] + (y[1] - y[0]) * (at - x[0]) / (x[1] - x[0]))
+    return course
 
 
 def _begun_inside(curve: JudgedCurve, span: EpisodeSpan, first_bright: float) -> DatedSpan:

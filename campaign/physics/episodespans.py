@@ -205,7 +205,14 @@ def _is_tail(curve: JudgedCurve, earlier: EpisodeSpan, later: EpisodeSpan) -> bo
         return False
     duration = earlier.stop_bmjd_tdb - earlier.start_bmjd_tdb
     near = later.start_bmjd_tdb - earlier.stop_bmjd_tdb < max(duration, 60.0)
-    return near and _height(curve, later) < _TAIL_SHARE * _height(curve, earlier)
+    # Longer bands shine on after shorter ones: heights are compared in the later one's band.
+    columns = curve.columns
+    t = columns.bmjd_tdb
+    then = (t >= earlier.start_bmjd_tdb) & (t <= earlier.stop_bmjd_tdb) & (columns.band == later.band)
+    then &= (columns.limit_side <= 0) & np.isfinite(curve.ln_excess)
+    before = np.expm1(curve.ln_excess[then])
+    highest = float(smoothed(before).max()) if before.size else _height(curve, earlier)
+    return near and _height(curve, later) < _TAIL_SHARE * highest
 
 
 def _joined(earlier: EpisodeSpan, later: EpisodeSpan) -> EpisodeSpan:

@@ -15,7 +15,7 @@ RISE_NAMES = (
 )  # fmt: skip
 # Faster rises hide their beginning, and a straight line fits what is seen of them: they have more weight than
 # the line, or onsets come out late.
-RISE_WEIGHTS = np.array([0.22, 0.10, 0.16, 0.19, 0.05, 0.10, 0.10, 0.08])
+RISE_WEIGHTS = np.array([0.24, 0.13, 0.18, 0.15, 0.03, 0.13, 0.09, 0.05])
 
 
 def rise_shapes(share: ArrayLike) -> FloatArray:

@@ -21,6 +21,8 @@ RED_BLOCK_D = 60.0
 # No two sources of one band differ by so much: a group that stands so far above saw only dust.
 IMPOSSIBLE_OFFSET_MAG = 0.3
 _ENOUGH_POINTS = 5
+# Limits this much deeper than a level, as many as its points, contradict it.
+_DEEPER_MAG, _FEWEST_DEEPER = 0.05, 3
 _MAD_TO_SIGMA = 1.4826
 # Half of the shortest interval that holds 40 % of a normal distribution, in sigma.
 _SHORTEST_SHARE, _SHORTEST_HALF = 0.4, 0.5244
@@ -92,6 +94,9 @@ def stellar_levels(columns: LightColumns, quiet: BoolArray) -> StellarLevels:
             level[number], variance[number], jitter[number], red[number] = _own_level(
                 columns.bmjd_tdb[mine], columns.mag[mine], columns.error_mag[mine]
             )
+            if _is_contradicted(columns, quiet, number, level[number], points[number]):
+                level[number], variance[number], points[number] = np.nan, np.inf, 0
+                jitter[number], red[number] = FLOOR_MAG, 0.0
     base, base_sigma = np.ones(groups), np.zeros(groups)
     for band in np.unique(columns.group_band):
         mine = np.flatnonzero(columns.group_band == band)
@@ -101,6 +106,13 @@ def stellar_levels(columns: LightColumns, quiet: BoolArray) -> StellarLevels:
             _hide(columns, quiet, unknown, band, level, base, base_sigma)
             variance[unknown] = 0.0
     return StellarLevels(level, np.sqrt(variance), jitter, red, base, base_sigma, points)
+
+
+def _is_contradicted(columns: LightColumns, quiet: BoolArray, number: int, level: float, points: int) -> bool:
+    """Whether as many limits say that the stars are fainter: then only dust was ever measured."""
+    band = columns.group_band[number]
+    deeper = quiet & (columns.limit_side > 0) & (columns.band == band) & (columns.mag > level + _DEEPER_MAG)
+    return int(deeper.sum()) >= max(_FEWEST_DEEPER, points)
 
 
 def _own_level(times: FloatArray, mags: FloatArray, errors: FloatArray) -> tuple[float, float, float, float]:
@@ -117,7 +129,7 @@ def _own_level(times: FloatArray, mags: FloatArray, errors: FloatArray) -> tuple
         error = np.where(np.isnan(errors), max(typical, UNKNOWN_ERROR_MAG), errors)
         if count >= 2 * _ENOUGH_POINTS:
             # The spread of few points is itself uncertain; errors are believed that far.
-            beyond = spread**2 - float(np.median(error)) ** 2
+            beyond = spread**2 - float(np.median(error)) ** 2 * (1.0 + 1.5 / np.sqrt(count))
             jitter = max(FLOOR_MAG, float(np.sqrt(max(beyond, 0.0))))
     sigma = np.hypot(error, jitter)
     kept = np.abs(mags - middle) <= 4.0 * sigma

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import replace
 
 import numpy as np
@@ -212,25 +213,25 @@ def _curves(system: str, numbered: NumberedCurve, curve: JudgedCurve) -> tuple[C
     sigma = curve.ln_excess / curve.sigma_ln
     found = []
     for place, band in enumerate(numbered.bands):
-        points = []
-        for i in np.flatnonzero(columns.band == place).tolist():
-            error = None if np.isnan(columns.error_mag[i]) else float(columns.error_mag[i])
-            points.append(
-                CurvePoint(
-                    float(columns.bmjd_tdb[i]),
-                    float(columns.mag[i]),
-                    error,
-                    error,
-                    _state(int(columns.limit_side[i]), float(sigma[i])),
-                )
-            )
-        found.append(Curve(system, "photometry", band, "mag", True, tuple(points)))
+        mine = columns.band == place
+        rows = zip(
+            columns.bmjd_tdb[mine].tolist(), columns.mag[mine].tolist(), columns.error_mag[mine].tolist(),
+            columns.limit_side[mine].tolist(), sigma[mine].tolist(), strict=True,
+        )  # fmt: skip
+        points = tuple(
+            CurvePoint(at, mag, *_sizes(error), _state(side, z)) for at, mag, error, side, z in rows
+        )
+        found.append(Curve(system, "photometry", band, "mag", True, points))
     return tuple(found)
+
+
+def _sizes(error: float) -> tuple[float | None, float | None]:
+    return (None, None) if math.isnan(error) else (error, error)
 
 
 def _state(side: int, sigma: float) -> PointState:
     if side:
         return "above" if side > 0 else "below"
-    if np.isnan(sigma):
+    if math.isnan(sigma):
         return "level unknown"
     return "excess" if sigma >= _EXCESS_SIGMA else "quiet"

@@ -76,7 +76,9 @@ def numbered_curve(
     good = wanted & (arrays.quality == "good")
     chosen = np.flatnonzero(good)
     chosen = chosen[np.argsort(arrays.bmjd_tdb[chosen], kind="stable")]
-    systems = [photometric_system_key(str(name)) for name in arrays.photometric_system[chosen]]
+    typed = arrays.photometric_system[chosen].tolist()
+    key_of = {name: photometric_system_key(name) for name in set(typed)}
+    systems = [key_of[name] for name in typed]
     keys = list(
         zip(
             arrays.band[chosen].tolist(), systems, arrays.source[chosen].tolist(),
@@ -102,7 +104,7 @@ def numbered_curve(
     if twice:
         columns = _only(columns, once)
     _check_enough(system, columns)
-    spelt = dict(zip(systems, map(str, arrays.photometric_system[chosen]), strict=True))
+    spelt = {key: name for name, key in key_of.items()}
     return NumberedCurve(columns, names, tuple(groups), spelt, int((wanted & ~good).sum()), twice)
 
 
@@ -113,17 +115,15 @@ def _time_sigma(arrays: PhotometryArrays, chosen: NDArray[np.int64]) -> NDArray[
 
 def _first_of_equals(columns: LightColumns) -> NDArray[np.bool_]:
     """The first of points that agree in instant, magnitude and all else: one point entered twice."""
-    once = np.ones(columns.mag.size, dtype=bool)
-    seen: set[tuple[int, int, float, int]] = set()
-    for place, (group, at, mag, side) in enumerate(
-        zip(
-            columns.group.tolist(), columns.bmjd_tdb.tolist(), columns.mag.tolist(),
-            columns.limit_side.tolist(), strict=True,
-        )
-    ):  # fmt: skip
-        key = (group, round(at / _SAME_INSTANT_D), mag, side)
-        once[place] = key not in seen
-        seen.add(key)
+    instant = np.round(columns.bmjd_tdb / _SAME_INSTANT_D)
+    keys = (columns.limit_side.astype(np.float64), columns.mag, instant, columns.group.astype(np.float64))
+    # The sort is stable: of equals the first stays first.
+    order = np.lexsort(keys)
+    same = np.ones(max(order.size - 1, 0), dtype=bool)
+    for key in keys:
+        same &= np.diff(key[order]) == 0.0
+    once = np.ones(order.size, dtype=bool)
+    once[order[1:][same]] = False
     return once
 
 
