@@ -58,7 +58,9 @@ def render_bad(screen: Screen, loaded: Loaded) -> None:
     print_table(screen, columns, rows)
     if len(loaded.bad) > MOST_SHOWN:
         screen.wrapped(f"... and {len(loaded.bad) - MOST_SHOWN:,} more; --json and --rejects FILE list all.")
-    screen.wrapped("By reason: " + reasons_text(loaded) + ".", hang=2)
+    if not loaded.is_refused:
+        # The refusal says it otherwise.
+        screen.wrapped("By reason: " + reasons_text(loaded) + ".", hang=2)
 
 
 def render_conflicts(screen: Screen, loaded: Loaded) -> None:
@@ -156,6 +158,8 @@ def advice(loaded: Loaded) -> str:
     said = [] if unknown is None else [f'if "{unknown}" stands for unknown, say --missing "{unknown}"']
     if any("comma" in cell.why and _DECIMAL_COMMA.fullmatch(cell.text.strip()) for cell in loaded.bad):
         said.append("decimal commas are read with --constant decimal=comma")
+    if "system-not-found" in loaded.reasons:
+        said.append("systems are listed by: campaign system list, and new ones added first")
     short = next((cell for cell in loaded.bad if _is_short_count(cell)), None)
     if short is not None:
         offset = 2_400_000 if float(short.text) >= _MOST_LATE_DAYS else 2_450_000

@@ -217,6 +217,18 @@ class _Understanding:
         for name, places in found.items():
             number, unit = self._chosen(self._fields[name], places)
             self._take(self._fields[name], number, unit)
+        self._take_star()
+
+    def _take_star(self) -> None:
+        """A column of stars names systems, where nothing else does and no star of a system is meant."""
+        name = "name" if self._kind == "systems" else "system"
+        if "star" in self._fields or self._has_plain(name):
+            return
+        places = [
+            number for number, column in enumerate(self._columns, start=1) if key(column.name) == "star"
+        ]
+        if len(places) == 1 and places[0] not in self._taken:
+            self._take(self._fields[name], places[0], "")
 
     def _chosen(self, field: Field, places: Sequence[tuple[int, str]]) -> tuple[int, str]:
         """The one column of several for a field: one called by its very name, if it is no time."""
@@ -269,7 +281,10 @@ class _Understanding:
         if field.type == "instant":
             self._meanings[field.name] = self._instant_meaning(field, column, meaning)
         elif field.type in ("number", "measured"):
-            unit = self._checked_unit(field, column, meaning or column.unit, is_said=bool(meaning))
+            said = meaning or split_brackets(column.name)[1]
+            unit = self._checked_unit(field, column, said or column.unit, is_said=bool(said))
+            if unit is None:
+                unit = self._suffix_unit(field, column)
         self._uses[field.name] = ColumnUse(field.name, column.name, number, unit)
 
     def _instant_meaning(self, field: Field, column: TableColumn, meaning: str) -> TimeMeaning:
@@ -295,6 +310,12 @@ class _Understanding:
         if self._is_trial or not (FAMILIES[field.unit].factors or is_said):
             return None
         raise refusals.unit_refused(column, unit, field)
+
+    def _suffix_unit(self, field: Field, column: TableColumn) -> str | None:
+        """The unit at the end of a name such as ``rho_mas``, if it is one of the field."""
+        split = split_unit(column.name)
+        factors = FAMILIES[field.unit].factors
+        return split[1] if split is not None and split[1] in factors else None
 
     def _find_targets(self) -> tuple[ValueTarget, ...]:
         if self._is_knowledge:

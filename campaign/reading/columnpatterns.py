@@ -39,7 +39,11 @@ def split_unit(name: str) -> tuple[str, str] | None:
     if unit is not None:
         return bare, unit
     found = _SUFFIXED.fullmatch(bare)
-    return (found["name"], _UNIT_WORDS[found["unit"].casefold()]) if found else None
+    if found is None:
+        return None
+    # Spelled in full it is a million, which no rule about case may make a thousandth.
+    exact = "MJy" if found["unit"] == "MJy" else _UNIT_WORDS[found["unit"].casefold()]
+    return found["name"], exact
 
 
 def is_called(column: TableColumn, names: Sequence[str]) -> bool:

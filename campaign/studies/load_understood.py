@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from campaign.model.loading import (
     ColumnUse,
     ForeignTable,
@@ -17,6 +19,7 @@ from campaign.reading.units import FAMILIES
 from campaign.studies.load_fields import value_column
 
 _OF_VALUE = ("value", "error", "error_minus", "error_plus", "limit", "limit_sigma", "angle", "angle_error")
+_ERROR_OF = {"error": "value", "error_minus": "value", "error_plus": "value", "angle_error": "angle"}
 
 
 def understood_mapping(file: str, table: ForeignTable, mapping: TableMapping) -> Understood:
@@ -106,6 +109,9 @@ def _target_lines(mapping: TableMapping, target: ValueTarget) -> list[MappingLin
         if use is not None:
             own = spoken[name].unit
             family = "" if name in ("limit", "limit_sigma") else (own if name.startswith("angle") else unit)
+            if use.unit is None and name in _ERROR_OF:
+                # An error without a unit of its own has that of its value.
+                use = replace(use, unit=target.fields[_ERROR_OF[name]].unit)
             lines.append(MappingLine(spoken[name].spoken + about, f"column {use.column}", _unit(use, family)))
         elif name in mapping.constants:
             lines.append(MappingLine(spoken[name].spoken + about, "all rows", mapping.constants[name]))

@@ -165,6 +165,44 @@ def test_units_of_a_table_of_astropy_are_known(db, form):
     assert (found.value.value, found.energy_low_kev, found.energy_high_kev) == (4e-12, 0.5, 10.0)
 
 
+@pytest.mark.parametrize("column", ["S (mJy)", "S [mJy]", "S_mJy"])
+def test_the_unit_in_the_name_of_a_column_that_was_pointed_at_counts(db, column):
+    text = f"name,BJD_TDB,{column},err\nKeel 9,2459001.5,4,0.5\n"
+    said = {"kind": "flux", "columns": {"flux": column}, "constants": {"frequency": "8.4 GHz"}}
+    loaded = load(db, text, **said)
+    assert {line.meaning for line in loaded.understood.lines if "flux" in line.field} == {"in mJy"}
+    assert kept(db)[0].value == Measured(4e-3, 5e-4, 5e-4)
+    # A unit that is none of the field is refused, unless another one is said.
+    with pytest.raises(InputRefused) as refused:
+        load(db, text.replace("mJy", "mag"), **said | {"columns": {"flux": "S (mag)"}})
+    assert refused.value.code in ("unit-not-accepted", "column-missing")
+
+
+@pytest.mark.parametrize(
+    ("column", "value"), [("flux_mJy", 4e-3), ("flux_MJy", 4e6), ("FLUX_MJY", 4e-3), ("flux_Jy", 4.0)]
+)
+def test_the_case_of_a_unit_counts_where_it_is_one(db, column, value):
+    text = f"name,BJD_TDB,{column}\nKeel 9,2459001.5,4\n"
+    load(db, text, constants={"frequency": "8.4 GHz"})
+    assert kept(db)[0].value.value == pytest.approx(value, rel=1e-15)
+
+
+def test_errors_without_a_unit_have_that_of_their_value_and_say_so(db):
+    text = "name,BJD_TDB,RV [m/s],e_RV,star\nKeel 9,2459001.5,-45200,3100,A\n"
+    lines = {line.field: line.meaning for line in load(db, text).understood.lines}
+    assert lines["error of the radial velocity"] == "in m/s"
+    assert kept(db)[0].value == Measured(-45.2, 3.1, 3.1)
+
+
+def test_a_column_of_stars_names_systems_where_nothing_else_does(db):
+    assert load(db, "Star,BJD_TDB,K,e_K\nKeel 9,2459001.5,7.3,0.1\n").added == 1
+    assert load(db, "Star,label,P,T0\nKeel 9,one,900±2,BJD 2457001±3\n", kind="solutions").added == 1
+    loaded = load(db, "object,star,BJD_TDB,K,e_K\nKeel 9,x,2459002.5,7.3,0.1\n")
+    assert (loaded.added, loaded.understood.unused) == (1, ("star",))
+    with pytest.raises(InputRefused):
+        load(db, "star,BJD_TDB,RV\nA,2459001.5,12\n")
+
+
 def test_radii_of_shells_at_fixed_places_with_units_below_the_names(db):
     text = (
         "object     date        radius   e_radius  PA    feature  measured_at  index  filter\n"
