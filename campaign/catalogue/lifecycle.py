@@ -14,6 +14,8 @@ from campaign.catalogue.tables import (
     column_mappings,
     dust_rules,
     episodes,
+    keepings,
+    kept_forecasts,
     lapses,
     observations,
     sites,
@@ -33,6 +35,8 @@ MARKER_OF: Final[Mapping[str, str]] = {
     solutions.name: "withdrawn_at",
     episodes.name: "withdrawn_at",
     observations.name: "withdrawn_at",
+    keepings.name: "withdrawn_at",
+    kept_forecasts.name: "withdrawn_at",
     adoptions.name: "ended_at",
     dust_rules.name: "ended_at",
 }

@@ -16,6 +16,7 @@ from campaign.errors import NotFound
 from campaign.model.bands import BandUse
 from campaign.model.instants import Moment
 from campaign.model.observations import Observation
+from campaign.model.verification import UsedPhotometry
 
 if TYPE_CHECKING:
     from campaign.model.arrays import PhotometryArrays
@@ -104,6 +105,28 @@ def count_observations(
         if kept(system_id, wanted):
             counts.setdefault(system_id, {})[kind] = number
     return counts
+
+
+def photometry_used(
+    connection: Connection,
+    system_ids: Collection[int] | None,
+    *,
+    as_of_bmjd_tdb: float | None,
+    known_at: datetime | None,
+) -> dict[int, UsedPhotometry]:
+    """How much of each light curve there was, and its newest point by time and by entry."""
+    wanted = None if system_ids is None else set(system_ids)
+    columns = observations.c
+    rows = connection.execute(
+        select(columns.system_id, func.count(), func.max(columns.bmjd_tdb), func.max(columns.entered_at))
+        .where(
+            among(columns.system_id, wanted),
+            columns.kind == "photometry",
+            _in_use(as_of_bmjd_tdb, known_at),
+        )
+        .group_by(columns.system_id)
+    )
+    return {row[0]: UsedPhotometry(row[1], row[2], row[3]) for row in rows.all() if kept(row[0], wanted)}
 
 
 def band_uses(connection: Connection, system_ids: Collection[int] | None = None) -> list[BandUse]:

@@ -24,6 +24,7 @@ from campaign.catalogue.lifecycle import (
 from campaign.catalogue.tables import (
     campaign_info,
     column_mappings,
+    keepings,
     metadata,
     observations,
     sites,
@@ -43,6 +44,7 @@ _UNIQUE: tuple[tuple[Table[Any], tuple[str, ...], str], ...] = (
     (solutions, ("system_id", "label_key"), "gave the label to another solution"),
     (observations, ("sameness",), "entered the same observation again"),
     (column_mappings, ("name_key",), "gave the name to another mapping"),
+    (keepings, ("label_key",), "gave the label to other kept forecasts"),
     (campaign_info, ("key",), "states the same fact"),
 )
 _PARENTS = (systems, sites, solutions)

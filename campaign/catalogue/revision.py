@@ -7,6 +7,6 @@ from __future__ import annotations
 
 from typing import Final
 
-KNOWN_REVISIONS: Final = ("0001", "0002")
+KNOWN_REVISIONS: Final = ("0001", "0002", "0003")
 HEAD_REVISION: Final = KNOWN_REVISIONS[-1]
 FORMAT: Final = "1"

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from campaign.catalogue.columns import metadata
+from campaign.catalogue.tables_forecasts import keepings, kept_forecasts
 from campaign.catalogue.tables_history import campaign_info, changes, column_mappings, lapses, operations
 from campaign.catalogue.tables_knowledge import adoptions, dust_rules, episodes, solutions
 from campaign.catalogue.tables_observations import observations
@@ -15,6 +16,8 @@ __all__ = [
     "column_mappings",
     "dust_rules",
     "episodes",
+    "keepings",
+    "kept_forecasts",
     "lapses",
     "metadata",
     "observations",

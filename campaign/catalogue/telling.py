@@ -16,6 +16,8 @@ from campaign.catalogue.tables import (
     adoptions,
     changes,
     dust_rules,
+    keepings,
+    kept_forecasts,
     lapses,
     metadata,
     observations,
@@ -46,6 +48,7 @@ class Teller:
         told: list[EntryChange] = []
         done: set[int] = set()
         corrections = _corrections(effects)
+        kept: dict[int, list[RowEffect]] = {}
         for effect in effects:
             if isinstance(effect, RowEffect) and _key(effect) in corrections:
                 continue
@@ -56,8 +59,11 @@ class Teller:
                 if system_id not in done:
                     done.add(system_id)
                     told.append(self._of_system(operation_id, system_id, effects))
+            elif effect.table == kept_forecasts.name:
+                kept.setdefault(self._system_of(operation_id, effect), []).append(effect)
             elif effect.table != lapses.name:
                 told.append(self._of_row(operation_id, effect))
+        told += [self._of_forecasts(operation_id, *each) for each in kept.items()]
         return tuple(told)
 
     def reversed(self, operation_id: int, effects: Sequence[Effect]) -> tuple[EntryChange, ...]:
@@ -150,6 +156,18 @@ class Teller:
                     ]
         return EntryChange("system", action, self._systems.get(system_id), tuple(fields))
 
+    def _of_forecasts(self, operation_id: int, system_id: int, effects: Sequence[RowEffect]) -> EntryChange:
+        """Kept forecasts of one system: which events, not every quantile."""
+        rows = [self._rows(operation_id, kept_forecasts, effect)[1] for effect in effects]
+        events = [row["event"] if row["cycle"] is None else f"{row['event']} {row['cycle']}" for row in rows]
+        many = "" if len(rows) == 1 else "s"
+        return EntryChange(
+            subject=f"{len(rows)} kept forecast{many}",
+            action=_action(effects[0], kept_forecasts),
+            system=self._systems.get(system_id),
+            note=", ".join(events),
+        )
+
     def _fields(
         self, table: Table[Any], before: Mapping[str, Any], after: Mapping[str, Any], effect: RowEffect
     ) -> tuple[FieldChange, ...]:
@@ -163,6 +181,8 @@ class Teller:
             return f"solution '{row['label']}'"
         if table is dust_rules:
             return f"dust rule '{row['kind']}'"
+        if table is keepings:
+            return f"keeping {row_id}" + (f" '{row['label']}'" if row["label"] else "")
         if table is sites:
             return f"site {row['name']}"
         words = {

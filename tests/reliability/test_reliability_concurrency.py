@@ -43,7 +43,7 @@ import sys
 from pathlib import Path
 from campaign.catalogue import opening, upgrade
 for module in (upgrade, opening):
-    module.HEAD_REVISION, module.KNOWN_REVISIONS = "0003", ("0001", "0002", "0003")
+    module.HEAD_REVISION, module.KNOWN_REVISIONS = "0004", ("0001", "0002", "0003", "0004")
 upgrade.migrations_folder = lambda: Path(sys.argv[2])
 print("ready", flush=True)
 sys.stdin.readline()
@@ -53,7 +53,7 @@ print(upgrade.upgrade_database(sys.argv[1]).snapshot)
 SECOND_MIGRATION = """
 import sqlalchemy as sa
 from alembic import op
-revision, down_revision, branch_labels, depends_on = "0003", "0002", None, None
+revision, down_revision, branch_labels, depends_on = "0004", "0003", None, None
 def upgrade():
     op.add_column("sites", sa.Column("nickname", sa.String(20)))
 """
@@ -110,7 +110,7 @@ def upgrade_at_once(folder: Path, rounds: int) -> None:
 
     migrations = folder / "migrations"
     shutil.copytree(migrations_folder(), migrations, ignore=shutil.ignore_patterns("__pycache__"))
-    (migrations / "versions" / "0003_invented.py").write_text(SECOND_MIGRATION)
+    (migrations / "versions" / "0004_invented.py").write_text(SECOND_MIGRATION)
     for number in range(rounds):
         database = folder / str(number) / "campaign.db"
         database.parent.mkdir()
@@ -118,12 +118,12 @@ def upgrade_at_once(folder: Path, rounds: int) -> None:
         before = content(database)
         results = release_at_once([start(UPGRADER, database, migrations) for _ in range(4)])
         assert [(status, err) for status, _, err in results] == [(0, "")] * 4
-        snapshot = database.with_name("campaign-before-0003.db")
+        snapshot = database.with_name("campaign-before-0004.db")
         assert sorted(out for _, out, _ in results) == sorted(["None\n"] * 3 + [f"{snapshot}\n"])
         assert sorted(entry.name for entry in database.parent.iterdir()) == [snapshot.name, database.name]
         assert content(snapshot) == before
         assert content(database)["observations"] == before["observations"]
-        assert content(database)["alembic_version"] == [("0003",)]
+        assert content(database)["alembic_version"] == [("0004",)]
         assert_sound(database)
 
 

@@ -60,7 +60,7 @@ UPGRADER = (
     SMALL_CACHE
     + """
 for module in (upgrade, opening):
-    module.HEAD_REVISION, module.KNOWN_REVISIONS = "0003", ("0001", "0002", "0003")
+    module.HEAD_REVISION, module.KNOWN_REVISIONS = "0004", ("0001", "0002", "0003", "0004")
 upgrade.migrations_folder = lambda: Path(sys.argv[2])
 setattr(upgrade, sys.argv[3], hold)
 upgrade.upgrade_database(sys.argv[1])
@@ -70,7 +70,7 @@ upgrade.upgrade_database(sys.argv[1])
 SECOND_MIGRATION = """
 import sqlalchemy as sa
 from alembic import op
-revision, down_revision, branch_labels, depends_on = "0003", "0002", None, None
+revision, down_revision, branch_labels, depends_on = "0004", "0003", None, None
 def upgrade():
     with op.batch_alter_table("observations", recreate="always") as batch:
         batch.add_column(sa.Column("nickname", sa.String(20)))
@@ -170,7 +170,7 @@ def migrations(tmp_path: Path) -> Path:
 
     folder = tmp_path / "migrations"
     shutil.copytree(upgrade.migrations_folder(), folder, ignore=shutil.ignore_patterns("__pycache__"))
-    (folder / "versions" / "0003_invented.py").write_text(SECOND_MIGRATION)
+    (folder / "versions" / "0004_invented.py").write_text(SECOND_MIGRATION)
     return folder
 
 
@@ -192,11 +192,11 @@ def test_an_upgrade_that_is_killed_leaves_the_old_catalogue_and_can_be_repeated(
     from campaign.catalogue import opening
 
     for module in (upgrade, opening):
-        monkeypatch.setattr(module, "HEAD_REVISION", "0003")
-        monkeypatch.setattr(module, "KNOWN_REVISIONS", ("0001", "0002", "0003"))
+        monkeypatch.setattr(module, "HEAD_REVISION", "0004")
+        monkeypatch.setattr(module, "KNOWN_REVISIONS", ("0001", "0002", "0003", "0004"))
     monkeypatch.setattr(upgrade, "migrations_folder", lambda: migrations)
     report = upgrade.upgrade_database(database)
-    assert report.to_revision == "0003"
+    assert report.to_revision == "0004"
     assert_sound(database)
     after = content(database)
     assert [row[:-1] for row in after["observations"]] == before_rows["observations"]

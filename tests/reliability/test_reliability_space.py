@@ -33,7 +33,7 @@ try:
         upgrade.begin_database(database, at=datetime.now(UTC))
     elif action == "upgrade":
         for module in (upgrade, opening):
-            module.HEAD_REVISION, module.KNOWN_REVISIONS = "0003", ("0001", "0002", "0003")
+            module.HEAD_REVISION, module.KNOWN_REVISIONS = "0004", ("0001", "0002", "0003", "0004")
         upgrade.upgrade_database(database)
     else:
         with store.writing(database, at=datetime.now(UTC), who="x", command="y") as writing:

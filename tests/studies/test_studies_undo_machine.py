@@ -31,6 +31,7 @@ from undo_examples import begun, keep_engines
 
 from campaign.catalogue import (
     episodes,
+    keepings,
     observations,
     records,
     sites,
@@ -39,11 +40,13 @@ from campaign.catalogue import (
 )
 from campaign.catalogue.store import Writing
 from campaign.errors import Conflict, NotFound
+from campaign.model.forecasts import EventForecast
 from campaign.model.instants import Moment
 from campaign.model.kept import Stamp
 from campaign.model.measured import Measured
 from campaign.model.observations import Observation
 from campaign.model.systems import DatedEvent, DustRule, Episode, Site, Solution, Star, System
+from campaign.model.verification import ForecastInputs, Keeping, KeptForecast
 from campaign.reading.instants import read_instant
 from campaign.studies import amend, rules, solutions, undo
 from campaign.studies import systems as system_studies
@@ -100,6 +103,12 @@ def look(connection: Any) -> Look:
         found["site", site.id] = site
     for observation in observations.observations_of(connection):
         found["observation", observation.id] = observation
+    for keeping in keepings.list_keepings(connection):
+        found["keeping", keeping.id] = keeping
+    for forecast in keepings.load_kept(connection):
+        # It is shown under the name that its system has now.
+        event = replace(forecast.event, system="")
+        found["kept forecast", forecast.id] = replace(forecast, event=event)
     return found
 
 
@@ -128,6 +137,8 @@ def hanging(found: Look) -> list[str]:
     placed = {key[1] for key in found if key[0] == "site"}
     solved = {key[1] for key in found if key[0] == "solution"}
     spoken, labelled, located, measured = set(), set(), set(), set()
+    kept = [value.label for key, value in found.items() if key[0] == "keeping" and value.label]
+    wrong += ["a label of kept forecasts twice"] if len(kept) != len(set(kept)) else []
     for key, value in found.items():
         if (
             key[0] in ("alias", "name", "star", "rule", "adopted", "priority", "anchor")
@@ -138,7 +149,7 @@ def hanging(found: Look) -> list[str]:
             name = value if key[0] == "name" else key[2]
             wrong += [f"{name} twice"] if name in spoken else []
             spoken.add(name)
-        if key[0] in ("solution", "episode", "observation") and value.system_id not in there:
+        if key[0] in ("solution", "episode", "observation", "kept forecast") and value.system_id not in there:
             wrong.append(f"{key} without its system")
         if key[0] == "solution":
             wrong += [f"{value.label} twice"] if (value.system_id, value.label) in labelled else []
@@ -308,6 +319,16 @@ class Undoing(RuleBasedStateMachine):
         number, other = self.one_of("observation", number), self.one_of("observation", other)
         self.command(lambda stamp: amend.withdraw_observations(self.db, stamp, [number, other], "wrong star"))
 
+    def keep_forecasts(self, name: str, label: str | None) -> None:
+        def work(writing: Writing) -> None:
+            system_id = systems.find_system(writing.connection, name).id
+            keeping = Keeping(0, label, 6e4, 6e4, 6.1e4, writing.at, writing.at, 100, 1, "0.1")
+            event = EventForecast(name, "onset", 1, "orbit", None, None, None, None, "open", 1.0, 0.5)
+            forecast = KeptForecast(0, 0, system_id, event, (), None, None, ForecastInputs())
+            keepings.add_keeping(writing, keeping, [forecast, forecast])
+
+        self.catalogue(work)
+
     COMMANDS: ClassVar[dict[str, st.SearchStrategy[dict[str, Any]]]] = {
         "add_system": st.fixed_dictionaries(dict(name=names, alias=st.none() | names, star=st.booleans())),
         "change_priority": st.fixed_dictionaries(
@@ -331,6 +352,7 @@ class Undoing(RuleBasedStateMachine):
                 state=st.sampled_from(["proposed", "confirmed"]),
             )
         ),
+        "keep_forecasts": st.fixed_dictionaries(dict(name=names, label=st.none() | labels)),
         "decide_episode": st.fixed_dictionaries(
             dict(number=numbers, state=st.sampled_from(["proposed", "confirmed", "rejected"]))
         ),
