@@ -29,6 +29,7 @@ from campaign.reading.columnpatterns import (
     band_columns,
     columns_called,
     is_called,
+    limit_names,
     split_brackets,
     split_unit,
 )
@@ -337,12 +338,21 @@ class _Understanding:
         targets = []
         for word, (number, errors) in found.items():
             fields = {"value": self._target_use(field, number)}
-            for place, column in enumerate(self._columns, start=1):
-                if place != number and place not in self._taken and is_called(column, errors):
-                    fields["error"] = self._target_use(replace(field, name="error"), place)
-                    break
+            place = self._place_called(errors, number)
+            if place is not None:
+                fields["error"] = self._target_use(replace(field, name="error"), place)
+            place = self._place_called(limit_names(word), number) if "limit" in self._fields else None
+            if place is not None:
+                fields["limit"] = ColumnUse("limit", self._columns[place - 1].name, place)
             targets.append(ValueTarget(fields, {constant: word}))
         return tuple(self._with_shared(target, len(targets)) for target in targets)
+
+    def _place_called(self, names: Sequence[str], besides: int) -> int | None:
+        """The first column that is called by one of ``names`` and still free."""
+        for place, column in enumerate(self._columns, start=1):
+            if place != besides and place not in self._taken and is_called(column, names):
+                return place
+        return None
 
     def _with_shared(self, target: ValueTarget, number: int) -> ValueTarget:
         """The target with columns that belong to no band or star by name: to the only one, or as was said."""

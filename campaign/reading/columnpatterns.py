@@ -52,6 +52,14 @@ def is_called(column: TableColumn, names: Sequence[str]) -> bool:
     return any(flat == name or flat.casefold() == name.casefold() for name in names)
 
 
+def limit_names(band: str) -> tuple[str, ...]:
+    """How the mark of a limit is called that belongs to a band."""
+    bases = (band, f"{band}mag", f"mag{band}")
+    return tuple(
+        form.format(base) for base in bases for form in ("l{}", "lim{}", "limit{}", "{}lim", "{}limit")
+    )
+
+
 def band_columns(columns: Sequence[TableColumn], taken: Collection[int]) -> Found:
     """Columns named after a band, by band."""
     found: Found = {}

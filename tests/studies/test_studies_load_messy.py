@@ -45,6 +45,15 @@ def test_a_light_curve_of_a_survey_with_its_mark_of_nothing_seen(db):
     assert second.value == Measured(12.312, 0.019, 0.019)
 
 
+def test_marks_of_limits_belong_to_their_bands(db):
+    text = "name,BJD_TDB,l_Jmag,Jmag,e_Jmag,l_Kmag,Kmag,e_Kmag\nKeel 9,2459001.5,>,12.1,,,7.3,0.02\n"
+    loaded = load(db, text)
+    assert (loaded.added, loaded.understood.unused) == (2, ())
+    found = {each.band: each for each in kept(db)}
+    assert (found["J"].value, found["J"].limit_side) == (Measured(12.1), "above")
+    assert (found["K"].value, found["K"].limit_side) == (Measured(7.3, 0.02, 0.02), None)
+
+
 def test_a_row_whose_value_is_empty_is_bad_although_another_word_means_unknown(db):
     text = "system,BJD_TDB,band,mag\nKeel 9,2459001.5,K,\nKeel 9,2459002.5,K,--\nKeel 9,2459003.5,K,7.3\n"
     loaded = load(db, text, missing=("--",), skip_bad=True)
