@@ -145,6 +145,7 @@ def _with_radii(
     motion = solved.best.get("proper_motion_mas_yr")
     shells: list[DatedShell] = []
     warnings: list[str] = []
+    not_told: list[str] = []
     for one in solved.groups:
         ages = ages_of(one.fit, solved.best if one is not main else solution, solved.period, agrees, seed)
         rows = rows_of(one.fit.group, one.counted.index.tolist(), ages)
@@ -154,6 +155,7 @@ def _with_radii(
         anchored = anchor(rows, cycles, ephemeris)
         shells += against_ephemeris(rows, cycles, anchored, ephemeris)
         warnings += [*one.counted.warnings, *anchored.warnings]
+        not_told += [*one.counted.not_told, *anchored.not_told]
         if one is main:
             main_ages, main_rows, main_shift = ages, rows, anchored.shift
     if main_ages.yr is None and main.fit.fit is None:
@@ -191,7 +193,7 @@ def _with_radii(
         span_sigma_yr=span_sigma,
         foreseen=foreseen_in(shells, None if motion is None else motion.spread.value, ephemeris),
         not_told=(
-            *dict.fromkeys(note for one in solved.groups for note in one.counted.not_told),
+            *dict.fromkeys(not_told),
             *_still_open(solution),
         ),
         assumptions=(

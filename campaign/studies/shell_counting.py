@@ -11,9 +11,9 @@ from numpy.typing import NDArray
 from campaign.model.measured import Measured
 from campaign.model.shells import ShellAssignment
 from campaign.physics.shellassignment import MISSING_PRIOR, Assignment, assign_indices
-from campaign.physics.shellcycles import AllowedPeriod, periods_between_images
 from campaign.physics.shellradii import mixed_edges_and_peaks
 from campaign.physics.shellspacing import age_in_periods, fit_spacing
+from campaign.physics.shellturns import LaunchCount, launches_between
 from campaign.physics.shellvalues import Sided
 from campaign.physics.timescales import utc_iso
 from campaign.studies.shell_ephemeris import ShellEphemeris
@@ -24,14 +24,10 @@ IntArray = NDArray[np.int64]
 
 # A stated index stands unless the radii give it less than this probability.
 _STATED_STANDS = 0.01
-# New shells between two images that are tried where no period says how many there were.
-_MOST_TURNS = 12
 # A count of turns less likely than this is warned of, and so many of the others are named, above a share.
 _SURE, _NAMED, _LEAST_NAMED = 0.95, 3, 0.005
 # Of a period or a phase whose error nobody knows, as far as counting turns goes.
 _ROUGH = 0.1
-# A count of turns this much worse in chi-square than the best is not worth naming.
-_WORTH_NAMING = 9.0
 # How the note on finer spacings begins, which says nothing where a motion and a period are known.
 _FINER = "A finer spacing"
 # How well one image says how far apart the shells of another are: it may itself have missed one.
@@ -263,20 +259,13 @@ def _turns(
     if group.images == 1 or not group.dated or one_each:
         return [0] * (group.images - 1), []
     instants = np.array([group.time_yr[group.of_image(number)[0]] for number in range(group.images)])
-    gaps = np.diff(instants)
-    if period is None and group.images > 2:
-        return _turns_by_motion(gaps, phases)
-    turns, doubts = [], []
-    for number, gap in enumerate(gaps):
-        first, second = phases[number], phases[number + 1]
-        if not (first.known and second.known):
-            turns.append(_nearest_turns(gap, first, second, period))
-            continue
-        ways = periods_between_images(first, second, float(gap), _usable(period))
-        turns.append(ways[0].launches if ways else 0)
-        if ways and ways[0].probability < _SURE:
-            doubts.append(_doubt(ways, period))
-    return turns, doubts
+    if not all(phase.known for phase in phases):
+        return _nearest_turns(instants, phases, period), []
+    ways = launches_between(
+        instants, [phase.value for phase in phases], [phase.sigma for phase in phases], _usable(period)
+    )
+    doubts = [] if ways[0].probability >= _SURE else [_doubt(ways, period)]
+    return [int(step) for step in np.diff(ways[0].launches)], doubts
 
 
 def _usable(period: Measured | None) -> Sided | None:
@@ -288,11 +277,15 @@ def _usable(period: Measured | None) -> Sided | None:
     return Sided(period.value, period.minus, period.plus)
 
 
-def _nearest_turns(gap_yr: float, first: Sided, second: Sided, period: Measured | None) -> int:
-    return 0 if period is None else round(gap_yr / period.value + first.value - second.value)
+def _nearest_turns(instants: FloatArray, phases: Sequence[Sided], period: Measured | None) -> list[int]:
+    """Counted by the values alone, where their errors are not known."""
+    if period is None:
+        return [0] * (len(phases) - 1)
+    turned = np.diff(instants) / period.value - np.diff([phase.value for phase in phases])
+    return [round(float(value)) for value in turned]
 
 
-def _doubt(ways: Sequence[AllowedPeriod], period: Measured | None) -> str:
+def _doubt(ways: Sequence[LaunchCount], period: Measured | None) -> str:
     """What else the images allow, the likeliest first."""
     others = [
         f"{way.period_yr:.3g} yr ({way.probability:.0%})"
@@ -302,28 +295,6 @@ def _doubt(ways: Sequence[AllowedPeriod], period: Measured | None) -> str:
     best, asked = ways[0], "a better period" if period is not None else "a period"
     return (
         "how many shells were launched between the images is not certain: with "
-        f"{best.launches} the period is {best.period_yr:.3g} yr ({best.probability:.0%}), but it may be "
+        f"{best.launches[-1]} the period is {best.period_yr:.3g} yr ({best.probability:.0%}), but it may be "
         f"{' or '.join(others) or 'another'}; {asked}, a motion or another image would tell"
     )
-
-
-def _turns_by_motion(gaps: FloatArray, phases: Sequence[Sided]) -> tuple[list[int], list[str]]:
-    """No period: each number of new shells in the first gap is a period, which counts the other gaps."""
-    steps = -np.diff([phase.value for phase in phases])
-    own = max(max(phase.sigma for phase in phases) if all(p.known for p in phases) else _ROUGH, 1e-3)
-    tried: list[tuple[float, float, list[int]]] = []
-    for first in range(_MOST_TURNS + 1):
-        way = first - float(steps[0])
-        if way > 0.0:
-            period_yr = float(gaps[0]) / way
-            turns = [first, *(round(float(v)) for v in gaps[1:] / period_yr + steps[1:])]
-            misfit = float(np.sum((np.array(turns) - gaps / period_yr - steps) ** 2)) / own**2
-            tried.append((misfit, period_yr, turns))
-    best = min(tried, key=lambda each: (each[0], each[2][0]))
-    others = [f"{p:.3g} yr" for misfit, p, _ in tried if p != best[1] and misfit - best[0] < _WORTH_NAMING]
-    if not others:
-        return best[2], []
-    return best[2], [
-        "how many shells were launched between the images is not certain: the period may be "
-        f"{best[1]:.3g} yr, or {' or '.join(others[:_NAMED])}; a period, a motion or another image would tell"
-    ]

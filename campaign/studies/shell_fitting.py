@@ -33,6 +33,8 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 SHELLS, SHELLS_AND_PERIOD = "shells", "shells and period"
+# A motion that is negative by less than so many of its errors is none; by more, the count is wrong.
+_SEEN_TO_MOVE = 3.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -187,6 +189,15 @@ def fitted_inputs(
 
 
 def _fitted_input(quantity: str, fit: ShellFit, name: str, factor: float, label: str) -> ShellInput:
+    if name == MOTION and -_SEEN_TO_MOVE * fit.sigma(name) < fit.value(name) <= 0.0:
+        raise InputRefused(
+            f"The images do not show the shells move: {factor * fit.value(name):.3g} ± "
+            f"{factor * fit.sigma(name):.2g} mas/yr.",
+            why="They were taken too near together for the errors of their radii.",
+            hint='Give --period "8.6±0.1 yr", or the radii of one image alone, or add an image of another '
+            "year.",
+            code="motion-undetermined",
+        )
     if not fit.value(name) > 0.0:
         raise InputRefused(
             f"By these radii the {'spacing' if name == SPACING else 'motion'} would be "

@@ -29,6 +29,7 @@ class Anchored:
     shift: int | None
     probability: float | None = None
     warnings: tuple[str, ...] = ()
+    not_told: tuple[str, ...] = ()
 
 
 def rows_of(group: RadiusGroup, index: Sequence[float], ages: Ages) -> list[DatedShell]:
@@ -121,7 +122,7 @@ def anchor(shells: Sequence[DatedShell], cycles: Sequence[int], ephemeris: Shell
     assert shell.launched_bmjd_tdb is not None
     near = ephemeris.youngest(shell.launched_bmjd_tdb)
     if near is None:
-        return Anchored(None, warnings=("nothing dates the system's cycles when the shells were launched",))
+        return Anchored(None, not_told=("nothing dates the system's cycles when the shells were launched",))
     found: dict[int, tuple[float, float]] = {}
     for cycle in range(near[0] - _NEIGHBOURS, near[0] + _NEIGHBOURS + 1):
         launch = ephemeris.launch(cycle)

@@ -269,8 +269,10 @@ def test_a_plate_scale_error_moves_no_age_in_periods(dated):
         (("--spacing", "1.2", "--speed", "9 km/s", "--sample"), 2, "system-needed", "--sample"),
         (("--radius", "1.2 arcsec", "--feature", "blob", "--motion", "80 mas/yr"), 3, "choice-refused",
          "limb"),
-        (("--radius", "1.2±0.1 arcsec on 2020", "--radius", "0.8±0.1 arcsec on 2024"), 3, "shells-shrink",
+        (("--radius", "1.2±0.03 arcsec on 2020", "--radius", "0.8±0.03 arcsec on 2024"), 3, "shells-shrink",
          "--period"),
+        (("--radius", "1.20±0.1 arcsec on 2020", "--radius", "1.18±0.1 arcsec on 2024"), 3,
+         "motion-undetermined", "--period"),
     ],
 )  # fmt: skip
 def test_what_cannot_be_is_refused_and_what_would_do_is_said(run_campaign, words, status, code, hint):
