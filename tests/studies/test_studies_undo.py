@@ -479,6 +479,20 @@ def test_what_was_changed_past_the_journal_is_not_guessed_at(keeper, prepare, st
     assert keeper.newest() == number
 
 
+def test_an_entry_that_no_operation_explains_holds_back_too(keeper):
+    system = keeper.system("Glow")
+    connection = sqlite3.connect(keeper.db)
+    connection.execute("INSERT INTO stars (system_id, star, spectral_type) VALUES (3, 'B', 'O5')")
+    connection.commit()
+    connection.close()
+    uses = "uses the system that this operation entered"
+    assert keeper.refused(system) == {None: uses}
+    with pytest.raises(Conflict) as refused:
+        undo.preview_undo(keeper.db, "Ida Vik", system)
+    assert refused.value.why == f"An entry that no operation explains {uses}."
+    assert refused.value.hint == "Look at what happened since: campaign history."
+
+
 # ------------------------------------------------------------------ which operation
 
 
@@ -533,6 +547,43 @@ def test_what_was_taken_back_is_known_to_have_been_there(keeper):
     keeper.undo(second)
     assert keeper.values(between) == keeper.values(later) == {}
     assert len(keeper.values(keeper.clock)) == 3
+
+
+@pytest.mark.parametrize(
+    ("enter", "seen"),
+    [
+        (lambda keeper: keeper.log("Dim", 1), lambda keeper, at: keeper.values(at)),
+        (
+            lambda keeper: keeper.solution("Dim", "first"),
+            lambda keeper, at: keeper.record("Dim", at).solutions,
+        ),
+        (lambda keeper: keeper.episode("Dim", 1), lambda keeper, at: keeper.record("Dim", at).episodes),
+        (lambda keeper: keeper.rule("Dim", -10.0), lambda keeper, at: keeper.record("Dim", at).rule),
+    ],
+)
+def test_an_entry_was_out_of_use_while_it_was_taken_back(keeper, enter, seen):
+    before = keeper.clock
+    entered = enter(keeper)
+    there = keeper.clock
+    without = keeper.undo(entered)
+    gone = keeper.clock
+    keeper.undo(without)
+    assert not seen(keeper, before)
+    assert not seen(keeper, gone)
+    assert seen(keeper, there) and seen(keeper, there) == seen(keeper, keeper.clock) == seen(keeper, None)
+
+
+def test_a_correction_taken_back_leaves_each_version_its_time(keeper):
+    keeper.log("Dim", 1)
+    first = keeper.clock
+    amended = keeper.amend(1, 7.5)
+    better = keeper.clock
+    without = keeper.undo(amended)
+    back = keeper.clock
+    keeper.undo(without)
+    assert [keeper.values(at) for at in (first, better, back, None)] == [
+        {1: 7.0}, {2: 7.5}, {1: 7.0}, {2: 7.5},
+    ]  # fmt: skip
 
 
 def test_a_decision_taken_back_was_a_decision_until_then(keeper):
