@@ -96,13 +96,17 @@ class TimeMeaning:
 
 @dataclass(frozen=True, slots=True)
 class ColumnUse:
-    """What one column is taken for: ``number`` is its place from 1, ``unit`` that of its cells."""
+    """What one column is taken for: ``number`` is its place from 1, ``unit`` that of its cells.
+
+    ``clock_number`` is the place of a column of clock times beside a column of dates.
+    """
 
     field: str
     column: str
     number: int
     unit: str | None = None
     meaning: str = ""
+    clock_number: int | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -25,6 +25,8 @@ from campaign.model.loading import (
 from campaign.reading import columnrefusals as refusals
 from campaign.reading.columnfields import FIELDS, TABLE_CONSTANTS, VELOCITY_NAMES, Field, field_named, key
 from campaign.reading.columnpatterns import (
+    CLOCK_NAMES,
+    DATE_NAMES,
     Found,
     band_columns,
     columns_called,
@@ -215,10 +217,33 @@ class _Understanding:
             name, unit = self._named(column)
             if name and name not in self._uses and name not in self._constants:
                 found.setdefault(name, []).append((number, unit))
+        self._take_clock(found)
         for name, places in found.items():
             number, unit = self._chosen(self._fields[name], places)
             self._take(self._fields[name], number, unit)
         self._take_star()
+
+    def _take_clock(self, found: dict[str, list[tuple[int, str]]]) -> None:
+        """A column of dates and a column of clock times beside it are one time."""
+        numbers = [number for number, _ in found.get("time", ())]
+        if len(numbers) != 2 or self._is_knowledge:
+            return
+        numbers.sort(key=lambda number: key(self._columns[number - 1].name) in CLOCK_NAMES)
+        date, clock = (self._columns[number - 1] for number in numbers)
+        meanings = [self._time_of(column) or TimeMeaning("jd") for column in (date, clock)]
+        scales = {meaning.scale for meaning in meanings if meaning.scale}
+        if (
+            key(date.name) not in DATE_NAMES
+            or key(clock.name) not in CLOCK_NAMES
+            or any(meaning.count != "text" for meaning in meanings)
+            or len(scales) > 1
+        ):
+            return
+        del found["time"]
+        self._taken.update(numbers)
+        self._meanings["time"] = replace(meanings[0], scale=next(iter(scales), None))
+        names = f"{date.name} and {clock.name}"
+        self._uses["time"] = ColumnUse("time", names, numbers[0], clock_number=numbers[1])
 
     def _take_star(self) -> None:
         """A column of stars names systems, where nothing else does and no star of a system is meant."""

@@ -23,6 +23,12 @@ _BANDS = (
 _ANY_BAND = "|".join(sorted(map(re.escape, _BANDS), key=len, reverse=True))
 _BAND_COLUMN = re.compile(rf"(?:mag[_ ]?)?(?P<band>{_ANY_BAND})[_ ]?(?P<mag>mag)?")
 
+# A column of dates, and one of clock times beside it (common practice, no source).
+DATE_NAMES = frozenset(
+    ("date", "utdate", "utcdate", "dateut", "dateutc", "dateobs", "obsdate", "dateofobservation")
+)
+CLOCK_NAMES = frozenset(("time", "ut", "utc", "uttime", "utctime", "timeut", "timeutc", "obstime"))
+
 # Place of a column from 1 and how the column of its errors is called, by band or star.
 Found = dict[str, tuple[int, tuple[str, ...]]]
 

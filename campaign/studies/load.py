@@ -154,7 +154,8 @@ def kept_request(mapping: TableMapping, request: MappingRequest) -> MappingReque
     for name, text in request.columns.items():
         field = field_named(mapping.kind, name)
         typed["time" if field is None else field.name] = text
-    named = {name: use.column for name, use in mapping.columns.items()}
+    # Two columns of one time are known by their names again.
+    named = {name: use.column for name, use in mapping.columns.items() if use.clock_number is None}
     return MappingRequest(mapping.kind, {**named, **typed}, request.constants, request.missing)
 
 

@@ -132,6 +132,11 @@ class BlockCheck:
             by_place = [*(site.longitude_deg_east for site in self._context.sites), None]
             longitudes = [by_place[place] for place in self._shared["site"].tolist()]
         cells = self._cells(use) if is_text else self._number_cells(use)
+        if use.clock_number is not None:
+            clocks = without_missing(self._block.columns[use.clock_number - 1], self._mapping.missing)
+            cells = [
+                f"{date.strip()} {clock.strip()}".strip() for date, clock in zip(cells, clocks, strict=True)
+            ]
         times = read_times(cells, self._mapping.instants["time"], use.column, longitudes)
         self._note(use, times.faults)
         error = self._sizes("time_error", "d")

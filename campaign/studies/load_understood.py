@@ -52,9 +52,8 @@ def understood_mapping(file: str, table: ForeignTable, mapping: TableMapping) ->
             continue
         use = mapping.columns.get(field.name)
         if use is not None:
-            lines.append(
-                MappingLine(field.name, f"column {use.column}", use.meaning or _unit(use, field.unit))
-            )
+            origin = f"column {use.column}" if use.clock_number is None else f"columns {use.column}"
+            lines.append(MappingLine(field.name, origin, use.meaning or _unit(use, field.unit)))
         elif field.name in mapping.constants:
             lines.append(MappingLine(field.name, "all rows", mapping.constants[field.name]))
     notes = list(mapping.notes)

@@ -30,6 +30,8 @@ _MOST_NAMES = 5
 # A time is known well enough to ask where the Sun was.
 _SHARP_D = 0.02
 _SOON_D = 0.02
+# 1900-01-01: counts of days from another origin than was understood mostly fall before it.
+_LONG_AGO_MJD = 15_020.0
 # Light time moves an instant by up to 8.3 min, in which the Sun moves 2 deg.
 _MOVED_DEG = 2.5
 _FEWEST_SHIFTED = 5
@@ -87,6 +89,7 @@ def load_warnings(
         fresh_only=False,
     )
     told.add("future", _future(columns, now_mjd), "{rows} {are} dated in the future")
+    told.add("long-ago", columns.numbers["bmjd_tdb"] < _LONG_AGO_MJD, "{rows} {are} dated before 1900")
     told.add("daylight", _daylight(rows, columns, sites), "at {rows} the Sun was up at the site")
     told.add(
         "no-site",

@@ -45,6 +45,41 @@ def test_a_light_curve_of_a_survey_with_its_mark_of_nothing_seen(db):
     assert second.value == Measured(12.312, 0.019, 0.019)
 
 
+@pytest.mark.parametrize("names", ["date,UT", "Date (UT),Time", "date,time (UTC)", "time_utc,date"])
+def test_a_column_of_dates_and_one_of_clock_times_are_one_time(db, names):
+    def row(day, time, rest):
+        cells = [time, day] if names.startswith("time") else [day, time]
+        return f"Keel 9,{cells[0]},{cells[1]},{rest}\n"
+
+    text = (
+        f"name,{names},band,mag\n" + row("2031-02-03", "05:06:07", "K,7.3") + row("2031-02-04", "", "K,7.3")
+    )
+    loaded = load(db, text, keep_mapping="two columns")
+    assert (loaded.added, loaded.understood.unused) == (2, ())
+    assert any(line.origin.startswith("columns ") for line in loaded.understood.lines)
+    one, whole_day = kept(db)
+    # MJD 62901 is 2031-02-03; the clock counts as 18367 s of the day.
+    assert one.moment.text == "2031-02-03 05:06:07 UTC"
+    assert whole_day.moment.minus_d == pytest.approx(12**-0.5)
+    assert load(db, text.replace("2031-02", "2030-02"), mapping="two columns").added == 2
+    bad = load(db, f"name,{names},band,mag\n" + row("2031-02-03", "25:06:07", "K,7.3"))
+    assert [(line, code) for line, _, code in codes(bad)] == [(2, "instant-impossible")]
+
+
+@pytest.mark.parametrize("names", ["date,time", "date_utc,time_tt", "date,MJD", "date,time,UT"])
+def test_two_times_that_are_not_one_are_asked_about(db, names):
+    cells = ",".join(["2031-02-03", "05:06:07", "05:06:07"][: names.count(",") + 1])
+    text = f"name,{names},band,mag\nKeel 9,{cells},K,7.3\n"
+    if names == "date,time":
+        # One time, but nobody says in which scale.
+        assert [code for _, _, code in codes(load(db, text))] == ["scale-missing"]
+        assert load(db, text, constants={"scale": "utc"}).added == 1
+        return
+    with pytest.raises(InputRefused) as refused:
+        load(db, text)
+    assert refused.value.code == "column-ambiguous"
+
+
 def test_marks_of_limits_belong_to_their_bands(db):
     text = "name,BJD_TDB,l_Jmag,Jmag,e_Jmag,l_Kmag,Kmag,e_Kmag\nKeel 9,2459001.5,>,12.1,,,7.3,0.02\n"
     loaded = load(db, text)

@@ -88,6 +88,20 @@ def test_a_date_in_the_future(db, date, told):
     assert ("future" in warned(load(db, text))) == told
 
 
+@pytest.mark.parametrize(
+    ("column", "time", "told"),
+    [
+        ("MJD_UTC", "9001.5", True),
+        ("MJD_UTC", "59001.5", False),
+        ("date", "1899-12-30", True),
+        ("date", "1900-01-02", False),
+    ],
+)
+def test_a_date_long_ago_as_of_a_count_from_another_day(db, column, time, told):
+    text = f"system,{column},band,mag\nLantern 3,{time},K,7.3\n"
+    assert ("long-ago" in warned(load(db, text))) == told
+
+
 # At 70.75 W local noon is near 16:43 UTC, and midnight near 04:43 UTC.
 @pytest.mark.parametrize(
     ("column", "time", "site", "told"),
