@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import shutil
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from pathlib import Path
 
 import pytest
+import undo_examples
 from studies_examples import CLOCK, stamp
 
 from campaign.model.forecasts import UpcomingResult
@@ -43,3 +44,24 @@ def ask_catalogue(db: str) -> Callable[..., UpcomingResult]:
         return watch.upcoming(campaign, watch.ask(campaign, **asked))  # type: ignore[arg-type]
 
     return ask
+
+
+@pytest.fixture(scope="session")
+def kept_folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Where a catalogue is kept by one test after the other, each time from its beginning."""
+    return undo_examples.begun(tmp_path_factory.mktemp("kept"))
+
+
+@pytest.fixture(scope="module")
+def _kept_engines() -> Iterator[None]:
+    with undo_examples.keep_engines():
+        yield
+
+
+@pytest.fixture
+def keeper(kept_folder: Path, _kept_engines: None) -> undo_examples.Keeper:
+    """A catalogue of two systems, by operations 1 and 2."""
+    found = undo_examples.Keeper(kept_folder)
+    found.system("Dim", aliases=("Gleam",))
+    found.system("Faint")
+    return found
