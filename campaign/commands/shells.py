@@ -73,6 +73,9 @@ def date(
     plate_scale_error: Annotated[
         Text, option("--plate-scale-error", "VALUE", 'Shared by an image, "0.5 %".')
     ] = None,
+    launch_radius: Annotated[
+        Text, option("--launch-radius", "ANGLE", "Where dust condenses, 0.05±0.01 arcsec: for acceleration.")
+    ] = None,
     missing: Annotated[
         Text, option("--missing", "P", "Prior probability that a shell went unseen; else 0.1.")
     ] = None,
@@ -125,6 +128,7 @@ def date(
         feature=one_of(feature, ("limb", "ring", "plume"), "--feature"),  # type: ignore[arg-type]
         inclination_deg=measured(inclination, "deg", "--inclination", low=0.0, high=180.0),
         edge_offset_arcsec=measured(edge_offset, "arcsec", "--edge-offset"),
+        launch_radius_arcsec=measured(launch_radius, "arcsec", "--launch-radius", low=0.0, low_open=True),
         scale_errors=scale_errors,
         missing_prior=_prior(missing),
         draws=count(draws, "--draws", 100, 1_000_000),

@@ -37,7 +37,7 @@ class ShellQuestion:
     ``stated`` holds the quantities typed in the unit of their names; ``correlations`` are of pairs of them.
     ``feature`` and ``inclination_deg`` (of the ring's or plume's orbit to the sky) say how the radii project;
     without a feature they are taken as those of the limb. ``edge_offset_arcsec`` is how much larger an edge
-    is than a peak.
+    is than a peak, ``launch_radius_arcsec`` where dust condenses.
     """
 
     stated: Mapping[ShellQuantityName, Measured] = field(default_factory=dict)
@@ -46,6 +46,7 @@ class ShellQuestion:
     feature: ShellFeature | None = None
     inclination_deg: Measured | None = None
     edge_offset_arcsec: Measured | None = None
+    launch_radius_arcsec: Measured | None = None
     scale_errors: bool = False
     missing_prior: float | None = None
     draws: int | None = None

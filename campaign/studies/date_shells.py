@@ -13,11 +13,13 @@ from campaign.model.instants import TypedInstant
 from campaign.model.measured import Measured
 from campaign.model.shellquestion import ShellQuestion, ShellRadius
 from campaign.model.shells import DatedShell, ShellAcceleration, ShellDatingResult
+from campaign.physics.shellassignment import BLEND_PRIOR, MISSING_PRIOR
 from campaign.physics.shellrelations import RelationSolution, what_would_do
 from campaign.physics.shelltension import likely_reasons
+from campaign.physics.shellvalues import Sided
 from campaign.physics.timescales import utc_iso
 from campaign.studies.shell_ephemeris import ShellEphemeris
-from campaign.studies.shell_fitting import Ages, ages_of, motions_of
+from campaign.studies.shell_fitting import Ages, ages_of, motions_of, sided
 from campaign.studies.shell_launches import against_ephemeris, anchor, foreseen_in, launch_tension, rows_of
 from campaign.studies.shell_projection import true_quantities, true_tensions, with_light_time
 from campaign.studies.shell_relations import (
@@ -164,7 +166,7 @@ def _with_radii(
     typed = stated.get("speed_kms")
     stated_speed = None if typed is None else Measured(typed.value, typed.minus, typed.plus)
     told_of = (*solution.tensions, *expansion_parallax(solved.stated))
-    acceleration = _acceleration(solved, subject, ephemeris, main_shift)
+    acceleration = _acceleration(solved, question, subject, ephemeris, main_shift)
     reasons = likely_reasons(
         told_of,
         _steps(main),
@@ -199,6 +201,8 @@ def _with_radii(
         assumptions=(
             *solved.stated.assumptions,
             *dict.fromkeys(said),
+            *_price(main, question),
+            *_heaviest(ephemeris),
             *_ways(main_ages, agrees),
             *_assumptions(solution),
         ),
@@ -208,6 +212,7 @@ def _with_radii(
 
 def _acceleration(
     solved: SolvedShells,
+    question: ShellQuestion,
     subject: ShellSubject | None,
     ephemeris: ShellEphemeris | None,
     shift: int | None,
@@ -219,9 +224,18 @@ def _acceleration(
         solved.main.fit,
         solved.period if solved.agrees else None,
         None if distance is None else distance.value,
-        None if subject is None else launch_radius_of(subject.record, distance),
+        _launch_radius(question, subject, distance),
         launched,
     )
+
+
+def _launch_radius(
+    question: ShellQuestion, subject: ShellSubject | None, distance: Measured | None
+) -> Sided | None:
+    stated = question.launch_radius_arcsec
+    if stated is not None:
+        return sided(stated) if stated.error_known else None
+    return None if subject is None else launch_radius_of(subject.record, distance)
 
 
 def _steps(main: SolvedGroup) -> int | None:
@@ -245,6 +259,21 @@ def _span(
         return None, None
     sigma = None if period is None else none_if_nan(turns * period.sigma)
     return max(launches) - min(launches), sigma
+
+
+def _price(main: SolvedGroup, question: ShellQuestion) -> list[str]:
+    """What a missing shell costs, where it mattered."""
+    if not main.counted.assignments:
+        return []
+    prior = MISSING_PRIOR if question.missing_prior is None else question.missing_prior
+    return [f"each shell that went unseen costs a factor of {prior:g}, each blend of two {BLEND_PRIOR:g}"]
+
+
+def _heaviest(ephemeris: ShellEphemeris | None) -> list[str]:
+    """Which of several solutions gives the period."""
+    if ephemeris is None or len(ephemeris.forecaster.units[0].rows) < 2:
+        return []
+    return ["several solutions are adopted: the period is that of the largest weight, launches are of all"]
 
 
 def _ways(ages: Ages, agrees: bool) -> list[str]:

@@ -33,6 +33,8 @@ _MOST_BACK = 1000
 _MOST_COMING = 20
 # An episode that will not be launched by the date with more than this probability is of the past.
 _LAUNCHED = 0.005
+# Of drawn radii, for their standard deviation.
+_CENTRAL = (0.001, 0.999)
 # Small amorphous carbon, as far as its temperature goes.
 _GRAIN_RADIUS_UM, _EMISSIVITY_INDEX = 0.1, 1.0
 
@@ -227,7 +229,6 @@ def _shell(track: ShellTrack, at: float, limits: Limits, heat: _Heat, in_view: b
     launched = drawn[np.isfinite(drawn)]
     known = not track.missing
     radius = track.median_radius(at)
-    motion = track.motion_draws
     bounds = np.quantile(launched, [0.16, 0.84]) if known else (np.nan, np.nan)
     temperature, peak = heat.at(radius)
     return ExpectedShell(
@@ -237,11 +238,11 @@ def _shell(track: ShellTrack, at: float, limits: Limits, heat: _Heat, in_view: b
         launched_utc=utc_iso([track.launch_d])[0],
         age_yr=(at - track.launch_d) / YEAR_D,
         radius_arcsec=radius,
-        radius_sigma_arcsec=float(np.std(launched)) if known else None,
+        radius_sigma_arcsec=_spread(launched) if known else None,
         radius_lo68_arcsec=none_if_nan(float(bounds[0])),
         radius_hi68_arcsec=none_if_nan(float(bounds[1])),
         proper_motion_mas_yr=track.motion_mas_yr,
-        proper_motion_sigma_mas_yr=float(np.std(motion)) if known else None,
+        proper_motion_sigma_mas_yr=none_if_nan(track.motion_sigma_mas_yr) if known else None,
         probability=track.launched_share(at) if known else None,
         radius_au=heat.radius_au(radius),
         in_view=in_view,
@@ -249,6 +250,11 @@ def _shell(track: ShellTrack, at: float, limits: Limits, heat: _Heat, in_view: b
         grain_temperature_k=temperature,
         peak_wavelength_um=peak,
     )
+
+
+def _spread(drawn: FloatArray) -> float:
+    """Standard deviation without the outermost draws: one over a poor distance has tails without end."""
+    return float(np.std(np.clip(drawn, *np.quantile(drawn, _CENTRAL))))
 
 
 def _resolvable(tracks: Sequence[ShellTrack], question: ExpectQuestion) -> list[ResolvableDate]:

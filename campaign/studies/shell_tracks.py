@@ -51,6 +51,7 @@ class ShellTrack:
     base_d: FloatArray
     base_arcsec: FloatArray
     motion_mas_yr: float
+    motion_sigma_mas_yr: float
     motion_draws: FloatArray
     launch_d: float
     launch_sigma_d: float | None
@@ -193,6 +194,7 @@ class _Launched:
             base_d=launch.spread_d,
             base_arcsec=np.zeros(launch.spread_d.size),
             motion_mas_yr=self.motion.value,
+            motion_sigma_mas_yr=self.motion.sigma,
             motion_draws=drawn,
             launch_d=launch.median_d,
             launch_sigma_d=launch.sigma_d,
@@ -318,6 +320,7 @@ def _grown(base: _Base, relative: int, cycle: int | None) -> ShellTrack:
         base_d=np.full(radius.size, base.instant_d),
         base_arcsec=radius,
         motion_mas_yr=base.motion_mas_yr,
+        motion_sigma_mas_yr=float(np.std(base.motion_draws)),
         motion_draws=base.motion_draws,
         launch_d=float(np.median(launches)),
         launch_sigma_d=float(np.std(launches)),

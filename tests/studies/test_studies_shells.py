@@ -235,6 +235,24 @@ def test_acceleration_that_the_radii_show_is_claimed():
     assert off < 0.2 * abs(result.acceleration.age_constant_yr - 22.0)
 
 
+def test_where_dust_condenses_makes_the_age_that_of_the_launch_itself():
+    ages = np.array([0.6, 4.0, 10.6, 14.0, 20.6, 24.0])
+    found = pushed(ages, 0.1, 0.03, 0.12)
+    years = np.where(ages % 10.0 < 1.0, 2010.6, 2014.0)
+    radii = [
+        radius(float(r), 0.004, 51_544.5 + (y - 2000.0) * YEAR_D)
+        for r, y in sorted(zip(found, years, strict=True), key=lambda each: (each[1], each[0]))
+    ]
+    result = dated(
+        *radii, stated={"period_yr": exact(10.0)}, launch_radius_arcsec=Measured(0.1, 0.005, 0.005)
+    )
+    told = result.acceleration
+    assert told is not None and told.verdict == "accelerated"
+    assert told.launch_radius_arcsec == pytest.approx(0.1, abs=0.02)
+    assert abs(told.terminal_motion_mas_yr - 120.0) < 3.0 * told.terminal_motion_sigma_mas_yr
+    assert abs(told.age_accelerated_yr - 24.0) < 3.0 * told.age_accelerated_sigma_yr
+
+
 def test_even_motion_is_never_called_accelerated():
     result = dated(*grown(2013.0, 4), *grown(2017.5, 4), *grown(2019.2, 4), stated={"period_yr": exact(9.0)})
     assert result.acceleration is not None and result.acceleration.verdict in ("undecided", "constant")
