@@ -263,7 +263,7 @@ class _Understanding:
             if len(exact) == 1:
                 return exact[0]
         if len(places) > 1 and not self._is_trial and field.name not in _DESCRIPTIVE:
-            raise refusals.column_ambiguous([self._columns[number - 1].name for number, _ in places], field)
+            raise refusals.column_ambiguous(self._columns, [number for number, _ in places], field)
         return places[0]
 
     def _named(self, column: TableColumn) -> tuple[str, str]:

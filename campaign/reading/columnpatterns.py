@@ -84,6 +84,16 @@ def band_columns(columns: Sequence[TableColumn], taken: Collection[int]) -> Foun
     return found if len(found) > 1 or not alone else {}
 
 
+def lone_band(columns: Sequence[TableColumn]) -> dict[str, str]:
+    """The one column that is called by nothing but a band, with the band; empty when there are several."""
+    found = {
+        column.name: split["band"]
+        for column in columns
+        if (split := _BAND_COLUMN.fullmatch(split_brackets(column.name)[0])) is not None
+    }
+    return found if len(found) == 1 else {}
+
+
 def columns_called(
     columns: Sequence[TableColumn], taken: Collection[int], names: Mapping[str, Sequence[str]]
 ) -> Found:

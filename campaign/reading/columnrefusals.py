@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 from campaign.errors import InputRefused, UsageRefused
 from campaign.model.loading import LOAD_KINDS, ColumnUse, LoadKind, TableColumn
 from campaign.reading.columnfields import FIELDS, TABLE_CONSTANTS, Field
+from campaign.reading.columnpatterns import lone_band
 from campaign.reading.numbers import quoted
 from campaign.reading.timenames import EXAMPLES
 from campaign.reading.units import FAMILIES, accepted_units
@@ -19,6 +20,11 @@ def _names(columns: Sequence[TableColumn]) -> str:
     return ", ".join(quoted(column.name) for column in columns[:_MOST_NAMES])
 
 
+def _typed(field: Field) -> str:
+    """What a user calls a field: a magnitude "mag" and not "value"."""
+    return field.names[0] if field.name == "value" else field.name
+
+
 def kind_unclear(columns: Sequence[TableColumn], fitting: Sequence[LoadKind]) -> InputRefused:
     """Several kinds fit the columns, or none."""
     if fitting:
@@ -28,10 +34,14 @@ def kind_unclear(columns: Sequence[TableColumn], fitting: Sequence[LoadKind]) ->
             f"Its columns are {_names(columns)}; what is needed of one kind of observation is not among them."
         )
     kinds = "|".join(fitting or LOAD_KINDS)
+    example = 'and name columns: --as photometry --column "mag=COLUMN"'
+    bands = {} if fitting else lone_band(columns)
+    for name, band in bands.items():
+        example = f'for example --as photometry --column "mag={name}" --constant "band={band}"'
     return InputRefused(
         "It is not clear what the table holds.",
         why=why,
-        hint=f'Say it with --as {kinds}, and name columns: --as photometry --column "mag=COLUMN".',
+        hint=f"Say it with --as {kinds}, {example}.",
         code="kind-unclear",
         details={"columns": [column.name for column in columns], "fitting": list(fitting)},
     )
@@ -71,7 +81,7 @@ def column_unknown(columns: Sequence[TableColumn], text: str) -> InputRefused:
 
 def field_missing(columns: Sequence[TableColumn], field: Field) -> InputRefused:
     """Nothing in the table, and nothing said, for a field that every row needs."""
-    said = f"--column {field.name}=COLUMN"
+    said = f"--column {_typed(field)}=COLUMN"
     if field.name in _CONSTANTS:
         said += f", or the same for all rows: --constant {_CONSTANTS[field.name]}"
     return InputRefused(
@@ -105,12 +115,14 @@ def band_missing() -> InputRefused:
     )
 
 
-def column_ambiguous(names: Sequence[str], field: Field) -> InputRefused:
-    """Several columns for one field."""
+def column_ambiguous(columns: Sequence[TableColumn], numbers: Sequence[int], field: Field) -> InputRefused:
+    """Several columns for one field, by their places from 1."""
+    names = [columns[number - 1].name for number in numbers]
+    first = names[0] if names.count(names[0]) == 1 else numbers[0]
     return InputRefused(
         f"More than one column could be the {field.spoken}: {', '.join(quoted(name) for name in names)}.",
         why="Which of them is meant is not guessed.",
-        hint=f'Say it: --column "{field.name}={names[0]}".',
+        hint=f'Say it: --column "{_typed(field)}={first}".',
         code="column-ambiguous",
         details={"field": field.name, "columns": list(names)},
     )

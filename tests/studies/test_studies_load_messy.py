@@ -80,6 +80,21 @@ def test_two_times_that_are_not_one_are_asked_about(db, names):
     assert refused.value.code == "column-ambiguous"
 
 
+def test_what_is_to_be_typed_about_columns_works(db):
+    text = "name,BJD_TDB,mag,mag,band\nKeel 9,2459001.5,7.3,7.4,K\n"
+    with pytest.raises(InputRefused) as refused:
+        load(db, text)
+    assert '--column "mag=3"' in refused.value.hint
+    assert load(db, text, columns={"mag": "3"}).added == 1
+    assert kept(db)[0].value.value == 7.3
+    # One letter alone may be anything.
+    text = "name;BJD_TDB;V;B-V\nKeel 9;2459001.5;7.3;0.1\n"
+    with pytest.raises(InputRefused) as refused:
+        load(db, text)
+    assert '--as photometry --column "mag=V" --constant "band=V"' in refused.value.hint
+    assert load(db, text, kind="photometry", columns={"mag": "V"}, constants={"band": "V"}).added == 1
+
+
 def test_marks_of_limits_belong_to_their_bands(db):
     text = "name,BJD_TDB,l_Jmag,Jmag,e_Jmag,l_Kmag,Kmag,e_Kmag\nKeel 9,2459001.5,>,12.1,,,7.3,0.02\n"
     loaded = load(db, text)
