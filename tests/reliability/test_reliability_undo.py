@@ -93,7 +93,14 @@ def good(tmp_path_factory: pytest.TempPathFactory) -> Path:
     return path
 
 
-@pytest.mark.parametrize("case", CASES)
+# The rest is of the same kind and takes longer.
+OFTEN = ("amend", "withdraw", "undo of a load", "undo of an adoption", "undo of an amend",
+         "undo of the undo of a load")  # fmt: skip
+
+
+@pytest.mark.parametrize(
+    "case", [case if case in OFTEN else pytest.param(case, marks=pytest.mark.slow) for case in CASES]
+)
 def test_a_fault_at_any_statement_leaves_all_as_before(case: str, good: Path, tmp_path: Path) -> None:
     database = tmp_path / "campaign.db"
     shutil.copy(good, database)

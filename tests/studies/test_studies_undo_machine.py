@@ -561,7 +561,7 @@ def run(examples: int, steps: int) -> None:
 
 @pytest.mark.usefixtures("_begun")
 def test_commands_and_undos_in_any_order_agree_with_a_simple_model() -> None:
-    run(12, 30)
+    run(8, 30)
 
 
 @pytest.mark.slow
