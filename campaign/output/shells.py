@@ -266,7 +266,10 @@ def _phase(shell: DatedShell, *, compact: bool) -> str:
 
 
 def _signed(sigma: float | None) -> str:
-    return "" if sigma is None else f"{sigma:+.1f}".replace("-", "−")
+    if sigma is None:
+        return ""
+    text = f"{sigma:+.1f}".replace("-", "−")
+    return "0.0" if text[1:] == "0.0" else text
 
 
 def _chance(probability: float) -> str:

@@ -65,7 +65,7 @@ def _print_views(screen: Screen, views: Sequence[ExpectedView]) -> None:
     numbers.sort(reverse=True)
     full = [_row([found.get(key) for found in by_date]) for key in numbers]
     columns = _columns(views)
-    kept = [i for i in range(len(columns)) if i == 0 or any(_text(row[i]) for row in full)]
+    kept = [i for i in range(len(columns)) if any(_text(row[i]) for row in full)]
     chosen = [columns[i] for i in kept]
     rows = [[row[i] for i in kept] for row in full]
     print_table(screen, chosen, rows)
@@ -151,7 +151,9 @@ def _print_coming(screen: Screen, result: ShellExpectation) -> None:
         (f"{calendar_day(at)} ± {_days(sigma)}", "" if cycle is None else str(cycle), word)
         for word, cycle, at, sigma in sorted([*launches, *grown], key=lambda each: each[2])
     ]
-    print_table(screen, (Column("date"), Column("cycle", align="right"), Column("its shell is")), rows)
+    columns = (Column("date"), Column("cycle", align="right"), Column("its shell is"))
+    counted = [0, 1, 2] if any(cycle for _, cycle, _ in rows) else [0, 2]
+    print_table(screen, [columns[i] for i in counted], [[row[i] for i in counted] for row in rows])
 
 
 def _text(cell: str | Cell) -> str:

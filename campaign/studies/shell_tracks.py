@@ -285,7 +285,10 @@ def _measured_tracks(solved: SolvedShells, base: _Base, ephemeris: ShellEphemeri
     if counted:
         said += ["younger ones are launched at the middle of their production window", *_said(ephemeris)[1:2]]
     else:
-        said += ["younger ones follow the clock of the shells themselves: nothing else dates them"]
+        said += [
+            "younger ones follow the clock of the shells themselves: nothing else dates them",
+            "the shells keep their speed",
+        ]
     motion = Uncertain(base.motion_mas_yr, float(np.std(base.motion_draws)), base.motion_draws)
     launched = _Launched(ephemeris, motion)
 
