@@ -12,8 +12,10 @@ from campaign.model.records import SystemRecord
 from campaign.model.shellquestion import ShellQuestion
 from campaign.model.shells import SHELL_FEATURES, DatedShell, ShellFeature, ShellQuantity, ShellTension
 from campaign.model.systems import Solution
+from campaign.physics.constants import SPEED_OF_LIGHT_KMS
 from campaign.physics.shellprojection import (
     Projection,
+    apparent_speed_kms,
     light_delay_yr,
     light_time_matters,
     project_limb,
@@ -138,7 +140,8 @@ def as_seen(stated: Stated, seen: Seen) -> Stated:
 
     Notes
     -----
-    Accuracy: first order. Source: v_seen = factor v.
+    Accuracy: first order. Source: v_seen = factor v, over 1 - (v/c) sin(psi) where the way is known to
+    point out of the sky by psi.
     """
     factor, blur = seen.projection.factor, _blur(seen)
     if factor == 1.0 and blur == 0.0:
@@ -146,9 +149,9 @@ def as_seen(stated: Stated, seen: Seen) -> Stated:
     inputs = []
     for each in stated.inputs:
         if each.quantity == SPEED:
-            value = each.value * factor
+            value = _seen_kms(each.value, seen)
             minus, plus = (
-                None if size is None else float(np.hypot(size * factor, value * blur))
+                None if size is None else float(np.hypot(size * value / each.value, value * blur))
                 for size in (each.minus, each.plus)
             )
             each = replace(each, value=value, minus=minus, plus=plus)  # noqa: PLW2901
@@ -182,15 +185,12 @@ def true_quantities(
     factor, blur = seen.projection.factor, _blur(seen)
     if factor == 1.0 and blur == 0.0:
         return tuple(quantities)
-    return tuple(
-        _true_speed(each, factor, blur, stated_speed) if each.name == SPEED else each for each in quantities
-    )
+    return tuple(_true_speed(each, seen, stated_speed) if each.name == SPEED else each for each in quantities)
 
 
-def _true_speed(
-    quantity: ShellQuantity, factor: float, blur: float, stated: Measured | None
-) -> ShellQuantity:
-    value = quantity.value / factor
+def _true_speed(quantity: ShellQuantity, seen: Seen, stated: Measured | None) -> ShellQuantity:
+    value = _true_kms(quantity.value, seen)
+    factor, blur = quantity.value / value, _blur(seen)
     if quantity.sigma is None:
         return replace(quantity, value=value)
     sigma = quantity.sigma / factor
@@ -229,12 +229,11 @@ def true_tensions(tensions: Sequence[ShellTension], seen: Seen) -> list[ShellTen
     -----
     Accuracy: both sides are seen alike. Source: v = v_seen/factor.
     """
-    factor = seen.projection.factor
     return [
         replace(
             each,
-            value=each.value / factor,
-            against_value=each.against_value / factor,
+            value=_true_kms(each.value, seen),
+            against_value=_true_kms(each.against_value, seen),
             reasons=(*_taken_otherwise(each, seen), *each.reasons),
         )
         if each.quantity == SPEED
@@ -252,6 +251,23 @@ def _taken_otherwise(tension: ShellTension, seen: Seen) -> tuple[str, ...]:
         f"projection: as the limb of a shell, not as a {seen.feature}, the same radii give {factor:.2f} of "
         "that speed",
     )
+
+
+def _out_of_sky_deg(seen: Seen) -> float:
+    """How far the way points out of the sky, deg; 0 where its side is not known."""
+    angle = seen.projection.out_of_sky_deg
+    return angle if seen.feature == "plume" and seen.side_known and not np.isnan(angle) else 0.0
+
+
+def _seen_kms(speed_kms: float, seen: Seen) -> float:
+    angle = _out_of_sky_deg(seen)
+    return float(apparent_speed_kms(speed_kms, angle)) if angle else speed_kms * seen.projection.factor
+
+
+def _true_kms(seen_kms: float, seen: Seen) -> float:
+    """The inverse of ``_seen_kms``."""
+    sine = np.sin(np.radians(_out_of_sky_deg(seen)))
+    return float(seen_kms / (seen.projection.factor + seen_kms / SPEED_OF_LIGHT_KMS * sine))
 
 
 def _blur(seen: Seen) -> float:
