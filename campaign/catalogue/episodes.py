@@ -64,6 +64,18 @@ def withdraw_episode(writing: Writing, episode_id: int) -> None:
     writing.update(episodes, episode_id, {"withdrawn_at": writing.at})
 
 
+def system_of_episode(connection: Connection, episode_id: int) -> int:
+    """Number of the system that an episode in use is of.
+
+    Raises
+    ------
+    NotFound
+    Conflict
+        When it was withdrawn.
+    """
+    return int(_present_row(connection, episode_id).system_id)
+
+
 def episodes_of(connection: Connection, system_id: int, *, known_at: datetime | None = None) -> list[Episode]:
     """The system's episodes as known at ``known_at``, in order of date."""
     return load_episodes(connection, {system_id}, known_at).get(system_id, [])
@@ -183,11 +195,14 @@ def _insert(writing: Writing, episode: Episode, replaces_id: int | None) -> int:
 
 def _present_row(connection: Connection, episode_id: int) -> Any:
     row = connection.execute(
-        select(episodes.c.state, episodes.c.withdrawn_at).where(episodes.c.id == episode_id)
+        select(episodes.c.state, episodes.c.withdrawn_at, episodes.c.system_id).where(
+            episodes.c.id == episode_id
+        )
     ).first()
     if row is None:
         raise NotFound(
             f"There is no episode number {episode_id}.",
+            why="None was ever entered under it.",
             hint="See their numbers with: campaign episodes list.",
             code="episode-not-found",
         )

@@ -29,6 +29,8 @@ _DEEPEST = 14.0  # ln of the probability, below its highest, that is not looked 
 _WILD_SIGMA = 3.5
 _FIRST_TRUST, _SECOND_TRUST = 0.12, 0.03
 _NEWTON_STEPS = 6
+# No limit counts beyond so many sigma, and no dust outshines the stars so much: sums stay numbers.
+_FARTHEST, _BRIGHTEST = 1e4, 1e6
 _IMPOSSIBLE = -1e6  # ln of a probability; finite, so that differences stay numbers
 
 
@@ -255,7 +257,7 @@ def _zoomed(grid: FloatArray, ln: FloatArray, count: int) -> FloatArray:
     """Equal steps over the part of a grid that matters, a step to spare on either side."""
     if grid.size == 1:
         return grid
-    alive = np.flatnonzero(ln > ln.max() - _DEEPEST)
+    alive = np.flatnonzero(ln >= ln.max() - _DEEPEST)
     first, last = max(alive[0] - 1, 0), min(alive[-1] + 1, grid.size - 1)
     return np.linspace(grid[first], grid[last], count)
 
@@ -269,7 +271,7 @@ def _likely_declines(grid: _BandGrid) -> FloatArray:
     """The declines that fit best at any onset and top, a few of them."""
     best = grid.ln.max(axis=(0, 1, 2))
     order = np.argsort(best)[::-1][:_DECLINES_KEPT]
-    kept: FloatArray = grid.declines[np.sort(order[best[order] > best[order[0]] - _DEEPEST])]
+    kept: FloatArray = grid.declines[np.sort(order[best[order] >= best[order[0]] - _DEEPEST])]
     return kept
 
 
@@ -301,7 +303,7 @@ def _band_grid(
     information = rise_square[..., None] + fall_square[:, None, None, :] - 2.0 * both
     np.maximum(information, 1e-12, out=information)
     score = rise_score[..., None] + fall_score[:, None, None, :]
-    amplitude = np.maximum(score / information, 0.0)
+    amplitude = np.clip(score / information, 0.0, _BRIGHTEST)
     if not measured.all():
         amplitude, ln = _with_limits(band, ~measured, onsets, tops, declines, amplitude, information, score)
     else:
@@ -350,17 +352,19 @@ def _with_limits(
     """Amplitude at its best and ln likelihood with too-faint and saturated points, by Newton's steps."""
     from scipy.special import log_ndtr
 
+    # A limit before the earliest onset says the same of every model.
+    limits = limits & (band.bmjd_tdb > onsets[0])
     t, bound, sigma = band.bmjd_tdb[limits], band.excess[limits], band.sigma[limits]
     side = band.limit_side[limits].astype(float)
     rise, fall = _templates(t, onsets, tops, declines)
     dust = rise[:, :, :, None, :] + fall[:, None, None]
     slope = -side * dust / sigma
     for _ in range(_NEWTON_STEPS):
-        z = side * (bound - amplitude[..., None] * dust) / sigma
+        z = np.clip(side * (bound - amplitude[..., None] * dust) / sigma, -_FARTHEST, _FARTHEST)
         mills = np.exp(-0.5 * z * z - 0.9189385332046727 - log_ndtr(z))
         gradient = score - amplitude * information + (mills * slope).sum(axis=-1)
         curvature = information + (mills * (z + mills) * slope**2).sum(axis=-1)
-        amplitude = np.maximum(amplitude + gradient / np.maximum(curvature, 1e-12), 0.0)
+        amplitude = np.clip(amplitude + gradient / np.maximum(curvature, 1e-12), 0.0, _BRIGHTEST)
     z = side * (bound - amplitude[..., None] * dust) / sigma
     return amplitude, amplitude * (score - 0.5 * amplitude * information) + log_ndtr(z).sum(axis=-1)
 

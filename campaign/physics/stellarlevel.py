@@ -24,6 +24,7 @@ _ENOUGH_POINTS = 5
 # Limits this much deeper than a level, as many as its points, contradict it.
 _DEEPER_MAG, _FEWEST_DEEPER = 0.05, 3
 _MAD_TO_SIGMA = 1.4826
+_FARTHEST_LN = 50.0
 # Half of the shortest interval that holds 40 % of a normal distribution, in sigma.
 _SHORTEST_SHARE, _SHORTEST_HALF = 0.4, 0.5244
 # Where a star was never seen, its flux is anything below the deepest limit: centre and sigma.
@@ -356,4 +357,5 @@ def log_excess(columns: LightColumns, levels: StellarLevels) -> FloatArray:
     excess: FloatArray = LN_PER_MAG * (levels.level_mag[columns.group] - columns.mag) - np.log(
         levels.base[columns.group]
     )
-    return excess
+    # Beyond this no star differs from a mistyped magnitude, and squares stay numbers.
+    return np.clip(excess, -_FARTHEST_LN, _FARTHEST_LN)

@@ -7,8 +7,8 @@ from collections.abc import Sequence
 import numpy as np
 from sqlalchemy import Connection
 
-from campaign.catalogue import episodes, records, store, systems
-from campaign.errors import Conflict, InputRefused, NotFound
+from campaign.catalogue import episodes, store, systems
+from campaign.errors import Conflict, InputRefused
 from campaign.model.forecasts import Quantiles
 from campaign.model.found import EpisodesFound, FoundDate, FoundEpisode
 from campaign.model.instants import Moment
@@ -150,17 +150,11 @@ def decide_episodes(db: str, stamp: Stamp, numbers: Sequence[int], *, confirm: b
 
 def _found(connection: Connection, number: int) -> tuple[str, Episode, tuple[Episode, ...]]:
     """Name of its system, the episode, and the others of that system."""
-    for record in records.load_records(connection, None, include_retired=True):
-        for episode in record.episodes:
-            if episode.id == number:
-                return record.system.name, episode, tuple(e for e in record.episodes if e.id != number)
-    raise NotFound(
-        f"There is no episode number {number} in use.",
-        why="It was never entered, or it was withdrawn.",
-        hint="See their numbers with: campaign episodes list",
-        code="episode-not-found",
-        details={"id": number},
-    )
+    system_id = episodes.system_of_episode(connection, number)
+    known = episodes.episodes_of(connection, system_id)
+    (episode,) = (one for one in known if one.id == number)
+    name = systems.get_system(connection, system_id).name
+    return name, episode, tuple(one for one in known if one.id != number)
 
 
 def _refuse_overlap(name: str, episode: Episode, others: Sequence[Episode]) -> None:
