@@ -20,7 +20,14 @@ from campaign.physics.shellvalues import Sided
 from campaign.physics.timescales import utc_iso
 from campaign.studies.shell_ephemeris import ShellEphemeris
 from campaign.studies.shell_fitting import Ages, ages_of, motions_of, sided
-from campaign.studies.shell_launches import against_ephemeris, anchor, foreseen_in, launch_tension, rows_of
+from campaign.studies.shell_launches import (
+    against_ephemeris,
+    anchor,
+    foreseen_in,
+    launch_tension,
+    rows_of,
+    unmeasured_in_words,
+)
 from campaign.studies.shell_projection import true_quantities, true_tensions, with_light_time
 from campaign.studies.shell_relations import (
     Stated,
@@ -163,6 +170,7 @@ def _with_radii(
     if main_ages.yr is None and main.fit.fit is None:
         raise insufficient(solved.stated, ONE_RADIUS)
     launch = launch_tension(shells, ephemeris)
+    foreseen = foreseen_in(shells, None if motion is None else motion.spread.value, ephemeris)
     typed = stated.get("speed_kms")
     stated_speed = None if typed is None else Measured(typed.value, typed.minus, typed.plus)
     told_of = (*solution.tensions, *expansion_parallax(solved.stated))
@@ -193,8 +201,9 @@ def _with_radii(
         phase_of_youngest_sigma=None if youngest is None else none_if_nan(float(youngest.sigma[0])),
         span_yr=span,
         span_sigma_yr=span_sigma,
-        foreseen=foreseen_in(shells, None if motion is None else motion.spread.value, ephemeris),
+        foreseen=foreseen,
         not_told=(
+            *unmeasured_in_words(foreseen),
             *dict.fromkeys(not_told),
             *_still_open(solution),
         ),

@@ -325,3 +325,33 @@ def foreseen_in(
             radius = motion_mas_yr * age / 1000.0
             found.append(ForeseenShell(image, cycle, age, radius, (image, cycle) in measured))
     return tuple(found)
+
+
+def unmeasured_in_words(foreseen: Sequence[ForeseenShell]) -> list[str]:
+    """Which shells should stand in an image, by the ephemeris, and were not measured there.
+
+    Parameters
+    ----------
+    foreseen : sequence of ForeseenShell
+        Radii arcsec.
+
+    Returns
+    -------
+    list of str
+        One sentence an image; none where all were measured.
+
+    Notes
+    -----
+    Accuracy: of the medians. Source: project convention.
+    """
+    by_image: dict[float, list[str]] = {}
+    for one in foreseen:
+        if not one.measured and one.image_bmjd_tdb is not None:
+            by_image.setdefault(one.image_bmjd_tdb, []).append(
+                f"cycle {one.cycle} at {one.radius_arcsec:.2f} arcsec"
+            )
+    days = [(utc_iso([image])[0] or "")[:10] for image in by_image]
+    return [
+        f"expected in the image of {day} and not measured: {', '.join(shells)}"
+        for day, shells in zip(days, by_image.values(), strict=True)
+    ]

@@ -327,6 +327,7 @@ def test_the_shell_that_nobody_saw_in_the_second_image_is_missed_there(run_campa
     assert [shell["index"] for shell in second] == [1, 2, 3, 5]
     unseen = [f for f in data["foreseen"] if not f["measured"] and f["image_bmjd_tdb"] == images[1]]
     assert [f["cycle"] for f in unseen] == [-3]
+    assert any("2022-08-11" in note and "cycle -3" in note for note in data["not_told"])
 
 
 def test_the_catalogue_is_held_against_the_shells(run_campaign):
