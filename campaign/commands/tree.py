@@ -74,6 +74,13 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
         ("expect", "Where shells will be, which are seen, and how warm they are."),
     ),
     _group(
+        "forecast", "Keep what is forecast, and see how well it did.", "Look ahead",
+        ("keep", "Keep today's forecasts as they are, to be scored later."),
+        ("list", "What forecasts are kept, or the forecasts of one keeping."),
+        ("score", "How well kept forecasts did, by what was confirmed since."),
+        ("rehearse", "Forecast past episodes from what was known before them."),
+    ),
+    _group(
         "log", "Log one observation from the terminal.", "Observe",
         ("photometry", "Log magnitudes, in one band or in several."),
         ("flux", "Log a flux: infrared, radio or X-ray."),

@@ -228,7 +228,11 @@ class ScoreGroup:
 
 @dataclass(frozen=True, slots=True)
 class ForecastScores:
-    """How well forecasts did; ``waiting`` have no confirmed outcome yet, ``undatable`` can have none."""
+    """How well forecasts did; ``waiting`` have no confirmed outcome yet, ``undatable`` can have none.
+
+    ``system``, ``leads_d``, ``entered_any_time`` and ``hidden`` (which solutions were hidden from some
+    forecast, and why) belong to a rehearsal.
+    """
 
     as_of_utc: str
     scored: tuple[ScoredForecast, ...]
@@ -240,5 +244,7 @@ class ForecastScores:
     least_outcomes: int = 10
     system: str | None = None
     leads_d: tuple[float, ...] = ()
+    entered_any_time: bool = False
+    hidden: tuple[str, ...] = ()
     assumptions: tuple[str, ...] = ()
     warnings: tuple[str, ...] = ()

@@ -297,6 +297,36 @@ def ask(
     )
 
 
+def today_of(db: str, now: datetime, as_of: TypedInstant | None) -> float:
+    """The instant that counts as today in a catalogue.
+
+    Parameters
+    ----------
+    db : str
+        Path or SQLAlchemy URL.
+    now : datetime
+        The clock.
+    as_of : TypedInstant or None
+        What was typed in its place; else the own date of an invented sample, else the clock.
+
+    Returns
+    -------
+    float
+        ``bmjd_tdb``, days.
+
+    Notes
+    -----
+    Accuracy: see ``mjd_of``. Source: the catalogue.
+    """
+    from campaign.catalogue import info, store
+
+    if as_of is not None:
+        return axis_instant(as_of)
+    with store.reading(db) as connection:
+        own = info.read_info(connection).get("sample_as_of")
+    return mjd_of(now if own is None else datetime.fromisoformat(own.replace("Z", "+00:00")))
+
+
 def _today(campaign: Campaign, now: datetime, as_of: TypedInstant | None) -> float:
     if as_of is not None:
         return axis_instant(as_of)
