@@ -16,6 +16,7 @@ if TYPE_CHECKING:
 
     from campaign.model.exchange_columns import ExchangeKind
     from campaign.model.forecasts import UpcomingResult
+    from campaign.model.found import EpisodesFound
     from campaign.model.instants import TypedInstant
 
 Several = str | Iterable[str] | None
@@ -225,6 +226,35 @@ class Campaign:
             resolution_arcsec=resolution_arcsec,
         )
         return watch.upcoming(loaded, question)
+
+    def find_episodes(self, system: str, band: Several = None, as_of: When = None) -> EpisodesFound:
+        """The episodes in a light curve, as ``campaign episodes find`` shows them; nothing is written.
+
+        Parameters
+        ----------
+        system : str
+            Name or alias.
+        band : str, iterable of str or None
+            Only these, as they are written; None for all.
+        as_of : str, datetime or None
+            Nothing observed after it is looked at.
+
+        Returns
+        -------
+        EpisodesFound
+            ``episodes`` with onset, maxima, end and half-decay as ``bmjd_tdb`` (d) and UTC text, lengths in
+            d, excess in units of the stars' flux (dimensionless), levels in mag.
+
+        Raises
+        ------
+        NotFound
+            Unknown system.
+        InputRefused
+            A band without magnitudes, or too few of them.
+        """
+        from campaign.studies import find_episodes
+
+        return find_episodes.find_episodes(self._db, system, _several(band) or None, _instant(as_of, "as_of"))
 
     def _table(self, kind: ExchangeKind, **asked: Any) -> pd.DataFrame:
         from campaign.output.frames import frame_of

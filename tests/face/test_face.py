@@ -143,6 +143,17 @@ def test_the_forecast_is_that_of_the_terminal(sample):
     assert {event.system for event in later.events} <= {result.events[0].system}
 
 
+def test_episodes_are_found_as_the_command_finds_them(sample):
+    found = sample.find_episodes("Thistle 2", band="K", as_of="2012-01-01")
+    assert found.bands == ("K",)
+    assert found.as_of_utc.startswith("2012-01-01")
+    assert [one.number for one in found.episodes] == [1, 2, 3, 4]
+    assert {one.onset.band for one in found.episodes} == {"K"}
+    with pytest.raises(InputRefused) as refused:
+        sample.find_episodes("Thistle 2", band="Z")
+    assert refused.value.code == "band-unknown"
+
+
 @pytest.mark.parametrize(
     ("call", "error", "code"),
     [
@@ -153,6 +164,7 @@ def test_the_forecast_is_that_of_the_terminal(sample):
         (lambda c: c.observations(start="yesterday"), InputRefused, "instant-unreadable"),
         (lambda c: c.observations(end=datetime(2027, 4, 6)), InputRefused, "instant-unreadable"),
         (lambda c: c.upcoming(system="Lantern 9"), NotFound, "system-not-found"),
+        (lambda c: c.find_episodes("Lantern 9"), NotFound, "system-not-found"),
     ],
 )
 def test_what_cannot_be_is_refused_as_on_the_command_line(call, error, code, small):
