@@ -190,12 +190,9 @@ def fit_recurrence(
         y = y - period_d * x
     else:
         typical_period_d, freedom = abs(float(np.sum(x * y) / np.sum(x * x))), count - 2
-    # A date known far worse than the onsets usually scatter tells nothing of the scatter.
     usual_d = PRIOR_SCATTER_PERIODS * typical_period_d
-    telling = float(np.sum(usual_d**2 / (usual_d**2 + errors**2)))
-    prior_used = freedom < 2 or freedom - (count - telling) < _LEAST_FREEDOM
-
-    scatters = _scatter_grid(errors, typical_period_d, y, x, prior_used)
+    prior_used = needs_scatter_prior(errors, usual_d, freedom)
+    scatters = scatter_grid(errors, typical_period_d, y, x, prior_used)
     w = 1.0 / (errors[None, :] ** 2 + scatters[:, None] ** 2)
     s0, s1, s2 = w.sum(1), w @ x, w @ (x * x)
     b0, b1 = w @ y, w @ (x * y)
@@ -283,10 +280,68 @@ def predict_recurrence(
     return fit_recurrence(cycles, dates_d, sigmas_d, period_d, period_sigma_d).at(next_cycle)
 
 
-def _scatter_grid(
+def needs_scatter_prior(sigmas_d: FloatArray, usual_d: float, freedom: int) -> bool:
+    """Whether the dates say too little of the scatter, so that the stated prior is used.
+
+    Parameters
+    ----------
+    sigmas_d : ndarray, shape (n,)
+        Dating errors, days.
+    usual_d : float
+        The scatter that is usual, days: ``PRIOR_SCATTER_PERIODS`` of the period.
+    freedom : int
+        Dates less the parameters of the line.
+
+    Returns
+    -------
+    bool
+        True (dimensionless) with fewer than two degrees of freedom, or where too few dates are good enough.
+
+    Notes
+    -----
+    Accuracy: a rule, not a measurement. Source: project convention.
+
+    Examples
+    --------
+    >>> needs_scatter_prior(np.full(3, 5.0), 30.0, 1), needs_scatter_prior(np.full(8, 5.0), 30.0, 6)
+    (True, False)
+    """
+    # A date known far worse than the onsets usually scatter tells nothing of the scatter.
+    telling = float(np.sum(usual_d**2 / (usual_d**2 + np.asarray(sigmas_d) ** 2)))
+    return freedom < 2 or freedom - (len(sigmas_d) - telling) < _LEAST_FREEDOM
+
+
+def scatter_grid(
     sigmas_d: FloatArray, period_d: float, y: FloatArray, x: FloatArray, prior_used: bool
 ) -> FloatArray:
-    """Even grid in log(scatter) that holds all of the posterior, days."""
+    """Even grid in log(scatter) that holds all of the posterior.
+
+    Parameters
+    ----------
+    sigmas_d : ndarray, shape (n,)
+        Dating errors, days.
+    period_d : float
+        Period about which, days.
+    y, x : ndarray, shape (n,)
+        Dates (days) and cycles (dimensionless) about their means.
+    prior_used : bool
+        Whether the stated prior decides the range; else the dates do.
+
+    Returns
+    -------
+    ndarray
+        Scatters, days.
+
+    Notes
+    -----
+    Accuracy: sixty steps; quantiles of a prediction are good to 1 % of its width. Source: project convention.
+
+    Examples
+    --------
+    >>> grid = scatter_grid(np.ones(4), 1000.0, np.zeros(4), np.arange(4.0), True)
+    >>> bool(grid[0] < 1.0 < 10.0 < 100.0 < grid[-1])
+    True
+    """
     if prior_used:
         centre = np.log(PRIOR_SCATTER_PERIODS * period_d)
         return np.exp(np.linspace(centre - 4.5 * PRIOR_LOG_WIDTH, centre + 4.5 * PRIOR_LOG_WIDTH, _GRID))

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from campaign.model.forecasts import EventName
+from campaign.model.measured import Measured
 from campaign.model.systems import Episode
 from campaign.physics.recurrence import (
     RecurrenceFit,
@@ -15,6 +16,7 @@ from campaign.physics.recurrence import (
     fit_recurrence,
     predict_recurrence,
 )
+from campaign.studies.fitted import independent_of, is_fitted
 from campaign.studies.rows import SCATTERS, ForecastRow
 
 FloatArray = NDArray[np.float64]
@@ -113,12 +115,14 @@ def learn(row: ForecastRow, episodes: tuple[Episode, ...]) -> LearnedDates | Non
             dates[event].append(moment.bmjd_tdb)
             known = moment.minus_d is not None and moment.plus_d is not None
             sigmas[event].append(np.hypot(moment.minus_d, moment.plus_d) / np.sqrt(2.0) if known else None)
-    period, minus, plus = row.values.get("period_d", (None, None, None))
+    period, minus, plus = _prior_period(row)
     period_sigma = None if minus is None or plus is None else float(np.hypot(minus, plus) / np.sqrt(2.0))
     if period_sigma is None:
         period = None
     notes: list[str] = []
     rough = period if period is not None else _rough_period(cycles["onset"], dates["onset"])
+    if rough is None and "period_d" in row.values:
+        rough = row.values["period_d"][0]
     if rough is None:
         return None
     if any(s is None for e in SCATTERS for s in sigmas[e]):
@@ -137,6 +141,16 @@ def learn(row: ForecastRow, episodes: tuple[Episode, ...]) -> LearnedDates | Non
         notes=notes,
     )
     return learned if learned.events() else None
+
+
+def _prior_period(row: ForecastRow) -> tuple[float | None, float | None, float | None]:
+    """The orbit's own period: one that was fitted from these episodes would count them twice."""
+    if row.solution is None or not is_fitted(row.solution):
+        return row.values.get("period_d", (None, None, None))
+    orbit = independent_of(row.solution, row.record.solutions)
+    if orbit is None or not isinstance(orbit.period_d, Measured):
+        return None, None, None
+    return orbit.period_d.value, orbit.period_d.minus, orbit.period_d.plus
 
 
 def _rough_period(cycles: list[float], dates: list[float]) -> float | None:
