@@ -179,6 +179,25 @@ def _as_one(words: Sequence[str | None]) -> list[str | None]:
     return [kept.setdefault(word, word) for word in words]
 
 
+def withdrawn_rows(
+    connection: Connection, system_id: int, kind: str, from_bmjd_tdb: float, until_bmjd_tdb: float
+) -> list[tuple[float, float, str | None]]:
+    """Time, value and band of observations that somebody withdrew for a reason, within a range of time.
+
+    What went out of use because its command was taken back is not among them.
+    """
+    columns = observations.c
+    rows = connection.execute(
+        select(columns.bmjd_tdb, columns.value, columns.band).where(
+            columns.system_id == system_id,
+            columns.kind == kind,
+            columns.bmjd_tdb.between(from_bmjd_tdb, until_bmjd_tdb),
+            columns.withdrawn_why.is_not(None),
+        )
+    )
+    return [(time, value, band) for time, value, band in rows if value is not None]
+
+
 def holds_observations(connection: Connection) -> bool:
     """Whether there is any observation at all."""
     return connection.execute(select(observations.c.id).limit(1)).first() is not None

@@ -30,7 +30,8 @@ _NONE: NDArray[Any] = np.zeros(0)
 class KnownCheck:
     """What the catalogue says to checked rows.
 
-    ``known`` and ``repeated`` mark rows that are there already, or stood earlier in the table. ``nearby``
+    ``known`` and ``repeated`` mark rows that are there already, or stood earlier in the table,
+    ``withdrawn`` those that somebody withdrew before. ``nearby``
     holds the observations around them, system by system: time, value, error, band and limit, the rest is
     empty. ``shifted`` holds pairs of a new row and how much later it is (days) than a known one that is like
     it in all but the time.
@@ -42,6 +43,7 @@ class KnownCheck:
     conflicting: set[int] = field(default_factory=set)
     nearby: dict[int, KnownRows] = field(default_factory=dict)
     shifted: list[tuple[int, float]] = field(default_factory=list)
+    withdrawn: list[int] = field(default_factory=list)
 
 
 def check_known(
@@ -112,6 +114,7 @@ def check_known(
                 other=(),
                 sameness=(),
             )
+        _mark_withdrawn(connection, check, some, columns, details, systems[place].id)
         done += len(some)
         told(done)
     return check
@@ -135,6 +138,28 @@ def _mark_known(
     there = {digest for digest in known.sameness if digest is not None}
     texts = digests[some].tobytes().hex()
     check.known[some] = [texts[at : at + 32] in there for at in range(0, len(texts), 32)]
+
+
+def _mark_withdrawn(
+    connection: Connection,
+    check: KnownCheck,
+    some: NDArray[np.int64],
+    columns: ObservationColumns,
+    details: _Details,
+    system_id: int,
+) -> None:
+    """Rows of one system that are in the catalogue as withdrawn for a reason."""
+    time, value = columns.numbers["bmjd_tdb"][some], columns.numbers["value"][some]
+    gone = bulk.withdrawn_rows(
+        connection,
+        system_id,
+        str(columns.same["kind"]),
+        float(time.min()) - SAME_TIME_D,
+        float(time.max()) + SAME_TIME_D,
+    )
+    for at, withdrawn_value, band in gone:
+        alike = some[(np.abs(time - at) <= SAME_TIME_D) & (value == withdrawn_value)]
+        check.withdrawn += [row for row in alike.tolist() if details.of("band", row) == band]
 
 
 class _Details:

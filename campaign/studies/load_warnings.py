@@ -88,6 +88,9 @@ def load_warnings(
         "{rows} stand{s} more than once in the table; each goes in once",
         fresh_only=False,
     )
+    withdrawn = np.zeros(rows.size, dtype=np.bool_)
+    withdrawn[check.withdrawn] = True
+    told.add("withdrawn-before", withdrawn, "{rows} {are} the same as what was withdrawn before")
     told.add("future", _future(columns, now_mjd), "{rows} {are} dated in the future")
     told.add("long-ago", columns.numbers["bmjd_tdb"] < _LONG_AGO_MJD, "{rows} {are} dated before 1900")
     told.add("daylight", _daylight(rows, columns, sites), "at {rows} the Sun was up at the site")

@@ -12,6 +12,10 @@ import shutil
 
 import pytest
 from load_examples import begin, kept, load
+from studies_examples import CLOCK, stamp
+
+from campaign.catalogue import observations, store
+from campaign.studies.undo import undo
 
 HEAD = "system,{time},band,mag,e_mag,photometric_system\n"
 
@@ -241,6 +245,27 @@ def test_an_exported_table_under_an_alias_is_told(db):
         text = "".join(table_text(table, "csv"))
     assert "alias" not in warned(load(db, text))
     assert "alias" in warned(load(db, text.replace("Lantern 3", "Lamp C")))
+
+
+def test_what_was_withdrawn_and_comes_again(db):
+    text = curve(QUIET)
+    load(db, text)
+    assert "withdrawn-before" not in warned(load(db, text, rehearse=True))
+    with store.writing(db, at=CLOCK, who="Ida Vik", command="campaign test") as writing:
+        observations.withdraw_observation(writing, 3, "the wrong star")
+    found = load(db, text, rehearse=True)
+    assert (found.added, found.already_known) == (1, 4)
+    assert warned(found)["withdrawn-before"].lines == (4,)
+    other = load(db, text.replace(",7.3,", ",7.4,"), rehearse=True, also_conflicts=True)
+    assert "withdrawn-before" not in warned(other)
+
+
+def test_a_load_that_was_taken_back_is_done_again_without_a_warning(db):
+    operation = load(db, curve(QUIET)).operation_id
+    undo(str(db), stamp("campaign undo"), operation)
+    again = load(db, curve(QUIET))
+    assert again.added == 5
+    assert "withdrawn-before" not in warned(again)
 
 
 # Lantern 3 stands at 270.63125, -45.2083: 0.001 deg in declination are 3.6 arcsec.
