@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from datetime import UTC, datetime, timedelta
 
 from sqlalchemy import Connection
@@ -101,19 +102,29 @@ def inputs_by_unit(
                 if solution is not None
             ),
             None if rule is None else UsedRule(rule.id, rule.kind, rule_times.get(rule.id)),
-            tuple(_used_episode(episode, episode_times.get(episode.id)) for episode in episodes),
+            tuple(
+                _used_episode(episode, _counted(unit.episodes, episode), episode_times.get(episode.id))
+                for episode in episodes
+            ),
             points.get(record.system.id, _NOTHING),
         )
-        for record, several, rule, episodes in zip(records, solutions, rules, confirmed, strict=True)
+        for unit, record, several, rule, episodes in zip(
+            prepared.units, records, solutions, rules, confirmed, strict=True
+        )
     )  # fmt: skip
 
 
-def _used_episode(episode: Episode, decided_at: datetime | None) -> UsedEpisode:
+def _counted(episodes: Sequence[Episode], wanted: Episode) -> int | None:
+    """The cycle that an episode was counted to; the entered one where it was told with another."""
+    return next((one.cycle for one in episodes if one.id == wanted.id), wanted.cycle)
+
+
+def _used_episode(episode: Episode, cycle: int | None, decided_at: datetime | None) -> UsedEpisode:
     onset, maximum, end = (
         None if dated is None else dated.moment.bmjd_tdb
         for dated in (episode.onset, episode.maximum, episode.end)
     )
-    return UsedEpisode(episode.id, episode.cycle, onset, maximum, end, decided_at)
+    return UsedEpisode(episode.id, cycle, onset, maximum, end, decided_at)
 
 
 def reference_date(
