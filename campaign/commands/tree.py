@@ -103,6 +103,7 @@ COMMANDS: tuple[Leaf | Branch, ...] = (
         ("reject", "Reject episodes: they stay, and count for nothing."),
         ("list", "The dated episodes, oldest first."),
     ),
+    _command("refine", "Period and epoch from dated episodes, and what would change.", "Observe"),
     _command("begin", "Make the database, empty or with the sample campaign.", "Keep the catalogue"),
     _command("upgrade", "Bring an older database up to date, after a snapshot.", "Keep the catalogue"),
     _command("export", "Write a table for others, or for another catalogue.", "Keep the catalogue"),

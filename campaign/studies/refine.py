@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import datetime
 
 import numpy as np
@@ -13,7 +13,14 @@ from campaign.model.forecasts import Quantiles, UtcQuantiles
 from campaign.model.instants import TypedInstant
 from campaign.model.measured import Measured
 from campaign.model.records import SystemRecord
-from campaign.model.refined import PlainLine, RefinedDate, RefinedEphemeris, Refinement, SingleEpisode
+from campaign.model.refined import (
+    CycleCounting,
+    PlainLine,
+    RefinedDate,
+    RefinedEphemeris,
+    Refinement,
+    SingleEpisode,
+)
 from campaign.model.systems import Solution
 from campaign.physics.cyclecounts import possible_counts
 from campaign.physics.datedline import DatedLine, fit_dated_line
@@ -156,7 +163,7 @@ def refine(campaign: Campaign, question: RefineQuestion) -> Refined:
         events=dates.kinds_of,
         episodes=len(dates.episodes),
         dates=_rows(dates, cycles, used),
-        counts=weighed.listed,
+        counts=_with_own_period(weighed, chosen, ephemeris),
         chosen=chosen + 1,
         ephemeris=ephemeris,
         line=_plain(dates, cycles),
@@ -214,6 +221,15 @@ def _chosen(weighed: WeighedCounts, asked: int | None, record: SystemRecord) -> 
         code="count-unknown",
         details={"counts": len(weighed.listed)},
     )
+
+
+def _with_own_period(
+    weighed: WeighedCounts, chosen: int, ephemeris: RefinedEphemeris
+) -> tuple[CycleCounting, ...]:
+    """The counts share one prior of the scatter; the one that is taken has the period of its own line."""
+    listed = list(weighed.listed)
+    listed[chosen] = replace(listed[chosen], period_d=ephemeris.period_d)
+    return tuple(listed)
 
 
 def _rows(dates: ChosenDates, cycles: FloatArray, line: DatedLine) -> tuple[RefinedDate, ...]:
