@@ -25,6 +25,16 @@ if "CAMPAIGN_FUZZ" not in os.environ:
     settings.load_profile("steady")
 
 
+@pytest.hookimpl(optionalhook=True)
+def pytest_xdist_auto_num_workers(config: pytest.Config) -> int | None:
+    """The whole fast suite runs on all processors; what is named, and the slow tests, one after another.
+
+    Benchmarks, kills and figures on the screen want the machine for themselves.
+    """
+    is_whole = config.args_source is pytest.Config.ArgsSource.TESTPATHS
+    return None if is_whole and config.option.markexpr == "not slow" else 0
+
+
 # ------------------------------------------------------------------------------------------ no network
 
 

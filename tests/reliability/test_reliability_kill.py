@@ -112,7 +112,8 @@ def load_and_kill(database: Path, wanted: int, seed: int) -> int:
         with running(LOADER, database, next_batch) as child:
             assert child.stdout is not None
             assert child.stdout.readline() == "ready\n"
-            time.sleep(chance.uniform(0.02, 0.25))
+            # A busy machine comes to its writing later.
+            time.sleep(chance.uniform(0.02, 0.25) * (1 + rounds // 5))
             child.kill()
             acknowledged = [int(line) for line in child.communicate()[0].split()]
         landed += journal_of(database).exists()
