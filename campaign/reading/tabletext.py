@@ -14,6 +14,8 @@ from campaign.model.loading import ForeignTable, Misfit, TableBlock, TableColumn
 from campaign.reading.tablefile import TableFile
 from campaign.reading.tableshape import TableShape, find_shape, is_comment, splitter
 
+# Stands for a line that is none of the rows, although it is among them.
+COMMENTED = "commented"
 _READ_BYTES = 1 << 21
 _BLOCK_ROWS = 50_000
 _LONGEST_LINE = 20_000_000
@@ -148,6 +150,11 @@ def _undecodable(name: str, encoding: str, error: UnicodeError, line: int, pendi
     )
 
 
+def _comment(line: int, text: str) -> Misfit:
+    """A line among the rows that is passed over; whoever reads them may tell of it."""
+    return Misfit(line, (text,), COMMENTED, "It begins with #.")
+
+
 class _Blocks:
     """Turns lines into blocks of columns."""
 
@@ -156,6 +163,7 @@ class _Blocks:
         self._name = name
         self._width = len(shape.names)
         self._split = splitter(shape.delimiter, shape.edges)
+        self._comments: list[Misfit] = []
         self._is_single = len(shape.delimiter) == 1 and shape.delimiter != " "
 
     def of(self, chunks: Iterator[tuple[int, list[str]]]) -> Iterator[TableBlock]:
@@ -171,37 +179,47 @@ class _Blocks:
 
     def _block(self, first: int, lines: list[str]) -> TableBlock:
         numbers: Sequence[int] = range(first, first + len(lines))
+        comments: tuple[Misfit, ...] = ()
         if "" in lines or any(map(str.startswith, lines, repeat("#"))) or any(map(str.isspace, lines)):
             kept = [
                 (number, line)
                 for number, line in zip(numbers, lines, strict=True)
                 if line.strip() and not is_comment(line)
             ]
+            comments = tuple(
+                _comment(number, line)
+                for number, line in zip(numbers, lines, strict=True)
+                if is_comment(line)
+            )
             numbers, lines = [number for number, _ in kept], [line for _, line in kept]
         if self._is_single:
             delimiter = self._shape.delimiter
             counts = list(map(str.count, lines, repeat(delimiter)))
             if counts.count(self._width - 1) == len(lines):
-                return self._columns(numbers, delimiter.join(lines).split(delimiter))
-        return self._of_rows((number, self._split(line)) for number, line in zip(numbers, lines, strict=True))
+                return self._columns(numbers, delimiter.join(lines).split(delimiter), comments)
+        rows = ((number, self._split(line)) for number, line in zip(numbers, lines, strict=True))
+        return self._of_rows(rows, comments)
 
-    def _columns(self, numbers: Sequence[int], cells: list[str]) -> TableBlock:
+    def _columns(
+        self, numbers: Sequence[int], cells: list[str], misfits: tuple[Misfit, ...] = ()
+    ) -> TableBlock:
         if not numbers:
-            return TableBlock((), [[] for _ in range(self._width)])
-        return TableBlock(numbers, [cells[place :: self._width] for place in range(self._width)])
+            return TableBlock((), [[] for _ in range(self._width)], misfits)
+        return TableBlock(numbers, [cells[place :: self._width] for place in range(self._width)], misfits)
 
-    def _of_rows(self, rows: Iterator[tuple[int, list[str]]]) -> TableBlock:
+    def _of_rows(
+        self, rows: Iterator[tuple[int, list[str]]], comments: tuple[Misfit, ...] = ()
+    ) -> TableBlock:
         numbers: list[int] = []
         cells: list[str] = []
-        misfits: list[Misfit] = []
+        misfits = list(comments)
         for number, row in rows:
             if len(row) == self._width:
                 numbers.append(number)
                 cells += row
             else:
                 misfits.append(self._misfit(number, row))
-        block = self._columns(numbers, cells)
-        return TableBlock(block.lines, block.columns, tuple(misfits))
+        return self._columns(numbers, cells, tuple(misfits))
 
     def _misfit(self, number: int, row: Sequence[str]) -> Misfit:
         more = len(row) > self._width
@@ -221,7 +239,8 @@ class _Blocks:
             some = list(islice(rows, _BLOCK_ROWS))
             if not some:
                 return
-            yield self._of_rows(iter(some))
+            comments, self._comments = tuple(self._comments), []
+            yield self._of_rows(iter(some), comments)
 
     def _rows(self, chunks: Iterator[tuple[int, list[str]]]) -> Iterator[tuple[int, list[str]]]:
         started = next(chunks, (1, []))
@@ -252,5 +271,7 @@ class _Blocks:
                 ) from error
             is_one_line = before + reader.line_num == first
             blank = not any(cell.strip() for cell in row) and len(row) <= 1
-            if not blank and not (is_one_line and is_comment(last_line)):
+            if is_one_line and is_comment(last_line):
+                self._comments.append(_comment(first, last_line))
+            elif not blank:
                 yield first, row

@@ -34,9 +34,10 @@ from campaign.reading.columntimes import read_times
 from campaign.reading.instants import read_instant
 from campaign.reading.numbers import check_plain_text, quoted, read_number
 from campaign.reading.tablefile import TableFile
+from campaign.reading.tabletext import COMMENTED
 from campaign.reading.values import read_measured, read_measured_or_bound
 from campaign.studies.load_knowledge_entry import ENTERERS, Enterer, KnownSystems
-from campaign.studies.load_names import alias_warnings, system_index
+from campaign.studies.load_names import alias_warnings, comment_warning, system_index
 from campaign.studies.load_understood import names_for_rejects
 
 # What is being done, how far it is, and out of how much (None: nobody knows).
@@ -126,13 +127,14 @@ def load_knowledge(
     -----
     Accuracy: as the readers of single values. Source: project convention.
     """
-    rows = _Rows(mapping).read(table, lambda: told("reading", file.counter.bytes, file.size_bytes))
+    reader = _Rows(mapping)
+    rows = reader.read(table, lambda: told("reading", file.counter.bytes, file.size_bytes))
     enter = ENTERERS[mapping.kind]
     opening = store.rehearsing if wanted.rehearse else store.writing
     added = known = 0
     operation_id: int | None = None
     is_refused = False
-    warnings: list[LoadWarning] = []
+    warnings = comment_warning(reader.passed_over)
     try:
         with opening(db, at=stamp.at, who=stamp.who, command=stamp.command) as writing:
             known_systems = KnownSystems(systems.list_systems(writing.connection, include_retired=True))
@@ -184,11 +186,15 @@ class _Rows:
     def __init__(self, mapping: TableMapping) -> None:
         self._mapping = mapping
         self._fields = {field.name: field for field in FIELDS[mapping.kind]}
+        self.passed_over: list[int] = []
 
     def read(self, table: ForeignTable, told: Callable[[], None]) -> list[_Row]:
         rows: list[_Row] = []
         for block in table.blocks:
             for misfit in block.misfits:
+                if misfit.code == COMMENTED:
+                    self.passed_over.append(misfit.line)
+                    continue
                 if not any(map(str.strip, misfit.cells)):
                     continue
                 text = " | ".join(misfit.cells)[:SHOWN_TEXT]

@@ -110,6 +110,34 @@ def site_index(sites: Sequence[Site]) -> NameIndex:
     )
 
 
+def comment_warning(lines: Sequence[int]) -> list[LoadWarning]:
+    """Words on lines of comments among the rows of a table.
+
+    Parameters
+    ----------
+    lines : sequence of int
+        Where they stood, counted from 1 (dimensionless).
+
+    Returns
+    -------
+    list of LoadWarning
+        One, or none.
+
+    Notes
+    -----
+    Accuracy: exact. Source: project convention.
+    """
+    if not lines:
+        return []
+    text = (
+        "1 line among the rows begins with # and was"
+        if len(lines) == 1
+        else f"{len(lines):,} lines among the rows begin with # and were"
+    )
+    first = tuple(lines[:_MOST_NAMES])
+    return [LoadWarning("commented", f"{text} passed over", len(lines), first, len(lines) > _MOST_NAMES)]
+
+
 def alias_warnings(names: NameIndex, systems: Sequence[System]) -> list[LoadWarning]:
     """Which systems a table called by another name than their own.
 

@@ -23,6 +23,7 @@ from campaign.reading.columncells import CellFault, Vocabulary
 from campaign.reading.columntimes import PLACES, SCALES
 from campaign.reading.columnvalues import read_plain_numbers, word_reader
 from campaign.reading.expected import Expected
+from campaign.reading.tabletext import COMMENTED
 from campaign.studies.load_block import BlockCheck, CheckContext
 from campaign.studies.load_fields import NUMBER_COLUMNS, WORD_FIELDS, value_column
 from campaign.studies.load_names import NameIndex, site_index, system_index
@@ -36,7 +37,7 @@ class CheckedRows:
     """Good rows as columns, still without their instants on the catalogue's axis.
 
     ``system`` and ``site`` are places among those of the catalogue (-1: no site); ``day`` and ``fraction``
-    are MJD in scale and place by number.
+    are MJD in scale and place by number. ``passed_over`` are lines of comments among the rows.
     """
 
     size: int
@@ -52,6 +53,7 @@ class CheckedRows:
     numbers: dict[str, FloatArray]
     words: dict[str, Words]
     texts: dict[str, list[str]]
+    passed_over: Sequence[int] = ()
 
     def columns(
         self, systems: Sequence[System], sites: Sequence[Site], bmjd_tdb: FloatArray
@@ -119,6 +121,7 @@ class RowChecker:
         self.bad_rows = 0
         self.rows_read = 0
         self.without_value = 0
+        self.passed_over: list[int] = []
         self.kind = mapping.kind
         self.systems: NameIndex = system_index(systems)
         self.sites: NameIndex = site_index(sites)
@@ -134,6 +137,9 @@ class RowChecker:
     def take(self, block: TableBlock) -> None:
         """Check and gather some rows."""
         for misfit in block.misfits:
+            if misfit.code == COMMENTED:
+                self.passed_over.append(misfit.line)
+                continue
             if not _is_filled(misfit.cells):
                 continue
             self.rows_read += 1
@@ -193,8 +199,9 @@ class RowChecker:
             ):
                 numbers[high] = numbers[low]
         return CheckedRows(
-            size, line, **core, same=same, numbers=numbers, words=words, texts={"time_text": parts.texts}
-        )
+            size, line, **core, same=same, numbers=numbers, words=words, texts={"time_text": parts.texts},
+            passed_over=self.passed_over,
+        )  # fmt: skip
 
     def _read_constants(self) -> dict[str, Any]:
         """What is the same for all rows: codes of words, numbers, places of system and site."""

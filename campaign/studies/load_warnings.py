@@ -18,7 +18,7 @@ from campaign.physics.sun import sun_altitude_deg
 from campaign.reading.columntimes import PLACES
 from campaign.studies.bands import band_warnings, mixed_bands
 from campaign.studies.load_known import LIGHT_TIME_D, KnownCheck
-from campaign.studies.load_names import NameIndex, alias_warnings
+from campaign.studies.load_names import NameIndex, alias_warnings, comment_warning
 from campaign.studies.load_outliers import outlying
 from campaign.studies.load_rows import CheckedRows
 
@@ -82,6 +82,7 @@ def load_warnings(
     """
     fresh = ~(check.known | check.repeated)
     told = _Told(rows, fresh)
+    told.found += comment_warning(rows.passed_over)
     told.add(
         "repeated",
         check.repeated,

@@ -24,7 +24,7 @@ def read(data, encoding=None):
         rows, misfits = [], []
         for block in table.blocks:
             rows += zip(block.lines, zip(*block.columns, strict=True), strict=True)
-            misfits += block.misfits
+            misfits += [misfit for misfit in block.misfits if misfit.code != "commented"]
     return [c.name for c in table.columns], [c.unit for c in table.columns], rows, misfits
 
 

@@ -77,7 +77,8 @@ def tables(draw):
 
 def written(form, rows):
     """The table in one of the forms; ECSV and VOTable by astropy, with numbers as numbers."""
-    columns = list(rows[0])
+    # The name comes first: a line that begins with a # of a note would be a comment.
+    columns = sorted(rows[0], key=lambda name: name != "name")
     if form in ("ecsv", "votable", "votable-binary"):
         return _by_astropy(form, columns, rows)
     divider = {"tsv": "\t", "semicolons": ";", "bars": "|"}.get(form, ",")

@@ -287,6 +287,21 @@ def test_a_new_system_at_the_place_of_a_known_one(db, ra, dec, told):
         assert '"Lantern 3" --alias "Quill"' in found["same-place"].text
 
 
+@pytest.mark.parametrize("quoted", [False, True], ids=["plain", "quoted"])
+def test_lines_of_comments_among_the_rows(db, quoted):
+    head, *rows = curve(QUIET).splitlines()
+    rows = [row.replace("Lantern 3", '"Lantern 3"') if quoted else row for row in rows]
+    text = "\n".join(
+        ["# a light curve", head, "# in the first season", *rows[:2], "#" + rows[2], *rows[3:], ""]
+    )
+    found = load(db, text)
+    assert (found.rows_read, found.added) == (4, 4)
+    assert warned(found)["commented"].lines == (6,)
+    assert "commented" not in warned(load(db, curve(QUIET), rehearse=True))
+    table = "system,onset\nKeel 9,2021-03-14±5 d\n#Lantern 3,2021-03-14±5 d\n"
+    assert warned(load(db, table))["commented"].rows == 1
+
+
 def test_rows_that_stand_twice(db):
     text = curve(QUIET)
     assert "repeated" not in warned(load(db, text, rehearse=True))
