@@ -22,10 +22,11 @@ _DECLINES_PER_D = np.array([0.0, 0.0006, 0.0012, 0.002, 0.003, 0.0045, 0.0065, 0
 _DECLINES_KEPT = 4
 # Below this any length of the rise is as probable, above it any ratio of lengths; common practice, no source.
 _USUAL_RISE_D = 100.0
-_TOPS = 12
+_TOPS, _LAST_TOPS = 12, 14
 _ONSETS = 41
 _ROUNDS = 3
-_DEEPEST = 14.0  # ln of the probability, below its highest, that is not looked at
+# ln of the probability, below its highest, that is not looked at: of onsets; of tops, whose grid is coarser.
+_DEEPEST, _TOP_DEEPEST = 14.0, 12.0
 _WILD_SIGMA = 3.5
 _FIRST_TRUST, _SECOND_TRUST = 0.12, 0.03
 _NEWTON_STEPS = 6
@@ -160,8 +161,9 @@ def fit_rise(bands: Sequence[BandPoints], earliest: float, latest: float) -> Ris
             chi2, dof = _goodness(points, grids, onsets, ln)
             inflation = max(1.0, chi2 / dof) if chi2 > dof + 2.0 * np.sqrt(2.0 * dof) else 1.0
         declines = [_likely_declines(g) for g in grids]
-        tops = [_zoomed(g.tops, t, _TOPS) for g, t in zip(grids, top_lns, strict=True)]
-        onsets = _zoomed(onsets, marginal, _ONSETS)
+        count = _LAST_TOPS if turn == _ROUNDS - 2 else _TOPS
+        tops = [_zoomed(g.tops, t, count, _TOP_DEEPEST) for g, t in zip(grids, top_lns, strict=True)]
+        onsets = _zoomed(onsets, marginal, _ONSETS, _DEEPEST)
     shape = _logsumexp(ln, axis=1)
     share = np.exp(shape - shape.max())
     amplitude, amplitude_sigma = _amplitudes(grids, ln, own, by_band, inflation)
@@ -253,11 +255,11 @@ def _top_grid(first: float, last: float) -> FloatArray:
     return np.linspace(first, last, _TOPS) if last > first else np.array([first])
 
 
-def _zoomed(grid: FloatArray, ln: FloatArray, count: int) -> FloatArray:
+def _zoomed(grid: FloatArray, ln: FloatArray, count: int, deepest: float) -> FloatArray:
     """Equal steps over the part of a grid that matters, a step to spare on either side."""
     if grid.size == 1:
         return grid
-    alive = np.flatnonzero(ln >= ln.max() - _DEEPEST)
+    alive = np.flatnonzero(ln >= ln.max() - deepest)
     first, last = max(alive[0] - 1, 0), min(alive[-1] + 1, grid.size - 1)
     return np.linspace(grid[first], grid[last], count)
 
