@@ -19,7 +19,8 @@ _OWN: Final = frozenset(
         "id", "uid", "entered_at", "operation_id", "sameness", "former_sameness", "withdrawn_at",
         "superseded_at", "superseded_by_id", "ended_at", "adopted_at", "set_at", "decided_at", "system_id",
         "solution_id", "name_key", "label_key", "source_key", "name_rank", "star_of",
-        "kept_at", "known_at", "as_of_bmjd_tdb", "draws", "seed", "program_version", "from_bmjd_tdb", "until_bmjd_tdb",
+        "kept_at", "known_at", "as_of_bmjd_tdb", "draws", "seed", "program_version",
+        "from_bmjd_tdb", "until_bmjd_tdb",
     }
 )  # fmt: skip
 # How a unit is written at the end of a column's name; the longest first.
