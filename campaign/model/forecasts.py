@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import Literal
 
+from campaign.model.suspicion import Suspicion
+
 EventName = Literal["periastron", "onset", "maximum", "end", "A in front", "B in front", "resolvable"]
 EVENT_NAMES: tuple[EventName, ...] = (
     "periastron", "onset", "maximum", "end", "A in front", "B in front", "resolvable",
@@ -110,6 +112,7 @@ class UpcomingResult:
     seed: int
     assumptions: tuple[str, ...] = ()
     warnings: tuple[str, ...] = ()
+    suspicions: tuple[Suspicion, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

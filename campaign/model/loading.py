@@ -8,6 +8,7 @@ from fractions import Fraction
 from typing import Literal
 
 from campaign.model.instants import Place, Scale
+from campaign.model.suspicion import Suspicion
 
 LoadKind = Literal[
     "photometry", "velocity", "position", "shell", "line", "flux", "systems", "solutions", "episodes"
@@ -204,7 +205,8 @@ class Loaded:
     ``added`` is what went in (with ``rehearsed``: what would); ``already_known`` was in the catalogue,
     ``repeated`` stood more than once in the table. ``without_value`` counts rows whose value is a text that
     was said to stand for unknown. ``bad_rows`` counts rows, ``bad`` lists every cell. With ``is_refused``
-    nothing went in. ``made`` counts what was made beside the rows, such as sites.
+    nothing went in. ``made`` counts what was made beside the rows, such as sites. ``suspicions`` are the
+    onsets that the new photometry makes one suspect.
     """
 
     understood: Understood
@@ -227,6 +229,7 @@ class Loaded:
     made: Mapping[str, int] = field(default_factory=dict)
     columns: tuple[str, ...] = ()
     rejected: tuple[Rejected, ...] = ()
+    suspicions: tuple[Suspicion, ...] = ()
 
     @property
     def reasons(self) -> dict[str, int]:

@@ -9,6 +9,7 @@ from campaign.model.instants import Moment
 from campaign.model.measured import Measured
 from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
+from campaign.model.suspicion import Suspicion
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,3 +53,4 @@ class Logged:
     knowledge: tuple[str, ...]
     suspected: bool
     warnings: tuple[str, ...] = ()
+    suspicion: Suspicion | None = None

@@ -12,6 +12,7 @@ from campaign.model.loading import BadCell, Loaded, LoadWarning, Understood
 from campaign.output.console import Screen
 from campaign.output.documents import document, plain
 from campaign.output.safe import visible
+from campaign.output.suspicion import render_suspicions
 from campaign.output.tables import Column, print_table
 
 MOST_SHOWN = 20
@@ -104,6 +105,7 @@ def render_loaded(screen: Screen, loaded: Loaded) -> None:
         screen.wrapped(f"  bad rows written to {loaded.rejects_file}")
     if loaded.operation_id is not None and loaded.added:
         screen.wrapped(f"  take it back with: campaign undo {loaded.operation_id}")
+    render_suspicions(screen, loaded.suspicions)
 
 
 def render_warnings(screen: Screen, loaded: Loaded) -> None:
@@ -220,6 +222,7 @@ def loaded_data(loaded: Loaded) -> dict[str, Any]:
         "kept_mapping": loaded.kept_mapping,
         "rejects_file": loaded.rejects_file,
         "operation": loaded.operation_id,
+        "suspected": plain(loaded.suspicions),
     }
 
 

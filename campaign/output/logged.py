@@ -68,5 +68,6 @@ def logged_json(logged: Logged, as_of: str) -> str:
         ],
         "knowledge": list(logged.knowledge),
         "suspected": logged.suspected,
+        "suspicion": plain(logged.suspicion),
     }
     return document("log", data, as_of=as_of, warnings=logged.warnings)

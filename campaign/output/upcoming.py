@@ -9,6 +9,7 @@ from rich.cells import cell_len
 
 from campaign.model.forecasts import MIXTURE, EventForecast, UpcomingResult, UtcQuantiles
 from campaign.output.console import Screen
+from campaign.output.suspicion import render_suspicions
 from campaign.output.tables import Cell, Column, Row, fits, print_table
 from campaign.output.timeline import render_timeline
 from campaign.output.wording import (
@@ -79,6 +80,9 @@ def render_dates(screen: Screen, result: UpcomingResult) -> None:
         _print_events(screen, result)
     else:
         screen.wrapped("No event falls in this period.")
+    if result.suspicions:
+        screen.line("")
+        render_suspicions(screen, result.suspicions)
     screen.line("")
     render_timeline(screen, result)
 

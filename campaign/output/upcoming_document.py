@@ -25,6 +25,7 @@ def upcoming_data(result: UpcomingResult, explained: ExplainedSystem | None = No
         "until_bmjd_tdb": result.until_bmjd_tdb,
         "as_of_bmjd_tdb": result.as_of_bmjd_tdb,
         "events": [_event(event) for event in by_date(result.events)],
+        "suspected": plain(result.suspicions),
         "dust_windows": plain(result.dust_windows),
         "bases": plain(result.bases),
         "draws": result.draws,

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -9,6 +11,10 @@ from campaign.model.arrays import PhotometryArrays
 from campaign.model.records import SystemRecord
 from campaign.studies.bands import photometric_system_key
 from campaign.studies.quietness import JudgedPhotometry, judge_photometry
+
+_REJECTED_D = 30.0
+# Up to so many times the span of an episode after it, dust that was never seen to fade is still its own.
+_TAIL_SPANS = 2.0
 
 
 def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> JudgedPhotometry:
@@ -37,7 +43,7 @@ def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> Judge
     past = (arrays.bmjd_tdb <= as_of) & (arrays.quality == "good")
     error = 0.5 * (arrays.mag_minus + arrays.mag_plus)
     spans = [(start, end) for start, end, _ in confirmed_spans(record)]
-    return judge_photometry(
+    judged = judge_photometry(
         arrays.bmjd_tdb[past],
         arrays.mag[past],
         error[past],
@@ -45,7 +51,54 @@ def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> Judge
         [str(b) for b in arrays.band[past]],
         series_of(arrays, past),
         spans,
+        rejected_spans(record),
     )
+    return _with_tails_explained(judged, spans)
+
+
+def _with_tails_explained(judged: JudgedPhotometry, spans: list[tuple[float, float]]) -> JudgedPhotometry:
+    """In each band, what follows a confirmed episode up to the first quiet point is still its dust."""
+    if not spans or judged.is_explained is None:
+        return judged
+    explained = judged.is_explained.copy()
+    names = np.array(judged.band)
+    for start, end in spans:
+        until = end + _TAIL_SPANS * (end - start)
+        late = (judged.bmjd_tdb >= start) & (judged.bmjd_tdb <= until)
+        for name in np.unique(names[late]):
+            mine = np.flatnonzero(late & (names == name))
+            calm = judged.is_quiet[mine] & (judged.bmjd_tdb[mine] > end)
+            explained[mine[: int(np.argmax(calm)) if calm.any() else mine.size]] = True
+    return replace(judged, is_explained=explained)
+
+
+def rejected_spans(record: SystemRecord) -> list[tuple[float, float]]:
+    """When a system's light held an excess of which somebody said that it is no episode.
+
+    Parameters
+    ----------
+    record : SystemRecord
+        The system and its episodes.
+
+    Returns
+    -------
+    list of (float, float)
+        From and until (``bmjd_tdb``): the dates of each rejected episode with their errors, and a month.
+
+    Notes
+    -----
+    Accuracy: a convention, not a measurement.
+
+    Source: project convention, common practice.
+    """
+    spans = []
+    for episode in record.episodes:
+        moments = [d.moment for d in (episode.onset, episode.maximum, episode.end) if d is not None]
+        if episode.state == "rejected" and moments:
+            first = min(m.bmjd_tdb - (m.minus_d or 0.0) for m in moments)
+            last = max(m.bmjd_tdb + (m.plus_d or 0.0) for m in moments)
+            spans.append((first - _REJECTED_D, last + _REJECTED_D))
+    return spans
 
 
 def confirmed_spans(record: SystemRecord) -> list[tuple[float, float, int | None]]:

@@ -8,6 +8,7 @@ from datetime import UTC
 from typing import BinaryIO
 
 import numpy as np
+from numpy.typing import NDArray
 from sqlalchemy import Connection
 
 from campaign.catalogue import bulk, mappings, sites, store, systems
@@ -25,6 +26,7 @@ from campaign.model.loading import (
     TableMapping,
     Understood,
 )
+from campaign.model.suspicion import Suspicion
 from campaign.model.systems import Site, System
 from campaign.reading.columnfields import field_named
 from campaign.reading.columnnames import understand
@@ -278,13 +280,21 @@ class _Entry:
             if added
             else f"kept the mapping {quoted(self._wanted.keep_mapping or '')}"
         )
+        suspicions = self._suspicions(writing.connection, fresh) if kind == "photometry" and added else ()
         self._told(FINISHING, 0, None)
         return replace(
             result,
             added=added,
+            suspicions=suspicions,
             kept_mapping=self._wanted.keep_mapping,
             operation_id=writing.operation_id if writing.changed else None,
         )
+
+    def _suspicions(self, connection: Connection, fresh: NDArray[np.intp]) -> tuple[Suspicion, ...]:
+        from campaign.studies.load_suspicions import load_suspicions
+
+        numbers = np.array([system.id for system in self._systems])[self._rows.system[fresh]]
+        return load_suspicions(connection, numbers, self._columns.numbers["bmjd_tdb"][fresh], self._now_mjd)
 
     def _refuse_changed(self, connection: Connection) -> None:
         """Names and positions must still be those that the rows were read by."""

@@ -16,6 +16,7 @@ from campaign.model.measured import Measured
 from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
 from campaign.model.shown import Logged, LoggedEntry
+from campaign.model.suspicion import Suspicion
 from campaign.model.systems import Site
 from campaign.reading.instants import describe_instant, read_instant
 from campaign.studies.instants import moment_of, spoken_moment
@@ -24,10 +25,12 @@ from campaign.studies.quietness import (
     CONSECUTIVE_SIGMA,
     MINIMUM_LEVEL_POINTS,
     JudgedPhotometry,
-    suspected_since,
+    suspicious_points,
 )
+from campaign.studies.suspicion import recent_start, suspicion_of
 
 _MJD_OF_UNIX_EPOCH = 40_587.0
+_SAME_INSTANT_D = 1e-7
 
 
 def log_observations(
@@ -97,7 +100,7 @@ def log_observations(
             entries.append(LoggedEntry(number, known, observation))
         kinds = ", ".join(sorted({e.observation.kind for e in entries}))
         writing.summarise(f"logged {kinds} of {system.name}")
-        knowledge, suspected = _knowledge(writing.connection, system.id, moment, entries)
+        knowledge, suspicion = _knowledge(writing.connection, system.id, moment, entries)
     return Logged(
         system=system.name,
         understood=describe_instant(instant),
@@ -106,7 +109,8 @@ def log_observations(
         site=site.name if site is not None else None,
         entries=tuple(entries),
         knowledge=knowledge,
-        suspected=suspected,
+        suspected=suspicion is not None,
+        suspicion=suspicion,
         warnings=tuple(warnings),
     )
 
@@ -142,23 +146,26 @@ def _warnings(instant: TypedInstant, now: datetime, site: Site | None, measured:
 
 def _knowledge(
     connection: Connection, system_id: int, moment: Moment, entries: Sequence[LoggedEntry]
-) -> tuple[tuple[str, ...], bool]:
-    """What the catalogue now knows, in a sentence a band or a kind; and whether an onset is suspected."""
+) -> tuple[tuple[str, ...], Suspicion | None]:
+    """What the catalogue now knows, in a sentence a band or a kind; and an onset that is now suspected."""
     lines: list[str] = []
-    suspected = False
+    suspicion = None
     bands = [e.observation for e in entries if e.observation.kind == "photometry"]
     if bands:
         record, judged = _judge_now(connection, system_id, moment.bmjd_tdb)
         for observation in bands:
-            line, strong = _verdict(record, judged, observation)
+            line, found = _verdict(record, judged, observation)
             lines.append(line)
-            suspected |= strong
+            suspicion = found or suspicion
+        if suspicion is not None:
+            lines.append(f"confirm it with: {suspicion.confirm}")
+            lines.append(f"or reject it with: {suspicion.reject}")
     for kind in dict.fromkeys(e.observation.kind for e in entries):
         if kind == "photometry":
             continue
         count = len(observations.observations_of(connection, [system_id], [kind]))
         lines.append(f"{count} {kind if count == 1 else _plural(kind)} of this system logged so far")
-    return tuple(lines), suspected
+    return tuple(lines), suspicion
 
 
 def _plural(kind: str) -> str:
@@ -176,33 +183,39 @@ def _judge_now(connection: Connection, system_id: int, as_of: float) -> tuple[Sy
     return record, judge(record, arrays, max(as_of, float(arrays.bmjd_tdb.max())))
 
 
-def _verdict(record: SystemRecord, judged: JudgedPhotometry, observation: Observation) -> tuple[str, bool]:
+def _verdict(
+    record: SystemRecord, judged: JudgedPhotometry, observation: Observation
+) -> tuple[str, Suspicion | None]:
     band, at = observation.band or "?", observation.moment.bmjd_tdb
     if observation.quality != "good":
-        return f"{band}: {observation.quality}, so nothing is concluded from it", False
+        return f"{band}: {observation.quality}, so nothing is concluded from it", None
     here = np.flatnonzero(np.abs(judged.bmjd_tdb - at) < 1e-7)
     position = next((int(i) for i in here if judged.band[int(i)] == observation.band), None)
     if position is None or (np.isnan(judged.excess_sigma[position]) and not judged.is_quiet[position]):
         if position is not None and observation.limit_side is not None:
-            return f"{band}: the limit says nothing about an excess here", False
+            return f"{band}: the limit says nothing about an excess here", None
         return (
             f"{band}: no stellar level yet; it takes {MINIMUM_LEVEL_POINTS} points of this band and source "
             "outside episodes"
-        ), False
+        ), None
     if judged.is_quiet[position]:
         latest = at >= float(judged.bmjd_tdb.max()) - 1e-7
-        return f"{band}: quiet, no onset {'yet' if latest else 'then'}", False
+        return f"{band}: quiet, no onset {'yet' if latest else 'then'}", None
     sigma = float(judged.excess_sigma[position])
     if sigma < CONSECUTIVE_SIGMA:
-        return f"{band}: too uncertain to tell an excess", False
+        return f"{band}: too uncertain to tell an excess", None
     text = f"{band}: {sigma:.1f} sigma above the stellar level"
     known = _known_episode(record, at)
     if known is not None:
-        return f"{text}, {known}", False
-    # The same two criteria as for the status: one strong excess, or a second one within a month.
-    if suspected_since(judged, at - CONSECUTIVE_D, at) is not None:
-        return f"{text}: onset suspected, confirm it", True
-    return f"{text}: observe again within {CONSECUTIVE_D:.0f} d", False
+        return f"{text}, {known}", None
+    # The same criteria as for the status: one strong excess, or a second one within a month.
+    month = suspicious_points(judged, at - CONSECUTIVE_D, at)
+    if month.size and judged.bmjd_tdb[month[-1]] >= at - _SAME_INSTANT_D:
+        # Since when: of all that is suspicious and not yet explained.
+        suspicion = suspicion_of(record, judged, recent_start(record, at), at)
+        if suspicion is not None:
+            return f"{text}: onset suspected since {suspicion.since_utc[:10]}", suspicion
+    return f"{text}: observe again within {CONSECUTIVE_D:.0f} d", None
 
 
 def _known_episode(record: SystemRecord, at: float) -> str | None:

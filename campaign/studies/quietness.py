@@ -21,6 +21,13 @@ DETECTABLE_MAG = 0.15
 SINGLE_SIGMA = 5.0
 CONSECUTIVE_SIGMA = 3.0
 CONSECUTIVE_D = 30.0
+# A wild point that its own source contradicts within so many days is no onset: dust does not go as fast.
+CONTRADICTED_D = 2.0
+# Standard error of a scaled median absolute deviation of n points, times the root of n: its efficiency is
+# 37 % of that of the standard deviation (Rousseeuw & Croux 1993, JASA 88, 1273).
+SCATTER_ERROR = 1.16
+# Where a system has had wild points, a lone one must stand out from them by this factor.
+WILD_FACTOR = 1.2
 
 
 class StellarLevel(NamedTuple):
@@ -64,13 +71,16 @@ class JudgedPhotometry:
 
     ``excess_sigma`` is the brightening over the level of its own band and source in units of its own
     error and that level's scatter (NaN where no level is known); ``is_quiet`` marks points that would
-    have shown an excess and did not.
+    have shown an excess and did not. ``single_sigma`` is what a lone point must reach to be suspicious: 5
+    (where it is None), and the scatter's own error; ``is_explained`` marks points inside rejected episodes.
     """
 
     bmjd_tdb: FloatArray
     excess_sigma: FloatArray
     is_quiet: NDArray[np.bool_]
     band: tuple[str, ...]
+    single_sigma: FloatArray | None = None
+    is_explained: NDArray[np.bool_] | None = None
 
     @property
     def last_quiet(self) -> float | None:
@@ -86,6 +96,7 @@ def judge_photometry(
     band: Sequence[str],
     source: Sequence[str],
     episodes: Sequence[tuple[float, float]],
+    rejected: Sequence[tuple[float, float]] = (),
 ) -> JudgedPhotometry:
     """Judge every point against the stellar level of its own band and source.
 
@@ -102,6 +113,8 @@ def judge_photometry(
         instrument does not look like an onset.
     episodes : sequence of (float, float)
         Spans known to hold dust, ``bmjd_tdb``; left out of the level.
+    rejected : sequence of (float, float)
+        Spans of which somebody said that their excess is no episode, ``bmjd_tdb``.
 
     Returns
     -------
@@ -126,12 +139,14 @@ def judge_photometry(
         inside |= (times >= start) & (times <= end)
     excess = np.full(times.size, np.nan)
     quiet = np.zeros(times.size, dtype=bool)
+    bound = np.full(times.size, SINGLE_SIGMA)
     for key in np.unique(keys):
         mine = keys == key
         found = stellar_level(mags[mine & ~inside & (sides == 0)])
         if found is None:
             continue
         level, scatter, points = found
+        bound[mine] *= 1.0 + SCATTER_ERROR / np.sqrt(points)
         own = np.where(np.isnan(errors), scatter, errors)
         sigma = np.sqrt(own**2 + scatter**2 + scatter**2 / points)
         measured = mine & (sides == 0)
@@ -141,7 +156,50 @@ def judge_photometry(
         quiet |= mine & (sides > 0) & (mags > level - DETECTABLE_MAG)
         saturated = mine & (sides < 0)
         excess[saturated] = ((level - mags) / sigma)[saturated].clip(min=0.0)
-    return JudgedPhotometry(times, excess, quiet, tuple(bands))
+    explained = np.zeros(times.size, dtype=bool)
+    for start, end in rejected:
+        explained |= (times >= start) & (times <= end)
+    return JudgedPhotometry(
+        times,
+        excess,
+        quiet,
+        tuple(bands),
+        np.maximum(bound, _wild_sigma(times, excess, quiet, keys)),
+        explained,
+    )
+
+
+def _wild_sigma(
+    times: FloatArray, excess: FloatArray, quiet: NDArray[np.bool_], keys: NDArray[np.str_]
+) -> FloatArray:
+    """What each point must reach to stand out from the wild points before it.
+
+    Dust only adds light: a point as far below the level is wild, and so is a bright one whose source is quiet
+    again within days, or at its next point within a month. Their size is that of the wild points to come.
+    """
+    bound = np.full(times.size + 1, SINGLE_SIGMA)
+    with np.errstate(invalid="ignore"):
+        far = np.flatnonzero(np.abs(excess) >= SINGLE_SIGMA)
+    if not far.size:
+        return bound[:-1]
+    contradicted = np.zeros(times.size, dtype=bool)
+    # Only of the same source: another's level may have been taken in dust.
+    for key in np.unique(keys[far]):
+        same = np.flatnonzero((keys == key) & ~np.isnan(excess))
+        t, calm = times[same], quiet[same]
+        before = np.concatenate([[0], np.cumsum(calm)])
+        for k in np.flatnonzero(np.abs(excess[same]) >= SINGLE_SIGMA).tolist():
+            i, known_from = int(same[k]), int(same[k]) + 1
+            if excess[i] > 0.0:
+                first, last = np.searchsorted(t, [t[k] - CONTRADICTED_D, t[k] + CONTRADICTED_D])
+                contradicted[i] = before[last] > before[first]
+                after = k + 1
+                if not (after < same.size and calm[after] and t[after] - t[k] <= CONSECUTIVE_D):
+                    continue
+                known_from = int(same[after]) + 1
+            bound[known_from] = max(bound[known_from], WILD_FACTOR * float(np.abs(excess[i])))
+    grown: FloatArray = np.maximum.accumulate(bound)[:-1]
+    return np.where(contradicted, np.inf, grown)
 
 
 def suspected_since(judged: JudgedPhotometry, start: float, end: float) -> float | None:
@@ -166,16 +224,42 @@ def suspected_since(judged: JudgedPhotometry, start: float, end: float) -> float
 
     Source: project convention, common practice.
     """
+    found = suspicious_points(judged, start, end)
+    return float(judged.bmjd_tdb[found[0]]) if found.size else None
+
+
+def suspicious_points(judged: JudgedPhotometry, start: float, end: float) -> NDArray[np.int64]:
+    """Places of the points between two instants that make an onset suspected.
+
+    Parameters
+    ----------
+    judged : JudgedPhotometry
+        Verdicts, in order of time.
+    start, end : float
+        Span to look at, ``bmjd_tdb``.
+
+    Returns
+    -------
+    ndarray of int
+        In order of time: points at 5 sigma (more, where the system has had wild points), and pairs of
+        consecutive points at 3 sigma within 30 d.
+
+    Notes
+    -----
+    Accuracy: under one false alarm in 1,000 observations of quiet stars with red noise and 1 % of wild
+    points (tests/studies/test_studies_alarm.py).
+
+    Source: project convention, common practice.
+    """
     chosen = (judged.bmjd_tdb >= start) & (judged.bmjd_tdb <= end) & ~np.isnan(judged.excess_sigma)
-    times, sigma = judged.bmjd_tdb[chosen], judged.excess_sigma[chosen]
-    for i in range(times.size):
-        if sigma[i] >= SINGLE_SIGMA:
-            return float(times[i])
-        if (
-            i + 1 < times.size
-            and sigma[i] >= CONSECUTIVE_SIGMA
-            and sigma[i + 1] >= CONSECUTIVE_SIGMA
-            and times[i + 1] - times[i] <= CONSECUTIVE_D
-        ):
-            return float(times[i])
-    return None
+    if judged.is_explained is not None:
+        chosen &= ~judged.is_explained
+    places = np.flatnonzero(chosen)
+    times, sigma = judged.bmjd_tdb[places], judged.excess_sigma[places]
+    bound = SINGLE_SIGMA if judged.single_sigma is None else judged.single_sigma[places]
+    alarming = sigma >= bound
+    high = sigma >= CONSECUTIVE_SIGMA
+    pair = high[:-1] & high[1:] & (np.diff(times) <= CONSECUTIVE_D)
+    alarming[:-1] |= pair
+    alarming[1:] |= pair
+    return places[alarming]

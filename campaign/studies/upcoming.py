@@ -19,6 +19,7 @@ from campaign.studies.lightcurves import CataloguedCurves
 from campaign.studies.preparing import Prepared, Question, prepare
 from campaign.studies.resolvable import resolvable_events
 from campaign.studies.status import OnsetState, needs_photometry, onset_state
+from campaign.studies.suspicion import suspicions
 
 # More than this and nobody reads a timeline.
 TIMELINE_SYSTEMS = 200
@@ -87,6 +88,7 @@ def forecast_campaign(
         seed=question.seed,
         assumptions=_assumptions(prepared),
         warnings=tuple(_cut_short(prepared, forecaster, listed)),
+        suspicions=suspicions(prepared, photometry, question.as_of),
     )
 
 

@@ -194,7 +194,10 @@ def test_a_strong_excess_suspects_an_onset(lantern):
     quiet_past(lantern)
     logged = log(lantern, magnitude(7.1))
     assert logged.suspected
-    assert "onset suspected, confirm it" in logged.knowledge[0]
+    assert logged.knowledge[0].endswith("onset suspected since 2031-04-06")
+    assert logged.knowledge[1].startswith("confirm it with: campaign episodes add 'Lantern 3' --onset ")
+    assert logged.knowledge[2] == "or reject it with: campaign amend N --quality bad"
+    assert logged.suspicion is not None and logged.suspicion.bands == ("K",)
 
 
 def test_a_weak_excess_asks_for_another_look_and_the_second_one_suspects(lantern):
