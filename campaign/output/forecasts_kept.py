@@ -59,15 +59,15 @@ _GROUPS = (
     Column("verdict", shrinks=True, min_width=10),
 )
 _SCORED = (
-    Column("system", shrinks=True),
+    Column("system", shrinks=True, min_width=10),
     Column("event"),
     Column("lead", "right"),
     Column("forecast"),
     Column("±68 % (d)", "right", drop=3),
-    Column("came", shrinks=True, min_width=10),
+    Column("came", shrinks=True, min_width=16),
     Column("miss (d)", "right"),
     Column("CRPS (d)", "right"),
-    Column("PIT", "right"),
+    Column("PIT", "right", drop=1, name="PIT (share of the forecast before the outcome)"),
     Column("last + P", "right", drop=2, name="CRPS of last date plus period"),
     Column("log", "right", drop=5, name="log score"),
     Column("keeping", shrinks=True, drop=4),
