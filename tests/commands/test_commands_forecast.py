@@ -11,8 +11,8 @@ import pytest
 
 RunCampaign = Callable[..., Any]
 RULE = ("rule", "set", "LN3", "--lag-onset", "-40±10 d", "--lag-end", "200±20 d")
-# The orbit's periastron of BJD 2461234.2 less 40 d is 2026-05-29, and ten periods later 2112-01-15: beyond any
-# day on which these tests are run, since an entry made after an event may know it.
+# The orbit's periastron of BJD 2461234.2 less 40 d is 2026-05-29, and ten periods later 2112-01-18: beyond
+# any day on which these tests are run, since an entry made after an event may know it.
 KEEP = ("forecast", "keep", "--within", "100yr", "--draws", "500")
 
 
