@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import fields, replace
 
@@ -87,7 +88,7 @@ def _row(episode: FoundEpisode) -> tuple[str, ...]:
         str(episode.number),
         _onset(episode),
         "" if best is None else _date(best.date) + ("" if best.reached else ", so far"),
-        "" if best is None else f"{best.excess_mag:.2f} mag",
+        "" if best is None else f"{_brightening(best)} mag",
         _date(episode.end, with_band=False),
         _date(episode.half, with_band=False),
         _days(episode.rise_d),
@@ -140,7 +141,15 @@ def _render_notes(screen: Screen, episodes: Sequence[FoundEpisode]) -> None:
 
 
 def _other_band(maximum: FoundMaximum) -> str:
-    return f"maximum {_date(maximum.date)}, brighter by {maximum.excess_mag:.2f} mag"
+    return f"maximum {_date(maximum.date)}, brighter by {_brightening(maximum)} mag"
+
+
+def _brightening(maximum: FoundMaximum) -> str:
+    """By how much the whole became brighter, with the error to first order where the dust's flux has one."""
+    if maximum.excess.plus is None:
+        return f"{maximum.excess_mag:.2f}"
+    error = 2.5 / math.log(10.0) * maximum.excess.plus / (1.0 + maximum.excess.value)
+    return f"{maximum.excess_mag:.2f} ± {error:.2f}"
 
 
 def _level_row(level: FoundLevel) -> tuple[str, ...]:
