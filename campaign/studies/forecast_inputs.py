@@ -8,6 +8,7 @@ from datetime import UTC, datetime, timedelta
 
 from sqlalchemy import Connection
 
+from campaign.catalogue.info import read_info
 from campaign.catalogue.keepings import entry_times
 from campaign.catalogue.observed import photometry_used
 from campaign.model.forecasts import EventName
@@ -48,6 +49,30 @@ def clock_of(bmjd_tdb: float) -> datetime:
     """
     day, rest = tdb_to_utc(bmjd_tdb)
     return _MJD_ZERO + timedelta(days=float(day), seconds=round(86_400.0 * float(rest)))
+
+
+def clock_ahead(connection: Connection) -> timedelta:
+    """How far the dates of a catalogue are ahead of the clock that its entries were made by.
+
+    Parameters
+    ----------
+    connection : Connection
+        To the catalogue.
+
+    Returns
+    -------
+    timedelta
+        Zero but for the invented sample, whose own date stands in for the day on which it was begun.
+
+    Notes
+    -----
+    Accuracy: 1 s. Source: the catalogue.
+    """
+    facts = read_info(connection)
+    own, begun = facts.get("sample_as_of"), facts.get("begun_at")
+    if own is None or begun is None:
+        return timedelta(0)
+    return datetime.fromisoformat(own) - datetime.fromisoformat(begun)
 
 
 def inputs_by_unit(
@@ -174,7 +199,7 @@ def reference_date(
 
 
 def containing(
-    inputs: ForecastInputs, outcome: Outcome, known_at: datetime | None
+    inputs: ForecastInputs, outcome: Outcome, known_at: datetime | None, ahead: timedelta = timedelta(0)
 ) -> tuple[tuple[Containing, ...], tuple[str, ...]]:
     """Which inputs of a forecast may contain what came of it.
 
@@ -186,6 +211,8 @@ def containing(
         What was confirmed, ``bmjd_tdb``.
     known_at : datetime or None
         Entries made later were hidden; None when entries of any date were let in knowingly.
+    ahead : timedelta
+        See ``clock_ahead``.
 
     Returns
     -------
@@ -221,7 +248,7 @@ def containing(
         add("entries", "an episode that it used is dated then or later")
     elif known_at is not None and outcome.decided_at is not None and outcome.decided_at <= known_at:
         add("entries", "the outcome was in the catalogue already when it was made")
-    at = clock_of(happened)
+    at = clock_of(happened) - ahead
     for solution in inputs.solutions:
         until = solution.data_until_bmjd_tdb
         if until is not None and until > happened:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
-from datetime import datetime
+from datetime import datetime, timedelta
 
 from campaign.catalogue import records, store, systems
 from campaign.errors import Conflict, InputRefused
@@ -23,7 +23,7 @@ from campaign.physics.calibration import LEAST_OUTCOMES
 from campaign.physics.timescales import utc_iso
 from campaign.studies.collecting import collector_at_rest
 from campaign.studies.forecast import DatedEvent
-from campaign.studies.forecast_inputs import clock_of, containing, inputs_by_unit, reference_date
+from campaign.studies.forecast_inputs import clock_ahead, clock_of, containing, inputs_by_unit, reference_date
 from campaign.studies.keep_forecasts import quantiles_of
 from campaign.studies.lightcurves import CataloguedCurves
 from campaign.studies.outcomes import KnownOutcomes
@@ -107,12 +107,14 @@ def rehearse(
         system = systems.find_system(connection, name)
         (record,) = records.load_records(connection, {system.id}, include_retired=True)
         outcomes = outcomes_of(connection, [record], as_of)[system.id]
+        ahead = clock_ahead(connection)
     past = sorted(
         (one for key, one in outcomes.by_event.items() if key[0] in events), key=lambda one: one.bmjd_tdb
     )
     if not past:
         raise _without_episodes(record, events)
-    work = _Rehearsal(db, record, outcomes, draws or DEFAULT_DRAWS, DEFAULT_SEED if seed is None else seed)
+    seed = DEFAULT_SEED if seed is None else seed
+    work = _Rehearsal(db, record, outcomes, ahead, draws or DEFAULT_DRAWS, seed)
     with collector_at_rest():
         for event in events:
             for cycle in sorted(cycle for kind, cycle in outcomes.by_event if kind == event):
@@ -179,8 +181,16 @@ def _cutoffs(entered_any_time: bool) -> str:
 class _Rehearsal:
     """Hindcasts of one system, one after another."""
 
-    def __init__(self, db: str, record: SystemRecord, outcomes: KnownOutcomes, draws: int, seed: int) -> None:
-        self._db, self._record, self._outcomes = db, record, outcomes
+    def __init__(
+        self,
+        db: str,
+        record: SystemRecord,
+        outcomes: KnownOutcomes,
+        ahead: timedelta,
+        draws: int,
+        seed: int,
+    ) -> None:
+        self._db, self._record, self._outcomes, self._ahead = db, record, outcomes, ahead
         self._draws, self._seed = draws, seed
         self.scored: list[ScoredForecast] = []
         self.unscored: list[Unscored] = []
@@ -203,7 +213,7 @@ class _Rehearsal:
             (inputs,) = inputs_by_unit(connection, dated.prepared, as_of, then.known_at)
         one = self._of_cycle(dated, event, cycle - self._outcomes.shift(inputs.episodes))
         why = self._why_not(then, dated, one)
-        kinds, words = containing(inputs, outcome, then.known_at)
+        kinds, words = containing(inputs, outcome, then.known_at, self._ahead)
         if why is not None:
             self._leave(event, cycle, lead_d, *why)
         elif kinds:
@@ -241,7 +251,7 @@ class _Rehearsal:
 
     def _known(self, as_of: float, *, entered_any_time: bool) -> Then:
         """The system as it was known at a date: the three cutoffs."""
-        known_at = None if entered_any_time else clock_of(as_of)
+        known_at = None if entered_any_time else clock_of(as_of) - self._ahead
         number = self._record.system.id
         with store.reading(self._db) as connection:
             (record,) = records.load_records(connection, {number}, known_at=known_at, include_retired=True)

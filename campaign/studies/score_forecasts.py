@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from datetime import timedelta
 
 from sqlalchemy import Connection
 
@@ -19,7 +20,7 @@ from campaign.model.verification import (
 )
 from campaign.physics.calibration import LEAST_OUTCOMES
 from campaign.physics.timescales import utc_iso
-from campaign.studies.forecast_inputs import containing
+from campaign.studies.forecast_inputs import clock_ahead, containing
 from campaign.studies.outcomes import KnownOutcomes, known_outcomes
 from campaign.studies.preparing import Question, prepare
 from campaign.studies.rows import SCATTERS
@@ -74,7 +75,8 @@ def score_forecasts(
         concerned = {one.system_id for one in kept}
         found = records.load_records(connection, concerned, include_retired=True) if kept else []
         outcomes = outcomes_of(connection, found, as_of)
-    sorted_out = _Sorted(known, outcomes)
+        ahead = clock_ahead(connection)
+    sorted_out = _Sorted(known, outcomes, ahead)
     for one in kept:
         sorted_out.take(one)
     return ForecastScores(
@@ -125,8 +127,10 @@ def outcomes_of(
 class _Sorted:
     """Kept forecasts as they are scored, refused, or left to wait."""
 
-    def __init__(self, known: Mapping[int, Keeping], outcomes: Mapping[int, KnownOutcomes]) -> None:
-        self.keepings, self.outcomes = known, outcomes
+    def __init__(
+        self, known: Mapping[int, Keeping], outcomes: Mapping[int, KnownOutcomes], ahead: timedelta
+    ) -> None:
+        self.keepings, self.outcomes, self.ahead = known, outcomes, ahead
         self.scored: list[ScoredForecast] = []
         self.unscored: list[Unscored] = []
         self.waiting = self.undatable = 0
@@ -141,7 +145,7 @@ class _Sorted:
             self.waiting += 1
             return
         keeping = self.keepings[one.keeping_id]
-        kinds, words = containing(one.inputs, outcome, keeping.known_at)
+        kinds, words = containing(one.inputs, outcome, keeping.known_at, self.ahead)
         if kinds:
             self._refuse(one, keeping, "contains-outcome", "; ".join(words), kinds)
         elif not one.quantiles_bmjd_tdb:

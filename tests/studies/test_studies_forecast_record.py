@@ -384,3 +384,18 @@ def test_moments_of_outcomes_are_those_of_the_catalogue(book, orbit):
     # An unknown error counts as none, and is told as unknown.
     assert one.outcome.minus_d is None
     assert one.outcome.bmjd_tdb == moment(ONSET_2 + 1.0).bmjd_tdb
+
+
+def test_in_the_invented_sample_its_own_date_stands_for_the_day_it_was_begun(book, orbit):
+    # Begun by a clock years ahead of its own date: nothing in it was entered after an event to come.
+    from campaign.catalogue import info
+
+    with book.writing(ONSET_2 + 500.0) as writing:
+        begun = info.read_info(writing.connection)["begun_at"]
+        info.set_info(writing, "sample_as_of", begun)
+        info.set_info(writing, "begun_at", f"{2034 + int(begun[:4]) - 2031}{begun[4:]}")
+    rule = replace(lag_rule(), note="set later by the clock")
+    book.rule(orbit, rule, ONSET_2 + 600.0)
+    book.keep(ONSET_2 + 601.0, as_of=NOW)
+    book.confirm(orbit, ONSET_2 + 3.0, ONSET_2 + 700.0)
+    assert [one.event for one in book.score().scored] == ["onset"]
