@@ -9,7 +9,7 @@ import sqlite3
 
 import pytest
 
-from campaign.catalogue import journal, observations, sites, store
+from campaign.catalogue import episodes, journal, observations, sites, store, tables
 from campaign.errors import Conflict, NotFound
 from campaign.model.systems import Site
 from campaign.studies import undo
@@ -257,3 +257,33 @@ def test_an_interrupt_between_portions_leaves_all_as_it_was(keeper, monkeypatch)
     assert keeper.newest() == before
     keeper.undo(loaded)
     assert keeper.values() == {}
+
+
+def test_an_observation_entered_beside_a_load_goes_and_comes_with_it(keeper):
+    def work(writing):
+        observations.add_observations(writing, [keeper.point(writing, "Dim", day) for day in range(3)])
+        observations.add_observation(writing, keeper.point(writing, "Faint", 1))
+
+    number = keeper.catalogue(work, "a load and one more")
+    for left in (0, 4, 0, 4):
+        number = keeper.undo(number)
+        assert len(keeper.values()) == left
+
+
+def test_what_one_command_changed_twice_goes_back_to_where_it_began(keeper):
+    keeper.episode("Dim", 1)
+
+    def work(writing):
+        episodes.decide_episode(writing, 1, "confirmed")
+        episodes.decide_episode(writing, 1, "rejected")
+        number = sites.add_site(writing, Site(0, "Cold Mesa", latitude_deg=-31.0, longitude_deg_east=-70.0))
+        writing.update(tables.sites, number, {"notes": "first"})
+        writing.update(tables.sites, number, {"notes": "second"})
+
+    twice = keeper.catalogue(work, "decided twice")
+    without = keeper.undo(twice)
+    assert keeper.record("Dim").episodes[0].state == "proposed"
+    keeper.undo(without)
+    assert keeper.record("Dim").episodes[0].state == "rejected"
+    with store.reading(keeper.db) as connection:
+        assert [site.notes for site in sites.list_sites(connection)] == ["second"]
