@@ -9,6 +9,7 @@ from dataclasses import fields, replace
 from campaign.model.curves import Curve, CurveMark
 from campaign.model.forecasts import Quantiles
 from campaign.model.found import EpisodesFound, FoundDate, FoundEpisode, FoundLevel, FoundMaximum
+from campaign.model.measured import Measured
 from campaign.output.console import Screen
 from campaign.output.documents import document, plain
 from campaign.output.lightcurve import render_marked_curves
@@ -88,7 +89,7 @@ def _row(episode: FoundEpisode) -> tuple[str, ...]:
         str(episode.number),
         _onset(episode),
         "" if best is None else _date(best.date) + ("" if best.reached else ", so far"),
-        "" if best is None else f"{_brightening(best)} mag",
+        "" if best is None else _brightening(best),
         _date(episode.end, with_band=False),
         _date(episode.half, with_band=False),
         _days(episode.rise_d),
@@ -141,15 +142,21 @@ def _render_notes(screen: Screen, episodes: Sequence[FoundEpisode]) -> None:
 
 
 def _other_band(maximum: FoundMaximum) -> str:
-    return f"maximum {_date(maximum.date)}, brighter by {_brightening(maximum)} mag"
+    return f"maximum {_date(maximum.date)}, brighter by {_brightening(maximum)}"
 
 
 def _brightening(maximum: FoundMaximum) -> str:
-    """By how much the whole became brighter, with the error to first order where the dust's flux has one."""
-    if maximum.excess.plus is None:
-        return f"{maximum.excess_mag:.2f}"
-    error = 2.5 / math.log(10.0) * maximum.excess.plus / (1.0 + maximum.excess.value)
-    return f"{maximum.excess_mag:.2f} ± {error:.2f}"
+    """By how much the whole became brighter, with the errors that those of the dust's flux make."""
+    excess = maximum.excess
+    if excess.minus is None or excess.plus is None:
+        return f"{maximum.excess_mag:.2f} mag"
+    ends = [
+        2.5 * math.log10(1.0 + max(value, 0.0))
+        for value in (excess.value - excess.minus, excess.value + excess.plus)
+    ]
+    return number(
+        Measured(maximum.excess_mag, maximum.excess_mag - ends[0], ends[1] - maximum.excess_mag), "mag"
+    )
 
 
 def _level_row(level: FoundLevel) -> tuple[str, ...]:

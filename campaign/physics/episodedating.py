@@ -41,7 +41,8 @@ class BandTop:
     band: int
     top_bmjd_tdb: FloatArray
     amplitude: float
-    amplitude_sigma: float
+    amplitude_minus: float
+    amplitude_plus: float
     points: int
 
 
@@ -168,7 +169,8 @@ def _tops(fit: RisePosterior, bands: list[int], points: list[BandPoints]) -> tup
             band,
             posterior_summary(fit.top_bmjd_tdb[n], fit.top_density[n]),
             float(fit.amplitude[n]),
-            float(fit.amplitude_sigma[n]),
+            float(fit.amplitude_errors[n, 0]),
+            float(fit.amplitude_errors[n, 1]),
             int((points[n].limit_side == 0).sum()),
         )
         for n, band in enumerate(bands)
@@ -295,11 +297,13 @@ def _begun_inside(curve: JudgedCurve, span: EpisodeSpan, first_bright: float) ->
         # The top may have been before the curve: what is known is the highest that was seen.
         until = top_range(curve, span, span.band)[1]
         height = smoothed(np.expm1(curve.ln_excess[span.points])).max()
+        noise = float((1.0 + height) * np.median(curve.sigma_ln[span.points]))
         top = BandTop(
             span.band,
             np.array([first_bright, first_bright, until, first_bright, until, 0.5 * (until - first_bright)]),
             float(height),
-            float((1.0 + height) * np.median(curve.sigma_ln[span.points])),
+            noise,
+            noise,
             int(span.points.size),
         )
     return DatedSpan(

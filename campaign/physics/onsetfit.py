@@ -62,9 +62,9 @@ class RisePosterior:
     """Posterior of onset and, for each band, of top and amplitude; grids of equal steps.
 
     ``onset_bmjd_tdb`` and ``onset_density`` (per day), ``top_bmjd_tdb`` and ``top_density`` by band,
-    ``amplitude`` and ``amplitude_sigma`` (in units of the stars' flux) by band, ``shape_share`` in the order
-    of ``riseshapes.RISE_NAMES``. ``chi2`` and ``dof`` are those of the best model over all bands;
-    ``at_bound`` says that the onset leans on the earliest date that was allowed.
+    ``amplitude`` and ``amplitude_errors`` (sizes below and above) by band in units of the stars' flux,
+    ``shape_share`` in the order of ``riseshapes.RISE_NAMES``. ``chi2`` and ``dof`` are those of the best
+    model over all bands; ``at_bound`` says that the onset leans on the earliest date that was allowed.
     """
 
     onset_bmjd_tdb: FloatArray
@@ -72,7 +72,7 @@ class RisePosterior:
     top_bmjd_tdb: tuple[FloatArray, ...]
     top_density: tuple[FloatArray, ...]
     amplitude: FloatArray
-    amplitude_sigma: FloatArray
+    amplitude_errors: FloatArray
     shape_share: FloatArray
     chi2: float
     dof: int
@@ -166,14 +166,14 @@ def fit_rise(bands: Sequence[BandPoints], earliest: float, latest: float) -> Ris
         onsets = _zoomed(onsets, marginal, _ONSETS, _DEEPEST)
     shape = _logsumexp(ln, axis=1)
     share = np.exp(shape - shape.max())
-    amplitude, amplitude_sigma = _amplitudes(grids, ln, own, by_band, inflation)
+    amplitude, amplitude_errors = _amplitudes(grids, ln, own, by_band, inflation)
     return RisePosterior(
         onsets,
         _density(onsets, marginal),
         tuple(g.tops for g in grids),
         tuple(_density(g.tops, t) for g, t in zip(grids, top_lns, strict=True)),
         amplitude,
-        amplitude_sigma,
+        amplitude_errors,
         share / share.sum(),
         chi2,
         dof,
@@ -434,8 +434,8 @@ def _amplitudes(
     grids: Sequence[_BandGrid], ln: FloatArray, own: Sequence[FloatArray], by_band: Sequence[FloatArray],
     inflation: float,
 ) -> tuple[FloatArray, FloatArray]:  # fmt: skip
-    """Mean and error of each band's amplitude: its own and what follows from the unknown top and shape."""
-    value, sigma = [], []
+    """Median and two-sided error of each band's amplitude: its own and what the unknown top and shape add."""
+    value, sizes = [], []
     for grid, mine, total in zip(grids, own, by_band, strict=True):
         joint = mine + (ln - total)
         weight = np.exp(joint - joint.max())
@@ -443,9 +443,13 @@ def _amplitudes(
         best = np.argmax(grid.ln, axis=3)[..., None]
         amplitude = np.take_along_axis(grid.amplitude, best, axis=3)[..., 0]
         information = np.take_along_axis(grid.information, best, axis=3)[..., 0]
-        weight /= weight.sum()
-        mean = float((weight * amplitude).sum())
-        spread = float((weight * (amplitude - mean) ** 2).sum())
-        value.append(mean)
-        sigma.append(np.sqrt(spread + inflation * float((weight / information).sum())))
-    return np.array(value), np.array(sigma)
+        noise = np.sqrt(inflation / information)
+        # Quantiles, for where the top is unseen a few models would put it anywhere.
+        order = np.argsort(amplitude, axis=None)
+        below = np.cumsum(weight.ravel()[order])
+        middle, low, high = np.interp(
+            np.array(SUMMARY[:3]) * below[-1], below - 0.5 * weight.ravel()[order], amplitude.ravel()[order]
+        )
+        value.append(middle)
+        sizes.append(np.hypot([middle - low, high - middle], noise.flat[int(np.argmax(weight))]))
+    return np.array(value), np.array(sizes)

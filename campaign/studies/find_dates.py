@@ -145,7 +145,7 @@ def _maximum(top: BandTop, band: str, dated: DatedSpan) -> FoundMaximum:
     amplitude = max(top.amplitude, 0.0)
     return FoundMaximum(
         date=found_date(top.top_bmjd_tdb, band, _top_is_told(top, dated)),
-        excess=Measured(amplitude, top.amplitude_sigma, top.amplitude_sigma),
+        excess=Measured(amplitude, top.amplitude_minus, top.amplitude_plus),
         excess_mag=float(2.5 * np.log10(1.0 + amplitude)),
         points=top.points,
         reached=dated.top_is_reached,
