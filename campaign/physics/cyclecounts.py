@@ -18,8 +18,9 @@ from campaign.physics.datedline import DatedLine, fit_dated_line
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
-# Counts whose likelihood is below this share of the best one's do not fit the dates.
-FITS_SHARE = 1e-3
+# Counts whose likelihood is below this share of the best one's do not fit the dates. The best is often a very
+# short period that fits by chance and that quiet observations exclude: a mild bound would lose the true one.
+FITS_SHARE = 1e-6
 # A period shorter than so many of its own errors of dates and scatter fits anything.
 _MEANINGFUL = 6.0
 MOST_CYCLES = 400

@@ -15,6 +15,7 @@ from campaign.physics.cyclecounts import CycleCount
 from campaign.physics.intervals import PROBABILITIES
 from campaign.physics.linearephemeris import fit_ephemeris
 from campaign.physics.missedcycles import missed_log_chance
+from campaign.physics.recurrence import RecurrencePrediction
 from campaign.physics.timescales import utc_iso
 from campaign.studies.refine_dates import ChosenDates
 from campaign.studies.refine_quiet import QuietEvidence
@@ -24,6 +25,10 @@ EXCLUDED_CHANCE = 0.01
 # An excess where a count wants an episode speaks for it, but nobody confirmed it: no more than so much.
 MOST_FOR_EXCESS = 20.0
 _QUIET, _IN_PART, _EXCESS = 0.05, 0.5, 3.0
+# A count against which so much was found (ln) is not looked at any further.
+_HOPELESS = -30.0
+# Beside those that are open, a count is listed only if the dates make it so probable, relative to the best.
+_LISTED_SHARE = 1e-3
 # An orbit decides between counts that the observations leave open, within so many sigma.
 _AGREES_SIGMA = 3.0
 
@@ -66,11 +71,9 @@ def weigh_counts(
 
     Source: DEVELOPERS.md (refined solutions).
     """
-    missed = [_missed(dates, count, quiet) for count in counts]
-    quiet_ln = [sum(min(ln, 0.0) for _, ln in found) for found in missed]
-    excess_ln = [
-        min(sum(max(ln, 0.0) for _, ln in found), float(np.log(MOST_FOR_EXCESS))) for found in missed
-    ]
+    missed = [_missed(count, quiet) for count in counts]
+    quiet_ln = [sum(min(one.ln, 0.0) for one in found) for found in missed]
+    excess_ln = [min(sum(max(one.ln, 0.0) for one in found), np.log(MOST_FOR_EXCESS)) for found in missed]
     total = np.array(
         [c.log_evidence + q + e for c, q, e in zip(counts, quiet_ln, excess_ln, strict=True)], dtype=float
     )
@@ -78,13 +81,16 @@ def weigh_counts(
     share = np.exp(total - total.max())
     share /= share.sum()
     most = max(q + e for q, e in zip(quiet_ln, excess_ln, strict=True))
+    excluded = [q - most < np.log(EXCLUDED_CHANCE) for q in quiet_ln]
+    fits = max(c.log_evidence for c, out in zip(counts, excluded, strict=True) if not out)
+    order = [place for place in order if counts[place].log_evidence - fits > np.log(_LISTED_SHARE)]
     listed = []
     for number, place in enumerate(order, start=1):
         count = counts[place]
         listed.append(
             _told(
-                number, dates, count, missed[place], quiet_ln[place], float(share[place]),
-                quiet_ln[place] - most < np.log(EXCLUDED_CHANCE), orbit,
+                number, dates, count, missed[place], quiet_ln[place], float(share[place]), excluded[place],
+                orbit,
             )
         )  # fmt: skip
     ordered = tuple(counts[place] for place in order)
@@ -103,36 +109,52 @@ def _best(listed: Sequence[CycleCounting]) -> int:
     return 0
 
 
-def _missed(
-    dates: ChosenDates, count: CycleCount, quiet: QuietEvidence | None
-) -> list[tuple[MissedCycle, float]]:
-    """Cycles between the dates without a known episode, with ln of the chance of what was observed."""
-    found: list[tuple[MissedCycle, float]] = []
+@dataclass(frozen=True, slots=True)
+class _Between:
+    """A cycle between the dates without a known episode, and ln of the chance of what was observed then."""
+
+    cycle: int
+    predicted: RecurrencePrediction
+    ln: float
+
+
+def _missed(count: CycleCount, quiet: QuietEvidence | None) -> list[_Between]:
+    found: list[_Between] = []
     if quiet is None or quiet.profile is None:
         return found
     known = set(count.cycles.tolist())
-    offset = _offset(dates, count)
+    against = 0.0
     for cycle in range(int(count.cycles[0]) + 1, int(count.cycles[-1])):
         if cycle in known:
             continue
         predicted = count.line.mixture(count.line.column(cycle), with_scatter=True)
         ln = missed_log_chance(quiet.profile, predicted)
-        q = predicted.quantiles_d(PROBABILITIES)
-        iso = utc_iso(q)
+        found.append(_Between(cycle, predicted, ln))
+        against += min(ln, 0.0)
+        if against < _HOPELESS:
+            break
+    return found
+
+
+def _told_missed(found: list[_Between], offset: int) -> tuple[MissedCycle, ...]:
+    if not found:
+        return ()
+    quantiles = np.array([one.predicted.quantiles_d(PROBABILITIES) for one in found])
+    iso = utc_iso(quantiles.ravel())
+    told = []
+    for place, (one, q) in enumerate(zip(found, quantiles, strict=True)):
         median, low68, high68, low95, high95 = (float(value) for value in q)
-        found.append(
-            (
-                MissedCycle(
-                    cycle + offset,
-                    Quantiles(median, predicted.sigma_d, low68, high68, low95, high95),
-                    UtcQuantiles(iso[0], iso[1], iso[2], iso[3], iso[4]),
-                    _verdict(ln),
-                    float(np.exp(min(ln, 50.0))),
-                ),
-                ln,
+        dates = iso[5 * place : 5 * place + 5]
+        told.append(
+            MissedCycle(
+                one.cycle + offset,
+                Quantiles(median, one.predicted.sigma_d, low68, high68, low95, high95),
+                UtcQuantiles(dates[0], dates[1], dates[2], dates[3], dates[4]),
+                _verdict(one.ln),
+                float(np.exp(min(one.ln, 50.0))),
             )
         )
-    return found
+    return tuple(told)
 
 
 def _verdict(ln: float) -> MissedVerdict:
@@ -150,7 +172,7 @@ def _offset(dates: ChosenDates, count: CycleCount) -> int:
 
 
 def _told(
-    number: int, dates: ChosenDates, count: CycleCount, missed: list[tuple[MissedCycle, float]],
+    number: int, dates: ChosenDates, count: CycleCount, missed: list[_Between],
     quiet_ln: float, share: float, excluded: bool, orbit: Solution | None,
 ) -> CycleCounting:  # fmt: skip
     offset = _offset(dates, count)
@@ -174,7 +196,7 @@ def _told(
         quiet_chance=float(np.exp(quiet_ln)),
         probability=share,
         excluded=bool(excluded),
-        missed=tuple(cycle for cycle, _ in missed),
+        missed=_told_missed(missed, offset),
         against_orbit_sigma=_against_orbit(float(mean[1]), sigma, orbit),
     )
 
