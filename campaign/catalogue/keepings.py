@@ -149,6 +149,15 @@ def count_kept(connection: Connection) -> dict[int, tuple[int, int, int]]:
     return {row[0]: (row[1], row[2], row[3]) for row in rows.all()}
 
 
+def systems_kept(connection: Connection, keeping_ids: Collection[int] | None = None) -> set[int]:
+    """Numbers of the systems with a kept forecast in use."""
+    columns = kept_forecasts.c
+    statement = select(columns.system_id).where(columns.withdrawn_at.is_(None)).distinct()
+    if keeping_ids is not None:
+        statement = statement.where(columns.keeping_id.in_(sorted(keeping_ids)))
+    return set(connection.execute(statement).scalars())
+
+
 def load_kept(connection: Connection, keeping_ids: Collection[int] | None = None) -> list[KeptForecast]:
     """Kept forecasts in use, in the order in which they were kept."""
     columns = kept_forecasts.c

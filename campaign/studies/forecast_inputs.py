@@ -199,7 +199,7 @@ def reference_date(
 
 
 def containing(
-    inputs: ForecastInputs, outcome: Outcome, known_at: datetime | None, ahead: timedelta = timedelta(0)
+    inputs: ForecastInputs, outcome: Outcome, as_of: float, known_at: datetime | None, ahead: timedelta
 ) -> tuple[tuple[Containing, ...], tuple[str, ...]]:
     """Which inputs of a forecast may contain what came of it.
 
@@ -209,6 +209,8 @@ def containing(
         What it used; instants ``bmjd_tdb``.
     outcome : Outcome
         What was confirmed, ``bmjd_tdb``.
+    as_of : float
+        The instant of the question, ``bmjd_tdb``.
     known_at : datetime or None
         Entries made later were hidden; None when entries of any date were let in knowingly.
     ahead : timedelta
@@ -235,6 +237,7 @@ def containing(
         kinds[kind] = None
         words.append(text)
 
+    at = clock_of(happened) - ahead
     newest = inputs.photometry.newest_bmjd_tdb
     if newest is not None and newest > happened:
         add("observations", "the light curve that it used goes on after the event")
@@ -248,7 +251,8 @@ def containing(
         add("entries", "an episode that it used is dated then or later")
     elif known_at is not None and outcome.decided_at is not None and outcome.decided_at <= known_at:
         add("entries", "the outcome was in the catalogue already when it was made")
-    at = clock_of(happened) - ahead
+    elif known_at is not None and as_of < happened and known_at > at:
+        add("entries", "it was made for a date before the event from entries made after it")
     for solution in inputs.solutions:
         until = solution.data_until_bmjd_tdb
         if until is not None and until > happened:

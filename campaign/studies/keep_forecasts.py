@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import replace
+from datetime import timedelta
 
 from sqlalchemy import Connection
 
@@ -19,10 +20,9 @@ from campaign.reading.numbers import name_key
 from campaign.studies.collecting import collector_at_rest
 from campaign.studies.forecast import DatedEvent
 from campaign.studies.forecast_inputs import inputs_by_unit, reference_date
-from campaign.studies.history import entry_time
 from campaign.studies.rows import SCATTERS
 from campaign.studies.upcoming import DatedCampaign, Question, date_campaign
-from campaign.studies.watch import Campaign, mjd_of
+from campaign.studies.watch import MJD_ZERO, Campaign, mjd_of
 
 
 def keep_forecasts(
@@ -70,8 +70,9 @@ def keep_forecasts(
     """
     with collector_at_rest():
         dated = date_campaign(campaign.records, campaign.photometry, question, campaign.shells)
-    entered = entry_time(known_at, latest=True)
-    cut = stamp.at if entered is None else min(entered, stamp.at)
+    # As the campaign was loaded.
+    entered = stamp.at if known_at is None else MJD_ZERO + timedelta(days=known_at.mjd)
+    cut = min(entered, stamp.at)
     keeping = Keeping(
         0, label, question.as_of, question.start, question.end, cut, stamp.at, question.draws,
         question.seed, program.__version__,

@@ -213,7 +213,7 @@ class _Rehearsal:
             (inputs,) = inputs_by_unit(connection, dated.prepared, as_of, then.known_at)
         one = self._of_cycle(dated, event, cycle - self._outcomes.shift(inputs.episodes))
         why = self._why_not(then, dated, one)
-        kinds, words = containing(inputs, outcome, then.known_at, self._ahead)
+        kinds, words = containing(inputs, outcome, as_of, then.known_at, self._ahead)
         if why is not None:
             self._leave(event, cycle, lead_d, *why)
         elif kinds:

@@ -70,15 +70,16 @@ def score_forecasts(
         ids = None if names is None else [systems.find_system(connection, name).id for name in names]
         known = {one.id: one for one in keepings.list_keepings(connection)}
         chosen = None if keeping is None else [keepings.find_keeping(connection, keeping).id]
-        kept = keepings.load_kept(connection, chosen)
-        kept = [one for one in kept if ids is None or one.system_id in ids]
-        concerned = {one.system_id for one in kept}
-        found = records.load_records(connection, concerned, include_retired=True) if kept else []
+        concerned = keepings.systems_kept(connection, chosen)
+        concerned = concerned if ids is None else concerned & set(ids)
+        found = records.load_records(connection, concerned, include_retired=True) if concerned else []
         outcomes = outcomes_of(connection, found, as_of)
-        ahead = clock_ahead(connection)
-    sorted_out = _Sorted(known, outcomes, ahead)
-    for one in kept:
-        sorted_out.take(one)
+        sorted_out = _Sorted(known, outcomes, clock_ahead(connection))
+        # One keeping after the other: kept every night, they are many.
+        for number in known if chosen is None else chosen:
+            for one in keepings.load_kept(connection, [number]):
+                if one.system_id in concerned:
+                    sorted_out.take(one)
     return ForecastScores(
         as_of_utc=utc_iso([as_of])[0] or "",
         scored=tuple(sorted_out.scored),
@@ -86,7 +87,7 @@ def score_forecasts(
         groups=group_scores(sorted_out.scored),
         waiting=sorted_out.waiting,
         undatable=sorted_out.undatable,
-        kept=len(kept),
+        kept=sorted_out.kept,
         least_outcomes=LEAST_OUTCOMES,
         assumptions=ASSUMPTIONS,
     )
@@ -133,10 +134,11 @@ class _Sorted:
         self.keepings, self.outcomes, self.ahead = known, outcomes, ahead
         self.scored: list[ScoredForecast] = []
         self.unscored: list[Unscored] = []
-        self.waiting = self.undatable = 0
+        self.kept = self.waiting = self.undatable = 0
 
     def take(self, one: KeptForecast) -> None:
         event = one.event
+        self.kept += 1
         if event.event not in SCATTERS:
             self.undatable += 1
             return
@@ -145,7 +147,7 @@ class _Sorted:
             self.waiting += 1
             return
         keeping = self.keepings[one.keeping_id]
-        kinds, words = containing(one.inputs, outcome, keeping.known_at, self.ahead)
+        kinds, words = containing(one.inputs, outcome, keeping.as_of_bmjd_tdb, keeping.known_at, self.ahead)
         if kinds:
             self._refuse(one, keeping, "contains-outcome", "; ".join(words), kinds)
         elif not one.quantiles_bmjd_tdb:

@@ -8,7 +8,7 @@ from typing import Any
 
 from campaign.catalogue import episodes, observations, rules, solutions, store, systems
 from campaign.model.forecasts import EventName
-from campaign.model.instants import Moment
+from campaign.model.instants import Moment, TypedInstant
 from campaign.model.kept import Kept, Stamp
 from campaign.model.measured import Measured
 from campaign.model.observations import Observation
@@ -79,14 +79,18 @@ class Book:
 
     def keep(
         self, at: float = NOW, *, as_of: float | None = None, label: str | None = None, draws: int = 2000,
-        years: float = 30.0,
+        years: float = 30.0, known_at: float | None = None,
     ) -> Kept:  # fmt: skip
-        campaign = watch.load_campaign(self.db, None, None, None)
+        entered = None
+        if known_at is not None:
+            entered = TypedInstant(known_at, 0.0, "utc", "geocentre", 0.0, 0.0, "Julian date", "typed")
+        campaign = watch.load_campaign(self.db, None, entered, None)
         start = at if as_of is None else as_of
         question = Question(start, start, start + 365.25 * years, draws=draws)
         return keep_forecasts(
-            self.db, Stamp(clock_of(at), "Ida Vik", "campaign test"), campaign, question, label=label
-        )
+            self.db, Stamp(clock_of(at), "Ida Vik", "campaign test"), campaign, question, label=label,
+            known_at=entered,
+        )  # fmt: skip
 
     def score(self, at: float = NOW + 20_000.0, **options: Any) -> ForecastScores:
         return score_forecasts(self.db, at, **options)

@@ -237,17 +237,32 @@ def test_a_forecast_for_a_past_date_does_not_count_what_was_entered_by_then(book
     assert [one.containing for one in scores.unscored] == [("entries",)]
 
 
-def test_an_episode_after_the_event_betrays_it(book):
-    # Learned from episodes 0, 1 and 3: the onset of cycle 2 lies between them.
-    dates = {0: 50_000.0, 1: 53_000.0, 3: 59_000.0}
+def test_a_past_date_is_forecast_honestly_only_without_later_entries(book):
+    # Learned from episodes 0 and 1; the onset of cycle 2 is entered later, for the second time.
     learned = DustRule(1, 1, "learned")
-    (number,) = book.enter([record(rule=learned, episodes=[episode(k, t) for k, t in dates.items()])])
-    book.keep(NOW, as_of=NOW - 8_000.0, years=50.0)
+    dates = {0: 50_000.0, 1: 53_000.0}
+    (number,) = book.enter(
+        [record(rule=learned, episodes=[episode(k, t) for k, t in dates.items()])], 53_500.0
+    )
+    book.keep(NOW, as_of=54_000.0, years=50.0)
+    book.keep(NOW + 1.0, as_of=54_001.0, known_at=54_001.0, years=50.0)
     book.confirm(number, 56_010.0, NOW + 10.0, cycle=2)
-    (one,) = book.score().scored
-    assert one.outcome.cycle == 2
-    book.keep(NOW + 0.5, as_of=59_500.0, years=50.0)
-    assert not [one for one in kept_of(book, cycle=2) if one.keeping_id == 2]
+    scores = book.score()
+    assert [one.keeping_id for one in scores.scored] == [2]
+    assert [(one.keeping_id, one.containing) for one in scores.unscored] == [(1, ("entries",))]
+
+
+def test_an_episode_after_the_event_betrays_it(book):
+    # Episodes 0, 1 and 3: the onset of cycle 2 lies between them.
+    learned = DustRule(1, 1, "learned")
+    dates = {0: 50_000.0, 1: 53_000.0, 3: 59_000.0}
+    (number,) = book.enter(
+        [record(rule=learned, episodes=[episode(k, t) for k, t in dates.items()])], 59_500.0
+    )
+    book.keep(NOW, years=50.0)
+    (one,) = kept_of(book, cycle=4)
+    book.confirm(number, one.event.bmjd_tdb.median - 3_100.0, NOW + 10.0, cycle=4)
+    assert [each.containing for each in book.score().unscored] == [("entries",)]
 
 
 def test_a_date_without_an_interval_cannot_be_scored(book):
