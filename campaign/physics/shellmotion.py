@@ -8,10 +8,9 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from campaign.errors import InputRefused
-from campaign.physics.intervals import normal_quantiles
 from campaign.physics.shellfit import ShellFit, Stated, least_squares
 from campaign.physics.shellradii import RadiusErrors, check_radii
-from campaign.physics.shellvalues import Sided, Spread, Spreads, ratio_of_normals
+from campaign.physics.shellvalues import Sided, Spreads, ratio_of_normals
 
 FloatArray = NDArray[np.float64]
 
@@ -215,8 +214,8 @@ def fit_motion_and_period(
     >>> from campaign.physics.shellradii import radius_errors
     >>> errors = radius_errors([0.01, 0.01, 0.01])
     >>> fit = fit_motion_and_period([2010.0, 2020.0, 2020.0], [4, 4, 5], [0.5, 1.0, 0.4], errors)
-    >>> round(period_from_motion_yr(fit).value, 6), launch_times_yr(fit, [4, 5]).value.round(6).tolist()
-    (12.0, [2000.0, 2012.0])
+    >>> launch_times_yr(fit, [4, 5]).value.round(6).tolist()
+    [2000.0, 2012.0]
     """
     time, shells, radius = _columns(time_yr, cycle, radius_arcsec)
     pivot, youngest = float(time.mean()), int(shells.max())
@@ -322,70 +321,6 @@ def launch_times_yr(motion: MotionFit, cycle: ArrayLike | None = None) -> Spread
         found.sigma,
         *(bound + at_pivot for bound in (found.lo68, found.hi68, found.lo95, found.hi95)),
     )
-
-
-def period_from_motion_yr(motion: MotionFit) -> Spread:
-    """Interval between launches, from a fit with equal spacing.
-
-    Parameters
-    ----------
-    motion : MotionFit
-        Of :func:`fit_motion_and_period`, arcsec and yr.
-
-    Returns
-    -------
-    Spread
-        Period, yr.
-
-    Notes
-    -----
-    Accuracy: exact bounds for normal errors.
-
-    Source: P = s/mu; Fieller 1954, J. R. Statist. Soc. B 16, 175.
-
-    Examples
-    --------
-    >>> from campaign.physics.shellradii import radius_errors
-    >>> errors = radius_errors([0.01, 0.01, 0.01])
-    >>> fit = fit_motion_and_period([2010.0, 2020.0, 2020.0], [4, 4, 5], [0.5, 1.0, 0.4], errors)
-    >>> round(period_from_motion_yr(fit).sigma, 3)
-    0.315
-    """
-    fit = motion.fit
-    s, m = fit.names.index(SPACING), fit.names.index(MOTION)
-    c = fit.covariance
-    return ratio_of_normals(fit.values[s], fit.values[m], c[s, s], c[s, m], c[m, m]).at(0)
-
-
-def motion_spread(motion: MotionFit) -> Spread:
-    """Proper motion of a fit with its bounds.
-
-    Parameters
-    ----------
-    motion : MotionFit
-        Of any fit of this module, arcsec and yr.
-
-    Returns
-    -------
-    Spread
-        arcsec/yr.
-
-    Notes
-    -----
-    Accuracy: exact for normal errors.
-
-    Source: definition of the normal distribution.
-
-    Examples
-    --------
-    >>> from campaign.physics.shellradii import radius_errors
-    >>> fit = fit_one_shell([2010.0, 2020.0], [0.5, 1.0], radius_errors([0.01, 0.01]))
-    >>> round(motion_spread(fit).sigma, 6)
-    0.001414
-    """
-    value, sigma = motion.fit.value(MOTION), motion.fit.sigma(MOTION)
-    bounds = normal_quantiles(np.array([value]), np.array([sigma]))[0, 1:]
-    return Spread(value, sigma, *(float(bound) for bound in bounds))
 
 
 def _columns(

@@ -191,42 +191,6 @@ def project_plume(inclination_deg: Sided, from_node_in_orbit_deg: float | None =
     )
 
 
-def true_radius_arcsec(
-    radius_arcsec: ArrayLike, sigma_arcsec: ArrayLike, projection: Projection
-) -> tuple[FloatArray, FloatArray]:
-    """True radii from seen ones, with the error of the projection in each.
-
-    Parameters
-    ----------
-    radius_arcsec, sigma_arcsec : array_like
-        Seen radii and their errors, arcsec.
-    projection : Projection
-        Of the feature that was measured.
-
-    Returns
-    -------
-    tuple of ndarray
-        Radii and errors, arcsec. The part of the errors from the projection is common to all radii of the
-        feature: as a plate scale it drops out of ages in periods.
-
-    Notes
-    -----
-    Accuracy: first order in the error of the factor.
-
-    Source: kinematics.
-
-    Examples
-    --------
-    >>> radius, sigma = true_radius_arcsec(1.0, 0.1, project_ring(Sided(60.0, 0.0, 0.0), 90.0))
-    >>> round(float(radius), 6), round(float(sigma), 6)
-    (2.0, 0.2)
-    """
-    radius = np.asarray(radius_arcsec, dtype=np.float64) / projection.factor
-    own = np.asarray(sigma_arcsec, dtype=np.float64) / projection.factor
-    sigma: FloatArray = np.hypot(own, radius * projection.factor_sigma / projection.factor)
-    return radius, sigma
-
-
 def apparent_speed_kms(speed_kms: ArrayLike, out_of_sky_deg: ArrayLike) -> FloatArray:
     """Speed at which a feature seems to move across the sky.
 

@@ -1,55 +1,16 @@
-"""How far two determinations lie apart, and what would most likely explain it."""
+"""What would most likely explain that two determinations lie far apart."""
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
-import numpy as np
-
 from campaign.physics.shellnetwork import Tension
-from campaign.physics.shellvalues import Sided
 
 # From here on a tension asks for a reason.
 HIGH_SIGMA = 2.0
 _SMALL_RATIOS = ((2, 1), (3, 1), (3, 2), (1, 2), (1, 3), (2, 3))
 _WIND = "wind"
-
-
-def tension(value: Sided, against: Sided, covariance: float = 0.0) -> float | None:
-    """Difference of two determinations in sigmas of it, signed.
-
-    Parameters
-    ----------
-    value, against : Sided
-        Two determinations of one quantity, in one unit (yr, pc, km/s).
-    covariance : float
-        Covariance of their errors, in that unit squared: inputs that both share.
-
-    Returns
-    -------
-    float or None
-        (value - against)/sigma (dimensionless), with the errors on the sides that face each other; None where
-        an error is unknown, or where both are exact and differ.
-
-    Notes
-    -----
-    Accuracy: first order.
-
-    Source: project convention (signed, inputs that both share counted once).
-
-    Examples
-    --------
-    >>> tension(Sided(11.0, 0.6, 0.9), Sided(10.0, 0.1, 0.8))
-    1.0
-    """
-    if value.minus is None or value.plus is None or against.minus is None or against.plus is None:
-        return None
-    difference = value.value - against.value
-    first, second = (value.minus, against.plus) if difference > 0.0 else (value.plus, against.minus)
-    variance = first**2 + second**2 - 2.0 * covariance
-    if variance <= 0.0:
-        return 0.0 if difference == 0.0 else None
-    return float(difference / np.sqrt(variance))
 
 
 def likely_reasons(
@@ -149,7 +110,7 @@ def _reasons(
 def _miscount(one: Tension, shells: int | None) -> str | None:
     """Whether the two periods are as two whole numbers, within their errors."""
     ratio = one.value / one.against_value
-    error = abs(one.value - one.against_value) / (abs(one.sigma or np.inf) * one.against_value)
+    error = abs(one.value - one.against_value) / (abs(one.sigma or math.inf) * one.against_value)
     for top, bottom in _SMALL_RATIOS:
         if abs(ratio - top / bottom) < HIGH_SIGMA * error:
             hint = (

@@ -112,32 +112,3 @@ def motion_mas_yr(speed_kms: ArrayLike, distance_pc: ArrayLike) -> FloatArray:
     speed = np.asarray(speed_kms, dtype=np.float64)
     motion: FloatArray = 1000.0 * speed / (KMS_PER_AU_YR * np.asarray(distance_pc, dtype=np.float64))
     return motion
-
-
-def spacing_au(speed_kms: ArrayLike, period_yr: ArrayLike) -> FloatArray:
-    """Way of a shell in one period.
-
-    Parameters
-    ----------
-    speed_kms, period_yr : array_like
-        Speed, km/s, and period, yr; broadcast together.
-
-    Returns
-    -------
-    ndarray
-        au.
-
-    Notes
-    -----
-    Accuracy: exact for a constant speed.
-
-    Source: 1 au/yr = 4.740470464 km/s (IAU 2012 Resolution B2, Julian year).
-
-    Examples
-    --------
-    >>> round(float(spacing_au(950.0, 1.7)))
-    341
-    """
-    speed, period = np.asarray(speed_kms, dtype=np.float64), np.asarray(period_yr, dtype=np.float64)
-    way: FloatArray = speed * period / KMS_PER_AU_YR
-    return way

@@ -44,7 +44,6 @@ class Limits:
         """Which of the shells of these radii are seen, and how many are not."""
         return shells_in_view(
             radius_arcsec,
-            np.zeros(len(radius_arcsec)),
             field_arcsec=self.field_arcsec,
             resolution_arcsec=self.resolution_arcsec,
             outer_radius_arcsec=self.outer_radius_arcsec,

@@ -7,6 +7,7 @@ import json
 from pathlib import Path
 
 import pytest
+from uncertainties import ufloat
 
 REFERENCE = Path(__file__).parent.parent / "reference"
 YEAR_D = 365.25
@@ -445,6 +446,62 @@ def test_the_shell_of_the_end_to_end_case_becomes_resolvable(pipeline):
     # 0.1 arcsec at 263.6869 mas/yr take 138.5 d.
     assert event["bmjd_tdb"]["median"] == pytest.approx(middle + 0.1 / 0.2636869 * YEAR_D, abs=2.0)
     assert (event["event"], event["cycle"], event["status"]) == ("resolvable", 2, "expected")
+
+
+def test_shells_that_leave_at_periastron_are_where_the_end_to_end_row_has_them(run_campaign):
+    # The row counts ages from periastron itself: no dust rule is given here, and every error is zero.
+    ((inputs, expected),) = rows("integrated.pipeline")
+    for words in (
+        ("begin",),
+        ("system", "add", "Wick 4", "--ra", "10:11:12.0", "--dec", "-20:00:00",
+         "--distance", f"{inputs['D_pc']}±0 pc"),
+        ("solution", "add", "Wick 4", "--label", "orbit",
+         "--period", f"{inputs['P_julian_yr'] * YEAR_D}±0 d", "--epoch", f"BJD {inputs['T0_BJD_TDB']}±0 d",
+         "--adopt"),
+    ):  # fmt: skip
+        ran = run_campaign(*words)
+        assert ran.status == 0, ran.err
+    ran = run_campaign(
+        "shells", "expect", "Wick 4", "--speed", f"{inputs['v_exp_kms']}±0 km/s",
+        "--on", "MJD 60310.0 TDB", "--as-of", "2024-01-01", "--json",
+    )  # fmt: skip
+    assert ran.status == 0, ran.err
+    (view,) = ran.document["data"]["views"]
+    radius = {shell["cycle"]: shell["radius_arcsec"] for shell in view["shells"]}
+    (name,) = [key for key in expected if key.startswith("shell_radii")]
+    newest, older = (float(text) for text in expected[name])
+    assert radius[1] == pytest.approx(newest, rel=1e-6)
+    assert radius[0] == pytest.approx(older, rel=1e-6)
+
+
+def test_the_error_of_an_expected_radius_is_that_of_launch_and_motion(run_campaign):
+    # r = mu (t - launch); errors by the uncertainties package. A window of 400 d: half of it is error.
+    for words in (
+        ("begin",),
+        ("system", "add", "Wick 4", "--ra", "10:11:12.0", "--dec", "-20:00:00", "--distance", "2000±0 pc"),
+        ("solution", "add", "Wick 4", "--label", "orbit", "--period", "4000±0 d",
+         "--epoch", "MJD 58000 TDB±30 d", "--adopt"),
+        ("rule", "set", "Wick 4", "--lag-onset", "-200±0 d", "--lag-end", "200±0 d"),
+    ):  # fmt: skip
+        ran = run_campaign(*words)
+        assert ran.status == 0, ran.err
+    ran = run_campaign(
+        "shells", "expect", "Wick 4", "--motion", "80±4 mas/yr", "--resolution", "0.12 arcsec",
+        "--on", "MJD 61000 TDB", "--as-of", "2025-01-01", "--json",
+    )  # fmt: skip
+    assert ran.status == 0, ran.err
+    motion, launch = ufloat(0.080, 0.004), ufloat(58_000.0, 30.0) + ufloat(0.0, 200.0)
+    radius = motion * (61_000.0 - launch) / YEAR_D
+    (shell,) = [s for s in ran.document["data"]["views"][0]["shells"] if s["cycle"] == 0]
+    # The median of a product of two normals lies g sigma/6 below its mean, of skewness g (Cornish & Fisher
+    # 1938): 6 a^2 b^2/(a^2 + b^2)^1.5 for the relative errors a = 0.05 and b = 202.2/3000, here 0.12.
+    median = radius.nominal_value - 0.12 * radius.std_dev / 6.0
+    assert shell["radius_arcsec"] == pytest.approx(median, abs=0.02 * radius.std_dev)
+    assert shell["radius_sigma_arcsec"] == pytest.approx(radius.std_dev, rel=0.02)
+    reached = launch + 4000.0 + 0.12 / motion * YEAR_D
+    (date,) = [d for d in ran.document["data"]["resolvable"] if d["cycle"] == 1]
+    assert date["bmjd_tdb"] == pytest.approx(reached.nominal_value, abs=3.0)
+    assert date["sigma_d"] == pytest.approx(reached.std_dev, rel=0.02)
 
 
 # ------------------------------------------------------------------------------------------- upcoming

@@ -4,6 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 
+from campaign.physics.shellmotion import MOTION, SPACING
+from campaign.physics.shellrelations import ShellInput, solve_shell_relations
+
 RIDGE_WIDTH = 0.25  # spread of a shell's light about its radius, in spacings
 
 
@@ -35,3 +38,19 @@ def share_z(held, share):
     """Deviation of a count of True from its nominal share, in standard deviations."""
     held = np.asarray(held)
     return (held.sum() - share * held.size) / np.sqrt(held.size * share * (1.0 - share))
+
+
+def period_of(motion, draws=20_000):
+    """Period of a fit of several images with its bounds, by the relation of spacing and motion."""
+    fit = motion.fit
+    inputs = []
+    for quantity, name, factor in (
+        ("spacing_arcsec", SPACING, 1.0),
+        ("proper_motion_mas_yr", MOTION, 1000.0),
+    ):
+        sigma = factor * fit.sigma(name)
+        inputs.append(ShellInput(quantity, factor * fit.value(name), sigma, sigma))
+    shared = fit.covariance[fit.names.index(SPACING), fit.names.index(MOTION)]
+    correlation = shared / (fit.sigma(SPACING) * fit.sigma(MOTION))
+    pair = (inputs[0].quantity, inputs[1].quantity)
+    return solve_shell_relations(inputs, {pair: correlation}, draws).get("period_yr").spread

@@ -7,14 +7,13 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from shell_images import Image, share_z
+from shell_images import Image, period_of, share_z
 
 from campaign.physics.constants import KMS_PER_AU_YR
 from campaign.physics.shellmotion import (
     fit_motion_and_period,
     fit_one_shell,
     launch_times_yr,
-    period_from_motion_yr,
 )
 from campaign.physics.shellradii import radius_errors
 from campaign.physics.shellrelations import ShellInput, solve_shell_relations
@@ -177,7 +176,7 @@ def test_launches_from_several_epochs(period_known):
         found = fit_motion_and_period(*data, period_yr=stated)
         cycle = int(rng.integers(sky.shells))
         launches.add(launch_times_yr(found, [cycle]).at(0), sky.launches[cycle])
-        periods.add(period_from_motion_yr(found), sky.period)
+        periods.add(period_of(found, DRAWS), sky.period)
     launches.check(f"several epochs, period known {period_known}: launches")
     periods.check(f"several epochs, period known {period_known}: periods")
 

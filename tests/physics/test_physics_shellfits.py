@@ -9,6 +9,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.optimize import curve_fit, least_squares
+from shell_images import period_of
 from shell_reference import checks, with_error
 from uncertainties import correlated_values, ufloat
 
@@ -20,8 +21,6 @@ from campaign.physics.shellmotion import (
     fit_motion_and_period,
     fit_one_shell,
     launch_times_yr,
-    motion_spread,
-    period_from_motion_yr,
 )
 from campaign.physics.shellradii import check_radii, mixed_edges_and_peaks, radius_errors
 from campaign.physics.shellspacing import age_in_periods, ages_yr, fit_spacing
@@ -271,13 +270,13 @@ def test_all_shells_and_the_period_together_agree_with_scipy():
     values, covariance = curve_fit(
         model, TIME, RADIUS, p0=[2016, 10, 0.06], sigma=SIGMA, absolute_sigma=True, xtol=1e-14, ftol=1e-14
     )
-    launch, period = launch_times_yr(found, [4]).at(0), period_from_motion_yr(found)
+    launch, period = launch_times_yr(found, [4]).at(0), period_of(found)
     errors = np.sqrt(np.diag(covariance))
     assert launch.value == pytest.approx(values[0], abs=1e-4 * errors[0])
     assert launch.sigma == pytest.approx(errors[0], rel=1e-4)
     assert period.value == pytest.approx(values[1], abs=1e-4 * errors[1])
     assert period.sigma == pytest.approx(errors[1], rel=1e-4)
-    assert motion_spread(found).sigma == pytest.approx(errors[2], rel=1e-4)
+    assert found.fit.sigma("motion_arcsec_yr") == pytest.approx(errors[2], rel=1e-4)
 
 
 def test_a_period_known_from_the_orbit_agrees_with_scipy():

@@ -16,7 +16,7 @@ from uncertainties import correlated_values, ufloat
 from campaign.errors import InputRefused
 from campaign.physics.constants import AU_KM, KMS_PER_AU_YR
 from campaign.physics.shellrelations import ShellInput, solve_shell_relations, what_would_do
-from campaign.physics.shellunits import motion_mas_yr, spacing_au
+from campaign.physics.shellunits import motion_mas_yr
 
 
 def stated(quantity, value, error, label="given"):
@@ -52,8 +52,8 @@ def test_spacing_from_speed_period_and_distance(inputs, expected):
     motion = derived(solution, "proper_motion_mas_yr").value
     assert spacing == pytest.approx(float(expected["spacing_arcsec"]), rel=1e-10)
     assert motion / 1000.0 == pytest.approx(float(expected["mu_arcsec_yr"]), rel=1e-10)
-    way = float(spacing_au(inputs["v_kms"], inputs["P_julian_yr"]))
-    assert way == pytest.approx(float(expected["spacing_au"]), rel=1e-10)
+    # 1 arcsec at 1 pc is 1 au, by definition of the parsec.
+    assert spacing * inputs["D_pc"] == pytest.approx(float(expected["spacing_au"]), rel=1e-10)
     back = solve_shell_relations(
         [
             stated("speed_kms", inputs["v_kms"], 0.0),
@@ -123,8 +123,14 @@ def test_the_shell_of_u_cam_is_as_old_as_published():
     row = published("S2")
     *lengths_cm, speed = numbers(row["inputs"])
     for length_cm, years in zip(lengths_cm, numbers(row["published"]), strict=True):
-        age = length_cm * 1e-5 / AU_KM / float(spacing_au(speed, 1.0))
-        assert age == pytest.approx(years, rel=0.15)
+        solution = solve_shell_relations(
+            [
+                stated("spacing_arcsec", length_cm * 1e-5 / AU_KM / 500.0, 0.0),
+                stated("speed_kms", speed, 0.0),
+                stated("distance_pc", 500.0, 0.0),
+            ]
+        )
+        assert derived(solution, "period_yr").value == pytest.approx(years, rel=0.15)
 
 
 def test_one_turn_of_the_spiral_of_wr_147():
@@ -132,7 +138,16 @@ def test_one_turn_of_the_spiral_of_wr_147():
     row = published("S3")
     speed, period = numbers(row["inputs"])
     (turn_au,) = numbers(row["published"])
-    assert float(spacing_au(speed, period)) == pytest.approx(turn_au, rel=0.02)
+    for distance in (600.0, 1800.0):
+        solution = solve_shell_relations(
+            [
+                stated("speed_kms", speed, 0.0),
+                stated("period_yr", period, 0.0),
+                stated("distance_pc", distance, 0.0),
+            ]
+        )
+        turn = derived(solution, "spacing_arcsec").value * distance
+        assert turn == pytest.approx(turn_au, rel=0.02)
 
 
 def test_wr_112_tells_one_story():
@@ -291,6 +306,28 @@ def test_an_inconsistent_triple_is_a_tension_and_keeps_what_was_stated():
     assert tension.sigma == pytest.approx(difference.nominal_value / difference.std_dev, rel=1e-9)
     assert solution.get("period_yr").origin == "given"
     assert solution.get("period_yr").spread.value == 10.0
+
+
+@pytest.mark.parametrize(
+    ("against", "expected"),
+    [
+        # By hand: (3390 - 2550)/840, the error below; (3390 - 4280)/890, the error above.
+        (ShellInput("distance_pc", 2550.0, 5.0, 0.0, "other"), 1.0),
+        (ShellInput("distance_pc", 4280.0, 0.0, 5.0, "other"), -1.0),
+        (ShellInput("distance_pc", 2550.0, None, None, "other"), None),
+    ],
+)
+def test_only_errors_that_face_each_other_make_a_tension(against, expected):
+    solution = solve_shell_relations([ShellInput("distance_pc", 3390.0, 840.0, 890.0), against], draws=10)
+    (tension,) = solution.tensions
+    assert tension.sigma == (None if expected is None else pytest.approx(expected))
+
+
+def test_two_exact_values_agree_or_have_no_scale_of_disagreement():
+    for other, expected in ((10.0, 0.0), (11.0, None)):
+        pair = [stated("period_yr", 10.0, 0.0), stated("period_yr", other, 0.0, "other")]
+        (tension,) = solve_shell_relations(pair, draws=10).tensions
+        assert tension.sigma == expected
 
 
 def test_what_two_ways_share_is_counted_once():

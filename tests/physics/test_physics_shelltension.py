@@ -1,46 +1,14 @@
-"""Tensions against the uncertainties package, and the reasons that are given for high ones."""
+"""The reasons that are given for high tensions."""
 
 from __future__ import annotations
 
-import math
-
-import pytest
-from uncertainties import ufloat
-
 from campaign.physics.shellrelations import ShellInput, solve_shell_relations
-from campaign.physics.shelltension import likely_reasons, tension
+from campaign.physics.shelltension import likely_reasons
 from campaign.physics.shellunits import motion_mas_yr
-from campaign.physics.shellvalues import Sided
 
 
 def stated(quantity, value, relative, label="given", compare_only=False):
     return ShellInput(quantity, value, value * relative, value * relative, label, compare_only)
-
-
-def test_a_tension_is_the_difference_in_errors_of_it():
-    difference = ufloat(11.2, 0.4) - ufloat(10.1, 0.3)
-    found = tension(Sided(11.2, 0.4, 0.4), Sided(10.1, 0.3, 0.3))
-    assert found == pytest.approx(difference.nominal_value / difference.std_dev)
-    assert tension(Sided(10.1, 0.3, 0.3), Sided(11.2, 0.4, 0.4)) == pytest.approx(-found)
-
-
-def test_errors_that_face_each_other_count():
-    assert tension(Sided(3390.0, 840.0, 890.0), Sided(2550.0, 5.0, 0.0)) == pytest.approx(1.0)
-    assert tension(Sided(3390.0, 840.0, 890.0), Sided(4280.0, 0.0, 5.0)) == pytest.approx(-1.0)
-
-
-def test_what_both_share_is_counted_once():
-    common, own = ufloat(0.0, 0.5), ufloat(11.0, 0.3)
-    difference = (own + common) - (10.0 + common)
-    error = math.hypot(0.3, 0.5)
-    found = tension(Sided(11.0, error, error), Sided(10.0, 0.5, 0.5), covariance=0.25)
-    assert found == pytest.approx(difference.nominal_value / difference.std_dev)
-
-
-def test_an_unknown_error_gives_no_tension():
-    assert tension(Sided(11.0), Sided(10.0, 1.0, 1.0)) is None
-    assert tension(Sided(11.0, 0.0, 0.0), Sided(10.0, 0.0, 0.0)) is None
-    assert tension(Sided(10.0, 0.0, 0.0), Sided(10.0, 0.0, 0.0)) == 0.0
 
 
 def reasons_of(inputs, quantity, **context):
