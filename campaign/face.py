@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from campaign.model.forecasts import UpcomingResult
     from campaign.model.found import EpisodesFound
     from campaign.model.instants import TypedInstant
+    from campaign.model.verification import ForecastScores
 
 Several = str | Iterable[str] | None
 When = str | datetime | None
@@ -255,6 +256,78 @@ class Campaign:
         from campaign.studies import find_episodes
 
         return find_episodes.find_episodes(self._db, system, _several(band) or None, _instant(as_of, "as_of"))
+
+    def score_forecasts(
+        self, system: Several = None, *, keeping: str | None = None, as_of: When = None
+    ) -> ForecastScores:
+        """How well kept forecasts did, as ``campaign forecast score`` shows it.
+
+        Parameters
+        ----------
+        system : str, iterable of str or None
+            Names or aliases; None for all.
+        keeping : str or None
+            Number or label of what ``campaign forecast keep`` kept; None for all.
+        as_of : str, datetime or None
+            Outcomes dated later are hidden; None for now.
+
+        Returns
+        -------
+        ForecastScores
+            ``scored`` one by one and ``groups`` by event and lead time, in d; what was refused, and why.
+
+        Raises
+        ------
+        NotFound
+            Unknown system or keeping.
+        """
+        from campaign.studies import score_forecasts, watch
+
+        today = watch.today_of(self._db, datetime.now(UTC), _instant(as_of, "as_of"))
+        names = _several(system) or None
+        return score_forecasts.score_forecasts(self._db, today, names=names, keeping=keeping)
+
+    def rehearse(
+        self,
+        system: str,
+        leads_d: Iterable[float] = (365.25,),
+        *,
+        event: Several = "onset",
+        entered_any_time: bool = False,
+        as_of: When = None,
+    ) -> ForecastScores:
+        """Past episodes forecast from what was known before, as ``campaign forecast rehearse`` shows it.
+
+        Parameters
+        ----------
+        system : str
+            Name or alias.
+        leads_d : iterable of float
+            How long before each episode, d.
+        event : str or iterable of str
+            Of onset, maximum and end.
+        entered_any_time : bool
+            Let in entries of any date, for a catalogue that was filled after the fact.
+        as_of : str, datetime or None
+            Episodes dated later are hidden; None for now.
+
+        Returns
+        -------
+        ForecastScores
+            As ``score_forecasts``, in d.
+
+        Raises
+        ------
+        NotFound, Conflict, InputRefused
+            Unknown system; no past episode; a lead out of range.
+        """
+        from campaign.studies import rehearse, watch
+
+        today = watch.today_of(self._db, datetime.now(UTC), _instant(as_of, "as_of"))
+        events = _words(event, ("onset", "maximum", "end"), "event") or ("onset",)
+        return rehearse.rehearse(
+            self._db, system, today, tuple(leads_d), events, entered_any_time=entered_any_time
+        )
 
     def _table(self, kind: ExchangeKind, **asked: Any) -> pd.DataFrame:
         from campaign.output.frames import frame_of
