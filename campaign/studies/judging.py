@@ -41,7 +41,7 @@ def judge(record: SystemRecord, arrays: PhotometryArrays, as_of: float) -> Judge
     Source: project convention.
     """
     past = (arrays.bmjd_tdb <= as_of) & (arrays.quality == "good")
-    error = 0.5 * (arrays.mag_minus + arrays.mag_plus)
+    error = 0.5 * arrays.mag_minus + 0.5 * arrays.mag_plus
     spans = [(start, end) for start, end, _ in confirmed_spans(record)]
     judged = judge_photometry(
         arrays.bmjd_tdb[past],
