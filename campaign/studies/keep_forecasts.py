@@ -188,6 +188,8 @@ def _warnings(keeping: Keeping, own_as_of: float | None) -> tuple[str, ...]:
             "this is what would have been forecast then, not what was: what the catalogue knew already will "
             "not score it; to hold the method against that: campaign forecast rehearse SYSTEM",
         )
+    if keeping.as_of_bmjd_tdb > today + 1.0:
+        return ("this is dated ahead of today: what will be observed until then is not in it",)
     return ()
 
 

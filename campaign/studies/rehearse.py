@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import datetime, timedelta
+from itertools import pairwise
 
 from campaign.catalogue import records, store, systems
 from campaign.errors import Conflict, InputRefused
@@ -271,7 +272,7 @@ class _Rehearsal:
 
         periods = [nominal_period_d(solution) or 0.0 for solution in self._record.solutions]
         dates = sorted(one.bmjd_tdb for one in self._outcomes.by_event.values())
-        return max([*periods, dates[-1] - dates[0], lead_d])
+        return max([*periods, *(later - earlier for earlier, later in pairwise(dates)), lead_d])
 
     def _of_cycle(self, dated: DatedCampaign, event: EventName, cycle: int) -> DatedEvent | None:
         for one in dated.dated:

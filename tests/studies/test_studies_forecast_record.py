@@ -101,6 +101,11 @@ def test_nothing_to_keep_says_what_to_do(book):
     assert "campaign forecast keep" in missing.value.hint
 
 
+def test_a_forecast_dated_ahead_is_told_as_such(book, orbit):
+    assert book.keep(NOW).warnings == ()
+    assert "ahead of today" in book.keep(NOW, as_of=NOW + 30.0).warnings[0]
+
+
 def test_an_event_that_was_seen_is_no_forecast(book, orbit):
     book.confirm(orbit, NOW - 5.0, NOW - 4.0, cycle=2)
     book.keep()
