@@ -63,7 +63,7 @@ def change_of_period(cycles: FloatArray, dates: ChosenDates, straight: DatedLine
     gain = _aicc(straight, width + 1, count) - _aicc(curved, width + 2, count)
     mean, covariance = curved.coefficients()
     size = float(np.sqrt(covariance[-1, -1]))
-    kept = gain > CLEAR_GAIN
+    kept = bool(gain > CLEAR_GAIN)
     moved = "falls" if gain > 0.0 else "rises"
     why = f"AICc {moved} by {abs(gain):.1f}; it must fall by more than {CLEAR_GAIN:g}"
     return CurvedFit(PeriodChange(Measured(float(mean[-1]), size, size), float(gain), kept, why), curved)

@@ -271,8 +271,8 @@ def test_four_years_are_seven_cycles_of_wr_25():
 
 
 def test_a_period_from_two_events_has_an_error_that_covers_its_revision():
-    # R3: 4.7 yr from two events became 5.1 yr with the third. With dates good to a quarter of a year, as those
-    # of outbursts seen once a season are, the error from two events must allow that.
+    # R3: 4.7 yr from two events became 5.1 yr with the third. With dates good to a quarter of a year, as
+    # those of outbursts seen once a season are, the error from two events must allow that.
     assert "5.1" in published("R3")["published"]
     dates = normal(np.array([0.0, 4.7]) * YEAR, np.full(2, 0.25 * YEAR))
     found = fit_dated_line(np.array([0.0, 1.0]), np.zeros(2, int), dates)
