@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from datetime import datetime
@@ -119,12 +120,14 @@ def outcome_of(dated: DatedEvent, episode_id: int, cycle: int | None, decided_at
 
 
 def _width_d(moment: Moment) -> float:
-    """Width in days of the day, month or year that was typed; 0 for an instant."""
-    if not moment.text:
+    """Width in days of the day, month or year that was typed; 0 for an instant, or with errors of its own."""
+    if not moment.text or moment.minus_d is None or moment.minus_d != moment.plus_d:
         return 0.0
     try:
         typed = read_instant(moment.text, default_scale=moment.scale, default_place=moment.place)
     except InputRefused:
         # As some table had it; its errors were read then.
         return 0.0
-    return typed.width_d
+    # A table may give a day, and in another column how uncertain it is.
+    is_whole = math.isclose(typed.width_d, moment.minus_d * math.sqrt(12.0), rel_tol=1e-3)
+    return typed.width_d if is_whole else 0.0

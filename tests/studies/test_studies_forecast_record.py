@@ -177,7 +177,7 @@ def test_skill_is_against_the_last_date_plus_whole_periods(book):
 
 def test_a_month_is_a_span_and_not_its_middle(book, orbit):
     book.keep()
-    book.confirm(orbit, ONSET_2, ONSET_2 + 40.0, error_d=8.9, text="2033-12")
+    book.confirm(orbit, ONSET_2, ONSET_2 + 40.0, error_d=31.0 / math.sqrt(12.0), text="2033-12")
     (one,) = book.score().scored
     first, last = one.outcome.first_bmjd_tdb, one.outcome.last_bmjd_tdb
     assert last - first == pytest.approx(31.0)
@@ -185,6 +185,15 @@ def test_a_month_is_a_span_and_not_its_middle(book, orbit):
     assert one.log_score == pytest.approx(-math.log(law.cdf(last) - law.cdf(first)), abs=1e-6)
     assert law.cdf(first) <= one.pit <= law.cdf(last)
     assert book.score().scored[0].pit == one.pit
+
+
+def test_a_day_with_an_error_of_its_own_is_no_span(book, orbit):
+    # As tables have it: the day in one column, how uncertain it is in another.
+    book.keep()
+    book.confirm(orbit, ONSET_2, ONSET_2 + 40.0, error_d=9.0, text="2033-12-26")
+    (one,) = book.score().scored
+    assert not one.outcome.is_span
+    assert one.outcome.plus_d == 9.0
 
 
 def test_a_found_bracket_is_a_span_too(book, orbit):
