@@ -138,5 +138,5 @@ def _spoken(event: str, shift: float | None, ratio: float | None, before: EventF
     if _DOUBLE[0] < ratio < _DOUBLE[1]:
         return f"{moved}, interval doubles"
     if ratio < 1.0:
-        return f"{moved}, interval shrinks to {ratio:.0%} of what it was"
-    return f"{moved}, interval grows {ratio:.1f} times"
+        return f"{moved}, interval shrinks to {100.0 * ratio:.0f} % of what it was"
+    return f"{moved}, interval grows to {ratio:.1f} times what it was"
