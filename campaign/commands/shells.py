@@ -25,6 +25,13 @@ _QUANTITIES = {
     "distance": "distance_pc",
 }
 _LIGHT_KMS = 299_792.458
+_SHOWN = {
+    "spacing": "1.20±0.05 arcsec",
+    "motion": "80±5 mas/yr",
+    "speed": "1800±100 km/s",
+    "period": "8.6±0.1 yr",
+    "distance": "2.1±0.2 kpc",
+}
 _SPACING = option("--spacing", "VALUE", 'Of one period, "1.20±0.05 arcsec".')
 _MOTION = option("--motion", "VALUE", 'Proper motion of a shell, "80±5 mas/yr".')
 _SPEED = option("--speed", "VALUE", 'Of the shells, "1800±100 km/s".')
@@ -124,7 +131,7 @@ def date(
     question = ShellQuestion(
         stated=stated,
         radii=_radii(radius, on, measured_at, plate_scale_error, feature),
-        correlations=dict(_correlation(text) for text in correlation),
+        correlations=_correlations(correlation),
         feature=one_of(feature, ("limb", "ring", "plume"), "--feature"),  # type: ignore[arg-type]
         inclination_deg=measured(inclination, "deg", "--inclination", low=0.0, high=180.0),
         edge_offset_arcsec=measured(edge_offset, "arcsec", "--edge-offset"),
@@ -150,26 +157,31 @@ def date(
 
 def _stated(**texts: Text) -> dict[Any, Measured]:
     """The quantities that were typed, by their names and in the units of these."""
-    from campaign.reading.shells import read_with_unit
+    from campaign.reading.shells import LEAST_ARCSEC, MOST_ARCSEC, check_size, read_with_unit
 
     found: dict[Any, Measured] = {}
-    domains: dict[str, tuple[str, dict[str, Any]]] = {
-        "spacing": ("arcsec", {"high": 36_000.0}),
-        "motion": ("mas/yr", {"high": 3.6e7}),
-        "speed": ("kms", {"high": _LIGHT_KMS, "high_open": True}),
-        "distance": ("pc", {"high": 1e6}),
+    domains: dict[str, tuple[str, float, float]] = {
+        "spacing": ("arcsec", LEAST_ARCSEC, MOST_ARCSEC),
+        "motion": ("mas/yr", 1e-6, 3.6e7),
+        "speed": ("kms", 1e-3, _LIGHT_KMS),
+        "distance": ("pc", 1e-3, 1e6),
     }
     for word, text in texts.items():
         if text is None:
             continue
-        name = _QUANTITIES[word]
+        name, flag, shown = _QUANTITIES[word], f"--{word}", _SHOWN[word]
         if word == "period":
-            value = read_with_unit(text, "d", "--period", "8.6±0.1 yr", low=0.0, low_open=True, high=3.6525e9)
+            longest_d = 3.6525e9
+            value = read_with_unit(text, "d", flag, shown, low=0.0, low_open=True, high=longest_d)
+            check_size(value, text, flag, shown, least=0.01, most=longest_d)
             found[name] = value.scaled(1.0 / 365.25)
             continue
-        unit, domain = domains[word]
-        value = measured(text, unit, f"--{word}", low=0.0, low_open=True, **domain)  # type: ignore[assignment]
-        found[name] = value
+        unit, least, most = domains[word]
+        read = measured(
+            text, unit, flag, low=0.0, low_open=True, high=most, high_open=word == "speed", shown=shown
+        )
+        assert read is not None
+        found[name] = check_size(read, text, flag, shown, least=least, most=most)
     return found
 
 
@@ -217,6 +229,22 @@ def _date_error_d(instant: TypedInstant | None) -> float | None:
     return max(instant.minus_d or 0.0, instant.plus_d or 0.0)
 
 
+def _correlations(texts: list[str]) -> dict[tuple[Any, Any], float]:
+    """Each pair once, in whichever order it was typed."""
+    found: dict[tuple[Any, Any], float] = {}
+    for text in texts:
+        (first, second), value = _correlation(text)
+        if found.keys() & {(first, second), (second, first)}:
+            raise InputRefused(
+                f"The correlation '{text}' is given twice.",
+                why="One number says how far two errors are one.",
+                hint="For example --correlation speed,distance=0.95, once.",
+                code="correlation-refused",
+            )
+        found[first, second] = value
+    return found
+
+
 def _correlation(text: str) -> tuple[Any, float]:
     """``speed,distance=0.95`` as names of two quantities and a number."""
     from campaign.reading.numbers import read_number
@@ -230,7 +258,7 @@ def _correlation(text: str) -> tuple[Any, float]:
             hint="For example --correlation speed,distance=0.95.",
             code="correlation-refused",
         )
-    value = read_number(number, "--correlation")
+    value = read_number(number, "--correlation", "speed,distance=0.95")
     if not -1.0 <= value <= 1.0:
         raise InputRefused(
             f"A correlation of {value:g} cannot be.",
@@ -336,4 +364,4 @@ def expect(
 
 
 def _angle(text: Text, name: str, shown: str) -> float | None:
-    return plain_number(text, "arcsec", name, low=0.0, low_open=True, high=36_000.0, shown=shown)
+    return plain_number(text, "arcsec", name, low=1e-6, high=36_000.0, shown=shown)

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from campaign.errors import InputRefused
 from campaign.physics.shellnetwork import RELATIONS, ShellInput, ShellNetwork, SolvedQuantity, Tension
-from campaign.physics.shellunits import QUANTITIES, check_shell_value
+from campaign.physics.shellunits import QUANTITIES, WORDS, check_shell_value
 from campaign.physics.shellvalues import Uncertain
 
 FloatArray = NDArray[np.float64]
@@ -170,7 +170,7 @@ def _correlation_matrix(
             found = [i for i, given in enumerate(inputs) if name in (given.key, given.quantity)]
             if not found:
                 raise InputRefused(
-                    f"A correlation names {name!r}, which is not among the stated values.",
+                    f"A correlation names a {WORDS.get(name, name)}, which is not among the stated values.",
                     why="Only errors of stated values can be correlated.",
                     hint="Name two stated values, such as speed and distance.",
                     code="correlation-refused",

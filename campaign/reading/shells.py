@@ -14,6 +14,8 @@ from campaign.reading.numbers import quoted, read_number, refusal
 from campaign.reading.values import read_measured
 
 MOST_SHELLS = 10_000
+# Nothing smaller than a microarcsecond is resolved, and nothing larger than this is one object's dust.
+LEAST_ARCSEC, MOST_ARCSEC = 1e-6, 36_000.0
 EXAMPLE = "1.20±0.05 arcsec"
 _DATED = re.compile(r"(?P<radius>.*\S)\s+on\s+(?P<date>\S.*)", re.IGNORECASE | re.DOTALL)
 _INDEXED = re.compile(r"\s*(?P<index>[^=<>]*?)\s*=\s*(?P<radius>[^=]*)", re.DOTALL)
@@ -70,8 +72,8 @@ def read_shell_radius(text: str, name: str = "--radius") -> TypedRadius:
     if indexed:
         rest = indexed["radius"]
         index = read_shell_index(indexed["index"], name)
-    # Long before the horizon of any angle that an image has; a parsec in arcsec is refused as no angle.
-    radius = read_measured(rest, "arcsec", name, low=0.0, low_open=True, high=36_000.0)
+    radius = read_measured(rest, "arcsec", name, low=0.0, low_open=True, high=MOST_ARCSEC, shown=EXAMPLE)
+    check_size(radius, text, name, EXAMPLE, least=LEAST_ARCSEC, most=MOST_ARCSEC)
     return TypedRadius(radius, index, instant, _BARE.fullmatch(rest) is None, text)
 
 
@@ -104,6 +106,23 @@ def read_shell_radii(texts: Sequence[str], name: str = "--radius") -> list[Typed
     return radii
 
 
+def check_size(read: Measured, text: str, name: str, accepted: str, *, least: float, most: float) -> Measured:
+    """Refuse a positive value too small to be meant, and an error larger than any value.
+
+    Raises
+    ------
+    InputRefused
+        Below ``least``, or with an error above ``most``, both in the unit of the value.
+    """
+    if read.value < least:
+        why = "It is far smaller than anything that is measured; the unit or the exponent may be wrong."
+        raise refusal(name, text, why, accepted, "out-of-range", message=f"{name} {quoted(text)} cannot be.")
+    if max(read.minus or 0.0, read.plus or 0.0) > most:
+        why = "Its error is larger than any value; leave it out when it is not known."
+        raise refusal(name, text, why, accepted, "out-of-range", message=f"{name} {quoted(text)} cannot be.")
+    return read
+
+
 def _is_in_arcsec(text: str) -> bool:
     return re.search(r"(?<![A-Za-z])(arcsec\w*|as)(?![\w])|[\"″]|''", text) is not None
 
@@ -116,7 +135,7 @@ def read_with_unit(text: str, unit: str, name: str, accepted: str, **domain: flo
     InputRefused
         Without a unit; and as ``read_measured``.
     """
-    read = read_measured(text, unit, name, **domain)  # type: ignore[arg-type]
+    read = read_measured(text, unit, name, shown=accepted, **domain)  # type: ignore[arg-type]
     if _BARE.fullmatch(text):
         raise refusal(
             name, text, "Years and days are both common here, and it does not say which.", accepted,

@@ -44,6 +44,8 @@ _LIMIT = re.compile(r"(?P<sign>>=|<=|[<>≤≥])(?P<rest>.*)")
 _RANGE_MARK = re.compile(r"\s*(?:[–—…]|\.\.(?!\.)|(?<=[^A-Za-z])to(?=[\s0-9+.-]))\s*")
 _HYPHEN_RANGE = re.compile(rf"({UNSIGNED})(\s?)-\2({UNSIGNED})\s*{_UNIT}")
 _UNIT_BEFORE_ERROR = re.compile(rf"{_SIGNED}\s*[^\s0-9+\-±().,<>=][^±<>()]*±.*")
+# Its square can still be kept.
+_LARGEST_ERROR = 1e100
 _HALF_ERROR = re.compile(rf"{_SIGNED}\s*[+-]\s?{UNSIGNED}\s*{_UNIT}")
 
 
@@ -139,6 +141,8 @@ def _measured(plain: str, text: str, expected: Expected) -> Measured:
     if not all(math.isfinite(part) for part in (read.value, read.minus or 0.0, read.plus or 0.0)):
         raise expected.refuse(text, "A finite number is expected; this one is beyond what can be kept.")
     _check_holds(read.value, text, expected)
+    if max(read.minus or 0.0, read.plus or 0.0) > _LARGEST_ERROR:
+        raise expected.refuse(text, "Such an error says nothing; leave it out when it is not known.")
     return read
 
 
@@ -163,6 +167,7 @@ def read_measured(
     high: float | None = None,
     low_open: bool = False,
     high_open: bool = False,
+    shown: str = "",
 ) -> Measured:
     """Read one value with its errors.
 
@@ -176,13 +181,15 @@ def read_measured(
         The option or column, for the refusal.
     low, high
         Where the value may lie, in the canonical unit; ``low_open`` and ``high_open`` leave the bound out.
+    shown
+        The accepted form to show in a refusal; otherwise one is made up.
 
     Raises
     ------
     InputRefused
         Anything that is not one value in an accepted unit and range.
     """
-    expected = Expected(unit, name, low, high, low_open, high_open)
+    expected = Expected(unit, name, low, high, low_open, high_open, shown=shown)
     plain = _prepared(text, expected)
     if _range_ends(plain) is not None:
         raise expected.refuse(text, "One measured value is expected here, not a range.")
