@@ -44,8 +44,6 @@ _LIMIT = re.compile(r"(?P<sign>>=|<=|[<>≤≥])(?P<rest>.*)")
 _RANGE_MARK = re.compile(r"\s*(?:[–—…]|\.\.(?!\.)|(?<=[^A-Za-z])to(?=[\s0-9+.-]))\s*")
 _HYPHEN_RANGE = re.compile(rf"({UNSIGNED})(\s?)-\2({UNSIGNED})\s*{_UNIT}")
 _UNIT_BEFORE_ERROR = re.compile(rf"{_SIGNED}\s*[^\s0-9+\-±().,<>=][^±<>()]*±.*")
-# Its square can still be kept.
-_LARGEST_ERROR = 1e100
 _HALF_ERROR = re.compile(rf"{_SIGNED}\s*[+-]\s?{UNSIGNED}\s*{_UNIT}")
 
 
@@ -141,8 +139,6 @@ def _measured(plain: str, text: str, expected: Expected) -> Measured:
     if not all(math.isfinite(part) for part in (read.value, read.minus or 0.0, read.plus or 0.0)):
         raise expected.refuse(text, "A finite number is expected; this one is beyond what can be kept.")
     _check_holds(read.value, text, expected)
-    if max(read.minus or 0.0, read.plus or 0.0) > _LARGEST_ERROR:
-        raise expected.refuse(text, "Such an error says nothing; leave it out when it is not known.")
     return read
 
 

@@ -270,7 +270,7 @@ def test_a_plate_scale_error_moves_no_age_in_periods(dated):
          "correlation-refused", "once"),
         (("--radius", "1e-300 arcsec", "--motion", "80 mas/yr"), 3, "out-of-range", "arcsec"),
         (("--radius", "1.2±1e90 arcsec", "--motion", "80 mas/yr"), 3, "out-of-range", "arcsec"),
-        (("--radius", "1.2±1e300 arcsec", "--motion", "80 mas/yr"), 3, "value-unreadable", "arcsec"),
+        (("--spacing", "1.2±1e300 arcsec", "--motion", "80 mas/yr"), 3, "out-of-range", "arcsec"),
         (("--spacing", "1.2", "--period", "1e-300 yr"), 3, "out-of-range", "8.6±0.1 yr"),
         (("--spacing", "1.2", "--period", "8 to 9 yr"), 3, "value-unreadable", "8.6±0.1 yr"),
         (("--spacing", "1.2", "--motion", "\u221280 mas/yr"), 3, "out-of-range", "80±5 mas/yr"),
