@@ -105,15 +105,15 @@ def assert_calibrated(group: ScoreGroup, count: int) -> None:
 
 @pytest.mark.parametrize("spans", [False, True], ids=["dated", "bracketed"])
 def test_outcomes_fall_evenly_into_true_forecasts(db, spans):
-    group = all_leads(scored(db, 150, seed=31 + spans, spans=spans))
+    group = all_leads(scored(db, 100, seed=31 + spans, spans=spans))
     # Of some the whole interval was past at the time: what is told of those is no forecast.
-    assert group.outcomes > 0.95 * 150
+    assert group.outcomes > 0.95 * 100
     assert_calibrated(group, group.outcomes)
     assert group.verdict == "nothing against"
 
 
 def test_a_forecaster_made_too_narrow_is_shown_as_such(db):
-    group = all_leads(scored(db, 60, seed=7, factor=0.3))
+    group = all_leads(scored(db, 40, seed=7, factor=0.3))
     assert group.verdict == "too narrow"
     assert group.coverage68 < 0.5
     assert group.pit_variance > 0.1
