@@ -114,6 +114,9 @@ def assign_indices(
     """
     radius = np.atleast_1d(np.asarray(radius_arcsec, dtype=np.float64))
     check_radii(radius)
+    # What has no error cannot be weighed, and says nothing here.
+    spacing_arcsec = spacing_arcsec if spacing_arcsec is not None and spacing_arcsec.known else None
+    youngest_phase = youngest_phase if youngest_phase is not None and youngest_phase.known else None
     _refuse(errors, radius, missing_prior, blend_prior)
     order = np.argsort(radius)
     back = np.argsort(order)

@@ -242,7 +242,7 @@ def _shell(track: ShellTrack, at: float, limits: Limits, heat: _Heat, in_view: b
         radius_lo68_arcsec=none_if_nan(float(bounds[0])),
         radius_hi68_arcsec=none_if_nan(float(bounds[1])),
         proper_motion_mas_yr=track.motion_mas_yr,
-        proper_motion_sigma_mas_yr=none_if_nan(track.motion_sigma_mas_yr) if known else None,
+        proper_motion_sigma_mas_yr=none_if_nan(track.motion_sigma_mas_yr),
         probability=track.launched_share(at) if known else None,
         radius_au=heat.radius_au(radius),
         in_view=in_view,

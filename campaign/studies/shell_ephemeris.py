@@ -44,6 +44,11 @@ class ShellEphemeris:
             self._launches[cycle] = launch_of(self.forecaster, 0, cycle, self._seed)
         return self._launches[cycle]
 
+    def has_error(self, cycle: int) -> bool:
+        """Whether the launch of a cycle is dated with an error."""
+        launch = self.launch(cycle)
+        return launch is not None and launch.sigma_d is not None
+
     def periastron(self, cycle: int) -> Dated | None:
         """Periastron of a cycle; None where no orbit dates it."""
         if cycle not in self._periastra:
@@ -75,15 +80,14 @@ class ShellEphemeris:
         return None
 
     def phase_of_youngest(self, instant: float) -> Sided | None:
-        """Age of the youngest shell in periods at an instant, ``bmjd_tdb``; None where it is not known.
+        """Age of the youngest shell in periods at an instant, ``bmjd_tdb``; None where it has no error.
 
         Its error is at least a fifth of a period: a rule that puts the window too early or too late must not
         decide which shells are there.
         """
         found = self.youngest(instant)
-        if found is None or self.period_yr is None:
+        if found is None or self.period_yr is None or found[1].sigma_d is None:
             return None
         period_d = self.period_yr.value * YEAR_D
-        sigma = found[1].sigma_d
-        size = None if sigma is None else float(np.hypot(sigma / period_d, _SLACK))
+        size = float(np.hypot(found[1].sigma_d / period_d, _SLACK))
         return Sided((instant - found[1].median_d) / period_d, size, size)

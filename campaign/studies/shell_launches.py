@@ -130,7 +130,8 @@ def anchor(shells: Sequence[DatedShell], cycles: Sequence[int], ephemeris: Shell
             sigma = np.hypot(launch.sigma_d or 0.0, shell.launched_sigma_d or 0.0)
             found[cycle] = (shell.launched_bmjd_tdb - launch.median_d, max(float(sigma), 1e-6))
     best = min(found, key=lambda cycle: abs(found[cycle][0]))
-    known = shell.launched_sigma_d is not None
+    # An error that nobody knows is not zero: the nearest cycle is then taken, without a probability.
+    known = shell.launched_sigma_d is not None and all(ephemeris.has_error(cycle) for cycle in found)
     logs = {cycle: -0.5 * (d / s) ** 2 - np.log(s) for cycle, (d, s) in found.items()}
     top = max(logs.values())
     weights = {cycle: float(np.exp(log - top)) for cycle, log in logs.items()}

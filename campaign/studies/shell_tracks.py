@@ -130,7 +130,7 @@ def tracks_of(subject: ShellSubject, question: ExpectQuestion) -> ShellTracks:
     solved = solve_shells(radii, stated, ephemeris, asked, subject.record) if radii and not moves else None
     base = None if solved is None else _measured_base(solved, ephemeris, seed, draws)
     if solved is not None and base is not None:
-        return _measured_tracks(solved, base, ephemeris)
+        return _measured_tracks(solved, base, ephemeris, question.on_bmjd_tdb)
     return _launched_tracks(_with_flow(stated, subject), subject, ephemeris, question)
 
 
@@ -171,9 +171,8 @@ def _launched_tracks(
             code="no-ephemeris",
         )
     found = _Launched(ephemeris, motion)
-    return ShellTracks(
-        found.track, found.newest, shell_quantities(solution), (*stated.assumptions, *_said(ephemeris))
-    )
+    said = (_launched_at(ephemeris, question.on_bmjd_tdb), *_said(ephemeris))
+    return ShellTracks(found.track, found.newest, shell_quantities(solution), (*stated.assumptions, *said))
 
 
 @dataclass(frozen=True, slots=True)
@@ -206,10 +205,22 @@ class _Launched:
         return None if found is None else found[0]
 
 
+def _launched_at(ephemeris: ShellEphemeris, at: float, whose: str = "launches") -> str:
+    """What the launches are taken from about a date, and which errors nobody knows."""
+    found = ephemeris.youngest(at)
+    launch = None if found is None else found[1]
+    basis = "the middle of the production window" if launch is None else launch.in_words
+    said = f"{whose} at {basis}"
+    if launch is not None and launch.missing:
+        return f"{said}, without error: not known are {', '.join(launch.missing)}"
+    return f"{said}, half its width counted as error"
+
+
 def _said(ephemeris: ShellEphemeris) -> tuple[str, ...]:
+    several = len(ephemeris.forecaster.units[0].rows) > 1
     period = f"period of the {'orbit' if ephemeris.period_from == 'orbit' else 'dated episodes'}"
     return (
-        f"launches at the middle of each production window, half its width counted as error; {period}",
+        f"{period}; of several adopted solutions that of the largest weight" if several else period,
         "the shells keep their speed",
         "radii are those of the limb",
     )
@@ -279,11 +290,11 @@ def _normals(covariance: FloatArray, draws: int, seed: int) -> FloatArray:
     return drawn
 
 
-def _measured_tracks(solved: SolvedShells, base: _Base, ephemeris: ShellEphemeris) -> ShellTracks:
+def _measured_tracks(solved: SolvedShells, base: _Base, ephemeris: ShellEphemeris, at: float) -> ShellTracks:
     said = ["shells that were measured, and older ones, go on from the fit to their radii"]
     counted = base.shift is not None
     if counted:
-        said += ["younger ones are launched at the middle of their production window", *_said(ephemeris)[1:2]]
+        said += [_launched_at(ephemeris, at, "younger ones are launched"), *_said(ephemeris)[:2]]
     else:
         said += [
             "younger ones follow the clock of the shells themselves: nothing else dates them",

@@ -514,6 +514,46 @@ def test_the_error_of_an_expected_radius_is_that_of_launch_and_motion(run_campai
     assert date["sigma_d"] == pytest.approx(reached.std_dev, rel=0.02)
 
 
+def test_launches_without_a_dust_rule_have_no_error_and_say_so(run_campaign):
+    for words in (
+        ("begin",),
+        ("system", "add", "Wick 4", "--ra", "10:11:12.0", "--dec", "-20:00:00", "--distance", "2000±100 pc"),
+        ("solution", "add", "Wick 4", "--label", "orbit", "--period", "4000±5 d",
+         "--epoch", "MJD 58000 TDB±30 d", "--adopt"),
+    ):  # fmt: skip
+        ran = run_campaign(*words)
+        assert ran.status == 0, ran.err
+    asked = ("shells", "expect", "Wick 4", "--motion", "80±4 mas/yr", "--on", "2026-12-01")
+    data = run_campaign(*asked, "--json").document["data"]
+    shell = data["views"][0]["shells"][0]
+    assert shell["radius_sigma_arcsec"] is None and shell["launched_sigma_d"] is None
+    # What is known keeps its error.
+    assert shell["proper_motion_sigma_mas_yr"] == pytest.approx(4.0)
+    assert any("periastron alone" in note and "width" in note for note in data["assumptions"])
+    assert not any("middle of" in note for note in data["assumptions"])
+
+
+def test_a_missing_shell_is_found_where_the_ephemeris_has_no_error(run_campaign):
+    # Radii 0.4 arcsec plus whole arcsec, the third left out; the orbit alone says nothing of the launch.
+    for words in (
+        ("begin",),
+        ("system", "add", "Wick 4", "--ra", "10:11:12.0", "--dec", "-20:00:00"),
+        ("solution", "add", "Wick 4", "--label", "orbit", "--period", "4000±5 d",
+         "--epoch", "MJD 58000 TDB±30 d", "--adopt"),
+    ):  # fmt: skip
+        ran = run_campaign(*words)
+        assert ran.status == 0, ran.err
+    radii = [f"--radius={r}±0.03 arcsec" for r in (0.41, 1.38, 3.42, 4.40, 5.39)]
+    ran = run_campaign("shells", "date", "Wick 4", *radii, "--on", "2022-01-01", "--json")
+    assert ran.status == 0, ran.err
+    data = ran.document["data"]
+    assert [shell["index"] for shell in data["shells"]] == [1, 2, 4, 5, 6]
+    best, second, *_ = data["assignments"]
+    assert best["missing"] == [3] and best["probability"] > 0.95 > second["probability"]
+    # The nearest cycle is given, and no probability is made up for it.
+    assert {shell["cycle_probability"] for shell in data["shells"]} == {None}
+
+
 # ------------------------------------------------------------------------------------------- upcoming
 
 
