@@ -23,8 +23,9 @@ from campaign.physics.recurrence import (
 
 FloatArray = NDArray[np.float64]
 
-# How much of their deviation two events of one cycle share is not known: each as probable.
-SHARED_SHARES = (0.0, 0.5, 0.9)
+# So much of their deviation two events of one cycle share. Nobody knows it; with nearly all, a second date of
+# a cycle averages the dating error but not the scatter, and where less is shared intervals are only too wide.
+SHARED_SHARES = (0.9,)
 # Points at which a likelihood that is not normal is looked at, for each scatter, and how much wider than
 # the normal one that stands in for it they lie.
 _POINTS = 128
@@ -154,8 +155,8 @@ def fit_dated_line(
     Notes
     -----
     Accuracy: exact given the scatter where all dates are normal; else importance sampling with 128 points a
-    scatter, good to about 2 % of a width. How much of their deviation events of one cycle share is averaged
-    over none, half and nine tenths.
+    scatter, good to about 2 % of a width. Events of one cycle are taken to share nine tenths of their
+    deviation, which is cautious: intervals are too wide where they share less.
 
     Source: Gelman et al. 2013, Bayesian Data Analysis, ch. 14.2, 5.7 and 10.4 (importance sampling);
     Gauss-Hermite quadrature for the shared part.

@@ -400,7 +400,7 @@ def _assumptions(
         told.append(_PRIOR)
     if len(dates.kinds_of) > 1:
         told.append(
-            "how much of its deviation a maximum shares with its onset is not known: 0, 50 and 90 % alike"
+            "a maximum shares nine tenths of its deviation with its onset; where less, intervals are too wide"
         )
     if orbit is not None:
         told.append(
