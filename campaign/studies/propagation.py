@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -110,23 +110,19 @@ class Propagator:
         found = summarised(quantity(self._all), value)
         if not found.sigma:
             return found
-        parts = self._parts(quantity, needs)
-        whole = sum(parts.values())
-        if not whole > 0.0:
-            return found
-        first = max(parts, key=lambda name: parts[name])
-        return _with_dominant(found, first, parts[first] / whole)
+        return with_dominant(found, self._parts(quantity, needs))
 
     def _parts(self, quantity: Callable[[Draws], FloatArray], needs: Sequence[str]) -> dict[str, float]:
-        """Variance from each input alone, by its name for people."""
+        """Squared width from each input alone, by its name for people."""
         parts: dict[str, float] = {}
         for key in needs:
             if key in self.inputs and not self.inputs[key].is_exact:
                 alone = quantity(self._stated | {key: self._all[key]})
-                parts[self.inputs[key].name] = _variance(alone)
+                parts[self.inputs[key].name] = float(squared_widths(alone)[0])
         together = self._together
         if together is not None and any(key in together.draws for key in needs):
-            parts[together.name] = _variance(quantity(self._stated | dict(together.draws)))
+            alone = quantity(self._stated | dict(together.draws))
+            parts[together.name] = float(squared_widths(alone)[0])
         return parts
 
 
@@ -175,6 +171,65 @@ def summarised(draws: FloatArray, value: float | None) -> Propagated:
     return Propagated(value, median, sigma, lo68, hi68, lo95, hi95, count / draws.size)
 
 
+def squared_widths(draws: FloatArray) -> FloatArray:
+    """How much of an error one input makes: like a variance, and not ruled by a long tail.
+
+    Parameters
+    ----------
+    draws : ndarray, shape (draws,) or (rows, draws)
+        Draws with the error of that input alone, in the unit of the result; NaN does not exist.
+
+    Returns
+    -------
+    ndarray, shape (rows,)
+        Squared half-width of the central 68 %, in the square of that unit; 0 where nothing exists.
+
+    Notes
+    -----
+    Accuracy: that of the draws. The 68 % interval is what is told of a result, so that its parts are measured
+    alike. Of normal draws it is the variance.
+
+    Source: Hyndman & Fan 1996, American Statistician 50, 361 (quantiles).
+    """
+    rows, count = _ordered(np.atleast_2d(draws))
+    bounds = row_quantiles(rows, count, PROBABILITIES[1:3])
+    return np.nan_to_num(0.25 * (bounds[:, 1] - bounds[:, 0]) ** 2)
+
+
+def with_dominant(found: Propagated, parts: Mapping[str, float]) -> Propagated:
+    """The result with the input that makes most of its error.
+
+    Parameters
+    ----------
+    found : Propagated
+        A result, in any unit.
+    parts : mapping of str to float
+        ``squared_widths`` of each input, by its name for people.
+
+    Returns
+    -------
+    Propagated
+        As it is where no input makes any error.
+
+    Notes
+    -----
+    Accuracy: shares of the sum of the parts; what inputs do to each other is in none of them.
+
+    Source: propagation of errors, one input at a time.
+    """
+    whole = sum(parts.values())
+    if not found.sigma or not whole > 0.0:
+        return found
+    first = max(parts, key=lambda name: parts[name])
+    return replace(found, dominant=first, dominant_share=parts[first] / whole)
+
+
+def _ordered(rows: FloatArray) -> tuple[FloatArray, NDArray[np.int64]]:
+    """Rows in order with what is not finite at the end, and how many are."""
+    finite = np.isfinite(rows)
+    return np.sort(np.where(finite, rows, np.nan), axis=1), finite.sum(axis=1)
+
+
 def _drawn(one: Uncertain, normals: FloatArray) -> FloatArray:
     if isinstance(one.value, Range):
         from scipy.special import ndtr
@@ -186,17 +241,6 @@ def _drawn(one: Uncertain, normals: FloatArray) -> FloatArray:
         return np.asarray(value * np.exp(size * normals))
     middle, below, above = (np.array([[x]]) for x in (value, minus, plus))
     return np.asarray(two_piece_within(middle, below, above, normals[None, :], one.low, one.high)[0])
-
-
-def _variance(draws: FloatArray) -> float:
-    finite = draws[np.isfinite(draws)]
-    return float(np.var(finite)) if finite.size > 1 else 0.0
-
-
-def _with_dominant(found: Propagated, name: str, share: float) -> Propagated:
-    from dataclasses import replace
-
-    return replace(found, dominant=name, dominant_share=share)
 
 
 def _finite(value: float) -> float | None:

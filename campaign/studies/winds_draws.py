@@ -15,10 +15,9 @@ from campaign.model.systems import StarName
 from campaign.physics import contactsurface, windmomentum
 from campaign.physics.constants import AU_KM, SOLAR_RADIUS_KM
 from campaign.physics.draws import stratified_normals, two_piece_within
-from campaign.physics.intervals import PROBABILITIES, row_quantiles
 from campaign.physics.openingforms import SHOCK_FLARE_DEG
 from campaign.physics.postshock import mean_molecular_weight
-from campaign.studies.propagation import summarised
+from campaign.studies.propagation import squared_widths, summarised, with_dominant
 from campaign.studies.rows import ForecastRow
 from campaign.studies.sampling import Sampler
 from campaign.studies.variance import only
@@ -202,7 +201,10 @@ class Propagation:
         wanted = [name for name in self.inputs.names() if any(name in each for each in needs.values())]
         self.used.update(wanted)
         uncertain = [name for name in wanted if (self.inputs.measured(name).sigma or 0.0) > 0.0]
-        spreads = {name: _widths(quantities(self.alone(name))) for name in uncertain}
+        spreads = {
+            name: {key: squared_widths(rows) for key, rows in quantities(self.alone(name)).items()}
+            for name in uncertain
+        }
         found: dict[str, list[Propagated]] = {}
         for key, rows in drawn.items():
             unknown = tuple(spoken(name) for name in needs[key] if not self.inputs.measured(name).error_known)
@@ -212,22 +214,6 @@ class Propagation:
         return found
 
 
-def _widths(quantities: Mapping[str, FloatArray]) -> dict[str, FloatArray]:
-    """Squared half-width of the central 68 % of each row: like a variance, and not ruled by a long tail."""
-    widths = {}
-    for key, drawn in quantities.items():
-        rows, count = _ordered(np.atleast_2d(drawn))
-        bounds = row_quantiles(rows, count, PROBABILITIES[1:3])
-        widths[key] = np.nan_to_num(0.25 * (bounds[:, 1] - bounds[:, 0]) ** 2)
-    return widths
-
-
-def _ordered(rows: FloatArray) -> tuple[FloatArray, NDArray[np.int64]]:
-    """Rows in order with what is not finite at the end, and how many are."""
-    finite = np.isfinite(rows)
-    return np.sort(np.where(finite, rows, np.nan), axis=1), finite.sum(axis=1)
-
-
 def _summarised(
     rows: FloatArray, values: FloatArray, spreads: Mapping[str, FloatArray], unknown: tuple[str, ...]
 ) -> list[Propagated]:
@@ -235,13 +221,8 @@ def _summarised(
         return [Propagated(_number(value), unknown_errors=unknown) for value in values]
     found = []
     for i, value in enumerate(values):
-        one = summarised(rows[i], _number(value))
-        parts = {name: float(each[i]) for name, each in spreads.items()}
-        whole = sum(parts.values())
-        if one.sigma and whole > 0.0:
-            first = max(parts, key=lambda name: parts[name])
-            one = replace(one, dominant=spoken(first), dominant_share=parts[first] / whole)
-        found.append(one)
+        parts = {spoken(name): float(each[i]) for name, each in spreads.items()}
+        found.append(with_dominant(summarised(rows[i], _number(value)), parts))
     return found
 
 
