@@ -21,7 +21,7 @@ from campaign.studies.dust_excess import Sky, excesses
 from campaign.studies.dust_inputs import DustInputs, gather
 from campaign.studies.dust_measured import Fitted, measure, with_other_opacities
 from campaign.studies.dust_physics import grains_in_light
-from campaign.studies.dust_points import FLUXES, Levels, LightPoints, light_points
+from campaign.studies.dust_points import FLUXES, Levels, LightPoints, light_points, require_stand_ins
 from campaign.studies.dust_through import MOST_EPOCHS, epochs_of, production_rates
 from campaign.studies.instants import axis_instant
 from campaign.studies.judging import confirmed_spans
@@ -136,6 +136,7 @@ def tell_dust(
         assumptions = assumptions[1:] + list(_PHYSICS_NOTES)
         result = replace(result, physics=physics)
     else:
+        require_stand_ins(overrides)
         arrays = campaign.photometry.get(record.system.id)
         result = _measured(result, inputs, overrides, question, arrays, fluxes)
         assumptions += [*_zero_point_notes(result), *_MEASURED_NOTES, _veil_note(overrides)]

@@ -13,7 +13,7 @@ from campaign.model.arrays import PhotometryArrays
 from campaign.model.dust import DustOverrides, LevelGiven
 from campaign.model.observations import Observation
 from campaign.physics.photometry import FLUX_ERROR_PER_MAG
-from campaign.physics.zeropoints import zero_point
+from campaign.physics.zeropoints import ZERO_POINTS, zero_point
 from campaign.studies.bands import photometric_system_key
 from campaign.studies.judging import series_of
 from campaign.studies.quietness import MINIMUM_LEVEL_POINTS, StellarLevel, stellar_level
@@ -188,6 +188,29 @@ def zero_of(band: str, photometric_system: str, overrides: DustOverrides) -> Zer
         return Zero(zero.flux_jy, zero.sigma_jy / zero.flux_jy, zero.wavelength_um, zero.photometric_system)
     assumed = PUBLISHED_ERROR if zero.basis == "published" else RECALLED_ERROR
     return Zero(zero.flux_jy, assumed, zero.wavelength_um, zero.photometric_system, True)
+
+
+def require_stand_ins(overrides: DustOverrides) -> None:
+    """Refuse a stand-in for zero points that is itself not known.
+
+    Parameters
+    ----------
+    overrides : DustOverrides
+        Names of photometric systems (no unit).
+
+    Raises
+    ------
+    NotFound
+        With what is known.
+
+    Notes
+    -----
+    Accuracy: not applicable. Source: project convention.
+    """
+    known = {"".join(each.photometric_system.casefold().split()) for each in ZERO_POINTS}
+    for name in overrides.zero_points_of.values():
+        if "".join(name.casefold().split()) not in known:
+            zero_point(name, "")
 
 
 def _table_of(band: str, key: str, photometric_system: str, overrides: DustOverrides) -> str | None:

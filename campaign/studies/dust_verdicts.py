@@ -229,8 +229,10 @@ def _too_thick(thickness: Thickness | None) -> list[DustVerdict]:
 
 
 def _misfit(fit: DustFit | None) -> list[DustVerdict]:
-    if fit is None or fit.degrees < 1:
+    if fit is None:
         return []
+    if fit.degrees < 1:
+        return _pulled(fit)
     probability = chi2_probability(fit)
     if probability is None or probability >= _IMPROBABLE:
         return []
@@ -240,6 +242,21 @@ def _misfit(fit: DustFit | None) -> list[DustVerdict]:
             f"no single temperature fits (chi2 {fit.chi2:.3g} for {fit.degrees} degrees of freedom): dust of "
             "several temperatures, another opacity, or a level or zero point that is off; the errors do not "
             "hold that",
+            False,
+        )
+    ]
+
+
+def _pulled(fit: DustFit) -> list[DustVerdict]:
+    """Two bands alone fit exactly, unless a limit of a third or the range of temperatures forbids it."""
+    if fit.cut or fit.chi2 <= SEEN_SIGMA**2:
+        return []
+    return [
+        DustVerdict(
+            "one-temperature-does-not-fit",
+            f"the limits pull the dust off the two bands that were measured (chi2 {fit.chi2:.3g}, where they "
+            "alone would fit exactly): dust of several temperatures, another opacity, or a level or limit "
+            "that is off; the errors do not hold that",
             False,
         )
     ]

@@ -241,6 +241,22 @@ def test_a_limit_that_the_dust_breaks_is_told():
         assert ("limit-crossed" in verdicts(result)) is crossed
 
 
+def test_a_limit_that_pulls_two_bands_off_is_told():
+    # Ks shows dust. H shows none, as of cool dust, which a limit in W1 forbids: it allows six tenths of what
+    # dust of 900 K would give there. With H as dust of 900 K has it and twice its W1 allowed, all agrees.
+    light = photometry(None, {AT_MJD: (2e-8, 900.0)}, bands=only("H", "Ks", "W1"))
+    rows = list(zip(light.bmjd_tdb, light.mag, light.mag_plus, light.limit_side, light.band,
+                    light.photometric_system, strict=True))  # fmt: skip
+    hidden = (AT_MJD, 6.6, 0.03, 0, "H", "2MASS")
+    shown = next(row for row in rows if row[0] >= AT_MJD and row[4] == "H")
+    for h, depth, told_so in ((hidden, 0.6, True), (shown, 2.0, False)):
+        points = Points([*(row for row in rows if row[0] < AT_MJD or row[4] == "Ks"), h])
+        bound = 309.54 * 10.0 ** (-0.4 * 5.9) + depth * dust_jy(2e-8, 900.0, 2100.0, 3.3526)
+        points.add(AT_MJD, float(-2.5 * np.log10(bound / 309.54)), 0.0, "W1", "WISE", 1)
+        found = verdicts(told(points.arrays()))
+        assert ("one-temperature-does-not-fit" in found) is told_so, found
+
+
 def test_a_band_below_the_stars_is_no_dust_and_is_left_out():
     points = Points([])
     for band, star, dusty in (("J", 7.0, 7.5), ("Ks", 6.2, 5.0)):
@@ -332,6 +348,14 @@ def test_bands_without_zero_points_are_refused_and_a_stand_in_is_told():
     given = ZeroPointGiven("Ks", None, Measured(666.7, 12.6, 12.6), 2.159)
     own = told(light, DustOverrides(inputs=temperature, zero_points=(given,)))
     assert own.measured.mass_msun.value == pytest.approx(2e-8, rel=1e-3)
+
+
+def test_a_stand_in_that_is_not_known_is_refused_with_those_that_are():
+    light = of_cold_mesa(photometry(None, {AT_MJD: (2e-8, 900.0)}))
+    with pytest.raises(NotFound) as refused:
+        told(light, DustOverrides(zero_points_of={"*": "Jonson"}))
+    assert "'Jonson'" in refused.value.message
+    assert "2MASS" in refused.value.why
 
 
 def test_a_stand_in_does_not_touch_what_is_known():
