@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import replace
 
 from campaign.model.measured import Measured
@@ -56,10 +57,17 @@ def phase(value: Propagated, *, error: bool = True) -> str:
     if middle is None:
         return ""
     if not error or value.lo68 is None or value.hi68 is None:
-        return f"{middle:+.4f}".replace("-", "−")
+        return bare_phase(middle)
     half = 0.5 * (value.hi68 - value.lo68)
-    places = 4 if half < 0.01 else 3 if half < 0.1 else 2
+    # Two digits of the error: next to periastron of a very eccentric orbit they are far behind the point.
+    places = min(max(1 - math.floor(math.log10(half)), 2), 9) if half > 0.0 else 4
     return f"{middle:+.{places}f} ± {half:.{places}f}".replace("-", "−")
+
+
+def bare_phase(value: float) -> str:
+    """A phase from periastron with its sign, and as many places as keep it from looking like none."""
+    places = min(1 - math.floor(math.log10(abs(value))), 9) if 0.0 < abs(value) < 1e-3 else 4
+    return f"{value:+.{places}f}".replace("-", "−")
 
 
 def mostly(value: Propagated | None) -> str:

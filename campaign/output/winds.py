@@ -8,7 +8,7 @@ from campaign.model.propagated import Propagated
 from campaign.model.winds import Cooling, SightZone, WindEvent, WindRow, WindsResult
 from campaign.output.console import Screen
 from campaign.output.documents import document, plain
-from campaign.output.propagated import brief, in_millions, mostly, phase, told
+from campaign.output.propagated import bare_phase, brief, in_millions, mostly, phase, told
 from campaign.output.tables import Column, print_table
 from campaign.output.winds_picture import render_orbit, render_surface
 from campaign.output.wording import UTC_NOTE, day, percent
@@ -233,7 +233,7 @@ def _event(event: WindEvent) -> tuple[str, ...]:
         spread,
         event.event,
         str(event.cycle),
-        f"{event.phase:+.4f}".replace("-", "−"),
+        bare_phase(event.phase),
         chance,
         mostly(date),
     )

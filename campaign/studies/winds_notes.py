@@ -147,7 +147,7 @@ def warnings(inputs: WindInputs, of: Propagation, swap: float | None) -> list[st
     if swap is not None and swap >= _WORTH_SAYING:
         lines.append(
             f"within the errors star {inputs.weaker} may have the stronger wind after all: in "
-            f"{100 * swap:.2g} % of the draws the roles are the other way round"
+            f"{_percent(swap)} of the draws the roles are the other way round"
         )
     eta = float(of.nominal.eta[0])
     if eta < ALL_SHOCKED_BELOW:
@@ -174,7 +174,12 @@ def _collapses(inputs: WindInputs, of: Propagation) -> list[str]:
         if share >= _WORTH_SAYING:
             other = "B" if star == "A" else "A"
             lines.append(
-                f"at periastron the winds balance inside star {star} in {100 * share:.2g} % of the draws: "
+                f"at periastron the winds balance inside star {star} in {_percent(share)} of the draws: "
                 f"the wind of star {other} then reaches its surface, and nothing told here holds"
             )
     return lines
+
+
+def _percent(share: float) -> str:
+    """Two digits, and no power of ten."""
+    return f"{100 * share:.2g} %" if share < 0.095 else f"{100 * share:.0f} %"

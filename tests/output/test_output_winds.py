@@ -13,7 +13,7 @@ from rich.cells import cell_len
 from campaign.model.propagated import Propagated
 from campaign.model.winds import WindRow, WindsResult
 from campaign.output.console import Screen
-from campaign.output.propagated import brief, in_millions, mostly, phase, told
+from campaign.output.propagated import bare_phase, brief, in_millions, mostly, phase, told
 from campaign.output.winds import render_winds, winds_json
 from campaign.studies.watch import load_sample_campaign
 from campaign.studies.winds import WindsQuestion, winds
@@ -53,6 +53,19 @@ def test_in_a_pipe_a_date_has_every_quantity_on_its_line(result):
     row = result.rows[0]
     assert f"{row.separation_au.median:.1f}"[:3] in first
     assert row.seen_through in first
+
+
+@pytest.mark.parametrize(
+    ("value", "text"),
+    [
+        (Propagated(-0.03, -0.0393, 0.008, -0.0476, -0.031, -0.05, -0.02), "−0.0393 ± 0.0083"),
+        (Propagated(-3.4e-5, -3.4e-5, 2e-5, -5.6e-5, -1.4e-5, -8e-5, 0.0), "−0.000034 ± 0.000021"),
+        (Propagated(0.0, 0.0, 0.0, 0.0, 0.0, 0.0, 0.0), "+0.0000 ± 0.0000"),
+    ],
+)
+def test_a_phase_next_to_periastron_keeps_its_digits(value, text):
+    assert phase(value) == text
+    assert bare_phase(-3.4e-5) == "−0.000034"
 
 
 def test_a_terminal_without_unicode_gets_plain_characters(result):
