@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Annotated, Any
+from typing import TYPE_CHECKING, Annotated, Any, NamedTuple
 
 import typer
 
@@ -25,6 +25,8 @@ _QUANTITIES = {
     "distance": "distance_pc",
 }
 _LIGHT_KMS = 299_792.458
+# One instant in two forms: a scale or the place at which light arrives may differ by minutes.
+_SAME_INSTANT_D = 0.01
 _SHOWN = {
     "spacing": "1.20±0.05 arcsec",
     "motion": "80±5 mas/yr",
@@ -190,7 +192,6 @@ def _radii(
 ) -> tuple[ShellRadius, ...]:
     from campaign.model.shellquestion import ShellRadius
     from campaign.reading.shells import read_shell_radii
-    from campaign.studies.instants import axis_instant
 
     edge = one_of(measured_at, ("edge", "peak"), "--measured-at")
     scale = plain_number(
@@ -198,7 +199,8 @@ def _radii(
     )
     typed = read_shell_radii(texts)
     common_instant = clock_instant(on, "--on")
-    found = []
+    found: list[ShellRadius] = []
+    images: list[_TypedImage] = []
     for each in typed:
         if each.instant is not None and common_instant is not None:
             raise InputRefused(
@@ -208,13 +210,14 @@ def _radii(
                 code="image-unclear",
             )
         instant = each.instant or common_instant
+        image = None if instant is None else _image_of(instant, images)
         found.append(
             ShellRadius(
                 radius_arcsec=each.radius_arcsec,
                 index=each.index,
-                bmjd_tdb=None if instant is None else axis_instant(instant),
-                bmjd_sigma_d=_date_error_d(instant),
-                image="" if instant is None else instant.text,
+                bmjd_tdb=None if image is None else image.bmjd_tdb,
+                bmjd_sigma_d=None if image is None else image.sigma_d,
+                image="" if image is None else image.text,
                 measured_at=edge,  # type: ignore[arg-type]
                 plate_scale_error=scale,
                 feature=feature,
@@ -223,10 +226,26 @@ def _radii(
     return tuple(found)
 
 
-def _date_error_d(instant: TypedInstant | None) -> float | None:
-    if instant is None:
-        return None
-    return max(instant.minus_d or 0.0, instant.plus_d or 0.0)
+class _TypedImage(NamedTuple):
+    """One image of typed radii: when it was taken, how surely, and how its date was first typed."""
+
+    bmjd_tdb: float
+    sigma_d: float
+    text: str
+
+
+def _image_of(instant: TypedInstant, known: list[_TypedImage]) -> _TypedImage:
+    """The image of a date: one already named, perhaps in another form, or a new one."""
+    from campaign.studies.instants import axis_instant
+
+    new = _TypedImage(axis_instant(instant), max(instant.minus_d or 0.0, instant.plus_d or 0.0), instant.text)
+    for image in known:
+        # A day typed without a time holds every instant of it; a month or a year does not name one image.
+        day = any(_SAME_INSTANT_D < each.sigma_d <= 0.5 for each in (image, new))
+        if abs(image.bmjd_tdb - new.bmjd_tdb) <= _SAME_INSTANT_D + (0.5 if day else 0.0):
+            return image
+    known.append(new)
+    return new
 
 
 def _correlations(texts: list[str]) -> dict[tuple[Any, Any], float]:

@@ -19,6 +19,7 @@ from campaign.output.console import Screen
 from campaign.output.shells_diagram import render_diagram
 from campaign.output.tables import Cell, Column, Row, fits, print_table
 from campaign.output.values import calendar_day, number
+from campaign.output.wording import minus_signs
 
 # A residual or tension from this many sigma on is pointed at.
 HIGH_SIGMA = 3.0
@@ -77,9 +78,9 @@ def render_dating(screen: Screen, result: ShellDatingResult) -> None:
     screen.line("")
     screen.heading("Notes")
     for warning in result.warnings:
-        screen.wrapped(warning, label="- Warning: ", hang=2, style="bold yellow")
+        screen.wrapped(minus_signs(warning), label="- Warning: ", hang=2, style="bold yellow")
     for line in (*result.not_told, *result.assumptions):
-        screen.wrapped(line, label="- ", hang=2)
+        screen.wrapped(minus_signs(line), label="- ", hang=2)
 
 
 def render_shells(screen: Screen, shells: Sequence[DatedShell]) -> None:
@@ -162,7 +163,7 @@ def render_motions(screen: Screen, motions: Sequence[ShellMotion]) -> None:
     )
     rows = [
         (
-            each.label,
+            minus_signs(each.label),
             str(each.epochs),
             _plain(each.proper_motion_mas_yr, None if isnan(each.sigma_mas_yr) else each.sigma_mas_yr),
             _launched(each.launched_bmjd_tdb, each.launched_sigma_d),
@@ -218,7 +219,7 @@ def _row(shell: DatedShell, *, compact: bool) -> Row:
         _plain(shell.radius_arcsec, shell.sigma_arcsec),
         _age(shell),
         _launched(shell.launched_bmjd_tdb, shell.launched_sigma_d),
-        "" if shell.cycle is None else str(shell.cycle),
+        "" if shell.cycle is None else minus_signs(str(shell.cycle)),
         _phase(shell, compact=compact),
         Cell(_signed(shell.window_sigma), "bold yellow" if far else ""),
         Cell(residual, "bold yellow" if loud else ""),
@@ -249,7 +250,7 @@ def _age(shell: DatedShell) -> str:
 def _launched(bmjd_tdb: float | None, sigma: float | None) -> str:
     if bmjd_tdb is None:
         return ""
-    day = calendar_day(bmjd_tdb)
+    day = minus_signs(calendar_day(bmjd_tdb))
     if sigma is None:
         return f"{day} ± ?"
     if sigma >= 1000.0:
@@ -305,8 +306,8 @@ def _tension_row(tension: ShellTension) -> Row:
     return (
         word,
         Cell(shown, "bold yellow" if high else ""),
-        f"{_sized(tension.value, unit)}, {tension.determined_from}",
-        f"{_sized(tension.against_value, unit)}, {tension.against}",
+        f"{_sized(tension.value, unit)}, {minus_signs(tension.determined_from)}",
+        f"{_sized(tension.against_value, unit)}, {minus_signs(tension.against)}",
     )
 
 
@@ -372,7 +373,7 @@ def _render_acceleration(screen: Screen, result: ShellDatingResult) -> None:
         return
     screen.line("")
     screen.heading("Acceleration")
-    screen.wrapped(found.statement)
+    screen.wrapped(minus_signs(found.statement))
     ages = [
         f"{_plain(age, sigma)} yr {how}"
         for age, sigma, how in (

@@ -10,7 +10,7 @@ from campaign.output.console import Screen
 from campaign.output.shells import render_quantities
 from campaign.output.tables import Cell, Column, Row, print_table
 from campaign.output.values import calendar_day, number
-from campaign.output.wording import percent
+from campaign.output.wording import minus_signs, percent
 
 _SEEN_STYLE = "bold yellow"
 
@@ -35,7 +35,7 @@ def render_expectation(screen: Screen, result: ShellExpectation) -> None:
     for warning in result.warnings:
         screen.wrapped(warning, label="- Warning: ", hang=2, style="bold yellow")
     for line in result.assumptions:
-        screen.wrapped(line, label="- ", hang=2)
+        screen.wrapped(minus_signs(line), label="- ", hang=2)
 
 
 def _counted(view: ExpectedView, result: ShellExpectation) -> str:
@@ -53,7 +53,9 @@ def _counted(view: ExpectedView, result: ShellExpectation) -> str:
         ends.append(f"a radius of {result.outer_radius_arcsec:g} arcsec")
     told = f"{', '.join(parts)} on {calendar_day(view.bmjd_tdb)}"
     # Older ones are beyond without being counted: nobody knows how long dust lasts.
-    return f"{told}; all older ones lie outside {' or '.join(ends)}." if ends else f"{told}."
+    if ends and view.beyond_field:
+        return f"{told}; all older ones lie outside {' or '.join(ends)}."
+    return f"{told}; older ones were not looked at." if ends and view.shells else f"{told}."
 
 
 def _print_views(screen: Screen, views: Sequence[ExpectedView]) -> None:
@@ -95,7 +97,7 @@ def _columns(views: Sequence[ExpectedView]) -> list[Column]:
 
 def _row(shells: Sequence[ExpectedShell | None]) -> Row:
     first = next(shell for shell in shells if shell is not None)
-    cells: list[str | Cell] = ["" if first.cycle is None else str(first.cycle), _launched(first)]
+    cells: list[str | Cell] = ["" if first.cycle is None else minus_signs(str(first.cycle)), _launched(first)]
     for shell in shells:
         cells += ["", "", "", "", ""] if shell is None else _cells(shell)
     cells.append(_plain(first.proper_motion_mas_yr, first.proper_motion_sigma_mas_yr))
@@ -148,7 +150,7 @@ def _print_coming(screen: Screen, result: ShellExpectation) -> None:
     limit = "" if result.resolution_arcsec is None else f", past {result.resolution_arcsec:g} arcsec"
     grown = [(f"resolvable{limit}", r.cycle, r.bmjd_tdb, r.sigma_d) for r in result.resolvable]
     rows = [
-        (f"{calendar_day(at)} ± {_days(sigma)}", "" if cycle is None else str(cycle), word)
+        (f"{calendar_day(at)} ± {_days(sigma)}", "" if cycle is None else minus_signs(str(cycle)), word)
         for word, cycle, at, sigma in sorted([*launches, *grown], key=lambda each: each[2])
     ]
     columns = (Column("date"), Column("cycle", align="right"), Column("its shell is"))

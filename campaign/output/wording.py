@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable
 
 from campaign.model.forecasts import EVENT_NAMES, EventForecast, Status
@@ -11,6 +12,8 @@ ERROR_UNKNOWN = "error unknown"
 DAYS_PER_YEAR = 365.25
 # From this many days on, an interval is told in years.
 _YEARS_FROM_D = 1000.0
+
+_MINUS = re.compile(r"(?<![\w)\-.])-(?=[0-9])")
 
 STATUS_STYLES: dict[Status, str] = {
     "under way": "bold green",
@@ -43,6 +46,11 @@ def percent(probability: float | None) -> str:
 def day(utc: str | None, bmjd_tdb: float) -> str:
     """The calendar day of an instant; its MJD where no calendar reaches."""
     return utc.partition("T")[0] if utc else f"MJD {bmjd_tdb:.0f}"
+
+
+def minus_signs(text: str) -> str:
+    """``text`` with U+2212 before its negative numbers; hyphens inside words, dates and ranges stay."""
+    return _MINUS.sub("−", text)
 
 
 def signed_days(days: float) -> str:

@@ -133,8 +133,17 @@ def count_shells(
     youngest = np.concatenate([[0], np.cumsum(turns)])[group.image]
     cycle = (youngest - np.floor(index) + 1).astype(np.int64)
     return Counted(
-        index, cycle - int(cycle.max()), tuple(assignments), tuple(not_told), tuple(dict.fromkeys(warnings))
+        index,
+        cycle - int(cycle.max()),
+        _by_date(assignments),
+        tuple(not_told),
+        tuple(dict.fromkeys(warnings)),
     )
+
+
+def _by_date(assignments: Sequence[ShellAssignment]) -> tuple[ShellAssignment, ...]:
+    """Image by image, and in each of them the likeliest first, as they are."""
+    return tuple(sorted(assignments, key=lambda each: each.image_bmjd_tdb or 0.0))
 
 
 def _count_image(

@@ -111,12 +111,17 @@ def _through_time(bare: GroupFit, period: Measured | None, scale_errors: bool) -
     if np.unique(cycle).size == 1:
         motion = fit_one_shell(time, radius, errors)
     else:
+        usable = None if period is None or not period.error_known else sided(period)
         try:
             motion = fit_motion_and_period(time, cycle, radius, errors)
+            unseen = motion.fit.value(MOTION) < _SEEN_TO_MOVE * motion.fit.sigma(MOTION)
         except InputRefused:
-            if period is None or not period.error_known:
+            if usable is None:
                 raise
-            motion = fit_motion_and_period(time, cycle, radius, errors, sided(period))
+            unseen = True
+        if unseen and usable is not None:
+            # Images too near together for a motion of their own: spacing and period tell it.
+            motion = fit_motion_and_period(time, cycle, radius, errors, usable)
             helped = True
     if scale_errors:
         motion = replace(motion, fit=with_scaled_errors(motion.fit))
@@ -317,7 +322,8 @@ def _ages_through_time(found: GroupFit, period: Measured | None, agrees: bool) -
     assert motion is not None
     single = SPACING not in motion.fit.names
     best = best_motion(found, period, agrees)
-    basis = "motion through the images" + ("" if best is motion else ", together with the stated period")
+    alone = best is motion and not found.helped_by_period
+    basis = "motion through the images" + ("" if alone else ", together with the stated period")
     launched = launch_times_yr(best, None if single else found.cycle)
     if single:
         launched = Spreads(*(np.repeat(column, group.radius_arcsec.size) for column in launched))

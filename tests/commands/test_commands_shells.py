@@ -231,6 +231,30 @@ def test_a_plate_scale_error_moves_no_age_in_periods(dated):
         assert one["age_sigma_yr"] == pytest.approx(other["age_sigma_yr"], rel=1e-3)
 
 
+def test_one_date_in_several_forms_is_one_image(dated):
+    # MJD 58849.0 is 2020-01-01 00:00, and J2000.0 is JD 2451545.0: J2020.0 lies at noon of that day.
+    dates = ("2020-01-01", "JD 2458849.5", "J2020.0")
+    radii = [f"--radius={1.2 * (j + 1)}±0.1 arcsec on {date}" for j, date in enumerate(dates)]
+    data = dated(*radii, "--period", "8±0.1 yr")
+    assert len({shell["image_bmjd_tdb"] for shell in data["shells"]}) == 1
+    assert [shell["index"] for shell in data["shells"]] == [1, 2, 3]
+    assert data["shells"][0]["age_yr"] == pytest.approx(8.0, abs=0.1)
+
+
+def test_images_a_month_apart_are_dated_by_the_period(dated):
+    # In a month the shells move by 1/96 of a spacing, a tenth of an error: radius over spacing times period.
+    radii = [
+        f"--radius={r}±0.1 arcsec on {day}"
+        for r, day in ((1.2, "2020-01-01"), (2.4, "2020-01-01"), (1.25, "2020-02-01"), (2.5, "2020-02-01"))
+    ]
+    data = dated(*radii, "--period", "8±0.1 yr")
+    ages = [shell["age_yr"] for shell in data["shells"]]
+    assert ages == pytest.approx([8.0, 16.0, 8.0, 16.0], abs=0.2)
+    motion = data["proper_motion_mas_yr"]
+    assert abs(motion["value"] - 1000.0 * 1.2 / 8.0) < motion["sigma"]
+    assert not [t for t in data["tensions"] if abs(t["sigma"] or 0.0) > 2.0]
+
+
 # ------------------------------------------------------------------------------------------- refused
 
 

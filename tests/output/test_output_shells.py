@@ -28,6 +28,7 @@ from campaign.output.shells import render_dating
 from campaign.output.shells_diagram import render_diagram
 from campaign.output.shells_document import dating_data
 from campaign.output.shells_expected import render_expectation
+from campaign.output.wording import minus_signs
 
 IMAGES = (58_637.5, 59_802.5)
 
@@ -195,3 +196,10 @@ def test_what_is_expected_tells_how_many_are_in_view_and_what_comes():
     assert "1 in view, 1 inside 0.1 arcsec" in text
     assert "resolvable, past 0.1 arcsec" in text and "launched" in text
     assert "0.01 ± ? (90 %)" in text
+
+
+def test_negative_numbers_have_a_minus_sign_and_nothing_else_has():
+    assert minus_signs("cycle -3 of 2022-08-11, 1-5, MJD -12, (-0.5)") == (
+        "cycle −3 of 2022-08-11, 1-5, MJD −12, (−0.5)"
+    )
+    assert minus_signs("--on 2031-04-07, Kettle-7") == "--on 2031-04-07, Kettle-7"
