@@ -17,6 +17,7 @@ from campaign.physics.lighttime import heliocentric_light_time_d
 from campaign.physics.sun import sun_altitude_deg
 from campaign.reading.columntimes import PLACES
 from campaign.studies.bands import band_warnings, mixed_bands
+from campaign.studies.load_alike import differing_in_value
 from campaign.studies.load_known import LIGHT_TIME_D, KnownCheck
 from campaign.studies.load_names import NameIndex, alias_warnings, comment_warning
 from campaign.studies.load_outliers import outlying
@@ -92,6 +93,11 @@ def load_warnings(
     withdrawn = np.zeros(rows.size, dtype=np.bool_)
     withdrawn[check.withdrawn] = True
     told.add("withdrawn-before", withdrawn, "{rows} {are} the same as what was withdrawn before")
+    told.add(
+        "differing-in-table",
+        differing_in_value(rows, columns),
+        "{rows} {are} of the same system, time, band and site as another, with another value; all go in",
+    )
     told.add("future", _future(columns, now_mjd), "{rows} {are} dated in the future")
     told.add("long-ago", columns.numbers["bmjd_tdb"] < _LONG_AGO_MJD, "{rows} {are} dated before 1900")
     told.add("daylight", _daylight(rows, columns, sites), "at {rows} the Sun was up at the site")

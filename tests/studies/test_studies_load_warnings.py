@@ -308,3 +308,35 @@ def test_rows_that_stand_twice(db):
     found = warned(load(db, text + text.splitlines()[1] + "\n"))["repeated"]
     assert (found.rows, found.lines, found.more) == (1, (7,), False)
     assert len(kept(db)) == 5
+
+
+# Rows 2 to 7: a pair that differs in value, and rows beside it that differ in something else as well.
+@pytest.mark.parametrize(
+    ("other", "told"),
+    [
+        ("Lantern 3,2461000.50000,K,7.4,0.02,Vega", True),
+        ("Lantern 3,2461000.50000,K,>7.0,,Vega", False),
+        ("Lantern 3,2461000.50000,H,7.4,0.02,Vega", False),
+        ("Lantern 3,2461000.50000,K,7.4,0.02,AB", False),
+        ("Lantern 3,2461000.50010,K,7.4,0.02,Vega", False),
+        ("Keel 9,2461000.50000,K,7.4,0.02,Vega", False),
+        ("Lantern 3,2461000.50000,K,7.3,0.05,Vega", False),
+    ],
+)
+def test_rows_of_one_table_that_differ_in_value_alone(db, other, told):
+    found = warned(load(db, curve(QUIET) + other + "\n", rehearse=True))
+    assert ("differing-in-table" in found) is told
+    if told:
+        assert (found["differing-in-table"].rows, found["differing-in-table"].lines) == (2, (2, 7))
+
+
+def test_velocities_of_two_stars_at_one_time_do_not_differ(db):
+    rows = "Lantern 3,2461000.5,-40,2,A\nLantern 3,2461000.5,20,3,B\nLantern 3,2461000.5,-44,2,A\n"
+    found = warned(load(db, "system,BJD_TDB,RV,e_RV,star\n" + rows, rehearse=True))
+    assert found["differing-in-table"].lines == (2, 4)
+
+
+def test_position_angles_of_one_time_differ(db):
+    rows = "Lantern 3,2461000.5,12.1,0.2,143,1\nLantern 3,2461000.5,12.1,0.2,150,1\n"
+    head = "system,BJD_TDB,rho (mas),e_rho,theta,e_theta\n"
+    assert warned(load(db, head + rows, rehearse=True))["differing-in-table"].rows == 2
