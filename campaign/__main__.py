@@ -107,6 +107,13 @@ def _known(problem: BaseException, argv: Sequence[str]) -> CampaignError | None:
             why=f"The place it goes to has no room left ({problem.strerror}).",
             hint="Free some space or write somewhere else, then run the command again.",
         )
+    if isinstance(problem, MemoryError):
+        return StorageFull(
+            "The memory is not enough for that.",
+            why="More was asked for at once than this computer gives to the program.",
+            hint="Ask for less at once, for example load a table in parts.",
+            code="memory-full",
+        )
     return None
 
 

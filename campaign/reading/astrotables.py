@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import warnings
 from collections.abc import Iterator, Sequence
 from decimal import Decimal
@@ -13,6 +14,9 @@ from campaign.model.loading import ForeignTable, TableBlock, TableColumn
 from campaign.reading.tablefile import TableFile
 
 _BLOCK_ROWS = 50_000
+# Heads of thousands of columns are shorter, and reading a head takes a hundred times its size in memory.
+_MOST_HEAD_BYTES = 4 << 20
+_ROW = re.compile(rb"^[^#\s]", re.MULTILINE)
 _SCALES: dict[str, Scale] = {
     "utc": "utc",
     "tt": "tt",
@@ -38,7 +42,12 @@ def read_ecsv(file: TableFile) -> ForeignTable:
     InputRefused
         ``table-unreadable``.
     """
-    data = file.stream.read()
+    data = file.stream.read(_MOST_HEAD_BYTES)
+    if len(data) == _MOST_HEAD_BYTES:
+        if _ROW.search(data) is None:
+            why = f"Its head does not end within {_MOST_HEAD_BYTES >> 20} MB."
+            raise _unreadable(file, "an ECSV table", why)
+        data += file.stream.read()
     try:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError as error:

@@ -29,6 +29,8 @@ from campaign.studies.load_fields import NUMBER_COLUMNS, WORD_FIELDS, value_colu
 from campaign.studies.load_names import NameIndex, site_index, system_index
 
 FloatArray = NDArray[np.float64]
+# Every one of them is told, which takes memory; a table with more is not what it was taken for.
+MOST_BAD_CELLS = 2_000_000
 Array = NDArray[Any]
 
 
@@ -242,5 +244,13 @@ class RowChecker:
     def _refuse(self, cells: Sequence[str], bad: Sequence[BadCell]) -> None:
         self.bad_rows += 1
         self.bad += bad
+        if len(self.bad) > MOST_BAD_CELLS:
+            raise InputRefused(
+                f"More than {MOST_BAD_CELLS:,} cells of the table cannot be read.",
+                why=f"The last of them is in line {bad[-1].line:,}: {bad[-1].why}",
+                hint="Load its first rows alone, and say what its columns hold with --column and --constant.",
+                code="rows-refused",
+                details={"line": bad[-1].line, "bad_rows": self.bad_rows},
+            )
         if self._keeps_rejected:
             self.rejected.append(Rejected(tuple(cells), tuple(bad)))

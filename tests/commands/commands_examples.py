@@ -59,6 +59,8 @@ def fail(what: Annotated[str, typer.Argument(metavar="WHAT")], json: JsonOption 
         raise KeyboardInterrupt
     if what == "full":
         raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
+    if what == "memory":
+        raise MemoryError
     if what == "end":
         raise EOFError
     raise ZeroDivisionError(f"division by {what}")

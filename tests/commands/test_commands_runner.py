@@ -143,6 +143,13 @@ def test_words_after_a_double_dash_are_no_options_of_the_runner(campaign):
     assert out.startswith("('--json', ['--traceback'], None, None, 5, False,")
 
 
+def test_memory_that_is_not_enough_ends_with_8(campaign):
+    status, out, told = campaign("fail", "memory")
+    assert (status, out) == (8, "")
+    assert len(told.splitlines()) == 3
+    assert "memory" in told.splitlines()[0]
+
+
 def test_an_interrupt_ends_with_130(campaign):
     assert campaign("fail", "interrupt") == (130, "", "")
 

@@ -255,6 +255,24 @@ def test_an_ecsv_table_of_astropy(tmp_path):
     assert rows == EXPECTED
 
 
+def test_an_ecsv_table_whose_head_never_ends_is_refused(tmp_path):
+    line = b"# - {name: mag, datatype: float64}\n"
+    endless = b"# %ECSV 1.0\n# ---\n# datatype:\n" + line * 200_000
+    (tmp_path / "t.ecsv.gz").write_bytes(gzip.compress(endless, 1))
+    with opened_table(str(tmp_path / "t.ecsv.gz"), None) as file, pytest.raises(InputRefused) as refused:
+        read_foreign_table(file)
+    assert refused.value.code == "table-unreadable"
+    assert "head" in refused.value.why
+
+
+def test_a_long_ecsv_table_is_read_to_its_end():
+    head = b"# %ECSV 1.0\n# ---\n# datatype:\n# - {name: mag, datatype: float64}\nmag\n"
+    _, _, rows, _ = read(head + b"7.3125" + b"0" * 200 + b"\n" + b"7.3125\n" * 2)
+    assert len(rows) == 3
+    _, _, rows, _ = read(head + (b"7.3125" + b"0" * 200 + b"\n") * 22_000)
+    assert len(rows) == 22_000
+
+
 def test_a_time_column_of_astropy_keeps_its_scale(tmp_path):
     from astropy.table import Table
     from astropy.time import Time

@@ -11,6 +11,7 @@ from load_examples import begin, codes, kept, load
 
 from campaign.errors import InputRefused, UsageRefused
 from campaign.model.measured import Measured
+from campaign.studies import load_rows
 
 
 @pytest.fixture(scope="module")
@@ -21,6 +22,16 @@ def begun(tmp_path_factory):
 @pytest.fixture
 def db(begun, tmp_path):
     return shutil.copy(begun, tmp_path / "campaign.db")
+
+
+def test_a_table_of_nothing_but_bad_cells_ends_before_the_memory_does(db, monkeypatch):
+    monkeypatch.setattr(load_rows, "MOST_BAD_CELLS", 1000)
+    text = "system,HJD_UTC,band,mag,e_mag\n" + "Lantern 3,2461000.5,K,faint,0.02\n" * 1000
+    assert load(db, text).bad_rows == 1000
+    with pytest.raises(InputRefused) as refused:
+        load(db, text + "Lantern 3,2461000.5,K,faint,0.02\n", skip_bad=True)
+    assert (refused.value.code, refused.value.details["line"]) == ("rows-refused", 1002)
+    assert kept(db) == []
 
 
 SURVEY = (
