@@ -223,7 +223,16 @@ def _with_rejects(loaded: Loaded, path: str | None) -> Loaded:
     from campaign.output.files import write_whole
     from campaign.output.loading import rejects_pieces
 
-    write_whole(path, rejects_pieces(loaded))
+    try:
+        write_whole(path, rejects_pieces(loaded))
+    except CampaignError as error:
+        if loaded.operation_id is not None:
+            error.hint = (
+                f"The good rows are in the catalogue all the same, as operation {loaded.operation_id}; load "
+                "the file again with another --rejects, nothing goes in twice."
+            )
+            error.details["operation"] = loaded.operation_id
+        raise
     return replace(loaded, rejects_file=path)
 
 

@@ -18,6 +18,8 @@ from campaign.output.tables import Column, print_table
 MOST_SHOWN = 20
 REASON = "reason"
 _SHOWN_TEXT = 40
+# Longer ones are no mark of the unknown that anybody would type.
+_LONGEST_UNKNOWN = 20
 # Cells that are no value, and how tables say that there is none (common practice, no source).
 _NO_VALUE = frozenset({"value-unreadable", "number-unreadable", "out-of-range", "error-negative"})
 _UNKNOWN = re.compile(
@@ -28,6 +30,8 @@ _JULIAN = re.compile(r"[BH]?JD(?:_(?:UTC|TT|TDB))?", re.IGNORECASE)
 _FEW_DAYS = re.compile(r"[0-9]{4,5}(?:\.[0-9]*)?")
 # Counted from JD 2450000 dates of our time are below this, counted from JD 2400000 above.
 _MOST_LATE_DAYS = 25_000.0
+# How a refused word of quality is told which ones there are.
+_QUALITIES = "good, doubtful, bad"
 _UNITS = {"kms": "km/s", "jy": "Jy", "angstrom": "Å"}
 
 
@@ -156,18 +160,23 @@ def reasons_text(loaded: Loaded) -> str:
 def advice(loaded: Loaded) -> str:
     """What settles many bad cells at once, if there is such a thing."""
     texts = [cell.text.strip() for cell in loaded.bad if cell.code in _NO_VALUE]
-    unknown = next(filter(_UNKNOWN.fullmatch, texts), None)
+    short = (text for text in texts if len(text) <= _LONGEST_UNKNOWN)
+    unknown = next(filter(_UNKNOWN.fullmatch, short), None)
     said = [] if unknown is None else [f'if "{unknown}" stands for unknown, say --missing "{unknown}"']
     if any("comma" in cell.why and _DECIMAL_COMMA.fullmatch(cell.text.strip()) for cell in loaded.bad):
         said.append("decimal commas are read with --constant decimal=comma")
+    if "value-missing" in loaded.reasons:
+        said.append('rows without a value are left out with --missing ""')
+    if any(cell.code == "choice-refused" and _QUALITIES in cell.why for cell in loaded.bad):
+        said.append("if the column holds something else than that, leave it out with --constant quality=good")
     if "system-not-found" in loaded.reasons:
         said.append("systems are listed by: campaign system list, and new ones added first")
-    short = next((cell for cell in loaded.bad if _is_short_count(cell)), None)
-    if short is not None:
-        offset = 2_400_000 if float(short.text) >= _MOST_LATE_DAYS else 2_450_000
+    few = next((cell for cell in loaded.bad if _is_short_count(cell)), None)
+    if few is not None:
+        offset = 2_400_000 if float(few.text) >= _MOST_LATE_DAYS else 2_450_000
         said.append(
             f"if {offset} is to be added to the times, say "
-            f'--column "time={short.column} as {short.column}-{offset}"'
+            f'--column "time={few.column} as {few.column}-{offset}"'
         )
     return "; ".join(said)
 

@@ -58,7 +58,8 @@ def understood_mapping(file: str, table: ForeignTable, mapping: TableMapping) ->
             lines.append(MappingLine(field.name, "all rows", mapping.constants[field.name]))
     notes = list(mapping.notes)
     if mapping.missing:
-        notes.append(f"cells taken for unknown: empty ones, {', '.join(mapping.missing)}")
+        texts = ", ".join(["empty ones", *filter(None, mapping.missing)])
+        notes.append(f"cells taken for unknown: {texts}")
     return Understood(file, table.form, mapping.kind, tuple(lines), mapping.unused, tuple(notes))
 
 

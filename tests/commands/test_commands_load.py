@@ -6,6 +6,7 @@ from __future__ import annotations
 import gzip
 import io
 import json
+import os
 import shlex
 import sqlite3
 import sys
@@ -113,6 +114,18 @@ def test_rejects_never_replace_a_file(kept, table, tmp_path):
         assert file.read() == BAD
 
 
+@pytest.mark.skipif(not os.path.exists("/dev/full"), reason="no device that is always full")
+def test_good_rows_that_went_in_are_told_when_the_bad_ones_find_no_room(kept, table, own_database):
+    ran = kept("load", table(BAD), "--skip-bad", "--rejects", "/dev/full")
+    assert ran.status == 8
+    assert count(own_database) == 2
+    assert "in the catalogue all the same" in ran.err.splitlines()[-1]
+    assert "Nothing was left" not in ran.err
+    refused = kept("load", table(BAD), "--rejects", "/dev/full")
+    assert refused.status == 8
+    assert "in the catalogue" not in refused.err
+
+
 def test_conflicts_are_shown_and_refused_until_also_is_said(kept, table, own_database):
     kept("load", table(GOOD))
     other = table(GOOD.replace("7.31", "7.51"), "other.csv")
@@ -179,6 +192,7 @@ def test_what_cannot_be_meant_has_a_status_and_a_way_out(kept, table, words, sta
         (GOOD.replace("7.31", "99.99"), '--missing "99.99"'),
         (GOOD.replace("7.31", "n/a"), '--missing "n/a"'),
         (GOOD.replace(",", ";").replace("7.31", "7,31"), "--constant decimal=comma"),
+        (GOOD.replace("7.31", ""), '--missing ""'),
         (GOOD.replace("24612", "612"), '--column "time=HJD_UTC as HJD_UTC-2400000"'),
         (GOOD.replace("24612", "12"), '--column "time=HJD_UTC as HJD_UTC-2450000"'),
     ],
@@ -192,7 +206,16 @@ def test_what_settles_many_bad_cells_at_once_is_said_and_works(kept, table, own_
     assert count(own_database) == (1 if flag == "--missing" else 2)
 
 
-@pytest.mark.parametrize("word", ["bright", "", "7.3.1", "1e400"])
+def test_grades_of_others_in_a_column_of_quality_are_left_out_as_said(kept, table, own_database):
+    text = GOOD.replace("e_mag", "e_mag,qual").replace("0.03", "0.03,A")
+    ran = kept("load", table(text))
+    assert ran.status == 3
+    assert "--constant quality=good" in ran.err.splitlines()[-1]
+    assert kept("load", table(text), "--constant", "quality=good").status == 0
+    assert count(own_database) == 2
+
+
+@pytest.mark.parametrize("word", ["bright", "9" * 300, "7.3.1", "1e400"])
 def test_nothing_is_said_where_nothing_settles_them(kept, table, word):
     ran = kept("load", table(GOOD.replace("7.31", word)))
     assert ran.err.splitlines()[-1] == "  next: Mend the rows; the good ones go in with --skip-bad."
