@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from campaign.model.forecasts import UpcomingResult
     from campaign.model.found import EpisodesFound
     from campaign.model.instants import TypedInstant
+    from campaign.model.refined import Refinement
     from campaign.model.verification import ForecastScores
 
 Several = str | Iterable[str] | None
@@ -256,6 +257,45 @@ class Campaign:
         from campaign.studies import find_episodes
 
         return find_episodes.find_episodes(self._db, system, _several(band) or None, _instant(as_of, "as_of"))
+
+    def refine(self, system: str, *, event: str | None = None, as_of: When = None) -> Refinement:
+        """Period and epoch from dated episodes, as ``campaign refine`` shows them; nothing is written.
+
+        Parameters
+        ----------
+        system : str
+            Name or alias.
+        event : str or None
+            'onset', 'maximum' or 'both' with their offset; None for what most episodes have.
+        as_of : str, datetime or None
+            Later episodes and observations are hidden; None for now.
+
+        Returns
+        -------
+        Refinement
+            ``ephemeris``, ``dates`` with O-C, ``counts``, ``next_event``: ``bmjd_tdb``, lengths in d.
+
+        Raises
+        ------
+        NotFound
+            Unknown system.
+        InputRefused, Conflict
+            No dated episode; an event of another name; confirmed episodes that lie over each other.
+        """
+        from campaign.errors import InputRefused
+        from campaign.studies import refine, watch
+
+        if event not in (None, "onset", "maximum", "both"):
+            raise InputRefused(
+                f"event {event!r} is not understood.",
+                why="It is one of: onset, maximum, both.",
+                hint='For example event="both".',
+                code="choice-refused",
+            )
+        asked = _instant(as_of, "as_of")
+        loaded = watch.load_campaign(self._db, [system], None, asked)
+        now = refine.asked_at(loaded, datetime.now(UTC), asked)
+        return refine.refine(loaded, refine.RefineQuestion(now, event=event)).result
 
     def score_forecasts(
         self, system: Several = None, *, keeping: str | None = None, as_of: When = None

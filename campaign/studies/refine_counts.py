@@ -77,13 +77,18 @@ def weigh_counts(
     total = np.array(
         [c.log_evidence + q + e for c, q, e in zip(counts, quiet_ln, excess_ln, strict=True)], dtype=float
     )
-    order = sorted(range(len(counts)), key=lambda i: (-round(float(total[i]), 3), int(counts[i].cycles[-1])))
     share = np.exp(total - total.max())
     share /= share.sum()
     most = max(q + e for q, e in zip(quiet_ln, excess_ln, strict=True))
     excluded = [q - most < np.log(EXCLUDED_CHANCE) for q in quiet_ln]
     fits = max(c.log_evidence for c, out in zip(counts, excluded, strict=True) if not out)
-    order = [place for place in order if counts[place].log_evidence - fits > np.log(_LISTED_SHARE)]
+    order = [i for i, c in enumerate(counts) if c.log_evidence - fits > np.log(_LISTED_SHARE)]
+    # What is open by its probability, the longest period first of equals; then the excluded, longest first.
+    order.sort(
+        key=lambda i: (
+            excluded[i], 0.0 if excluded[i] else -round(float(total[i]), 3), int(counts[i].cycles[-1])
+        )
+    )  # fmt: skip
     listed = []
     for number, place in enumerate(order, start=1):
         count = counts[place]

@@ -154,6 +154,13 @@ def test_episodes_are_found_as_the_command_finds_them(sample):
     assert refused.value.code == "band-unknown"
 
 
+def test_a_clock_is_refined_as_the_command_refines_it(sample):
+    found = sample.refine("Candlewood 5", event="onset")
+    assert [row.cycle for row in found.dates] == [-1, 0]
+    assert found.counts[0].cycles == (-1, 0)
+    assert found.ephemeris.period_d.sigma > 0.0
+
+
 @pytest.mark.parametrize(
     ("call", "error", "code"),
     [
@@ -165,6 +172,8 @@ def test_episodes_are_found_as_the_command_finds_them(sample):
         (lambda c: c.observations(end=datetime(2027, 4, 6)), InputRefused, "instant-unreadable"),
         (lambda c: c.upcoming(system="Lantern 9"), NotFound, "system-not-found"),
         (lambda c: c.find_episodes("Lantern 9"), NotFound, "system-not-found"),
+        (lambda c: c.refine("Lantern 9"), NotFound, "system-not-found"),
+        (lambda c: c.refine("Lantern 9", event="end"), InputRefused, "choice-refused"),
     ],
 )
 def test_what_cannot_be_is_refused_as_on_the_command_line(call, error, code, small):
