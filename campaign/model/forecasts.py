@@ -46,6 +46,25 @@ class UtcQuantiles:
 
 
 @dataclass(frozen=True, slots=True)
+class Conditioning:
+    """What quiet observations did to a date.
+
+    ``before`` is the date without them. ``evidence`` is their chance under the forecast over their chance
+    without any episode; ``inflated_share`` the weight of the component with larger errors. Without ``moved``
+    they leave nothing of the forecast, and the date is that of the elements alone.
+    """
+
+    before: Quantiles
+    observations: int
+    last_quiet_bmjd_tdb: float
+    evidence: float
+    inflated_share: float
+    moved: bool = True
+    before_utc: UtcQuantiles | None = None
+    last_quiet_utc: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class EventForecast:
     """One event of one cycle of one system.
 
@@ -70,6 +89,7 @@ class EventForecast:
     observed: bool = False
     disagreement_sigma: float | None = None
     notes: tuple[str, ...] = ()
+    conditioning: Conditioning | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -125,12 +145,26 @@ class VarianceTerm:
 
 
 @dataclass(frozen=True, slots=True)
+class MovedBy:
+    """A night of quiet observations, and by how many days the median moved when it came in."""
+
+    bmjd_tdb: float
+    utc: str
+    bands: tuple[str, ...]
+    shift_d: float
+
+
+@dataclass(frozen=True, slots=True)
 class ExplainedEvent:
-    """How one date came about: the sum in words and each term of its error."""
+    """How one date came about: the sum in words and each term of its error, before any quiet observations.
+
+    ``moved_by`` are the nights that moved it most since then.
+    """
 
     forecast: EventForecast
     arithmetic: str
     terms: tuple[VarianceTerm, ...]
+    moved_by: tuple[MovedBy, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 
-from campaign.model.forecasts import ExplainedEvent, ExplainedSystem, VarianceTerm
+from campaign.model.forecasts import ExplainedEvent, ExplainedSystem, Quantiles, UtcQuantiles, VarianceTerm
 from campaign.output.console import Screen
 from campaign.output.tables import Column, print_table
 from campaign.output.upcoming import render_bases, render_dates, render_notes
@@ -46,16 +46,49 @@ def _render_event(screen: Screen, each: ExplainedEvent) -> None:
         screen.wrapped(line, label="  ", hang=4)
     if each.terms:
         print_table(screen, _TERM_COLUMNS, _term_rows(each.terms))
+    _render_conditioning(screen, each)
+
+
+def _render_conditioning(screen: Screen, each: ExplainedEvent) -> None:
+    """The date before and after the quiet observations, and the nights that moved it most."""
+    told = each.forecast.conditioning
+    if told is None:
+        return
+    count = "1 quiet observation" if told.observations == 1 else f"{told.observations} quiet observations"
+    until = day(told.last_quiet_utc, told.last_quiet_bmjd_tdb)
+    before = _interval(told.before, told.before_utc)
+    if not told.moved:
+        screen.wrapped(f"{count} until {until} leave nothing of this date.", label="  ", hang=4)
+        return
+    screen.wrapped(f"before quiet observations: {before}", label="  ", hang=4)
+    after = _interval(each.forecast.bmjd_tdb, each.forecast.utc)
+    screen.wrapped(f"after {count} until {until}: {after}", label="  ", hang=4)
+    if each.moved_by:
+        nights = "; ".join(
+            f"{day(night.utc, night.bmjd_tdb)} {', '.join(night.bands)} {_shift(night.shift_d)}"
+            for night in each.moved_by
+        )
+        screen.wrapped(f"moved most by: {nights}", label="  ", hang=4)
+
+
+def _shift(days: float) -> str:
+    return f"{days:+.1f} d".replace("-", "−")
 
 
 def _date(each: ExplainedEvent) -> str:
-    dates, utc = each.forecast.bmjd_tdb, each.forecast.utc
-    if dates is None:
+    if each.forecast.bmjd_tdb is None:
         return yearly(each.forecast)
+    return f"{_interval(each.forecast.bmjd_tdb, each.forecast.utc)}, {each.forecast.status}"
+
+
+def _interval(dates: Quantiles | None, utc: UtcQuantiles | None) -> str:
+    """A date with its 68 % interval."""
+    if dates is None:
+        return ""
     interval = spread(dates.median, dates.lo68, dates.hi68)
     if dates.lo68 is not None:
         interval += ", 68 %" if interval.endswith("yr") else " d, 68 %"
-    return f"{day(utc.median if utc else None, dates.median)} ({interval}), {each.forecast.status}"
+    return f"{day(utc.median if utc else None, dates.median)} ({interval})"
 
 
 _TERM_COLUMNS = (

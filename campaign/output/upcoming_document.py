@@ -62,4 +62,5 @@ def _explained_event(each: ExplainedEvent) -> dict[str, Any]:
         "solution": each.forecast.solution,
         "arithmetic": each.arithmetic,
         "terms": plain(each.terms),
+        "moved_by": plain(each.moved_by),
     }

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 
 import numpy as np
 
 from campaign.model.forecasts import (
     MIXTURE,
+    Conditioning,
     DustWindow,
     EventForecast,
     Quantiles,
@@ -89,9 +91,20 @@ def event_forecasts(
                 observed=one.observed,
                 disagreement_sigma=one.disagreement_sigma,
                 notes=tuple([*extra, *one.notes, *_error_notes(one), *_mixture_notes(rows, unit, one)]),
+                conditioning=_told(one.conditioning),
             )
         )
     return result
+
+
+def _told(conditioning: Conditioning | None) -> Conditioning | None:
+    """With its instants in UTC too."""
+    if conditioning is None:
+        return None
+    q = conditioning.before
+    instants = [q.median, q.lo68, q.hi68, q.lo95, q.hi95, conditioning.last_quiet_bmjd_tdb]
+    iso = utc_iso(np.array([np.nan if t is None else t for t in instants]))
+    return replace(conditioning, before_utc=UtcQuantiles(*iso[:5]), last_quiet_utc=iso[5])
 
 
 def _dates(one: DatedEvent, iso: Sequence[str | None]) -> tuple[Quantiles | None, UtcQuantiles | None]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,6 +15,7 @@ from campaign.model.forecasts import (
     EventName,
     ExplainedEvent,
     ExplainedSystem,
+    MovedBy,
     VarianceTerm,
 )
 from campaign.model.instants import Moment
@@ -26,11 +27,12 @@ from campaign.studies.elements import cycle_count, elements
 from campaign.studies.following import days_since_onset, needed_since_onset
 from campaign.studies.forecast import COUNTED_FROM_ONSET
 from campaign.studies.learned import LearnedDates
+from campaign.studies.moved import moved_by
 from campaign.studies.preparing import Prepared, Question, prepare
 from campaign.studies.resolvable import explain_resolvable
 from campaign.studies.rows import SCATTERS, ForecastRow
 from campaign.studies.sampling import Sampler
-from campaign.studies.upcoming import forecast_campaign
+from campaign.studies.upcoming import date_campaign, forecast_campaign
 from campaign.studies.variance import nominal, terms_of, with_remainder
 
 FloatArray = NDArray[np.float64]
@@ -74,6 +76,9 @@ def explain_system(
     """
     upcoming = forecast_campaign([record], photometry, question, shells)
     prepared = prepare([record], photometry, question)
+    moves: dict[tuple[str | None, int], tuple[MovedBy, ...]] = {}
+    if any(forecast.conditioning is not None for forecast in upcoming.events):
+        moves = moved_by(date_campaign([record], photometry, question, shells), photometry, question)
     events = []
     for forecast in upcoming.events:
         if forecast.bmjd_tdb is None or forecast.cycle is None:
@@ -81,7 +86,11 @@ def explain_system(
         if forecast.event == "resolvable":
             events.append(explain_resolvable(forecast, prepared, question, shells or {}))
         else:
-            events.append(_explain_event(forecast, prepared, question.seed))
+            explained = _explain_event(forecast, prepared, question.seed)
+            if forecast.event == "onset":
+                nights = moves.get((forecast.solution, forecast.cycle), ())
+                explained = replace(explained, moved_by=nights)
+            events.append(explained)
     rows = [prepared.rows[i] for unit in prepared.units for i in unit.rows]
     return ExplainedSystem(
         system=record.system.name,

@@ -10,7 +10,7 @@ from itertools import combinations
 import numpy as np
 from numpy.typing import NDArray
 
-from campaign.model.forecasts import EventName
+from campaign.model.forecasts import Conditioning, EventName
 from campaign.model.systems import Episode
 from campaign.physics.intervals import normal_quantiles
 from campaign.studies.cycles import SAFE_SIGMA
@@ -79,6 +79,7 @@ class DatedEvent:
     observed: bool = False
     disagreement_sigma: float | None = None
     notes: list[str] = field(default_factory=list)
+    conditioning: Conditioning | None = None
 
 
 def periastron_sigma_d(sampler: Sampler, index: IntArray, cycles: IntArray) -> FloatArray:

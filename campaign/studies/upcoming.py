@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -13,6 +13,7 @@ from campaign.model.observations import Observation
 from campaign.model.records import SystemRecord
 from campaign.physics.timescales import utc_iso
 from campaign.studies.basis import describe_basis, dust_windows, event_forecasts
+from campaign.studies.conditioning import condition_events
 from campaign.studies.dateless import dateless_events
 from campaign.studies.forecast import KEEP_LISTED_D, MOST_CYCLES, DatedEvent, Forecaster
 from campaign.studies.lightcurves import CataloguedCurves
@@ -97,6 +98,7 @@ class DatedCampaign:
     """Everything that was dated, with its distribution, and what of it is listed.
 
     ``events`` belong to ``listed`` one by one; what is listed has the quantiles that ``events`` leave out.
+    ``unconditioned`` is what was dated as it was before quiet observations were counted in.
     """
 
     prepared: Prepared
@@ -104,6 +106,8 @@ class DatedCampaign:
     dated: tuple[DatedEvent, ...]
     listed: tuple[DatedEvent, ...]
     events: tuple[EventForecast, ...]
+    unconditioned: tuple[DatedEvent, ...] = ()
+    states: Mapping[tuple[int, int | None], OnsetState] = field(default_factory=dict)
 
 
 def date_campaign(
@@ -140,11 +144,15 @@ def date_campaign(
     dated = forecaster.run(question.window, wanted)
     dated += resolvable_events(prepared, forecaster, question, shells or {})
     states = onset_states(prepared, forecaster, dated, photometry, question)
+    unconditioned = tuple(dated)
+    dated = condition_events(prepared, forecaster, dated, states, photometry, question)
     listed = [d for d in dated if d.event in question.events and _is_listed(d, states, question)]
     listed.extend(dateless_events(prepared, question))
     listed = [d for d in listed if d.in_window is None or d.in_window >= question.min_probability]
     events = event_forecasts(prepared.rows, prepared.units, listed, states, question.as_of)
-    return DatedCampaign(prepared, forecaster, tuple(dated), tuple(listed), tuple(events))
+    return DatedCampaign(
+        prepared, forecaster, tuple(dated), tuple(listed), tuple(events), unconditioned, states
+    )
 
 
 def onset_states(

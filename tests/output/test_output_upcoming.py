@@ -25,7 +25,7 @@ CONTRACT = {
     "system", "event", "cycle", "basis", "solution", "rule", "bmjd_tdb", "utc", "status", "probability",
     "probability_in_window", "phase_lost", "notes",
 }  # fmt: skip
-ADDITIONS = {"probability_per_yr", "observed", "disagreement_sigma"}
+ADDITIONS = {"probability_per_yr", "observed", "disagreement_sigma", "conditioning"}
 
 
 def drawn(result, width, colour=False, unicode=True, render=render_upcoming):

@@ -67,7 +67,9 @@ def test_the_squares_of_the_terms_sum_to_the_variance(name):
     told = watch.explain(campaign, watch.ask(campaign, **asked))
     assert told.system == name
     for event in told.events:
-        sigma = event.forecast.bmjd_tdb.sigma_d
+        # The terms are those of the elements, before any quiet observations.
+        told = event.forecast.conditioning
+        sigma = (event.forecast.bmjd_tdb if told is None else told.before).sigma_d
         if sigma is None:
             assert any(math.isnan(term.size_d) and term.note == "error unknown" for term in event.terms)
             continue

@@ -155,7 +155,10 @@ def test_optimistic_elements_are_as_wrong_as_their_stories_say(sample, result):
     """The exception above hides nothing else: these two really miss, or their solutions disagree."""
     truths = {truth.name: truth for truth in sample.truth.systems}
     late = of(result, "Tinder 12", "onset")
-    assert truth_of(truths["Tinder 12"], late) > late.bmjd_tdb.hi95
+    true = truth_of(truths["Tinder 12"], late)
+    assert true > late.conditioning.before.hi95
+    # What was quiet since then has put that right.
+    assert late.bmjd_tdb.lo95 < true < late.bmjd_tdb.hi95
     assert abs(of(result, "Brazier 6", "onset").disagreement_sigma) > 2.5
 
 
