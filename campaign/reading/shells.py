@@ -42,7 +42,7 @@ def read_shell_index(text: str, name: str = "--index") -> int:
     InputRefused
         Anything but a whole number from 1 on.
     """
-    value = read_number(text, name, "1")
+    value = read_number(text, name, "1" if name == "--index" else f"1={EXAMPLE}")
     if value != int(value) or not 1 <= value <= MOST_SHELLS:
         raise InputRefused(
             f"A shell cannot have the index {text}.",

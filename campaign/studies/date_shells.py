@@ -123,7 +123,8 @@ def _without_radii(
         )
     stated = with_wind_if_needed(stated)
     solution = solve(stated, question.draws, question.seed)
-    if not any(each.origin == "derived" for each in solution.quantities):
+    # Values that only stand against each other are told too: how well they agree.
+    if not solution.tensions and not any(each.origin == "derived" for each in solution.quantities):
         raise insufficient(stated, "Nothing follows from what is given.")
     return ShellDatingResult(
         system=told.system,

@@ -105,8 +105,8 @@ def grouped(radii: Sequence[ShellRadius], question: ShellQuestion) -> list[Radiu
     Raises
     ------
     InputRefused
-        For radii of one image whose order contradicts their indices, an index given twice, or a stated
-        spacing larger than the outermost radius.
+        For radii of one image whose order contradicts their indices, an index given twice, an edge offset
+        not below a radius, or a stated spacing larger than the outermost radius.
 
     Notes
     -----
@@ -193,6 +193,9 @@ def _check_image(group: RadiusGroup, places: IntArray) -> None:
     stated = [(group.radii[i].index, group.radius_arcsec[i]) for i in places]
     indexed = [(index, radius) for index, radius in stated if index is not None]
     check_radii(group.radius_arcsec[places])
+    peaks = group.errors.peaks(group.radius_arcsec)[places]
+    if peaks.min() <= 0.0:
+        _refuse_offset(group.errors.edge_offset_arcsec, float(group.radius_arcsec[places][peaks.argmin()]))
     if not indexed:
         return
     indices = [index for index, _ in indexed]
@@ -206,6 +209,16 @@ def _check_image(group: RadiusGroup, places: IntArray) -> None:
                 details={"index": index},
             )
     check_radii([radius for _, radius in indexed], indices)
+
+
+def _refuse_offset(offset_arcsec: float, radius_arcsec: float) -> None:
+    raise InputRefused(
+        f"An edge offset of {offset_arcsec:g} arcsec leaves nothing of an edge at {radius_arcsec:g} arcsec.",
+        why="It is how much larger the edge of a shell is than its peak, and the peak is outside the stars.",
+        hint='Check its unit, for example --edge-offset "0.05±0.02 arcsec"; or say --measured-at peak.',
+        code="edge-offset-refused",
+        details={"edge_offset_arcsec": offset_arcsec, "radius_arcsec": radius_arcsec},
+    )
 
 
 def _refuse_spacing(spacing_arcsec: float, outermost_arcsec: float) -> None:

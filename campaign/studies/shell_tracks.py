@@ -218,9 +218,9 @@ def _launched_at(ephemeris: ShellEphemeris, at: float, whose: str = "launches") 
 
 def _said(ephemeris: ShellEphemeris) -> tuple[str, ...]:
     several = len(ephemeris.forecaster.units[0].rows) > 1
-    period = f"period of the {'orbit' if ephemeris.period_from == 'orbit' else 'dated episodes'}"
+    period = f"the period is that of the {'orbit' if ephemeris.period_from == 'orbit' else 'dated episodes'}"
     return (
-        f"{period}; of several adopted solutions that of the largest weight" if several else period,
+        f"{period}, of several adopted solutions the one of the largest weight" if several else period,
         "the shells keep their speed",
         "radii are those of the limb",
     )

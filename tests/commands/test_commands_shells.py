@@ -190,6 +190,14 @@ def test_values_that_do_not_go_together_are_a_tension_and_no_refusal(run_campaig
     assert {"quantity", "from", "against", "sigma"} <= tension.keys()
 
 
+def test_a_triple_from_which_nothing_more_follows_still_tells_its_tension(dated):
+    # 1.2 arcsec at 80 mas/yr are 15 yr; errors of 0.05/1.2 and 1/80 of that, and 0.2 yr (first order).
+    data = dated("--spacing", "1.2±0.05 arcsec", "--motion", "80±1 mas/yr", "--period", "10±0.2 yr")
+    (tension,) = data["tensions"]
+    error = ((15.0 * 0.05 / 1.2) ** 2 + (15.0 / 80.0) ** 2 + 0.2**2) ** 0.5
+    assert tension["sigma"] == pytest.approx(5.0 / error, rel=1e-6)
+
+
 def test_a_missing_shell_is_found_and_the_next_way_to_count_is_told(dated):
     # Spacing 1 arcsec, the fourth shell left out; errors of 3 % of the spacing.
     radii = [f"--radius={r}±0.03 arcsec" for r in (0.41, 1.38, 2.42, 4.40, 5.39, 6.42)]
@@ -292,6 +300,9 @@ def test_images_a_month_apart_are_dated_by_the_period(dated):
         (("--spacing", "1.2", "--speed", "1800 km/s", "--distance", "2 kpc",
           "--correlation", "speed,distance=0.5", "--correlation", "distance,speed=0.9"), 3,
          "correlation-refused", "once"),
+        (("--radius", "1.2±0.1 arcsec", "--motion", "80±1 mas/yr", "--measured-at", "edge",
+          "--edge-offset", "5±1 arcsec"), 3, "edge-offset-refused", "--edge-offset"),
+        (("--radius", "=1.2 arcsec", "--motion", "80 mas/yr"), 3, "number-unreadable", "1=1.20±0.05 arcsec"),
         (("--radius", "1e-300 arcsec", "--motion", "80 mas/yr"), 3, "out-of-range", "arcsec"),
         (("--radius", "1.2±1e90 arcsec", "--motion", "80 mas/yr"), 3, "out-of-range", "arcsec"),
         (("--spacing", "1.2±1e300 arcsec", "--motion", "80 mas/yr"), 3, "out-of-range", "arcsec"),
