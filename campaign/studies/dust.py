@@ -183,7 +183,7 @@ def _veil_note(overrides: DustOverrides) -> str:
         return "no interstellar extinction is taken out: give --extinction, in K"
     return (
         f"interstellar extinction of {veil.value:g} ± {veil.sigma or 0.0:.2g} mag in K is taken out, as "
-        "lambda^-1.8 to 5 um and level beyond (memory)"
+        "lambda^-1.8 to 5 um and level beyond (memory); its error is in the results, not in the fluxes"
     )
 
 

@@ -66,20 +66,21 @@ def excesses(sky: Sky, start: float, end: float) -> tuple[BandExcess, ...]:
 
 
 def _unveiled(one: BandExcess, extinction_k_mag: Measured) -> BandExcess:
-    """The band as it would be without the interstellar dust; its error counts as one common to all points."""
+    """The band as it would be without the interstellar dust.
+
+    The error of the extinction moves all bands and dates together: it is counted where they meet, not here.
+    """
     if one.wavelength_um is None or one.dust_jy is None:
         return one
     share = float(extinction_over_k(one.wavelength_um))
     factor = 10.0 ** (0.4 * share * extinction_k_mag.value)
     assert one.sigma_jy is not None
     assert one.common_sigma_jy is not None
-    dust = one.dust_jy * factor
-    veil = abs(dust) * FLUX_ERROR_PER_MAG * share * (extinction_k_mag.sigma or 0.0)
     return replace(
         one,
-        dust_jy=dust,
-        sigma_jy=float(np.hypot(one.sigma_jy * factor, veil)),
-        common_sigma_jy=float(np.hypot(one.common_sigma_jy * factor, veil)),
+        dust_jy=one.dust_jy * factor,
+        sigma_jy=one.sigma_jy * factor,
+        common_sigma_jy=one.common_sigma_jy * factor,
         star_jy=None if one.star_jy is None else one.star_jy * factor,
         observed_jy=None if one.observed_jy is None else one.observed_jy * factor,
     )

@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from campaign.model.dust import BandExcess, MeasuredDust, OtherOpacity, PairColour
+from campaign.model.measured import Measured
 from campaign.model.propagated import Propagated
 from campaign.physics.condensation import condensation_radius_au
 from campaign.physics.constants import SOLAR_MASS_KG
@@ -22,10 +23,12 @@ from campaign.physics.dustfit import (
     amount_at,
     draw_dust,
     fit_dust,
+    flux_sensitivities,
     upper_amount,
 )
 from campaign.physics.dustmass import blackbody_radius_au, colour_temperature_k, dust_flux_jy
 from campaign.physics.opacity import OPACITIES, Opacity, dust_luminosity_lsun, opacity_cm2_g, reaches
+from campaign.physics.photometry import FLUX_ERROR_PER_MAG, extinction_over_k
 from campaign.physics.timescales import utc_iso
 from campaign.studies.dust_excess import SEEN_SIGMA
 from campaign.studies.dust_inputs import DustInputs, with_keys
@@ -38,11 +41,15 @@ FLUXES = "the fluxes"
 _SIDES = {"measured": 0, "fainter than": 1, "brighter than": -1}
 _PAIR_DRAWS = 2000
 _GRAMS = 1000.0 * SOLAR_MASS_KG
+VEIL = "extinction_k_mag"
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Fitted:
-    """What a fit of one date leaves for others: the bands, the best pair, and draws of the amount."""
+    """What a fit of one date leaves for others: the bands, the best pair, and draws of the amount.
+
+    ``veil_slope`` is d ln amount per mag of extinction in K, whose error the draws leave out.
+    """
 
     bands: BandFluxes
     names: tuple[tuple[str, str], ...]
@@ -50,6 +57,7 @@ class Fitted:
     temperature_k: float
     amount: float
     amount_draws: FloatArray
+    veil_slope: float = 0.0
     is_fitted: bool = True
 
 
@@ -109,7 +117,7 @@ def measure(
         bmjd_tdb=at,
         utc=utc_iso(np.array([at]))[0],
         bands=tuple(excesses),
-        pairs=_pairs(seen, draws, seed),
+        pairs=_pairs(seen, inputs.values.get(VEIL), draws, seed),
         temperature_origin="given" if given else "fitted" if keeps_temperature else "none",
         temperature_k=results.temperature() if results is not None and keeps_temperature else None,
         mass_msun=weighed.mass() if weighed is not None else None,
@@ -130,7 +138,9 @@ def measure(
     common = np.array([one.common_sigma_jy or 0.0 for one in used])
     names = tuple((one.band, one.photometric_system) for one in used)
     stated = told.nominal()
-    return measured, Fitted(bands, names, common, stated[0], stated[1], told.amounts(), fit is not None)
+    return measured, Fitted(
+        bands, names, common, stated[0], stated[1], told.amounts(), told.veil_slopes[0], fit is not None
+    )
 
 
 def band_fluxes(used: Sequence[BandExcess]) -> BandFluxes:
@@ -167,7 +177,7 @@ class _Results:
         self._light = _LightPerMass(inputs)
         values: dict[str, Uncertain] = {
             key: inputs.values[key]
-            for key in ("distance_pc", "opacity_factor", "temperature_k")
+            for key in ("distance_pc", "opacity_factor", "temperature_k", VEIL)
             if key in inputs.values
         }
         if fit is None:
@@ -183,9 +193,26 @@ class _Results:
                 {"temperature_k": fit.best_temperature_k, "amount": fit.best_amount},
             )
         self._propagate = Propagator(values, draws, seed, together)
-        self._keys = ("temperature_k", "signal") if fit is None else ("temperature_k", "amount")
+        self._veil = values.get(VEIL)
+        self._keys: tuple[str, ...] = ("temperature_k", "signal" if fit is None else "amount")
+        self.veil_slopes = (0.0, 0.0)
+        if self._veil is not None:
+            self._keys += (VEIL,)
+            self.veil_slopes = _veil_slopes(bands, *self.nominal(), fit is not None)
+
+    def _unveiled(self, d: Draws, which: int) -> FloatArray | float:
+        """Factor by which another extinction moves the amount (0) or the temperature (1)."""
+        if self._veil is None:
+            return 1.0
+        return np.exp(self.veil_slopes[which] * (d[VEIL] - self._veil.nominal))
+
+    def _temperature(self, d: Draws) -> FloatArray:
+        return np.asarray(d["temperature_k"] * self._unveiled(d, 1))
 
     def _amount(self, d: Draws) -> FloatArray:
+        return np.asarray(self._amount_by_fluxes(d) * self._unveiled(d, 0))
+
+    def _amount_by_fluxes(self, d: Draws) -> FloatArray:
         if self._fit is not None:
             return d["amount"]
         t = d["temperature_k"]
@@ -204,12 +231,13 @@ class _Results:
         return t, float(amount_at(self._bands, t)[0][0])
 
     def amounts(self) -> FloatArray:
-        """Draws of the amount, by temperature and fluxes."""
-        return self._amount(self._propagate.all)
+        """Draws of the amount, by temperature and fluxes alone."""
+        return self._amount_by_fluxes(self._propagate.all)
 
     def temperature(self) -> Propagated:
-        keys = with_keys(self._inputs, ("temperature_k",))
-        return self._propagate(lambda d: d["temperature_k"], keys)
+        veiled = self._veil is not None and self._fit is not None
+        keys = with_keys(self._inputs, ("temperature_k", VEIL) if veiled else ("temperature_k",))
+        return self._propagate(self._temperature, keys)
 
     def mass(self) -> Propagated:
         keys = with_keys(self._inputs, (*self._keys, "distance_pc", "opacity_factor"))
@@ -223,7 +251,7 @@ class _Results:
     def luminosity(self) -> Propagated:
         # The opacity cancels: what is absorbed less is more mass for the same light.
         def light(d: Draws) -> FloatArray:
-            return np.asarray(self._amount(d) * d["distance_pc"] ** 2 * self._light(d["temperature_k"]))
+            return np.asarray(self._amount(d) * d["distance_pc"] ** 2 * self._light(self._temperature(d)))
 
         return self._propagate(light, (*self._keys, "distance_pc"))
 
@@ -273,9 +301,25 @@ def _crossed_limits(used: Sequence[BandExcess], bands: BandFluxes, results: _Res
     return tuple(one.band for one, margin in zip(used, within, strict=True) if margin < -SEEN_SIGMA)
 
 
-def _pairs(seen: Sequence[BandExcess], draws: int, seed: int) -> tuple[PairColour, ...]:
+def _veil_slopes(bands: BandFluxes, t: float, amount: float, fitted: bool) -> tuple[float, float]:
+    """d ln amount and d ln T per mag of extinction in K, to first order."""
+    per_mag = bands.flux_jy * FLUX_ERROR_PER_MAG * extinction_over_k(bands.wavelength_um)
+    if fitted:
+        slopes = flux_sensitivities(bands, t, amount) @ per_mag
+        return float(slopes[0]), float(slopes[1])
+    shape = dust_flux_jy(1.0, bands.wavelength_um, 1.0, t, bands.kappa_cm2_g)
+    weight = shape * bands.measured / bands.sigma_jy**2
+    return float(weight @ per_mag / (weight @ shape) / max(amount, 1e-300)), 0.0
+
+
+def _pairs(
+    seen: Sequence[BandExcess], veil: Uncertain | None, draws: int, seed: int
+) -> tuple[PairColour, ...]:
     """Colour temperatures of all pairs of bands that show dust, from shorter to longer waves."""
     count = min(draws, _PAIR_DRAWS)
+    reddening = np.zeros(count)
+    if veil is not None and isinstance(veil.value, Measured):
+        reddening = (veil.value.sigma or 0.0) * stratified_normals([VEIL], count, seed)[VEIL]
     found = []
     for first, second in combinations(seen, 2):
         assert first.wavelength_um is not None
@@ -290,6 +334,8 @@ def _pairs(seen: Sequence[BandExcess], draws: int, seed: int) -> tuple[PairColou
         name = f"{band_name(first, seen)}/{band_name(second, seen)}"
         normals = stratified_normals([f"{name} one", f"{name} two"], count, seed)
         ratios = _drawn(first, normals[f"{name} one"]) / _drawn(second, normals[f"{name} two"])
+        share = extinction_over_k([first.wavelength_um, second.wavelength_um])
+        ratios = ratios * 10.0 ** (0.4 * float(share[0] - share[1]) * reddening)
         t = summarised(colour_temperature_k(ratios, *pair), value if np.isfinite(value) else None)
         reason = "" if np.isfinite(value) else "bluer than any temperature: not dust of this opacity"
         names = band_name(first, seen), band_name(second, seen)

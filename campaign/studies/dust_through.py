@@ -14,7 +14,7 @@ from campaign.physics.draws import stratified_normals
 from campaign.physics.dustfit import amount_at, flux_sensitivities
 from campaign.physics.dustmass import dust_flux_jy
 from campaign.studies.dust_inputs import DustInputs
-from campaign.studies.dust_measured import FLUXES, Fitted
+from campaign.studies.dust_measured import FLUXES, VEIL, Fitted
 from campaign.studies.dust_verdicts import NO_DUST
 from campaign.studies.propagation import DrawnTogether, Draws, Propagator, Uncertain
 
@@ -91,6 +91,7 @@ def production_rates(
     given = not all(fit.is_fitted for fit in fits)
     drawn = _normals_together(fits, draws, seed)
     shared = ("distance_pc", "opacity_factor", *(("temperature_k",) if given else ()))
+    shared += (VEIL,) if VEIL in inputs.values else ()
     values: dict[str, Uncertain] = {key: inputs.values[key] for key in shared}
     found = []
     for i, ((one, _), (other, _)) in enumerate(pairwise(usable)):
@@ -98,12 +99,13 @@ def production_rates(
             continue
         span_yr = (other.bmjd_tdb - one.bmjd_tdb) / JULIAN_YEAR_D
         pair = (fits[i], fits[i + 1])
+        veils = tuple(_Veil(fit.veil_slope, inputs.values.get(VEIL)) for fit in pair)
         if given:
             # One temperature for all dates: its error is theirs in common.
-            quantity: _Rate | _RateAtGiven = _RateAtGiven(span_yr, *pair)
+            quantity: _Rate | _RateAtGiven = _RateAtGiven(span_yr, *pair, *veils)
             draws_of, nominal = {"first": drawn[i], "second": drawn[i + 1]}, (0.0, 0.0)
         else:
-            quantity = _Rate(span_yr)
+            quantity = _Rate(span_yr, *veils)
             draws_of = {
                 "first": _as_fitted(pair[0], drawn[i]), "second": _as_fitted(pair[1], drawn[i + 1]),
             }  # fmt: skip
@@ -115,29 +117,45 @@ def production_rates(
     return tuple(found)
 
 
+class _Veil:
+    """Factor by which another extinction, the same at all dates, moves the amount of one date."""
+
+    def __init__(self, slope: float, extinction: Uncertain | None) -> None:
+        self._slope, self._extinction = slope, extinction
+
+    def __call__(self, d: Draws) -> FloatArray | float:
+        if self._extinction is None:
+            return 1.0
+        return np.exp(self._slope * (d[VEIL] - self._extinction.nominal))
+
+
 class _Rate:
     """Difference of two masses over a span."""
 
-    def __init__(self, span_yr: float) -> None:
-        self._span_yr = span_yr
+    def __init__(self, span_yr: float, first_veil: _Veil, second_veil: _Veil) -> None:
+        self._span_yr, self._veils = span_yr, (first_veil, second_veil)
 
     def __call__(self, d: Draws) -> FloatArray:
         square = d["distance_pc"] ** 2 / d["opacity_factor"]
-        return np.asarray((d["second"] - d["first"]) * square / self._span_yr)
+        first, second = (d[key] * veil(d) for key, veil in zip(("first", "second"), self._veils, strict=True))
+        return np.asarray((second - first) * square / self._span_yr)
 
 
 class _RateAtGiven:
     """The same at a temperature that was given, from the noise of the fluxes of both dates."""
 
-    def __init__(self, span_yr: float, first: Fitted, second: Fitted) -> None:
-        self._span_yr, self._first, self._second = span_yr, first, second
+    def __init__(
+        self, span_yr: float, first: Fitted, second: Fitted, first_veil: _Veil, second_veil: _Veil
+    ) -> None:
+        self._span_yr = span_yr
+        self._dates = ((first, first_veil, "first"), (second, second_veil, "second"))
 
     def __call__(self, d: Draws) -> FloatArray:
         square = d["distance_pc"] ** 2 / d["opacity_factor"]
         amounts = []
-        for fit, key in ((self._first, "first"), (self._second, "second")):
+        for fit, veil, key in self._dates:
             best, noise = amount_at(fit.bands, d["temperature_k"])
-            amounts.append(np.maximum(best + noise * d[key], 0.0))
+            amounts.append(np.maximum(best + noise * d[key], 0.0) * veil(d))
         return np.asarray((amounts[1] - amounts[0]) * square / self._span_yr)
 
 

@@ -306,6 +306,51 @@ def test_interstellar_extinction_is_taken_out_with_its_error():
     assert clear.mass_msun.sigma / clear.mass_msun.value > plain.mass_msun.sigma / plain.mass_msun.value
 
 
+def reddened(light, veil_mag):
+    """The same behind an extinction in K, by Martin & Whittet 1990: (2.2 um/lambda)^1.8 of it (memory)."""
+    waves = {band: zero_point(photometric, band).wavelength_um for band, photometric, _ in BANDS}
+    share = np.array([(2.2 / waves[band]) ** 1.8 for band in light.band.tolist()])
+    return replace(light, mag=light.mag + veil_mag * share)
+
+
+def test_an_extinction_moves_all_bands_together_and_is_named():
+    # By hand: what another extinction makes of the same magnitudes is its error, whatever the bands' own.
+    light = reddened(photometry(None, {AT_MJD: (2e-8, 900.0)}, error_mag=0.003), 1.0)
+    overrides = {"inputs": {"distance_pc": Measured(2100.0, 0.0, 0.0)}, "opacity": DustOpacity(error=0.0)}
+    low, high, both = (
+        told(light, DustOverrides(extinction_k_mag=veil, **overrides)).measured
+        for veil in (Measured(0.8, 0.0, 0.0), Measured(1.2, 0.0, 0.0), Measured(1.0, 0.2, 0.2))
+    )
+    for name in ("temperature_k", "mass_msun", "luminosity_lsun"):
+        ends, found = [getattr(each, name).value for each in (low, high)], getattr(both, name)
+        alone = [getattr(each, name).sigma / getattr(each, name).value for each in (low, high)]
+        whole = np.hypot(0.5 * np.log(max(ends) / min(ends)), np.mean(alone))
+        assert 0.5 * np.log(found.hi68 / found.lo68) == pytest.approx(whole, rel=0.1)
+    assert both.luminosity_lsun.dominant == "interstellar extinction in K"
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("given", [False, True])
+def test_an_extinction_that_is_wrong_by_its_error_leaves_the_intervals_true(given):
+    rng, held = np.random.default_rng(5), []
+    for case in range(250):
+        t, mass, veil = rng.uniform(700.0, 1200.0), 10.0 ** rng.uniform(-8.0, -7.0), rng.uniform(0.8, 1.2)
+        light = reddened(photometry(rng, {AT_MJD: (mass, t)}), veil)
+        overrides = DustOverrides(
+            inputs={"distance_pc": Measured(2100.0, 0.0, 0.0)}
+            | ({"temperature_k": Measured(t, 0.0, 0.0)} if given else {}),
+            opacity=DustOpacity(error=0.0),
+            extinction_k_mag=Measured(veil + 0.2 * rng.normal(), 0.2, 0.2),
+        )
+        dust = told(light, overrides, draws=400, seed=case).measured
+        both = ((mass, dust.mass_msun), (mass, dust.mass_msun) if given else (t, dust.temperature_k))
+        held.append(
+            [x for truth, one in both for x in (one.lo68 <= truth <= one.hi68, one.lo95 <= truth <= one.hi95)]
+            + [one.median > truth for truth, one in both]
+        )
+    check(np.array(held, dtype=float))
+
+
 def test_two_temperatures_are_not_one():
     points = Points([])
     for band, photometric, star_mag in BANDS:
