@@ -277,7 +277,9 @@ def _dust_flux(each: BandExcess) -> str:
     if each.dust_jy is None or each.sigma_jy is None:
         return ""
     if each.use == "measured":
-        return f"{_plain(each.dust_jy, '.3g')} ± {_plain(each.sigma_jy, '.2g')}"
+        # What is nothing beside its error is told as nothing, not as the rounding that it is.
+        dust = each.dust_jy if abs(each.dust_jy) > 1e-6 * each.sigma_jy else 0.0
+        return f"{_plain(dust, '.3g')} ± {_plain(each.sigma_jy, '.2g')}"
     return f"{'<' if each.use == 'fainter than' else '>'} {_plain(each.dust_jy, '.3g')}"
 
 
@@ -316,7 +318,8 @@ def _plain(value: float | None, form: str) -> str:
     """A number with a minus sign of its own, and a power of ten without zeros before it."""
     if value is None:
         return ""
-    digits, mark, power = format(value, form).replace("e+", "e").partition("e")
+    # The "z" of a format: no minus sign before what rounds to nothing.
+    digits, mark, power = format(value, f"z{form}").replace("e+", "e").partition("e")
     return digits.replace("-", "−") + (f"e{int(power)}" if mark else "")
 
 
