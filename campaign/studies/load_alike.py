@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from typing import Any
 
 import numpy as np
@@ -36,31 +37,44 @@ def differing_in_value(rows: CheckedRows, columns: ObservationColumns) -> NDArra
     Source: project convention.
     """
     marked = np.zeros(rows.size, dtype=np.bool_)
-    keys: list[NDArray[Any]] = [rows.system, rows.site]
-    for name in ("band", "photometric_system", *OTHER_IDENTITY):
-        column = _varying(columns, name)
-        if column is not None:
-            keys.append(column)
     time = columns.numbers["bmjd_tdb"]
+    some = _with_neighbours(time)
+    if not some.size:
+        return marked
+    keys = [key[some] for key in (rows.system, rows.site, *_identity(columns))]
     keys = [key for key in keys if not (key[:1] == key).all()]
-    order = np.lexsort((time, *keys))
-    near = np.diff(time[order]) <= SAME_TIME_D
+    order = np.lexsort([time[some], *keys])
+    near = np.diff(time[some][order]) <= SAME_TIME_D
     for key in keys:
         near &= _same(key, order)
     differs = np.zeros(len(near), dtype=np.bool_)
     for name in _VALUES:
         if name in columns.numbers:
-            differs |= ~_same(columns.numbers[name], order)
+            differs |= ~_same(columns.numbers[name][some], order)
     pairs = np.flatnonzero(near & differs)
-    marked[order[pairs]] = True
-    marked[order[pairs + 1]] = True
+    marked[some[order[pairs]]] = True
+    marked[some[order[pairs + 1]]] = True
     return marked
 
 
-def _varying(columns: ObservationColumns, name: str) -> NDArray[Any] | None:
-    if name in columns.words:
-        return columns.words[name].codes
-    return columns.wholes.get(name, columns.numbers.get(name))
+def _with_neighbours(time: NDArray[np.float64]) -> NDArray[np.intp]:
+    """Rows of a time at which there are others, of whatever system: few of a million."""
+    order = np.argsort(time)
+    near = np.diff(time[order]) <= SAME_TIME_D
+    beside = np.zeros(len(time), dtype=np.bool_)
+    beside[:-1] |= near
+    beside[1:] |= near
+    return order[beside]
+
+
+def _identity(columns: ObservationColumns) -> Iterator[NDArray[Any]]:
+    for name in ("band", "photometric_system", *OTHER_IDENTITY):
+        if name in columns.words:
+            yield columns.words[name].codes
+        elif name in columns.wholes:
+            yield columns.wholes[name]
+        elif name in columns.numbers:
+            yield columns.numbers[name]
 
 
 def _same(column: NDArray[Any], order: NDArray[np.intp]) -> NDArray[np.bool_]:
