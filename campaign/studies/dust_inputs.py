@@ -16,6 +16,8 @@ from campaign.studies.propagation import Uncertain
 from campaign.studies.rows import distance_of
 
 _ANY = float("inf")
+# Key of the interstellar extinction, which moves all bands and dates together.
+VEIL = "extinction_k_mag"
 # Name, unit and domain of every input, by key.
 INPUTS: dict[str, tuple[str, str, float, float]] = {
     "luminosity_lsun": ("luminosity", "Lsun", 1e-3, _ANY),
@@ -41,7 +43,7 @@ INPUTS: dict[str, tuple[str, str, float, float]] = {
     "distance_pc": ("distance", "pc", 1e-3, _ANY),
     "temperature_k": ("temperature of the dust", "K", 20.0, 2500.0),
     "opacity_factor": ("opacity", "", 1e-6, _ANY),
-    "extinction_k_mag": ("interstellar extinction in K", "mag", 0.0, _ANY),
+    VEIL: ("interstellar extinction in K", "mag", 0.0, _ANY),
 }
 # Known only to within a factor: normal in the logarithm.
 _BY_FACTOR = frozenset({"grain_radius_um", "dust_share", "opacity_factor", "kappa_pr_cm2_g"})
@@ -123,7 +125,7 @@ def gather(record: SystemRecord, solution: Solution | None, overrides: DustOverr
     found = DustInputs(record, {}, {}, _opacity(overrides.opacity))
     for key, value in overrides.inputs.items():
         found.put(key, value, "option")
-    found.put("extinction_k_mag", overrides.extinction_k_mag, "option")
+    found.put(VEIL, overrides.extinction_k_mag, "option")
     for star, word in ((record.system.star_a, "a"), (record.system.star_b, "b")):
         if not found.has("luminosity_lsun"):
             found.put(f"luminosity_{word}_lsun", star.luminosity_lsun, "catalogue")

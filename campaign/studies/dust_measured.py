@@ -5,13 +5,11 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from functools import lru_cache
-from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
 
-from campaign.model.dust import BandExcess, MeasuredDust, OtherOpacity, PairColour
-from campaign.model.measured import Measured
+from campaign.model.dust import BandExcess, MeasuredDust, OtherOpacity
 from campaign.model.propagated import Propagated
 from campaign.physics.condensation import condensation_radius_au
 from campaign.physics.constants import SOLAR_MASS_KG
@@ -26,22 +24,21 @@ from campaign.physics.dustfit import (
     flux_sensitivities,
     upper_amount,
 )
-from campaign.physics.dustmass import blackbody_radius_au, colour_temperature_k, dust_flux_jy
+from campaign.physics.dustmass import blackbody_radius_au, dust_flux_jy
 from campaign.physics.opacity import OPACITIES, Opacity, dust_luminosity_lsun, opacity_cm2_g, reaches
 from campaign.physics.photometry import FLUX_ERROR_PER_MAG, extinction_over_k
 from campaign.physics.timescales import utc_iso
+from campaign.studies.dust_colours import pair_colours
 from campaign.studies.dust_excess import SEEN_SIGMA
-from campaign.studies.dust_inputs import DustInputs, with_keys
+from campaign.studies.dust_inputs import VEIL, DustInputs, with_keys
 from campaign.studies.dust_verdicts import Thickness, chi2_probability, verdicts_of
-from campaign.studies.propagation import DrawnTogether, Draws, Propagator, Uncertain, summarised
+from campaign.studies.propagation import DrawnTogether, Draws, Propagator, Uncertain
 
 FloatArray = NDArray[np.float64]
 
 FLUXES = "the fluxes"
 _SIDES = {"measured": 0, "fainter than": 1, "brighter than": -1}
-_PAIR_DRAWS = 2000
 _GRAMS = 1000.0 * SOLAR_MASS_KG
-VEIL = "extinction_k_mag"
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -117,7 +114,7 @@ def measure(
         bmjd_tdb=at,
         utc=utc_iso(np.array([at]))[0],
         bands=tuple(excesses),
-        pairs=_pairs(seen, inputs.values.get(VEIL), draws, seed),
+        pairs=pair_colours(seen, inputs.values.get(VEIL), draws, seed),
         temperature_origin="given" if given else "fitted" if keeps_temperature else "none",
         temperature_k=results.temperature() if results is not None and keeps_temperature else None,
         mass_msun=weighed.mass() if weighed is not None else None,
@@ -310,73 +307,6 @@ def _veil_slopes(bands: BandFluxes, t: float, amount: float, fitted: bool) -> tu
     shape = dust_flux_jy(1.0, bands.wavelength_um, 1.0, t, bands.kappa_cm2_g)
     weight = shape * bands.measured / bands.sigma_jy**2
     return float(weight @ per_mag / (weight @ shape) / max(amount, 1e-300)), 0.0
-
-
-def _pairs(
-    seen: Sequence[BandExcess], veil: Uncertain | None, draws: int, seed: int
-) -> tuple[PairColour, ...]:
-    """Colour temperatures of all pairs of bands that show dust, from shorter to longer waves."""
-    count = min(draws, _PAIR_DRAWS)
-    reddening = np.zeros(count)
-    if veil is not None and isinstance(veil.value, Measured):
-        reddening = (veil.value.sigma or 0.0) * stratified_normals([VEIL], count, seed)[VEIL]
-    found = []
-    for first, second in combinations(seen, 2):
-        assert first.wavelength_um is not None
-        assert second.wavelength_um is not None
-        if second.wavelength_um < 1.05 * first.wavelength_um:
-            continue
-        stated = np.array([_ratio(first, second)])
-        assert first.kappa_cm2_g is not None
-        assert second.kappa_cm2_g is not None
-        pair = (first.wavelength_um, second.wavelength_um, first.kappa_cm2_g / second.kappa_cm2_g)
-        value = float(colour_temperature_k(stated, *pair)[0])
-        name = f"{band_name(first, seen)}/{band_name(second, seen)}"
-        normals = stratified_normals([f"{name} one", f"{name} two"], count, seed)
-        ratios = _drawn(first, normals[f"{name} one"]) / _drawn(second, normals[f"{name} two"])
-        share = extinction_over_k([first.wavelength_um, second.wavelength_um])
-        ratios = ratios * 10.0 ** (0.4 * float(share[0] - share[1]) * reddening)
-        t = summarised(colour_temperature_k(ratios, *pair), value if np.isfinite(value) else None)
-        reason = "" if np.isfinite(value) else "bluer than any temperature: not dust of this opacity"
-        names = band_name(first, seen), band_name(second, seen)
-        found.append(PairColour(*names, t if np.isfinite(value) else None, reason))
-    return tuple(found)
-
-
-def band_name(one: BandExcess, among: Sequence[BandExcess]) -> str:
-    """The band, with its photometric system where two systems of that band stand side by side.
-
-    Parameters
-    ----------
-    one : BandExcess
-        The band.
-    among : sequence of BandExcess
-        All of them (no unit).
-
-    Returns
-    -------
-    str
-        For people.
-
-    Notes
-    -----
-    Accuracy: not applicable. Source: project convention.
-    """
-    if sum(other.band == one.band for other in among) < 2:
-        return one.band
-    return f"{one.band} ({one.photometric_system or 'no system'})"
-
-
-def _ratio(first: BandExcess, second: BandExcess) -> float:
-    assert first.dust_jy is not None
-    assert second.dust_jy is not None
-    return first.dust_jy / second.dust_jy
-
-
-def _drawn(one: BandExcess, normals: FloatArray) -> FloatArray:
-    assert one.dust_jy is not None
-    assert one.sigma_jy is not None
-    return np.asarray(one.dust_jy + one.sigma_jy * normals)
 
 
 def _upper(inputs: DustInputs, bands: BandFluxes) -> float | None:

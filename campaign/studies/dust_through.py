@@ -13,8 +13,8 @@ from campaign.physics.constants import JULIAN_YEAR_D
 from campaign.physics.draws import stratified_normals
 from campaign.physics.dustfit import amount_at, flux_sensitivities
 from campaign.physics.dustmass import dust_flux_jy
-from campaign.studies.dust_inputs import DustInputs
-from campaign.studies.dust_measured import FLUXES, VEIL, Fitted
+from campaign.studies.dust_inputs import VEIL, DustInputs
+from campaign.studies.dust_measured import FLUXES, Fitted
 from campaign.studies.dust_verdicts import NO_DUST
 from campaign.studies.propagation import DrawnTogether, Draws, Propagator, Uncertain
 
