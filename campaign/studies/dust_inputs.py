@@ -63,6 +63,8 @@ class DustInputs:
     used: set[str] = field(default_factory=set)
     # Critical separation for a dust rule, if there is one.
     critical_separation_au: Measured | Range | None = None
+    # Whether the catalogue gives the size of the orbit, without which such a rule dates nothing.
+    size_known: bool = False
 
     def has(self, *keys: str) -> bool:
         return all(key in self.values for key in keys)
@@ -136,6 +138,7 @@ def gather(record: SystemRecord, solution: Solution | None, overrides: DustOverr
     _put_star_temperature(found)
     found.put("distance_pc", distance_of(record), _distance_origin(record))
     _put_separation(found, solution)
+    found.size_known = _has_size(record, solution)
     _put_flow(found)
     _put_assumed(found, overrides.opacity)
     _check_condensation(found)
@@ -226,6 +229,15 @@ def _put_separation(found: DustInputs, solution: Solution | None) -> None:
         elif solution.a_au is not None and solution.eccentricity is not None:
             nearest = solution.a_au.value * (1.0 - solution.eccentricity.value)
             found.put("separation_au", Measured(nearest), "derived", "at periastron")
+
+
+def _has_size(record: SystemRecord, solution: Solution | None) -> bool:
+    """Whether the semi-major axis in au is given, or follows from something."""
+    if solution is None or not isinstance(solution.period_d, Measured):
+        return False
+    from campaign.studies.ephemeris import semi_major_axis
+
+    return semi_major_axis(record, solution, solution.period_d.value) is not None
 
 
 def _put_flow(found: DustInputs) -> None:

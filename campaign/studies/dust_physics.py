@@ -279,6 +279,11 @@ def rule_line(inputs: DustInputs, travel_au: Propagated) -> str | None:
         return None
     critical = _as_measured(inputs.critical_separation_au)
     rule = inputs.record.rule
+    if not inputs.size_known:
+        inputs.notes.append(
+            "the rule of that line dates no dust before the size of the orbit is known: give the adopted "
+            "solution --a, or the system what it follows from (masses, or a distance with a in arcsec)"
+        )
     if rule is not None and rule.kind != "separation":
         inputs.notes.append(f"the line for the dust rule would take the place of the rule '{rule.kind}'")
     if travel_au.lo68 is None or travel_au.hi68 is None or travel_au.median is None:

@@ -133,6 +133,20 @@ def test_without_a_critical_separation_there_is_no_line_and_it_is_said_how_to_ha
     assert '--separation "5±0.5 au"' in given.physics.rule_line
 
 
+def test_a_line_that_would_date_nothing_says_so():
+    orbit = Solution(
+        1, 1, "orbit", period_d=Measured(3000.0, 1.0, 1.0), epoch=Moment(61_000.0, 1.0, 1.0),
+        eccentricity=Measured(0.8, 0.01, 0.01), adopted=True,
+    )  # fmt: skip
+    massless = system(star_a=replace(STAR_A, mass_msun=None), star_b=replace(STAR_B, mass_msun=None))
+    sized = replace(orbit, a_au=Measured(16.0, 0.2, 0.2))
+    for record, says in ((SystemRecord(massless, (orbit,), rule=RULE), True),
+                         (SystemRecord(massless, (sized,), rule=RULE), False),
+                         (SystemRecord(system(), (orbit,), rule=RULE), False)):  # fmt: skip
+        notes = physics(record=record).assumptions
+        assert any("dates no dust before the size" in note for note in notes) is says
+
+
 def test_without_a_rule_the_separation_at_periastron_stands_in():
     orbit = Solution(
         1, 1, "orbit", period_d=Measured(3000.0, 1.0, 1.0), epoch=Moment(61_000.0, 1.0, 1.0),
