@@ -211,8 +211,13 @@ def _coming(tracks: ShellTracks, at: float, until: float, past: Mapping[int, She
 
 def _view(tracks: Iterable[ShellTrack], at: float, limits: Limits, heat: _Heat) -> ExpectedView:
     launched = [track for track in tracks if track.launched_share(at) > _LAUNCHED]
-    shown = limits.show([track.median_radius(at) for track in launched])
-    seen = shown.in_view.tolist() if limits.any else [None] * len(launched)
+    # One that is more likely still to come has a place in the table, and none among those in view.
+    there = [track.launched_share(at) >= 0.5 for track in launched]
+    shown = limits.show(
+        [t.median_radius(at) for t, is_there in zip(launched, there, strict=True) if is_there]
+    )
+    each_seen = iter(shown.in_view.tolist())
+    seen = [(is_there and next(each_seen)) if limits.any else None for is_there in there]
     shells = [_shell(track, at, limits, heat, in_view) for track, in_view in zip(launched, seen, strict=True)]
     return ExpectedView(
         bmjd_tdb=at,

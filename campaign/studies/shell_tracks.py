@@ -66,11 +66,16 @@ class ShellTrack:
 
     def median_radius(self, at: float) -> float:
         """Median radius of the draws in which it is launched, arcsec."""
+        if self.missing:
+            # The draws lack what nobody knows: only their middle is told.
+            return max(0.0, self.motion_mas_yr * (at - self.launch_d) / YEAR_D / 1000.0)
         drawn = self.radius_draws(at)
         return float(np.nanmedian(drawn)) if np.isfinite(drawn).any() else 0.0
 
     def launched_share(self, at: float) -> float:
-        """Probability that it is launched by an instant (dimensionless)."""
+        """Probability that it is launched by an instant (dimensionless); 0 or 1 where an error is unknown."""
+        if self.missing:
+            return float(self.launch_d <= at)
         return float(np.mean(np.isfinite(self.radius_draws(at))))
 
     def reaches(self, limit_arcsec: float) -> FloatArray:
