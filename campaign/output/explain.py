@@ -63,6 +63,8 @@ def _render_conditioning(screen: Screen, each: ExplainedEvent) -> None:
     screen.wrapped(f"before quiet observations: {before}", label="  ", hang=4)
     after = _interval(each.forecast.bmjd_tdb, each.forecast.utc)
     screen.wrapped(f"after {count} until {until}: {after}", label="  ", hang=4)
+    if each.forecast.status == "suspected":
+        screen.wrapped("What is suspected since then is not counted.", label="  ", hang=4)
     if each.moved_by:
         nights = "; ".join(
             f"{day(night.utc, night.bmjd_tdb)} {', '.join(night.bands)} {_shift(night.shift_d)}"

@@ -64,6 +64,7 @@ def event_forecasts(
     """
     quantiles = np.array([d.quantiles if d.quantiles is not None else np.full(5, np.nan) for d in dated])
     iso = utc_iso(quantiles.ravel()) if quantiles.size else []
+    told = _told(dated)
     result = []
     for i, one in enumerate(dated):
         unit = units[one.unit]
@@ -91,20 +92,30 @@ def event_forecasts(
                 observed=one.observed,
                 disagreement_sigma=one.disagreement_sigma,
                 notes=tuple([*extra, *one.notes, *_error_notes(one), *_mixture_notes(rows, unit, one)]),
-                conditioning=_told(one.conditioning),
+                conditioning=told[i],
             )
         )
     return result
 
 
-def _told(conditioning: Conditioning | None) -> Conditioning | None:
-    """With its instants in UTC too."""
-    if conditioning is None:
-        return None
-    q = conditioning.before
-    instants = [q.median, q.lo68, q.hi68, q.lo95, q.hi95, conditioning.last_quiet_bmjd_tdb]
-    iso = utc_iso(np.array([np.nan if t is None else t for t in instants]))
-    return replace(conditioning, before_utc=UtcQuantiles(*iso[:5]), last_quiet_utc=iso[5])
+def _told(dated: Sequence[DatedEvent]) -> list[Conditioning | None]:
+    """What quiet observations did to each event, with its instants in UTC too."""
+    instants = []
+    for one in dated:
+        if one.conditioning is not None:
+            q = one.conditioning.before
+            instants += [q.median, q.lo68, q.hi68, q.lo95, q.hi95, one.conditioning.last_quiet_bmjd_tdb]
+    iso = iter(utc_iso(np.array(instants, dtype=np.float64)) if instants else [])
+    return [
+        None
+        if one.conditioning is None
+        else replace(
+            one.conditioning,
+            before_utc=UtcQuantiles(*(next(iso) for _ in range(5))),
+            last_quiet_utc=next(iso),
+        )
+        for one in dated
+    ]
 
 
 def _dates(one: DatedEvent, iso: Sequence[str | None]) -> tuple[Quantiles | None, UtcQuantiles | None]:

@@ -28,6 +28,8 @@ _OPEN = ("expected", "open", "late", "suspected", "unseen")
 LEAST_PAST = 0.01
 # With fewer draws left than so many there is no distribution to show.
 LEAST_DRAWS = 30.0
+# Nor where the points are so improbable under all that the forecast allows, larger errors or not.
+LEAST_EVIDENCE = 1e-5
 # A cycle whose interval has passed longer ago than this is no longer waited for.
 _WAITED_D = 365.25
 # A draw with so little of the greatest weight is none.
@@ -82,15 +84,14 @@ def condition_events(
         if points is None:
             continue
         assert onset.cycle is not None
-        draws = condition_draws(
-            forecaster.unit_times(onset.unit, "onset", onset.cycle), points.log_likelihood
-        )
+        onsets = forecaster.unit_times(onset.unit, "onset", onset.cycle)
+        draws = condition_draws(onsets, points.log_likelihood)
         for event in _STAGES:
             stage = by_key.get((onset.unit, onset.cycle, event))
             if stage is None or stage.missing or stage.observed or stage.quantiles is None:
                 continue
             found[onset.unit, onset.cycle, event] = _conditioned(
-                stage, onset, draws, points, forecaster, question.window
+                stage, onsets, draws, points, forecaster, question.window
             )
     return [found.get((d.unit, d.cycle, d.event), d) for d in dated]
 
@@ -149,31 +150,35 @@ def _rise_d(onset: DatedEvent, forecaster: Forecaster) -> float | None:
     """Time from onset to maximum by the rule, if it dates both; whatever events were asked for."""
     assert onset.cycle is not None
     for row in forecaster.units[onset.unit].rows:
-        if "maximum" in forecaster.rows[row].events:
-            days = days_since_onset(
-                forecaster.pilot, forecaster.learned.get(row), row, "maximum", onset.cycle
-            )
-            if np.isfinite(days).any():
-                return float(np.nanmedian(days))
+        one = forecaster.rows[row]
+        if "maximum" not in one.events:
+            continue
+        kind = None if one.rule is None else one.rule.kind
+        if kind in ("lag", "phase") and {"onset", "maximum"} <= one.values.keys():
+            size = 1.0 if kind == "lag" else one.values["period_d"][0]
+            return size * (one.values["maximum"][0] - one.values["onset"][0])
+        days = days_since_onset(forecaster.pilot, forecaster.learned.get(row), row, "maximum", onset.cycle)
+        if np.isfinite(days).any():
+            return float(np.nanmedian(days))
     return None
 
 
 def _conditioned(
     stage: DatedEvent,
-    onset: DatedEvent,
+    onsets: FloatArray,
     draws: ConditionedDraws,
     points: QuietPoints,
     forecaster: Forecaster,
     window: Window,
 ) -> DatedEvent:
-    assert onset.cycle is not None
+    assert stage.cycle is not None
     told = Conditioning(
         before=quantiles_of(stage),
         observations=points.count,
         last_quiet_bmjd_tdb=points.last_bmjd_tdb,
         evidence=draws.evidence,
         inflated_share=draws.inflated_share,
-        moved=draws.effective >= LEAST_DRAWS,
+        moved=draws.effective >= LEAST_DRAWS and draws.evidence >= LEAST_EVIDENCE,
     )
     if not told.moved:
         note = (
@@ -182,7 +187,11 @@ def _conditioned(
         return replace(stage, conditioning=told, notes=[*stage.notes, note])
     dates = draws.dates_d
     if stage.event != "onset":
-        since = forecaster.since_onset(stage.unit, stage.event, onset.cycle)
+        if any(row in forecaster.learned for row in forecaster.units[stage.unit].rows):
+            since = forecaster.since_onset(stage.unit, stage.event, stage.cycle)
+        else:
+            # The same, with the draws of the onset that are here already.
+            since = forecaster.unit_times(stage.unit, stage.event, stage.cycle) - onsets
         if np.all(np.isnan(since)):
             return stage
         dates = dates + np.tile(since, 2)

@@ -6,6 +6,7 @@ forecast; a truncation at the last quiet point is shown to be wrong where rises 
 
 from __future__ import annotations
 
+import json
 from dataclasses import replace
 
 import numpy as np
@@ -26,6 +27,9 @@ from studies_examples import (
 )
 
 from campaign.model.measured import Measured
+from campaign.output.upcoming_document import upcoming_json
+from campaign.studies import watch
+from campaign.studies.preparing import Question
 
 # Onset of cycle 1 at 61 000 +- 60 d.
 ONSET, SIGMA = 61_000.0, 60.0
@@ -155,6 +159,28 @@ def test_what_is_observed_later_does_not_count_before():
     first, second = (find(told(curve), "onset", 1) for curve in (whole, until))
     assert first.bmjd_tdb == second.bmjd_tdb
     assert first.conditioning.last_quiet_bmjd_tdb == NOW
+
+
+def test_the_story_of_a_system_names_the_nights_that_did_it():
+    """Tinder 12 of the invented sample stayed quiet past its interval: each night moved the onset later."""
+    campaign = watch.load_sample_campaign(["Tinder 12"])
+    question = Question(campaign.own_as_of, campaign.own_as_of, campaign.own_as_of + 3_000.0)
+    story = watch.explain(campaign, question)
+    onset = next(each for each in story.events if each.forecast.event == "onset")
+    told, nights = onset.forecast.conditioning, onset.moved_by
+    assert 1 <= len(nights) <= 5
+    assert [night.bmjd_tdb for night in nights] == sorted(night.bmjd_tdb for night in nights)
+    assert all(night.shift_d > 1.0 and night.bands for night in nights)
+    assert all(told.before.lo95 < night.bmjd_tdb <= told.last_quiet_bmjd_tdb for night in nights)
+    # All nights together moved it from where it was to where it is; these few most of the way.
+    whole = onset.forecast.bmjd_tdb.median - told.before.median
+    assert 0.5 * whole < sum(night.shift_d for night in nights) <= whole + 1.0
+    heard = json.loads(upcoming_json(story.upcoming, story))["data"]
+    event = next(each for each in heard["events"] if each["event"] == "onset")
+    assert event["conditioning"]["before"]["median"] == told.before.median
+    assert event["conditioning"]["before_utc"]["median"].startswith("2026-10-03")
+    step = next(each for each in heard["explanation"]["events"] if each["event"] == "onset")
+    assert len(step["moved_by"]) == len(nights)
 
 
 # ------------------------------------------------------------------------- many campaigns
