@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from campaign.errors import InputRefused
+from campaign.errors import InputRefused, NotFound
 from campaign.model.columns import ObservationColumns, Words
 from campaign.model.loading import (
     SHOWN_TEXT,
@@ -211,6 +211,7 @@ class RowChecker:
         for name, text in self._context.mapping.constants.items():
             faults: list[CellFault] = []
             column = f"--constant {name}"
+            self._refuse_unknown(name, text)
             if name in ("system", "site") or name in WORD_FIELDS or name == "limit":
                 read[name] = int(self._vocabulary(name, column).codes([text], faults)[0])
             elif name in NUMBER_COLUMNS:
@@ -233,6 +234,21 @@ class RowChecker:
                     details={"field": name, "text": text[:SHOWN_TEXT]},
                 )
         return read
+
+    def _refuse_unknown(self, name: str, text: str) -> None:
+        """A system or site for all rows that is in no catalogue is told as anywhere else."""
+        index = {"system": self.systems, "site": self.sites}.get(name)
+        try:
+            if index is not None:
+                index.read(text)
+        except InputRefused as refused:
+            raise NotFound(
+                refused.message,
+                why=refused.why,
+                hint=refused.hint,
+                code=refused.code,
+                details=refused.details,
+            ) from refused
 
     def _vocabulary(self, name: str, column: str) -> Vocabulary[Any]:
         """The words of a field, each read once for the whole table."""

@@ -96,7 +96,7 @@ def load_warnings(
     told.add(
         "differing-in-table",
         differing_in_value(rows, columns),
-        "{rows} {are} of the same system, time, band and site as another, with another value; all go in",
+        "{rows} {are} of the same system, time, band and site as another of the table, with another value",
     )
     told.add("future", _future(columns, now_mjd), "{rows} {are} dated in the future")
     told.add("long-ago", columns.numbers["bmjd_tdb"] < _LONG_AGO_MJD, "{rows} {are} dated before 1900")

@@ -177,6 +177,8 @@ def test_columns_constants_and_a_mapping_that_is_kept(kept, table, own_database)
         (("FILE", "--system", "x", "--constant", "system=y"), 2),
         (("FILE", "--mapping", "none"), 4),
         (("FILE", "--encoding", "rot13"), 3),
+        (("FILE", "--system", "Nobody"), 4),
+        (("FILE", "--constant", "site=Nowhere"), 4),
     ],
 )
 def test_what_cannot_be_meant_has_a_status_and_a_way_out(kept, table, words, status):
