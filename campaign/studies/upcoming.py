@@ -20,7 +20,7 @@ from campaign.studies.lightcurves import CataloguedCurves
 from campaign.studies.preparing import Prepared, Question, prepare
 from campaign.studies.resolvable import resolvable_events
 from campaign.studies.status import OnsetState, needs_photometry, onset_state
-from campaign.studies.suspicion import suspicions
+from campaign.studies.suspected import suspicions
 
 # More than this and nobody reads a timeline.
 TIMELINE_SYSTEMS = 200
