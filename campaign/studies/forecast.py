@@ -31,7 +31,7 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 # Elements (draws times rows) of one block: a few arrays of this size stay in a core's cache.
-_BLOCK = 65_536
+_BLOCK = 131_072
 _PILOT_DRAWS = 64
 # How long an unseen or finished cycle stays on the list, days.
 KEEP_LISTED_D = 365.25
