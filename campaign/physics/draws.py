@@ -88,7 +88,8 @@ def two_piece_normal(
     >>> two_piece_normal(column(10.0), column(1.0), column(3.0), np.array([[-1.0, 0.0, 1.0]])).tolist()
     [[9.0, 10.0, 13.0]]
     """
-    draws = value + plus * normals
+    draws = plus * normals
+    draws += value
     # Most errors are the same on both sides; only the other rows are worth the choice, draw by draw.
     lopsided = np.flatnonzero((minus != plus).reshape(-1))
     if lopsided.size == minus.size:

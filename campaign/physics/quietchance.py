@@ -18,6 +18,9 @@ from campaign.physics.lightcolumns import BoolArray, FloatArray
 from campaign.physics.onsetfit import BandPoints
 from campaign.physics.riseshapes import RISE_WEIGHTS, rise_shapes
 
+# Numbers worked on at a time.
+_BLOCK = 160_000
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class ExpectedEpisodes:
@@ -107,17 +110,23 @@ def _band_log_likelihood(
     columns = np.concatenate([(weight * y)[:, None], member * np.sqrt(shrink)], axis=1)
     projected = columns[:, 1:].T @ y
     quiet = _limits(band, ~measured, np.zeros(t.size))
-    found = np.empty((expected.rise_d.size, RISE_WEIGHTS.size, onsets.size))
-    since = t[None, :] - onsets[:, None]
-    for draw in range(expected.rise_d.size):
-        length = expected.rise_d[draw] + expected.later_d[draw, number]
-        fall = np.exp(-np.clip(since - length, 0.0, None) / expected.decline_d[draw])
-        dust = expected.amplitude[draw, number] * rise_shapes(since / length) * fall
+    count = expected.rise_d.size
+    found = np.empty((RISE_WEIGHTS.size, count, onsets.size))
+    since = t[None, None, :] - onsets[None, :, None]
+    lengths = (expected.rise_d + expected.later_d[:, number])[:, None, None]
+    # Several draws at a time, as long as their arrays stay in the processor's cache.
+    step = max(1, _BLOCK // max(1, RISE_WEIGHTS.size * since.size))
+    for first in range(0, count, step):
+        draws = slice(first, first + step)
+        length = lengths[draws]
+        fall = np.exp(np.minimum(length - since, 0.0) / expected.decline_d[draws, None, None])
+        dust = rise_shapes(since / length)
+        dust *= expected.amplitude[draws, number, None, None] * fall
         sums = dust @ columns
         score = sums[..., 0] - sums[..., 1:] @ projected
         square = (dust * dust) @ weight - (sums[..., 1:] ** 2).sum(axis=-1)
-        found[draw] = score - 0.5 * square + _limits(band, ~measured, dust) - quiet
-    return found
+        found[:, draws] = score - 0.5 * square + _limits(band, ~measured, dust) - quiet
+    return np.swapaxes(found, 0, 1)
 
 
 def _limits(band: BandPoints, limits: BoolArray, dust: FloatArray) -> FloatArray:

@@ -188,12 +188,15 @@ def utc_iso(bmjd_tdb: ArrayLike) -> list[str | None]:
     utc_day, utc_rest = _universal_of_tt(day, rest - _leading_tdb_minus_tt_d(mjd[good]))
     # Status 1 says only that leap seconds of that year are not known, which the docstring says.
     year, month, date, clock, _ = ufunc.d2dtf(b"UTC", 0, utc_day + MJD_ZERO_JD, utc_rest)
-    columns = (year, month, date, clock["h"], clock["m"], clock["s"])
-    # At either end of the calendar the change of scale may lead out of it.
-    texts = [
-        f"{y:04d}-{mo:02d}-{d:02d}T{h:02d}:{mi:02d}:{s:02d}Z" if 1 <= y <= 9999 else None
-        for y, mo, d, h, mi, s in zip(*(column.tolist() for column in columns), strict=True)
-    ]
+    seconds = clock["h"].astype(np.int64) * 3600 + clock["m"] * 60 + clock["s"]
+    days = (year - 1970).astype("datetime64[Y]").astype("datetime64[M]") + (month - 1)
+    instants = days.astype("datetime64[D]") + (date - 1) + np.minimum(seconds, 86399).astype("timedelta64[s]")
+    texts: list[str | None] = [text + "Z" for text in np.datetime_as_string(instants, unit="s").tolist()]
+    for position in np.flatnonzero((clock["s"] == 60) | (year < 1) | (year > 9999)).tolist():
+        # A leap second has no place in the calendar; at either end of it the change of scale may lead out.
+        leap = 1 <= year[position] <= 9999
+        text = texts[position]
+        texts[position] = text[:17] + "60Z" if leap and text is not None else None
     found: list[str | None] = [None] * mjd.size
     for position, text in zip(np.flatnonzero(good).tolist(), texts, strict=True):
         found[position] = text

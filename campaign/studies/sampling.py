@@ -135,7 +135,8 @@ class Sampler:
     def _periastron(self, index: IntArray, cycles: IntArray) -> tuple[FloatArray, FloatArray]:
         """Times of periastron (or of the marked event) and periods, (rows, draws) each."""
         period = self.draw("period_d", index)
-        times = self.draw("epoch", index) + (cycles - self.epoch_cycle[index])[:, None] * period
+        times = (cycles - self.epoch_cycle[index])[:, None] * period
+        times += self.draw("epoch", index)
         for code, event in ((1, "A in front"), (2, "B in front")):
             marked = np.flatnonzero(
                 (self.mark[index] == code) & ~np.isnan(self.columns["omega_b_deg"][index, 0])
@@ -181,12 +182,15 @@ class Sampler:
         times, period = self._periastron(index, cycles)
         if event in CONJUNCTION_DEG:
             shift = self._conjunction_phase(index, event)
+            shift *= period
             # A row marked by a conjunction without e and omega dates that conjunction alone.
-            bare = np.isnan(self.columns["omega_b_deg"][index, 0])
-            return np.where(bare[:, None], times, times + shift * period)
+            shift[np.isnan(self.columns["omega_b_deg"][index, 0])] = 0.0
+            times += shift
         if event in SCATTERS:
             marked_here = self.mark[index] == MARK_CODES.get(event, -1)
-            times = np.where(marked_here[:, None], times, times + self._offsets_d(event, index, period))
+            offsets = self._offsets_d(event, index, period)
+            offsets[marked_here] = 0.0
+            times += offsets
             spread = np.where(marked_here, 0.0, self.scatter[event][index])
             if spread.any():
                 times += spread[:, None] * self.normals[f"scatter {event}"][None, :]
@@ -207,18 +211,25 @@ class Sampler:
 
     def _offsets_d(self, event: EventName, index: IntArray, period: FloatArray) -> FloatArray:
         """Days from periastron, before scatter; NaN in draws without an episode."""
-        offsets = np.full(period.shape, np.nan)
         kinds = self.rule[index]
-        for kind in np.unique(kinds):
+        present = np.unique(kinds)
+        if present.size == 1:
+            return self._offsets_by_d(int(present[0]), event, index, period)
+        offsets = np.empty(period.shape)
+        for kind in present:
             chosen = np.flatnonzero(kinds == kind)
-            rows = index[chosen]
-            if kind == RULE_CODES["phase"]:
-                offsets[chosen] = self.draw(event, rows) * period[chosen]
-            elif kind == RULE_CODES["lag"]:
-                offsets[chosen] = self.draw(event, rows)
-            elif kind == RULE_CODES["separation"]:
-                offsets[chosen] = self._separation_offsets_d(event, rows, period[chosen])
+            offsets[chosen] = self._offsets_by_d(int(kind), event, index[chosen], period[chosen])
         return offsets
+
+    def _offsets_by_d(self, kind: int, event: EventName, index: IntArray, period: FloatArray) -> FloatArray:
+        """The same for rows of one kind of rule."""
+        if kind == RULE_CODES["phase"]:
+            return self.draw(event, index) * period
+        if kind == RULE_CODES["lag"]:
+            return self.draw(event, index)
+        if kind == RULE_CODES["separation"]:
+            return self._separation_offsets_d(event, index, period)
+        return np.full(period.shape, np.nan)
 
     def half_window_d(self, index: IntArray, period: FloatArray) -> FloatArray:
         """Half of the production window; NaN without an episode, ``inf`` when production never stops."""
