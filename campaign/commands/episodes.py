@@ -115,7 +115,7 @@ def find(
 
 
 def confirm(
-    numbers: Annotated[list[str], typer.Argument(metavar="N...", help="Numbers of episodes.")],
+    numbers: Annotated[list[str], typer.Argument(metavar="N", help="Numbers of episodes.")],
     db: DbOption = None,
     observer: ObserverOption = None,
     json: JsonOption = False,
@@ -126,7 +126,7 @@ def confirm(
 
 
 def reject(
-    numbers: Annotated[list[str], typer.Argument(metavar="N...", help="Numbers of episodes.")],
+    numbers: Annotated[list[str], typer.Argument(metavar="N", help="Numbers of episodes.")],
     db: DbOption = None,
     observer: ObserverOption = None,
     json: JsonOption = False,

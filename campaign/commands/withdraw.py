@@ -20,7 +20,7 @@ from campaign.errors import UsageRefused
 
 
 def withdraw(
-    numbers: Annotated[list[str], typer.Argument(metavar="N...", help="Numbers of observations.")],
+    numbers: Annotated[list[str], typer.Argument(metavar="N", help="Numbers of observations.")],
     why: Annotated[str | None, option("--why", "TEXT", "What is wrong with them; kept with each.")] = None,
     db: DbOption = None,
     observer: ObserverOption = None,

@@ -186,6 +186,7 @@ def _cannot_open(name: str, error: OSError | ValueError) -> CampaignError:
     if isinstance(error, FileNotFoundError | NotADirectoryError):
         return NotFound(
             f"There is no file {name}.",
+            why="Nothing stands at this path, seen from the folder in which the command was given.",
             hint="Check the path; - reads from standard input.",
             code="file-not-found",
             details={"file": name},
@@ -193,6 +194,7 @@ def _cannot_open(name: str, error: OSError | ValueError) -> CampaignError:
     if isinstance(error, IsADirectoryError):
         return InputRefused(
             f"{name} is a folder, not a file.",
+            why="A table is one file.",
             hint="Name one file; several are loaded one after another.",
             code="file-is-folder",
         )

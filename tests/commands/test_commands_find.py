@@ -142,7 +142,7 @@ def test_deciding_again_changes_nothing(sampled: RunCampaign) -> None:
         (("confirm", "9999"), 4, "no episode number 9999"),
         (("confirm", "x"), 3, "not the number of an entry"),
         (("reject", "1", "1"), 3, "stands there twice"),
-        (("confirm",), 2, "N..."),
+        (("confirm",), 2, "{N}..."),
     ],
 )
 def test_what_cannot_be_done_is_said_in_three_lines(
